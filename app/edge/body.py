@@ -1,0 +1,137 @@
+"""Bodies: read only as what they say they are, counted against the limit, validated from their bytes.
+
+A handler takes one with ``body: Annotated[VesselBody, Depends(json_body(VesselBody))]``. The bytes are
+received on the event loop; inflating and validating them is work, so it is done in the handler's thread.
+FastAPI's own parsing is passed by: it builds Python objects first, and strict validation then refuses
+every instant, while lax validation takes ``"1.5"`` and ``true`` for numbers.
+"""
+
+# No deferred annotations here: FastAPI reads those of a callable object as they are.
+import zlib
+from typing import Annotated, Generic, TypeVar
+
+import pydantic_core
+from fastapi import Depends, Request
+from pydantic import BaseModel, ValidationError
+
+from app.edge import json_text
+from app.errors import BadRequest, FieldError, TooLarge, Unprocessable, UnsupportedMedia, field_errors
+
+JSON = "application/json"
+MEGABYTE = 1_000_000
+
+M = TypeVar("M", bound=BaseModel)
+
+
+class ReceivedBytes:
+    """Dependency: the bytes of a body of one of these media types, still encoded as they came."""
+
+    def __init__(self, *media_types: str) -> None:
+        self.media_types = media_types
+
+    async def __call__(self, request: Request) -> bytes:
+        """The whole body, never more than the limit."""
+        _check_media_type(request, self.media_types)
+        _encoding(request)
+        limit = _limit(request)
+        announced = request.headers.get("content-length", "")
+        if announced.isdecimal() and int(announced) > limit:
+            raise _too_large(limit)
+        received = bytearray()
+        async for block in request.stream():
+            received += block
+            if len(received) > limit:
+                raise _too_large(limit)
+        return bytes(received)
+
+
+class JsonBody(Generic[M]):
+    """Dependency: a JSON body, strictly validated; OpenAPI shows its model as the request's body."""
+
+    def __init__(self, model: type[M]) -> None:
+        self.model = model
+
+    def __call__(self, request: Request, received: Annotated[bytes, Depends(ReceivedBytes(JSON))]) -> M:
+        """The validated body."""
+        return parse(self.model, decoded(request, received))
+
+
+def json_body(model: type[M]) -> JsonBody[M]:
+    """Dependency that reads a JSON body of this model."""
+    return JsonBody(model)
+
+
+def decoded(request: Request, received: bytes) -> bytes:
+    """The body as its sender wrote it: inflated where it came as gzip, never past the limit."""
+    if not _encoding(request):
+        return received
+    limit = _limit(request)
+    inflated = bytearray()
+    rest = received
+    try:
+        while rest:  # a gzip body may hold several members, one after the other
+            member = zlib.decompressobj(wbits=31)
+            inflated += member.decompress(rest, limit + 1 - len(inflated))
+            if len(inflated) > limit:
+                raise _too_large(limit)
+            if not member.eof:
+                raise BadRequest("The gzip body ends too early.", code="malformed_gzip")
+            rest = member.unused_data
+    except zlib.error:
+        raise BadRequest("The body is not the gzip that it says it is.", code="malformed_gzip") from None
+    return bytes(inflated)
+
+
+def parse(model: type[M], text: bytes) -> M:
+    """A model from JSON text, or a refusal that names every mistake and repeats none."""
+    try:
+        body = model.model_validate_json(text, strict=True)
+    except ValidationError as refused:
+        raise _refusal(refused, text) from None
+    try:
+        json_text.check(text)
+    except (ValueError, RecursionError):
+        raise _malformed("The body cannot be read as JSON.") from None
+    return body
+
+
+def _refusal(refused: ValidationError, text: bytes) -> BadRequest | Unprocessable:
+    first = refused.errors(include_url=False, include_input=False)[0]
+    if first["type"] == "json_invalid" and not first["loc"]:
+        return _malformed(first["msg"])
+    errors = field_errors(refused, pydantic_core.from_json(text))
+    return Unprocessable(f"The body has {len(errors)} error{'' if len(errors) == 1 else 's'}.", errors=errors)
+
+
+def _malformed(detail: str) -> BadRequest:
+    return BadRequest(detail, code="malformed_json", errors=[FieldError("", "malformed_json", detail)])
+
+
+def _check_media_type(request: Request, media_types: tuple[str, ...]) -> None:
+    kind, *parameters = request.headers.get("content-type", "").split(";")
+    said = {parameter.strip().lower().replace('"', "") for parameter in parameters}
+    charsets = {parameter for parameter in said if parameter.startswith("charset")}
+    if kind.strip().lower() in media_types and charsets <= {"charset=utf-8"}:
+        return
+    detail = f"Send the body as {' or '.join(media_types)}, in UTF-8."
+    raise UnsupportedMedia(detail, headers={"Accept": ", ".join(media_types)})
+
+
+def _encoding(request: Request) -> str:
+    """``gzip``, or nothing."""
+    encoding = request.headers.get("content-encoding", "").strip().lower()
+    if encoding in ("", "identity"):
+        return ""
+    if encoding in ("gzip", "x-gzip"):
+        return "gzip"
+    raise UnsupportedMedia("Send the body plain or as gzip.", headers={"Accept-Encoding": "gzip, identity"})
+
+
+def _limit(request: Request) -> int:
+    return int(request.app.state.settings.max_body_mb * MEGABYTE)
+
+
+def _too_large(limit: int) -> TooLarge:
+    # The rest of the body is still on its way and nobody will read it.
+    headers = {"Connection": "close"}
+    return TooLarge(f"A body may have {limit} bytes, inflated; send less at a time.", headers=headers)
