@@ -53,13 +53,17 @@ def _no_number(_: str) -> NoReturn:
     raise _refusal("", "not_finite", "NaN and Infinity are no numbers of JSON; leave the value out.")
 
 
+def _below(pointer: str, key: str) -> str:
+    return f"{pointer}/{key}" if SAFE_SEGMENT.fullmatch(key) else pointer
+
+
 def _first_twice(value: object, pointer: str) -> str | None:
     """Pointer to an object that has a key twice; it stops above a key that is not safe to say again."""
     if isinstance(value, _Pairs):
         keys = [key for key, _ in value]
         if len(set(keys)) != len(keys):
             return pointer
-        inside = [(f"{pointer}/{key}" if SAFE_SEGMENT.fullmatch(key) else pointer, item) for key, item in value]
+        inside = [(_below(pointer, key), item) for key, item in value]
     elif isinstance(value, list):
         inside = [(f"{pointer}/{position}", item) for position, item in enumerate(value)]
     else:

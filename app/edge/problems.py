@@ -110,7 +110,7 @@ def answer(scope: Scope, error: AppError) -> Response:
 
 def fault(scope: Scope) -> Response:
     """The answer to what nobody foresaw: it says nothing, the log says all."""
-    return answer(scope, AppError("The service failed on this request; its log says why, under this instance."))
+    return answer(scope, AppError("The service failed on this request; its log says why."))
 
 
 def install(app: FastAPI) -> None:
