@@ -123,8 +123,8 @@ class Unavailable(AppError):
 
     status, title, default_code = 503, "Store cannot be reached", "store_unavailable"
 
-    def __init__(self, detail: str, *, retry_after_s: int = 5) -> None:
-        super().__init__(detail, headers={"Retry-After": str(retry_after_s)})
+    def __init__(self, detail: str, *, code: str | None = None, retry_after_s: int = 5) -> None:
+        super().__init__(detail, code=code, headers={"Retry-After": str(retry_after_s)})
 
 
 class StorageFull(AppError):

@@ -16,7 +16,8 @@ from pydantic import BaseModel, ConfigDict, Field
 from starlette.exceptions import HTTPException
 from starlette.types import Scope
 
-from app.errors import AppError, FieldError, Unprocessable, field_error
+from app.errors import AppError, FieldError, StorageFull, Unavailable, Unprocessable, field_error
+from app.store.engine import DiskFull, StoreUnavailable
 
 MEDIA_TYPE = "application/problem+json"
 
@@ -118,11 +119,22 @@ def install(app: FastAPI) -> None:
     app.add_exception_handler(AppError, _app_error)
     app.add_exception_handler(HTTPException, _http_exception)
     app.add_exception_handler(RequestValidationError, _parameters)
+    app.add_exception_handler(StoreUnavailable, _unavailable)
+    app.add_exception_handler(DiskFull, _full)
 
 
 def _app_error(request: Request, error: Exception) -> Response:
     assert isinstance(error, AppError)
     return answer(request.scope, error)
+
+
+def _unavailable(request: Request, _: Exception) -> Response:
+    return answer(request.scope, Unavailable("The store cannot be reached now; nothing was changed. Try again."))
+
+
+def _full(request: Request, _: Exception) -> Response:
+    detail = "The disk of the store is full; nothing of this request was kept. Free some room, then send it again."
+    return answer(request.scope, StorageFull(detail))
 
 
 def _http_exception(request: Request, error: Exception) -> Response:

@@ -1,0 +1,147 @@
+"""``brimbook``: every verb is a few lines here; what it does stands in ``services``.
+
+Exit codes: 0 done, and balanced where that is the question; 10 done, an imbalance was flagged;
+11 done, incomplete; 64 usage; 69 the store cannot be reached; 70 a fault.
+"""
+
+from __future__ import annotations
+
+import sys
+import traceback
+from collections.abc import Sequence
+
+import click
+import uvicorn
+
+from app.settings import Settings, listing, without_password
+from app.store.engine import DiskFull, Store, StoreUnavailable
+
+DONE, FLAGGED, INCOMPLETE, USAGE, UNREACHABLE, FAULT = 0, 10, 11, 64, 69, 70
+
+HELP = """Readings of tanks and pressure vessels in; mass with its uncertainty, and books closed
+every night, out.
+
+\b
+A first look, on a site that is made up:
+  brimbook demo                    loads a month, closes it, serves it
+
+\b
+The same with your own:
+  brimbook serve                   then PUT sites, substances, vessels; POST readings
+  brimbook load FOLDER             or load them all from definitions and CSV files
+  brimbook close --site S --day D  the nightly job: 0 balanced, 10 flagged, 11 incomplete
+
+Nothing has to be set: the store is one SQLite file in your data folder. `brimbook settings`
+lists what can be set, `http://127.0.0.1:8321/openapi.json` every path of the service.
+
+\b
+Exit codes: 0 done, 10 an imbalance was flagged, 11 incomplete, 64 usage,
+69 the store cannot be reached, 70 a fault.
+"""
+
+
+@click.group(help=HELP, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+def brimbook() -> None:
+    """The group that all verbs hang on."""
+
+
+@brimbook.command()
+@click.option("--host", default="127.0.0.1", show_default=True, help="Address to listen on.")
+@click.option("--port", default=8321, show_default=True, type=click.IntRange(0, 65535), help="Port.")
+@click.option("--workers", default=1, show_default=True, type=click.IntRange(1), help="Processes.")
+def serve(host: str, port: int, workers: int) -> None:
+    """Serve the REST API until stopped (Ctrl-C).
+
+    Requests must name this host by one of BRIMBOOK_HOSTS: loopback names, unless set. More than one
+    worker needs PostgreSQL: an SQLite file has one writer.
+    """
+    settings = _settings()
+    if workers > 1 and settings.is_sqlite:
+        raise click.UsageError(
+            "--workers above 1 needs PostgreSQL: SQLite takes one process at a time. "
+            "Leave --workers out, or set BRIMBOOK_DATABASE_URL to postgresql+psycopg://…"
+        )
+    if settings.migrate_at_start:
+        _migrate(settings)  # in this process, so that a store out of reach is an exit code and a sentence
+    uvicorn.run(
+        "app.main:served",
+        factory=True,
+        host=host,
+        port=port,
+        workers=workers,
+        http="app.edge.deadline:DeadlineProtocol",
+        ws="none",
+        limit_concurrency=settings.max_connections,
+        log_config=None,
+        access_log=False,
+        server_header=False,
+    )
+
+
+@brimbook.command()
+def migrate() -> None:
+    """Bring the store's tables up to date; harmless when they are."""
+    settings = _settings()
+    _migrate(settings)
+    click.echo(f"The tables of {without_password(settings.database_url)} are up to date.")
+
+
+@brimbook.command("settings")
+def show_settings() -> None:
+    """List every setting: its value now, its default and its unit. Passwords are not shown."""
+    for name, value, default, description in listing(_settings()):
+        click.echo(f"{name}={value}")
+        click.echo(f"    {description}; default: {default}")
+
+
+def _settings() -> Settings:
+    """The settings of the environment; one that cannot be is a mistake of usage, and is not repeated."""
+    try:
+        return Settings()
+    except ValueError as refused:
+        errors = getattr(refused, "errors", list)()
+        named = "; ".join(f"BRIMBOOK_{str(e['loc'][0]).upper()}: {e['msg']}" for e in errors)
+        raise click.UsageError(f"A setting cannot be: {named}") from None
+
+
+def _migrate(settings: Settings) -> None:
+    store = Store.open(settings.database_url)
+    try:
+        store.migrate()
+    finally:
+        store.close()
+
+
+def run(arguments: Sequence[str] | None = None) -> int:
+    """Run one verb; its exit code.
+
+    Parameters
+    ----------
+    arguments : sequence of str, optional
+        The words after ``brimbook``; those of the command line if left out.
+    """
+    try:
+        code = brimbook.main(args=arguments, prog_name="brimbook", standalone_mode=False)
+    except click.UsageError as mistake:
+        mistake.show()
+        return USAGE
+    except click.ClickException as failure:
+        failure.show()
+        return FAULT
+    except (click.Abort, KeyboardInterrupt):
+        click.echo("Stopped.", err=True)
+        return 130
+    except (StoreUnavailable, DiskFull) as failure:
+        click.echo(f"The store cannot be reached: {failure}", err=True)
+        return UNREACHABLE
+    except SystemExit as stopped:  # the server's own: a port in use, a start that failed
+        return FAULT if stopped.code else DONE
+    except Exception:
+        traceback.print_exc()
+        return FAULT
+    return code if isinstance(code, int) else DONE
+
+
+def main() -> None:
+    """The program ``brimbook``."""
+    sys.exit(run())
