@@ -13,7 +13,7 @@ from collections.abc import Sequence
 import click
 import uvicorn
 
-from app.settings import Settings, listing, without_password
+from app.settings import Settings, from_environment, listing, without_password
 from app.store.engine import DiskFull, Store, StoreUnavailable
 
 DONE, FLAGGED, INCOMPLETE, USAGE, UNREACHABLE, FAULT = 0, 10, 11, 64, 69, 70
@@ -95,13 +95,10 @@ def show_settings() -> None:
 
 
 def _settings() -> Settings:
-    """The settings of the environment; one that cannot be is a mistake of usage, and is not repeated."""
     try:
-        return Settings()
+        return from_environment()
     except ValueError as refused:
-        errors = getattr(refused, "errors", list)()
-        named = "; ".join(f"BRIMBOOK_{str(e['loc'][0]).upper()}: {e['msg']}" for e in errors)
-        raise click.UsageError(f"A setting cannot be: {named}") from None
+        raise click.UsageError(str(refused)) from None
 
 
 def _migrate(settings: Settings) -> None:
@@ -145,3 +142,7 @@ def run(arguments: Sequence[str] | None = None) -> int:
 def main() -> None:
     """The program ``brimbook``."""
     sys.exit(run())
+
+
+if __name__ == "__main__":
+    main()

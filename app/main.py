@@ -16,7 +16,7 @@ from app.edge import openapi, problems
 from app.edge.hosts import Hosts
 from app.edge.log import Requests, configure
 from app.errors import FieldError, Unprocessable
-from app.settings import Settings
+from app.settings import Settings, from_environment
 from app.store.engine import Store
 from models.errors import ModelError
 
@@ -38,7 +38,7 @@ def create_app(settings: Settings | None = None, clock: Clock | None = None) -> 
     clock : Clock, optional
         The machine's if left out.
     """
-    settings = settings or Settings()
+    settings = settings or from_environment()
     app = FastAPI(
         title="Brimbook",
         version=_version(),
@@ -63,7 +63,7 @@ def create_app(settings: Settings | None = None, clock: Clock | None = None) -> 
 
 def served() -> FastAPI:
     """The application as each process of ``brimbook serve`` makes it: with this process's log set up."""
-    settings = Settings()
+    settings = from_environment()
     configure(settings.log_level)
     return create_app(settings)
 

@@ -8,12 +8,14 @@ import sys
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
-from pydantic import Field, field_validator
+from pydantic import Field, ValidationError, field_validator
 from pydantic_settings import BaseSettings, NoDecode, SettingsConfigDict
 
 PREFIX = "BRIMBOOK_"
 LOOPBACK = ("localhost", "127.0.0.1", "::1")
-_URL = re.compile(r"(?P<scheme>[\w+.-]+)://(?:[^@/?#]*@)?(?P<place>[\w.:\[\],-]*(?:/[\w.-]*)?)(?:\?[^@]*)?")
+_URL = re.compile(
+    r"(?P<scheme>[\w+.-]+)://(?:[^@/?#]*@)?(?P<place>(?:[\w.-]*|\[[\da-f:]+\])(?::\d+)?(?:/[\w.-]*)?)(?:\?[^@]*)?"
+)
 
 
 def data_folder() -> Path:
@@ -40,18 +42,21 @@ class Settings(BaseSettings):
     database_url: str = Field(
         default_factory=default_database_url,
         repr=False,  # it may hold a password
+        pattern=r"^(sqlite(\+pysqlite)?:///.+|postgres(ql)?(\+psycopg)?://.+)$",
         description="sqlite:///FILE or postgresql+psycopg://USER@HOST/DATABASE",
     )
     hosts: Annotated[tuple[str, ...], NoDecode] = Field(
-        LOOPBACK, description="names that requests may call this host by, separated by commas"
+        default=LOOPBACK, description="names that requests may call this host by, separated by commas"
     )
-    max_body_mb: float = Field(32.0, gt=0, le=4096, description="largest body, inflated [MB]")
+    max_body_mb: float = Field(default=32.0, gt=0, le=4096, description="largest body, inflated [MB]")
     receive_deadline_s: float = Field(
-        20.0, gt=0, description="time for a request's head, and for each 20 kB of its body [s]"
+        default=20.0, gt=0, description="time for a head, and for each 20 kB of a body [s]"
     )
-    max_connections: int = Field(1000, ge=1, description="connections at a time; more get 503 [1]")
-    migrate_at_start: bool = Field(True, description="bring the store's tables up to date when serving starts")
-    log_level: Literal["debug", "info", "warning", "error"] = Field("info", description="least level logged")
+    max_connections: int = Field(default=1000, ge=1, description="connections at a time; more get 503 [1]")
+    migrate_at_start: bool = Field(default=True, description="bring the tables up to date before serving")
+    log_level: Literal["debug", "info", "warning", "error"] = Field(
+        default="info", description="least level logged: debug, info, warning or error"
+    )
 
     @field_validator("hosts", mode="before")
     @classmethod
@@ -64,6 +69,16 @@ class Settings(BaseSettings):
     def is_sqlite(self) -> bool:
         """Whether the store is the embedded one, which takes one process at a time."""
         return self.database_url.startswith("sqlite")
+
+
+def from_environment() -> Settings:
+    """The settings of this process; ``ValueError`` names what cannot be, never its value."""
+    try:
+        return Settings()
+    except ValidationError as refused:
+        errors = refused.errors(include_url=False, include_input=False)
+        named = "; ".join(f"{PREFIX}{str(error['loc'][0]).upper()}: {error['msg']}" for error in errors)
+        raise ValueError(f"a setting cannot be: {named}") from None
 
 
 def without_password(url: str) -> str:

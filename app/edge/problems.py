@@ -31,7 +31,7 @@ class ProblemField(BaseModel):
     )
     code: str = Field(description="Stable word for the kind of mistake.", examples=["no_offset"])
     detail: str = Field(description="A sentence.", examples=["Input should have timezone info"])
-    index: int | None = Field(None, description="Row of a batch, from 0.", examples=[17])
+    index: int | None = Field(default=None, description="Row of a batch, from 0.", examples=[17])
 
 
 class Problem(BaseModel):
@@ -87,9 +87,7 @@ def problem_response(
         detail=detail,
         instance=f"urn:brimbook:request:{scope.get('state', {}).get('request_id', 'unknown')}",
         code=code,
-        errors=[
-            ProblemField(pointer=e.pointer, code=e.code, detail=e.detail, index=e.index) for e in errors
-        ],
+        errors=[ProblemField(pointer=e.pointer, code=e.code, detail=e.detail, index=e.index) for e in errors],
     )
     return Response(
         document.model_dump_json(exclude_none=True), status, dict(headers or {}), media_type=MEDIA_TYPE
@@ -129,11 +127,11 @@ def _app_error(request: Request, error: Exception) -> Response:
 
 
 def _unavailable(request: Request, _: Exception) -> Response:
-    return answer(request.scope, Unavailable("The store cannot be reached now; nothing was changed. Try again."))
+    return answer(request.scope, Unavailable("The store cannot be reached now; try the same again."))
 
 
 def _full(request: Request, _: Exception) -> Response:
-    detail = "The disk of the store is full; nothing of this request was kept. Free some room, then send it again."
+    detail = "The disk of the store is full. Free some room, then send the same again."
     return answer(request.scope, StorageFull(detail))
 
 
