@@ -48,7 +48,7 @@ APP_ARROWS = {
     "api": WIRE | {"app.api", HANDLE},
     "pages": WIRE | {"app.pages", HANDLE},
     "main": {"app.api", "app.pages", "app.edge", "app.errors", "app.settings", "app.clock",
-             "app.store.engine"},
+             "app.store.engine", "models.errors.ModelError"},
     "cli": {"app.main", "app.services", "app.schemas", "app.errors", "app.settings", "app.clock",
             "app.store.engine", "demo_data"},
     "worker": {"app.services", "app.errors", "app.settings", "app.clock", "app.store.engine"},
@@ -59,8 +59,8 @@ LIBRARIES = {
     "clock": set(),
     "schemas": {"pydantic", "pydantic_core", "annotated_types", "typing_extensions"},
     "store": {"sqlalchemy", "alembic", "psycopg"},
-    "services": {"numpy", "pydantic", "pint"},
-    "edge": {"fastapi", "starlette", "pydantic", "pydantic_core"},
+    "services": {"numpy", "pydantic", "pint", "sqlalchemy.Connection"},  # passed on; SQL stands in store
+    "edge": {"fastapi", "starlette", "pydantic", "pydantic_core", "uvicorn"},
     "api": {"fastapi", "starlette", "pydantic"},
     "pages": {"fastapi", "starlette"},
     "main": {"fastapi", "starlette"},
@@ -111,8 +111,8 @@ def app_follows_the_arrows(source: Source) -> Iterator[Finding]:
         if root in (*PACKAGES, "tests"):
             if not within(name, APP_ARROWS[room]):
                 yield line, f"arrow: app/{room} may not import {name}"
-        elif root not in sys.stdlib_module_names and root not in LIBRARIES[room]:
-            yield line, f"arrow: app/{room} may not know the library {root}"
+        elif root not in sys.stdlib_module_names and not within(name, LIBRARIES[room]):
+            yield line, f"arrow: app/{room} may not know {name}"
 
 
 def migrations_stand_alone(source: Source) -> Iterator[Finding]:
@@ -241,6 +241,14 @@ def only_services_open_the_store(source: Source) -> Iterator[Finding]:
             yield call.lineno, f"{called}() opens the store: services do that"
 
 
+def sql_stands_in_the_store(source: Source) -> Iterator[Finding]:
+    if source.package not in ("app", "demo_data") or source.parts[1:2] == ("store",):
+        return
+    for call, called in source.calls():
+        if called in ("execute", "executemany", "exec_driver_sql", "scalar", "scalars"):
+            yield call.lineno, f"{called}(): SQL stands in app/store only"
+
+
 def rows_are_never_changed(source: Source) -> Iterator[Finding]:
     if source.package not in ("app", "demo_data") or source.path in MUTABLE:
         return
@@ -328,6 +336,7 @@ RULES: tuple[Rule, ...] = (
     names_say_something,
     only_the_engine_commits,
     only_services_open_the_store,
+    sql_stands_in_the_store,
     rows_are_never_changed,
 )
 
@@ -396,7 +405,7 @@ OFFENCES: tuple[tuple[Rule, str, str], ...] = (
     (app_follows_the_arrows, "app/store/x.py", "from models.units import kelvin\n"),
     (app_follows_the_arrows, "app/schemas/x.py", "import numpy as np\n"),
     (app_follows_the_arrows, "app/services/x.py", "from app.api.vessels import router\n"),
-    (app_follows_the_arrows, "app/services/x.py", "import sqlalchemy as sa\n"),
+    (app_follows_the_arrows, "app/services/x.py", "from sqlalchemy import select\n"),
     (app_follows_the_arrows, "app/errors.py", "from fastapi import Request\n"),
     (app_follows_the_arrows, "app/odds.py", ""),
     (migrations_stand_alone, "migrations/versions/one.py", "from app.store.tables import METADATA\n"),
@@ -412,6 +421,7 @@ OFFENCES: tuple[tuple[Rule, str, str], ...] = (
     (only_the_engine_commits, "app/store/x.py", "c.exec_driver_sql('COMMIT')\n"),
     (only_the_engine_commits, ENGINE, "def f(c):\n    c.commit()\n    c.commit()\n"),
     (only_services_open_the_store, "app/api/x.py", "with store.writing('s'):\n    pass\n"),
+    (sql_stands_in_the_store, "app/services/x.py", "connection.execute(q)\n"),
     (rows_are_never_changed, "app/store/x.py", "from sqlalchemy import update\nupdate(t)\n"),
     (rows_are_never_changed, "app/store/x.py", "import sqlalchemy as sa\nsa.delete(t)\n"),
     (rows_are_never_changed, "app/store/x.py", "t.delete().where(t.c.a == 1)\n"),
@@ -442,6 +452,8 @@ INNOCENT: tuple[tuple[Rule, str, str], ...] = (
     (names_say_something, "app/store/database.py", ""),
     (only_the_engine_commits, ENGINE, "def f(c):\n    c.begin()\n    c.commit()\n"),
     (only_services_open_the_store, "app/services/x.py", "with store.writing('s'):\n    pass\n"),
+    (app_follows_the_arrows, "app/services/x.py", "from sqlalchemy import Connection\n"),
+    (sql_stands_in_the_store, "app/store/x.py", "connection.execute(q)\n"),
     (rows_are_never_changed, "app/store/x.py", "found.update(other)\nclient.delete('/x')\n"),
     (rows_are_never_changed, "app/store/due.py", "from sqlalchemy import update\nupdate(t)\n"),
 )

@@ -145,24 +145,31 @@ def echoes(comment: str) -> Iterator[str]:
                 yield from ends
 
 
+def extent(source: Source, node: ast.AST) -> range:
+    """Lines of a function, a class or the whole module."""
+    last = getattr(node, "end_lineno", None) or len(source.text.splitlines())
+    return range(getattr(node, "lineno", 1), last + 1)
+
+
 def every_equation_is_sourced_and_echoed(source: Source) -> Iterator[Finding]:
+    """An equation is echoed in its own function, or in one that numbers no equation the same."""
     if source.package != "models":
         return
     echoed = [(line, number) for line, comment in source.comments() for number in echoes(comment)]
-    numbered = [number for _, text in docstrings(source) for number in equations(text)]
-    for node, text in docstrings(source):
-        first = getattr(node, "lineno", 1)
-        name = getattr(node, "name", "the module")
-        if equations(text) and not any(
-            "".join(lines).strip() for lines in [sections(text).get("References", [])]
-        ):
-            yield first, f"{name}: numbered equations need a References section"
-        for number in equations(text):
-            last = getattr(node, "end_lineno", None) or len(source.text.splitlines())
-            inside = any(first <= line <= last and number == other for line, other in echoed)
-            elsewhere = numbered.count(number) == 1 and any(number == other for _, other in echoed)
-            if not (inside or elsewhere):
-                yield first, f"{name}: equation ({number}) is echoed by no `# eq. {number}`"
+    owners = [(node, text, equations(text)) for node, text in docstrings(source)]
+    for node, text, numbers in owners:
+        here, name = extent(source, node), getattr(node, "name", "the module")
+        if numbers and not "".join(sections(text).get("References", [])).strip():
+            yield here.start, f"{name}: numbered equations need a References section"
+        for number in numbers:
+            others = [
+                extent(source, other) for other, _, theirs in owners if other is not node and number in theirs
+            ]
+            taken = [lines for lines in others if not set(here) <= set(lines)]
+            lines = [line for line, echo in echoed if echo == number]
+            if not any(line in here or not any(line in other for other in taken) for line in lines):
+                yield here.start, f"{name}: equation ({number}) is echoed by no `# eq. {number}`"
+    numbered = {number for _, _, numbers in owners for number in numbers}
     for line, comment in source.comments():
         if re.match(r"eqs?\.", comment) and " of " not in comment:
             strangers = [number for number in echoes(comment) if number not in numbered]
@@ -291,3 +298,10 @@ def test_an_echo_counts_ranges_and_lists() -> None:
 def test_an_equation_of_one_function_is_not_echoed_by_another() -> None:
     twice = GOOD + GOOD.replace("def density", "def other").replace("# eq. 1", "")
     assert planted(every_equation_is_sourced_and_echoed, "models/x.py", twice)
+
+
+def test_a_private_function_may_echo_for_a_public_one() -> None:
+    moved = GOOD.replace("mass / volume + offset  # eq. 1", "_ratio(mass, volume) + offset")
+    helper = "\ndef _ratio(mass, volume):\n    return mass / volume  # eq. 1\n"
+    assert planted(every_equation_is_sourced_and_echoed, "models/x.py", moved)
+    assert planted(every_equation_is_sourced_and_echoed, "models/x.py", moved + helper) == []
