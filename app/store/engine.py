@@ -13,7 +13,6 @@ from __future__ import annotations
 import errno
 import hashlib
 import sqlite3
-import threading
 import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager, nullcontext
@@ -36,15 +35,15 @@ class StoreError(Exception):
     """Base of what the store refuses."""
 
 
-class StoreUnavailable(StoreError):
+class StoreUnavailable(StoreError):  # noqa: N818
     """The database cannot be reached now; the same request may succeed later."""
 
 
-class DiskFull(StoreError):
+class DiskFull(StoreError):  # noqa: N818
     """The database's disk is full; nothing of the transaction was kept."""
 
 
-class UnknownSite(StoreError):
+class UnknownSite(StoreError):  # noqa: N818
     """Nobody defined this site."""
 
 
@@ -85,8 +84,7 @@ class Store:
         self._engine = engine
         self._lock = lock
         self._now = now
-        self._months: set[int] = set()  # partitions seen by app/store/months.py
-        self._months_lock = threading.Lock()
+        self.months: set[int] = set()  # partitions that are known to be there; see app/store/months.py
 
     @classmethod
     def open(cls, url: str, now: Callable[[], int] = system_clock) -> Store:
@@ -111,7 +109,7 @@ class Store:
         """Bring the schema up to date; several processes may ask at once, one of them does it."""
         from app.store.schema import upgrade  # alembic takes 0.2 s to import, and only this needs it
 
-        with self.transaction(lock_key=_key("migrations")) as connection:
+        with self.transaction(lock_key=name_key("migrations")) as connection:
             upgrade(connection)
 
     @contextmanager
@@ -132,7 +130,7 @@ class Store:
         ``actor``, ``deed`` and ``request`` (its id) are the audit. Without ``create`` a site that does
         not exist raises ``UnknownSite``.
         """
-        with self.transaction(lock_key=_key(f"site {site}")) as connection:
+        with self.transaction(lock_key=name_key(f"site {site}")) as connection:
             found = connection.scalar(sa.select(SITE.c.site_id).where(SITE.c.name == site))
             if found is None and not create:
                 raise UnknownSite(site)
@@ -143,7 +141,8 @@ class Store:
             now = self._now()
             recorded_at = now if newest is None else max(now, newest + 1)
             audit = {"actor": actor, "deed": deed, "request": request}
-            connection.execute(sa.insert(RECORDING), {"site_id": site_id, "recorded_at": recorded_at, **audit})
+            row = {"site_id": site_id, "recorded_at": recorded_at, **audit}
+            connection.execute(sa.insert(RECORDING), row)
             yield Writing(self, connection, site, site_id, recorded_at, found is None)
 
     @contextmanager
@@ -164,7 +163,7 @@ class Store:
 
     def _make_site(self, connection: Connection, name: str) -> int:
         if self.dialect == "postgresql":
-            wait_for_turn(connection, _key("sites"))
+            wait_for_turn(connection, name_key("sites"))
         newest = connection.scalar(sa.select(sa.func.max(SITE.c.site_id))) or 0
         connection.execute(sa.insert(SITE), {"site_id": newest + 1, "name": name})
         return int(newest) + 1
@@ -178,7 +177,7 @@ def wait_for_turn(connection: Connection, lock_key: int) -> None:
     connection.execute(turn, {"wait": f"{WAIT_S}s", "key": lock_key})
 
 
-def _key(name: str) -> int:
+def name_key(name: str) -> int:
     """64 bits of a name; should two names collide they only wait for each other."""
     return int.from_bytes(hashlib.sha256(f"brimbook {name}".encode()).digest()[:8], "big", signed=True)
 

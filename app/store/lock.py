@@ -13,11 +13,11 @@ from pathlib import Path
 POLL_S = 0.002
 
 
-class LockTimeout(Exception):
+class LockTimeout(Exception):  # noqa: N818
     """Another writer kept the lock for longer than this one could wait."""
 
 
-class LockUnusable(Exception):
+class LockUnusable(Exception):  # noqa: N818
     """The lock file cannot be made or opened; the cause says why."""
 
 

@@ -8,6 +8,8 @@ tree. Columns of ``reading`` stand in the order that packs without padding on Po
 
 from __future__ import annotations
 
+from typing import Any
+
 import sqlalchemy as sa
 
 METADATA = sa.MetaData()
@@ -43,7 +45,7 @@ QUANTITIES: dict[str, int] = {
 QUANTITY_NAMES: dict[int, str] = {number: name for name, number in QUANTITIES.items()}
 
 # Few values that hold until they are replaced: they live in one unpartitioned table, so that the newest
-# of years ago is still one seek.
+# of years ago is still one seek. Their series have negative numbers, which is how a series tells its table.
 LABORATORY: frozenset[str] = frozenset({
     "free_water_level_m", "observed_density_kg_m3", "observed_density_temperature_c",
     "observed_density_pressure_kpa_abs", "observed_density_by", "sediment_water_pct", "density_basis",
@@ -85,12 +87,12 @@ def body() -> sa.types.TypeEngine[str]:
     return sa.Text().with_variant(sa.TEXT(), "sqlite")
 
 
-def key(name: str, kind: sa.types.TypeEngine[object]) -> sa.Column[object]:
+def key(name: str, kind: sa.types.TypeEngine[Any]) -> sa.Column[Any]:
     """A column of the primary key; numbers are given by us, never by the database."""
     return sa.Column(name, kind, primary_key=True, autoincrement=False, nullable=False)
 
 
-def must(name: str, kind: sa.types.TypeEngine[object]) -> sa.Column[object]:
+def must(name: str, kind: sa.types.TypeEngine[Any]) -> sa.Column[Any]:
     """A column that is never NULL."""
     return sa.Column(name, kind, nullable=False)
 
@@ -215,6 +217,6 @@ SIGN_IN = sa.Table(
 )  # fmt: skip
 
 
-def table_of(quantity: str) -> sa.Table:
-    """Where the values of a quantity live."""
-    return ANALYSIS if quantity in LABORATORY else READING
+def table_of(series_id: int) -> sa.Table:
+    """Where the values of a series live."""
+    return ANALYSIS if series_id < 0 else READING

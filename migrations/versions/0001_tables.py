@@ -5,6 +5,8 @@ Revision: 0001
 
 from __future__ import annotations
 
+from typing import Any
+
 import sqlalchemy as sa
 from alembic import op
 
@@ -24,11 +26,11 @@ STRICT = {"sqlite_strict": True}
 CLUSTERED = {"sqlite_strict": True, "sqlite_with_rowid": False}
 
 
-def key(name: str, kind: sa.types.TypeEngine[object]) -> sa.Column[object]:
+def key(name: str, kind: sa.types.TypeEngine[Any]) -> sa.Column[Any]:
     return sa.Column(name, kind, primary_key=True, autoincrement=False, nullable=False)
 
 
-def must(name: str, kind: sa.types.TypeEngine[object]) -> sa.Column[object]:
+def must(name: str, kind: sa.types.TypeEngine[Any]) -> sa.Column[Any]:
     return sa.Column(name, kind, nullable=False)
 
 

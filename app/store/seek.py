@@ -1,0 +1,107 @@
+"""The statements whose plan is fixed by hand, for each database: every wanted row is a seek, never a scan.
+
+A list of what is wanted goes in as one parameter (JSON on SQLite, arrays on PostgreSQL). The order of the
+join is an instruction in all of them: CROSS JOIN after a materialised list on SQLite, LATERAL with a LIMIT
+or OFFSET on PostgreSQL; a plan that starts from the values reads all of them. Bounds on ``taken_at`` that
+hold for the whole list are parameters, so that PostgreSQL leaves out the months beyond them.
+"""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Sequence
+from functools import cache
+from typing import Any
+
+import sqlalchemy as sa
+from sqlalchemy.engine import Connection
+
+from app.store.tables import BAD
+
+# The revision that counts at an instant of series {series}: the newest that was known.
+_KNOWN_REVISION = """(SELECT max(n.revision) FROM {table} n
+    WHERE n.site_id = :site AND n.series_id = {series} AND n.taken_at = {instant} {bounds}
+      AND n.recorded_at <= :known)"""
+_USABLE = f"s.quality < {BAD} AND s.recorded_at <= :known"
+
+_SQLITE_LIST = """WITH w(series_id, a, b) AS MATERIALIZED (
+    SELECT json_extract(value, '$[0]'), json_extract(value, '$[1]'), json_extract(value, '$[2]')
+    FROM json_each(:wanted))"""
+_POSTGRESQL_LIST = """unnest(CAST(:series AS integer[]), CAST(:a AS bigint[]), CAST(:b AS bigint[]))
+    AS w(series_id, a, b)"""
+_BOUNDS = "AND {row}.taken_at >= :lo AND {row}.taken_at <= :hi"
+
+Wanted = Sequence[tuple[int, int, int]]  # a series and two instants
+
+
+def touched(connection: Connection, table: str, site_id: int, wanted: Wanted) -> set[int]:
+    """The series that have any value from the first instant to the second."""
+    within = f"s.taken_at >= w.a AND s.taken_at <= w.b {_BOUNDS.format(row='s')}"
+    any_value = f"""EXISTS (
+        SELECT 1 FROM {table} s WHERE s.site_id = :site AND s.series_id = w.series_id AND {within})"""
+    source = "w" if connection.dialect.name == "sqlite" else _POSTGRESQL_LIST
+    prefix = _SQLITE_LIST if connection.dialect.name == "sqlite" else ""
+    query = _text(f"{prefix} SELECT w.series_id FROM {source} WHERE {any_value}")
+    return set(connection.scalars(query, _parameters(connection, site_id, wanted)))
+
+
+def revisions(connection: Connection, table: str, site_id: int, keys: Sequence[tuple[int, int]]) -> Sequence[Any]:
+    """Every revision of the keys, in order.
+
+    A row is (series, instant, revision, recorded_at, value, cited_id, quality).
+    """
+    columns = "s.series_id, s.taken_at, s.revision, s.recorded_at, s.value, s.cited_id, s.quality"
+    bounds = _BOUNDS.format(row="s")
+    where = f"s.site_id = :site AND s.series_id = w.series_id AND s.taken_at = w.a {bounds}"
+    if connection.dialect.name == "sqlite":
+        query = f"{_SQLITE_LIST} SELECT {columns} FROM w CROSS JOIN {table} s WHERE {where}"
+    else:
+        lateral = f"(SELECT {columns} FROM {table} s WHERE {where} OFFSET 0)"
+        query = f"SELECT s.* FROM {_POSTGRESQL_LIST} CROSS JOIN LATERAL {lateral} s"
+    wanted = [(series, instant, instant) for series, instant in keys]
+    parameters = _parameters(connection, site_id, wanted)
+    return connection.execute(_text(f"{query} ORDER BY 1, 2, 3"), parameters).all()
+
+
+def neighbours(
+    connection: Connection, table: str, site_id: int, wanted: Wanted, known: int, *, newest: bool
+) -> Sequence[Any]:
+    """The newest (or the first) usable value of each series between its two instants, both included."""
+    query = _text(_neighbours(connection.dialect.name, table, newest))
+    return connection.execute(query, {**_parameters(connection, site_id, wanted), "known": known}).all()
+
+
+@cache
+def _neighbours(dialect: str, table: str, newest: bool) -> str:
+    order = "DESC" if newest else "ASC"
+    bounds = _BOUNDS.format(row="n") if dialect == "postgresql" else ""
+    revision = _KNOWN_REVISION.format(table=table, series="w.series_id", instant="s.taken_at", bounds=bounds)
+    within = f"""s.site_id = :site AND s.series_id = w.series_id AND s.taken_at >= w.a AND s.taken_at <= w.b
+        {_BOUNDS.format(row="s")} AND {_USABLE} AND s.revision = {revision}"""
+    columns = "s.taken_at, s.value, s.cited_id, s.quality, s.revision, s.recorded_at"
+    answer = "r.series_id, r.taken_at, r.value, c.body, r.quality, r.revision, r.recorded_at"
+    cited = "LEFT JOIN cited c ON c.site_id = :site AND c.cited_id = r.cited_id"
+    if dialect == "postgresql":
+        one = f"WHERE {within} ORDER BY s.taken_at {order} LIMIT 1"
+        lateral = f"(SELECT w.series_id, {columns} FROM {table} s {one})"
+        return f"SELECT {answer} FROM {_POSTGRESQL_LIST} CROSS JOIN LATERAL {lateral} r {cited}"
+    # No LATERAL on SQLite: find the instant, then the row.
+    instant = f"(SELECT s.taken_at FROM {table} s WHERE {within} ORDER BY s.taken_at {order} LIMIT 1)"
+    revision = _KNOWN_REVISION.format(table=table, series="x.series_id", instant="x.instant", bounds="")
+    return f"""{_SQLITE_LIST}, x(series_id, instant) AS MATERIALIZED (SELECT w.series_id, {instant} FROM w)
+        SELECT {answer} FROM x CROSS JOIN {table} r {cited}
+        WHERE r.site_id = :site AND r.series_id = x.series_id AND r.taken_at = x.instant
+          AND r.revision = {revision}"""
+
+
+@cache
+def _text(query: str) -> sa.TextClause:
+    return sa.text(query)
+
+
+def _parameters(connection: Connection, site_id: int, wanted: Wanted) -> dict[str, Any]:
+    bounds = {"site": site_id, "lo": min(row[1] for row in wanted), "hi": max(row[2] for row in wanted)}
+    if connection.dialect.name == "sqlite":
+        return {**bounds, "wanted": json.dumps(wanted)}
+    series, first, last = zip(*wanted, strict=True)
+    return {**bounds, "series": list(series), "a": list(first), "b": list(last)}
