@@ -15,9 +15,9 @@ What counts as a constant:
 - never 0.0, which 1 % does not change, nor a number of the method instead of the physics: a name that ends
   as in ``NUMERICAL``. How many were left out for their name is printed.
 
-A nudge is felt if a test fails, cannot be collected, or does not end within ``--limit`` seconds. The tests
-of a module are its mirror, then the files of tests/models and tests/published that import it. A module
-without a mirror (data only) takes the mirrors of the modules that import it.
+A nudge is felt if a test fails, cannot be collected, or does not end within ``--limit`` seconds. A module's
+own tests are its mirror and the files of tests/models and tests/published that import it; what they
+do not feel is tried on the mirrors of the modules that import it, and counted apart ("by users").
 """
 
 from __future__ import annotations
@@ -37,6 +37,7 @@ from collections.abc import Iterator
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 from functools import cache
+from itertools import repeat
 from multiprocessing import get_context
 from pathlib import Path
 
@@ -229,18 +230,16 @@ def readers(path: str) -> list[str]:
     return [str(module.relative_to(ROOT)) for module in modules if Path(path).name in module.read_text()]
 
 
-def tests_of(path: str) -> list[str]:
-    """Test files that should feel a file of models/, the mirror first."""
-    modules = [path] if path.endswith(".py") else readers(path)
-    chosen = [mirror(module) for module in modules if (ROOT / mirror(module)).is_file()]
-    if not chosen:
-        users = [user for user in code("models") if imported(user) & set(modules)]
-        chosen = [mirror(user) for user in users if (ROOT / mirror(user)).is_file()]
-    for test in [*code("tests/models"), *code("tests/published")]:
-        if imported(test) & set(modules):
-            chosen.append(test)
-    chosen += [test for module in modules for test in FURTHER.get(module, ())]
-    return list(dict.fromkeys(chosen))
+def tests_of(path: str) -> tuple[list[str], list[str]]:
+    """Test files that should feel a file of models/, and those that feel it by way of its users."""
+    modules = {path} if path.endswith(".py") else set(readers(path))
+    own = [mirror(module) for module in modules]
+    own += [test for test in [*code("tests/models"), *code("tests/published")] if imported(test) & modules]
+    own += [test for module in modules for test in FURTHER.get(module, ())]
+    users = [mirror(user) for user in code("models") if imported(user) & modules]
+    first = [test for test in dict.fromkeys(own) if (ROOT / test).is_file()]
+    second = [test for test in dict.fromkeys(users) if (ROOT / test).is_file() and test not in first]
+    return first, second
 
 
 # --- nudging ------------------------------------------------------------------------------------
@@ -293,24 +292,28 @@ def pytest_code(tests: list[str]) -> int:
     return int(pytest.main(["-x", "-q", "-p", "no:cacheprovider", "--tb=no", "-W", early, *tests]))
 
 
-def baseline(tests: list[str], limit: int) -> int:
-    return run_tests(tests, limit, write=True)
+def baseline(test: str, limit: int) -> bool:
+    """Whether a test file passes, and tests anything, on the tree as it is."""
+    return run_tests([test], limit, write=True) == 0
 
 
-def felt(number: Number, tests: list[str], limit: int) -> bool:
-    """Whether any test fails when this number is 1 % larger."""
+def felt(number: Number, tests: tuple[list[str], list[str]], limit: int) -> int:
+    """Which tests fail when this number is 1 % larger: 1 its own, 2 those of its users, 0 none."""
     file = TREE / number.path
     before, stamp = file.read_bytes(), file.stat()
     nudged = repr(number.value * NUDGE).encode()
     file.write_bytes(before[: number.start] + nudged + before[number.end :])
     try:
-        answer = run_tests(tests, limit, write=False)
+        for circle, names in enumerate(tests, 1):
+            answer = run_tests(names, limit, write=False) if names else 0
+            if answer not in (0, 1, 2, HUNG):
+                raise RuntimeError(f"pytest ended with {answer} for {number.label}")
+            if answer:
+                return circle
     finally:
         file.write_bytes(before)
         os.utime(file, ns=(stamp.st_atime_ns, stamp.st_mtime_ns))
-    if answer not in (0, 1, 2, HUNG):
-        raise RuntimeError(f"pytest ended with {answer} for {number.label}")
-    return answer != 0
+    return 0
 
 
 def libraries_of_tests() -> tuple[str, ...]:
@@ -325,41 +328,43 @@ def libraries_of_tests() -> tuple[str, ...]:
     return tuple(sorted(wanted))
 
 
-def audit(chosen: list[Number], jobs: int, limit: int) -> tuple[dict[Number, bool], dict[str, str]]:
-    """What was felt, and the files that could not be judged with the reason."""
+def audit(chosen: list[Number], jobs: int, limit: int) -> tuple[dict[Number, int], list[str]]:
+    """Who felt each number, and what could not be judged with the reason."""
     tests = {path: tests_of(path) for path in {number.path for number in chosen}}
-    refused = {path: "no test imports it" for path, names in tests.items() if not names}
+    named = sorted({test for circles in tests.values() for names in circles for test in names})
     with tempfile.TemporaryDirectory() as home:
-        context = get_context("fork")
         prepared = (home, libraries_of_tests())
-        with ProcessPoolExecutor(jobs, context, initializer=prepare, initargs=prepared) as pool:
-            started = {path: pool.submit(baseline, names, 600) for path, names in tests.items() if names}
-            for path, first in started.items():
-                if first.result() != 0:
-                    refused[path] = f"its tests do not pass as they are: {' '.join(tests[path])}"
-            judged = [number for number in chosen if number.path not in refused]
-            runs = {number: pool.submit(felt, number, tests[number.path], limit) for number in judged}
-            results = {}
-            for done, (number, run) in enumerate(runs.items(), 1):
-                results[number] = run.result()
-                print(f"\r{done}/{len(runs)}", end="", file=sys.stderr, flush=True)
-            print("\r", end="", file=sys.stderr)
-    return results, refused
+        with ProcessPoolExecutor(jobs, get_context("fork"), initializer=prepare, initargs=prepared) as pool:
+            passes = dict(zip(named, pool.map(baseline, named, repeat(600)), strict=True))
+            fit = {
+                path: tuple([n for n in names if passes[n]] for names in both) for path, both in tests.items()
+            }
+            judged = [number for number in chosen if any(fit[number.path])]
+            results: dict[Number, int] = {}
+            answers = pool.map(felt, judged, [fit[number.path] for number in judged], repeat(limit))
+            for done, (number, circle) in enumerate(zip(judged, answers, strict=True), 1):
+                results[number] = circle
+                print(f"\r{done}/{len(judged)} ", end="", file=sys.stderr, flush=True)
+    print("\r", end="", file=sys.stderr)
+    failing = [f"{test}: does not pass as it is, not used" for test in named if not passes[test]]
+    return results, failing + [f"{path}: no test to feel it" for path in sorted(fit) if not any(fit[path])]
 
 
-def table(results: dict[Number, bool], refused: dict[str, str]) -> str:
-    lines = [f"{'file':44} {'numbers':>7} {'felt':>6} {'unfelt':>6} {'felt %':>7}"]
-    paths = sorted({number.path for number in results})
-    for path in paths:
-        mine = [known for number, known in results.items() if number.path == path]
-        share = 100.0 * sum(mine) / len(mine)
-        lines.append(f"{path:44} {len(mine):7} {sum(mine):6} {len(mine) - sum(mine):6} {share:7.1f}")
-    total, known = len(results), sum(results.values())
-    if total:
-        lines.append(f"{'all':44} {total:7} {known:6} {total - known:6} {100.0 * known / total:7.1f}")
-    lines += [f"unfelt: {number.label}" for number, known in results.items() if not known]
-    lines += [f"not judged: {path}: {reason}" for path, reason in sorted(refused.items())]
-    return "\n".join(lines)
+def row(title: str, circles: list[int]) -> str:
+    own, users, none = (circles.count(circle) for circle in (1, 2, 0))
+    return (
+        f"{title:36} {len(circles):7} {own:8} {users:9} {none:6} {100.0 * (own + users) / len(circles):7.1f}"
+    )
+
+
+def table(results: dict[Number, int], refused: list[str]) -> str:
+    lines = [f"{'file':36} {'numbers':>7} {'by own':>8} {'by users':>9} {'unfelt':>6} {'felt %':>7}"]
+    for path in sorted({number.path for number in results}):
+        lines.append(row(path, [circle for number, circle in results.items() if number.path == path]))
+    if results:
+        lines.append(row("all", list(results.values())))
+    lines += [f"unfelt: {number.label}" for number, circle in results.items() if not circle]
+    return "\n".join([*lines, *(f"not judged: {reason}" for reason in refused)])
 
 
 def arguments() -> argparse.Namespace:
@@ -390,7 +395,7 @@ def main() -> int:
     print(f"{len(kept)} numbers; {left} left out, whose names say method and not physics")
     if chosen.list:
         for number in kept:
-            print(number.label, "<-", " ".join(tests_of(number.path)) or "no test")
+            print(number.label, "<-", " ".join(tests_of(number.path)[0]) or "no test of its own")
         return 0
     results, refused = audit(kept, chosen.jobs, chosen.limit)
     print(table(results, refused))
