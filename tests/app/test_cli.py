@@ -133,17 +133,12 @@ def wait_for(port: int, process: subprocess.Popen[str]) -> None:
     pytest.fail("the server did not start")
 
 
-def closed_after(port: int, *parts: bytes, pause: float = 0.1) -> float:
-    """Seconds until the server closes a connection that sends these parts, then waits."""
+def closed_after(port: int, sent: bytes) -> float:
+    """Seconds until the server closes a connection that sends this and then waits."""
     started = time.monotonic()
     with socket.create_connection(("127.0.0.1", port), 10) as connection:
-        try:
-            for part in parts:
-                connection.sendall(part)
-                time.sleep(pause)
-            while connection.recv(4096):
-                pass
-        except ConnectionError:
+        connection.sendall(sent)
+        while connection.recv(4096):
             pass
     return time.monotonic() - started
 
@@ -165,3 +160,8 @@ def test_a_port_in_use_is_70(store: str, capsys: pytest.CaptureFixture[str]) -> 
         words = [sys.executable, "-m", "app.cli", "serve", "--port", str(port)]
         second = subprocess.run(words, capture_output=True, timeout=60, cwd=ROOT)
     assert second.returncode == 70
+
+
+def test_the_deadline_that_was_set_is_the_one_that_is_kept(store: str) -> None:
+    with serving(store, BRIMBOOK_RECEIVE_DEADLINE_S="0.5") as (port, _):
+        assert 0.4 < closed_after(port, b"GET /health HT") < 5

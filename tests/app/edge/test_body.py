@@ -62,13 +62,12 @@ def test_json_is_read_however_its_type_is_written(client: TestClient, kind: str)
 
 
 def test_a_body_over_the_limit_is_refused_whether_its_length_is_announced_or_not(client: TestClient) -> None:
-    large = b'{"rows": []}' + b" " * LIMIT
+    def blocks(length: int) -> Iterator[bytes]:
+        for _ in range(length // 1000):
+            yield b" " * 1000
 
-    def blocks() -> Iterator[bytes]:
-        for start in range(0, len(large), 1000):
-            yield large[start : start + 1000]
-
-    for content in (large, blocks()):
+    over, far_over = LIMIT + 1000, 50 * LIMIT
+    for content in (b" " * over, blocks(over), b" " * far_over, blocks(far_over)):
         answer = client.post("/rows", content=content, headers=JSON)
         assert (answer.status_code, answer.json()["code"]) == (413, "too_large")
         assert answer.headers["content-type"] == "application/problem+json"
@@ -121,7 +120,7 @@ def test_gzip_is_inflated_up_to_the_limit_and_no_further(client: TestClient) -> 
         (row(lvl_m=1.0), 422, ["invalid", "/rows/0/lvl_m unknown_field"]),
         (row(vessel="TK 1"), 422, ["invalid", "/rows/0/vessel wrong_form"]),
         (row(shape={"kind": "cube"}), 422, ["invalid", "/rows/0/shape not_one_of"]),
-        (row(shape={"kind": "brick", "rows": [[1.0, None]]}), 422, ["invalid", "/rows/0/shape/rows/0/1 wrong_type"]),
+        (row(shape={"kind": "brick", "rows": [0]}), 422, ["invalid", "/rows/0/shape/rows/0 wrong_type"]),
     ],
 )  # fmt: skip
 def test_what_cannot_be_is_named_with_its_place(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import asyncio
+import socket
 from collections.abc import Awaitable, Callable
 from typing import Any
 
@@ -114,3 +115,31 @@ def test_a_request_on_a_kept_connection_has_the_deadline_too() -> None:
         return await rest(reader)
 
     assert talk(again) == b""
+
+
+def test_an_answer_does_not_wait_for_an_acknowledgement_on_a_socket_made_for_workers() -> None:
+    async def scene() -> int:
+        config = uvicorn.Config(
+            slow_answer, http=DeadlineProtocol, ws="none", lifespan="off", log_config=None
+        )
+        config.load()
+        made: list[DeadlineProtocol] = []
+
+        def make() -> DeadlineProtocol:
+            made.append(DeadlineProtocol(config, uvicorn.server.ServerState(), {}))
+            return made[0]
+
+        listening = socket.socket()  # as uvicorn makes the one that its workers share
+        listening.bind(("127.0.0.1", 0))
+        server = await asyncio.get_running_loop().create_server(make, sock=listening)
+        _, writer = await asyncio.open_connection(*listening.getsockname())
+        while not made or made[0].transport is None:
+            await asyncio.sleep(0.01)
+        option = made[0].transport.get_extra_info("socket").getsockopt(socket.IPPROTO_TCP, socket.TCP_NODELAY)
+        made[0].transport.close()
+        writer.close()
+        server.close()
+        await asyncio.sleep(0)
+        return int(option)
+
+    assert asyncio.run(scene()) == 1

@@ -13,7 +13,8 @@ def test_loopback_names_are_answered(client: TestClient, host: str) -> None:
 
 @pytest.mark.parametrize(
     "host",
-    ["evil.example", "localhost.evil.example", "127.0.0.1.evil.example", "", "localhost@evil.example", "[::1", "localhost:x", "localhost/x"],
+    ["evil.example", "localhost.evil.example", "127.0.0.1.evil.example", "localhost@evil.example", "", "[::1",
+     "localhost:x", "localhost/x"],
 )  # fmt: skip
 def test_another_host_is_misdirected(client: TestClient, host: str) -> None:
     answer = client.get("/things/a", headers={"Host": host})

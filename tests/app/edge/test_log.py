@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import asyncio
 import io
 import json
 import logging
@@ -9,8 +10,10 @@ import sys
 
 import pytest
 from fastapi.testclient import TestClient
+from starlette.requests import ClientDisconnect
+from starlette.types import Message, Receive, Scope, Send
 
-from app.edge.log import JsonLines, configure
+from app.edge.log import JsonLines, Requests, configure
 
 
 def test_a_record_is_one_line_of_json() -> None:
@@ -56,3 +59,39 @@ def test_the_log_goes_to_stderr_from_the_level_on(capsys: pytest.CaptureFixture[
         root.handlers = before[0]
         root.setLevel(before[1])
     assert [json.loads(line)["message"] for line in capsys.readouterr().err.splitlines()] == ["loud"]
+
+
+def test_a_client_that_leaves_is_no_fault(caplog: pytest.LogCaptureFixture) -> None:
+    sent: list[Message] = []
+
+    async def left(scope: Scope, receive: Receive, send: Send) -> None:
+        raise ClientDisconnect
+
+    async def receive() -> Message:
+        return {"type": "http.disconnect"}
+
+    async def send(message: Message) -> None:
+        sent.append(message)
+
+    caplog.set_level(logging.INFO, "brimbook")
+    asyncio.run(Requests(left)({"type": "http", "method": "POST", "path": "/x"}, receive, send))
+    assert sent == []
+    assert [record.levelname for record in caplog.records] == ["INFO", "INFO"]
+
+
+def test_an_answer_that_fails_half_way_is_cut_short() -> None:
+    sent: list[Message] = []
+
+    async def fails(scope: Scope, receive: Receive, send: Send) -> None:
+        await send({"type": "http.response.start", "status": 200, "headers": []})
+        raise RuntimeError("half way")
+
+    async def receive() -> Message:
+        return {"type": "http.disconnect"}
+
+    async def send(message: Message) -> None:
+        sent.append(message)
+
+    with pytest.raises(RuntimeError, match="half way"):
+        asyncio.run(Requests(fails)({"type": "http", "method": "GET", "path": "/x"}, receive, send))
+    assert [message["type"] for message in sent] == ["http.response.start"]
