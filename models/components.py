@@ -160,7 +160,7 @@ _TABLE = (
     ("water", "water", 18.01528, 647.096, 22064, 55.948, 0.3443, "water", 0, 0.0),
     ("dimethyl-ether", "dimethyl ether", 46.06844, 400.378, 5336.8, 168.35, 0.196, "ether", 0, 1.3),
     ("r134a", "1,1,1,2-tetrafluoroethane", 102.0309, 374.21, 4059.28, 199.32, 0.3268, "haloalkane", 0, 2.058),
-    ("chlorine", "chlorine", 70.906, 416.8654, 7642.4, 124.069, 0.07, "simple", 0, 0.0),
+    ("chlorine", "chlorine", 70.906, 416.8654, 7642.4, 124.069, 0.07, "polar", 0, 0.0),
     ("hydrogen-chloride", "hydrogen chloride", 36.46094, 324.68, 8313.5, 84.246, 0.129, "polar", 0, 0.0),
     ("methanol", "methanol", 32.04186, 513.38, 8215.85, 113.828, 0.5625, "methanol", 0, 0.0),
     ("ethanol", "ethanol", 46.06844, 514.71, 6268, 168.634, 0.646, "alkanol", 0, 1.69),

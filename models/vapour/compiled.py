@@ -115,7 +115,8 @@ def _polynomial(x: FloatArray, values: FloatArray) -> FloatArray:
     chebyshev = np.polynomial.chebyshev.chebvander(x, HIGHEST_DEGREE).T @ values * (2.0 / NODES)
     chebyshev[0] *= 0.5
     felt = np.flatnonzero(np.abs(chebyshev) > NEGLIGIBLE * np.abs(chebyshev).max(initial=0.0))
-    return np.polynomial.chebyshev.cheb2poly(chebyshev[: felt[-1] + 1] if len(felt) else chebyshev[:1])
+    kept = chebyshev[: felt[-1] + 1] if len(felt) else chebyshev[:1]
+    return np.asarray(np.polynomial.chebyshev.cheb2poly(kept), dtype=np.float64)
 
 
 def _correlated(mixture: VapourMixture) -> Compiled:
@@ -138,9 +139,9 @@ def _correlated(mixture: VapourMixture) -> Compiled:
 def _mixture_notes(mixture: VapourMixture) -> tuple[Note, ...]:
     if len(mixture.substances) == 1:
         return ()
-    method = "corresponding states of pairs, signed cube root of triples"
+    method = "corresponding states of pairs, reduced means of triples"
     reference = (
-        "Smith, Van Ness, Abbott, 7th ed., 2005, ch. 11; Orentlicher, Prausnitz, 1967; Meng, Duan, 2005"
+        "Smith, Van Ness, Abbott, 7th ed., 2005, ch. 11; Meng, Duan, 2005; Orentlicher, Prausnitz, 1967"
     )
     return (Note("pair coefficients", "B_ij, C_ijk", method, reference),)
 
@@ -149,6 +150,7 @@ def _fitted(mixture: VapourMixture) -> Compiled:
     """Fitted polynomials; in a mixture each pure departure from the correlation is carried into the pairs.
 
     ``B_ij = B_ij(correlation) + (D_i + D_j)/2`` summed over pairs is ``B(correlation) + sum y_i D_i``.
+    Of the third coefficients only those of like triples are fitted ones.
     """
     lowest, highest = _fitted_range(mixture)
     if lowest >= highest:
@@ -168,7 +170,7 @@ def _fitted(mixture: VapourMixture) -> Compiled:
                 correlated_coefficients((substance,), (1.0,), t, *methods),
             )
             second = second + fraction * (own[0] - correlated[0])
-            third = third + fraction * (own[1] - correlated[1])
+            third = third + fraction**3 * (own[1] - correlated[1])
     trust = fitted_trust(mixture.substances, mixture.fractions)
     method = f"fitted polynomial in 298.15 K/T - 1, {lowest:g} to {highest:g} K"
     notes = (

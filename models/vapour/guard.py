@@ -13,6 +13,7 @@ from enum import IntEnum
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
 from models.arrays import FloatArray
 from models.components import Component
@@ -49,26 +50,32 @@ SHORTENED: dict[tuple[str, int], tuple[float, float]] = {
     ("pressure", 2): (0.02, 1.59),
 }
 SHORTENED_ERROR = 0.0025
+OMITTED, OMITTED_COLD = 0.5, 0.1  # fourth virial coefficient over Vc cubed, and its growth in the cold
+COLD = 0.85  # reduced temperature below which a correlated B loses accuracy
+
+
+Value = float | NDArray[np.float64]
 
 
 class Trust(NamedTuple):
-    """Expanded relative uncertainty ``constant + linear ρr + quadratic ρr² + second |Bρ|/ψ``, and marks.
+    """Terms of the expanded uncertainty (``expanded_uncertainty``) and limits of the verdict (``judge``).
 
     ``lowest`` is the reduced temperature below which the answer is uncertain, ``doubtful`` is 1 where it
     always is. ``good`` and ``wide`` are the reduced densities of ``LIMITS``; a shortened form adds 0.25 %
     at ``short``, growing with ``power``. Each is a number, or an array of one a row.
     """
 
-    constant: float
-    linear: float
-    quadratic: float
-    second: float
-    lowest: float
-    doubtful: float
-    good: float = 0.2
-    wide: float = 0.3
-    short: float = np.inf
-    power: float = 1.0
+    constant: Value
+    linear: Value
+    quadratic: Value
+    second: Value
+    omitted: Value = 1.0
+    lowest: Value = 0.0
+    doubtful: Value = 0.0
+    good: Value = 0.2
+    wide: Value = 0.3
+    short: Value = np.inf
+    power: Value = 1.0
 
     def of_form(self, form: str, terms: int) -> Trust:
         """The same coefficients in one of the forms of ``LIMITS``. [1]"""
@@ -77,7 +84,7 @@ class Trust(NamedTuple):
         return self._replace(good=good, wide=wide, short=short, power=power)
 
 
-MEASURED = Trust(0.0003, 0.0, 0.04, 0.02, 0.0, 0.0)  # 2 % of B: a good measurement's class
+MEASURED = Trust(0.0003, 0.0, 0.04, 0.02)  # 2 % of B: a good measurement's class
 
 
 def fitted_trust(components: Sequence[Component], mole_fractions: Sequence[float]) -> Trust:
@@ -96,7 +103,8 @@ def fitted_trust(components: Sequence[Component], mole_fractions: Sequence[float
         Expanded uncertainty and marks. [1]
     """
     if len(components) == 1:
-        return Trust(0.0003, 0.0, FITTED[components[0].id].growth / 100.0, 0.0, 0.0, 0.0)
+        fit = FITTED[components[0].id]
+        return Trust(0.0003, 0.0, fit.growth / 100.0, 0.0, fit.omitted)
     correlated = correlated_trust(components, mole_fractions)
     return correlated._replace(lowest=0.0, doubtful=0.0)
 
@@ -119,17 +127,18 @@ def correlated_trust(components: Sequence[Component], mole_fractions: Sequence[f
     polar = sum(y for c, y in zip(components, mole_fractions, strict=True) if c.polar)
     quantum = sum(y for c, y in zip(components, mole_fractions, strict=True) if c.quantum)
     doubtful = float(polar > NOTICEABLE_FRACTION or quantum > NOTICEABLE_FRACTION)
-    lowest = LOWEST_REDUCED_TEMPERATURE
-    if polar > NOTICEABLE_FRACTION:
-        return Trust(0.004, 0.06, 0.0, 0.03, lowest, doubtful)
-    if quantum > NOTICEABLE_FRACTION:
-        return Trust(0.001, 0.06, 0.0, 0.0, lowest, doubtful)
-    if len(components) == 1:
-        return Trust(0.001, 0.01, 0.0, 0.0, lowest, doubtful)
     pairs = [(c, d) for i, c in enumerate(components) for d in components[i + 1 :]]
-    if all(pair_interaction(c, d)[1] for c, d in pairs):
-        return Trust(0.0015, 0.02, 0.0, 0.0, lowest, doubtful)
-    return Trust(0.0025, 0.06, 0.0, 0.0, lowest, doubtful)
+    if polar > NOTICEABLE_FRACTION:
+        trust = Trust(0.004, 0.06, 0.0, 0.03)
+    elif quantum > NOTICEABLE_FRACTION:
+        trust = Trust(0.001, 0.11, 0.0, 0.0)
+    elif not pairs:
+        trust = Trust(0.001, 0.02, 0.0, 0.0)
+    elif all(pair_interaction(c, d)[1] for c, d in pairs):
+        trust = Trust(0.0015, 0.02, 0.0, 0.0)
+    else:
+        trust = Trust(0.0025, 0.06, 0.0, 0.0)
+    return trust._replace(lowest=LOWEST_REDUCED_TEMPERATURE, doubtful=doubtful)
 
 
 def expanded_uncertainty(
@@ -156,23 +165,34 @@ def expanded_uncertainty(
 
     Notes
     -----
-    A correlation used below its lowest reduced temperature may be 0.2 of the critical volume off in B.
+    What the coefficients leave, growing near the spinodal and, for a correlation, with the cold; and the
+    fourth virial coefficient, which the series omits, by its size in reference equations::
+
+        U = k0 + k1 max(1, (0.85/Tr)^6) ρr/ψ + k2 ρr² + k3 |Bρ|/ψ + k4 (0.5 + 0.1/Tr^18) ρr³/ψ    (1)
+
+    References
+    ----------
+    .. [1] CoolProp 8.0.0 (HEOS): the sizes of B, C and D, and the departures that the k were set by.
     """
-    result = trust.constant + reduced_density * (trust.linear + trust.quadratic * reduced_density)
+    worth = 1.0 / np.maximum(psi, PSI_LEAST)
+    inverse = 1.0 / reduced_temperature
+    to_2 = inverse * inverse
+    to_6 = to_2 * to_2 * to_2
+    omitted = trust.omitted * (OMITTED + OMITTED_COLD * to_6 * to_6 * to_6)
+    squared = reduced_density * reduced_density
+    result = trust.constant + squared * (trust.quadratic + omitted * reduced_density * worth)  # eq. 1
+    if np.any(trust.linear):
+        colder = np.maximum(COLD**6 * to_6, 1.0)
+        result += trust.linear * colder * reduced_density * worth
     if np.any(trust.second):
-        result = result + trust.second * np.abs(second_by_density) / np.maximum(psi, PSI_LEAST)
-    if np.any(trust.lowest):
-        cold = reduced_temperature < trust.lowest
-        if cold.any():
-            result = result + np.where(cold, 0.2 * reduced_density, 0.0)
+        result += trust.second * np.abs(second_by_density) * worth
     if np.any(np.isfinite(trust.short)):
-        result = result + SHORTENED_ERROR * (reduced_density / trust.short) ** trust.power
-    return result
+        result += SHORTENED_ERROR * (reduced_density / trust.short) ** trust.power
+    return np.asarray(result)
 
 
 def judge(
-    trust: Trust, reduced_density: FloatArray, reduced_temperature: FloatArray,
-    psi: FloatArray,
+    trust: Trust, reduced_density: FloatArray, reduced_temperature: FloatArray, psi: FloatArray,
 ) -> np.ndarray[tuple[int, ...], np.dtype[np.int8]]:  # fmt: skip
     """Verdict on each density, from the model's own solution.
 

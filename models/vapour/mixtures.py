@@ -170,28 +170,35 @@ def correlated_coefficients(
 
     Notes
     -----
-    The cube root is signed: a pair's C may be negative below a reduced temperature of about 0.75::
+    The size of a triple is the geometric mean of its pairs' critical volumes, its reduced coefficient the
+    arithmetic mean of theirs::
 
-        B = sum_ij y_i y_j B_ij,   C = sum_ijk y_i y_j y_k (C_ij C_ik C_jk)^(1/3)        (1)
+        B = sum_ij y_i y_j B_ij,   C = sum_ijk y_i y_j y_k C_ijk                                      (1)
+        C_ijk = (V_ij V_ik V_jk)^(2/3) (C_ij/V_ij^2 + C_ik/V_ik^2 + C_jk/V_jk^2)/3                    (2)
 
-    The double and triple sums are a quadratic form and the trace of a matrix's cube.
+    Where the pairs' coefficients have one sign this is the cube root of their product [1]_ to second order
+    in their differences. That root has an infinite slope where a pair's C passes through zero, near a
+    reduced temperature of 0.75, and so would the mass's sensitivity to temperature; eq. 2 is smooth, the
+    same for a pure gas, and as close to the reference equations of ten mixtures or closer. The sums are a
+    quadratic form and the trace of a product of three matrices.
 
     References
     ----------
-    .. [1] H. Orentlicher, J. M. Prausnitz, Can. J. Chem. Eng. 45 (1967) 373-378: eq. 1 for C.
+    .. [1] H. Orentlicher, J. M. Prausnitz, Can. J. Chem. Eng. 45 (1967) 373-378.
     """
     y, t = as_floats(mole_fractions, temperature)
     count = len(components)
     own = [constants_at(substance, t) for substance in components]
-    second, root = np.empty((len(t), count, count)), np.empty((len(t), count, count))
+    second, size, third = (np.empty((len(t), count, count)) for _ in range(3))
     for i in range(count):
         for j in range(i, count):
             pair = own[i]
             if i != j:
                 pair = pair_constants(own[i], own[j], pair_interaction(components[i], components[j])[0])
-            tc, pc, _, omega, a, b = pair
+            tc, pc, vc, omega, a, b = pair
             second[:, i, j] = second[:, j, i] = second_virial(second_method, t, tc, pc, omega, a, b)
-            root[:, i, j] = root[:, j, i] = np.cbrt(third_virial(third_method, t, tc, pc, omega))
-    weighted = np.sqrt(y)[:, None] * root * np.sqrt(y)
-    third = np.einsum("tij,tji->t", weighted @ weighted, weighted)  # eq. 1
-    return np.einsum("tij,i,j->t", second, y, y), third
+            size[:, i, j] = size[:, j, i] = np.cbrt(vc * vc)
+            third[:, i, j] = third[:, j, i] = third_virial(third_method, t, tc, pc, omega) / (vc * vc)
+    weighted = np.sqrt(y)[:, None] * size * np.sqrt(y)
+    total = np.einsum("tij,tji->t", weighted @ weighted, weighted * third)  # eq. 2
+    return np.einsum("tij,i,j->t", second, y, y), total  # eq. 1

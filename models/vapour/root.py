@@ -79,15 +79,16 @@ def vapour_root(
     .. [1] W. H. Press et al., "Numerical Recipes", 3rd ed., Cambridge, 2007, section 9.4.
     """
     p = ideal_density
+    second, third = as_floats(second, third)
     spinodal = spinodal_density(second, third)
     with np.errstate(invalid="ignore", over="ignore"):
-        limit = spinodal * (1.0 + spinodal * (second + spinodal * np.asarray(third)))
+        limit = spinodal * (1.0 + spinodal * (second + spinodal * third))
     limit = np.where(np.isfinite(spinodal), limit, np.inf)
     missing = limit < p
     b, c = np.asarray(second * p), np.asarray(third * (p * p))
     highest = np.minimum(spinodal / np.maximum(p, 1e-300), LARGEST_RATIO)
     z = 1.0 / np.maximum(1.0 + b + c - b * b, 1.0 / highest)
-    last = np.inf
+    last: FloatArray = np.full(b.shape, np.inf)
     with np.errstate(divide="ignore", invalid="ignore"):
         for _ in range(NEWTON_STEPS):
             step = (((c * z + b) * z + 1.0) * z - 1.0) / ((3.0 * c * z + 2.0 * b) * z + 1.0)  # eq. 1
@@ -96,7 +97,7 @@ def vapour_root(
             z = following
             if np.max(last, initial=0.0) < TOLERANCE:
                 break
-    left = ~(np.asarray(last) < TOLERANCE) & ~missing
+    left = ~(last < TOLERANCE) & ~missing
     if left.any():
         z = np.array(z)
         z[left] = _bracketed(b[left], c[left], highest[left])

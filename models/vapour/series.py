@@ -228,8 +228,17 @@ class VapourColumns:
             columns, verdict[block] = self._block(p[block], t[block], own)
             for target, column in zip(out, columns, strict=True):
                 target[block] = column
-        columns = [column.reshape(shape) for column in out]
-        return VapourState(*columns[:7], verdict.reshape(shape), columns[7])
+        return VapourState(
+            density=out[0].reshape(shape),
+            compressibility=out[1].reshape(shape),
+            psi=out[2].reshape(shape),
+            reduced_density=out[3].reshape(shape),
+            pressure_sensitivity=out[4].reshape(shape),
+            temperature_sensitivity=out[5].reshape(shape),
+            model_uncertainty=out[6].reshape(shape),
+            verdict=verdict.reshape(shape),
+            spinodal_pressure=out[7].reshape(shape),
+        )
 
     def _block(
         self, p: FloatArray, t: FloatArray, row: Row
@@ -251,20 +260,21 @@ class VapourColumns:
                 solved = tuple(np.where(which, a, b) for a, b in zip(solved, other, strict=True))
         else:
             solved = _by_density(second, third, *slopes, p_ideal)
-        density, z, psi, by_p, by_t, missing, limit = solved
+        density, z, psi, by_p, by_t, no_root, limit = solved
+        missing = no_root > 0.0
         reduced = density * self.critical_volume[row]
         reduced_temperature = t / self.critical_temperature[row]
-        trust = Trust(*(column[row] for column in self.trust))
+        trust = Trust(*(np.asarray(column)[row] for column in self.trust))
         expanded = expanded_uncertainty(trust, reduced, reduced_temperature, second * density, psi)
         verdict = judge(trust, reduced, reduced_temperature, psi)
-        verdict[np.asarray(missing, dtype=bool)] = Verdict.NO_VAPOUR_ROOT
+        verdict[missing] = Verdict.NO_VAPOUR_ROOT
         verdict[outside] = Verdict.OUTSIDE_RANGE
         refused = verdict >= Verdict.REFUSED
         density = density * self.molar_mass[row]
         columns = [density, z, psi, reduced, by_p, by_t, 0.5 * expanded]
         if refused.any():
             columns[0] = np.where(refused, np.nan, density)
-            if any_outside or np.any(missing):
+            if any_outside or missing.any():
                 unknown = verdict >= Verdict.NO_VAPOUR_ROOT
                 columns[1:] = [np.where(unknown, np.nan, column) for column in columns[1:]]
         spinodal = np.where(np.isfinite(limit) & ~outside, limit * GAS_CONSTANT * t, np.nan)
@@ -325,7 +335,7 @@ def _by_density(
     psi = z + b + 2.0 * c
     safe = np.where(missing, 1.0, psi) if missing.any() else psi
     by_t = -(z + density * (second_slope + density * third_slope)) / safe  # eq. 2
-    return density, z, psi, z / safe, by_t, missing, limit  # eq. 1
+    return density, z, psi, z / safe, by_t, missing.astype(np.float64), limit  # eq. 1
 
 
 def _by_pressure(
@@ -343,7 +353,7 @@ def _by_pressure(
     by_third_slope = (third_slope - 2.0 * second * second_slope) * p * p - 2.0 * by_third
     by_t = -1.0 - (b_slope + np.where(terms == 3, by_third_slope, 0.0)) / safe  # eq. 4
     psi = safe / np.where(missing, 1.0, by_p)
-    return p / safe, z, psi, by_p, by_t, missing, np.full(p.shape, np.inf)
+    return p / safe, z, psi, by_p, by_t, missing.astype(np.float64), np.full_like(p, np.inf)
 
 
 def _stacked(polynomials: Sequence[FloatArray]) -> FloatArray:
