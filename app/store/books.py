@@ -133,7 +133,8 @@ def closing_at(connection: Connection, site_id: int, instant: int, known: int) -
 
 def newest_closing(connection: Connection, site_id: int) -> int | None:
     """The end of the last closed period."""
-    return connection.scalar(sa.select(sa.func.max(_B.closing)).where(_B.site_id == site_id))
+    last: int | None = connection.scalar(sa.select(sa.func.max(_B.closing)).where(_B.site_id == site_id))
+    return last
 
 
 def vessels_of(connection: Connection, site_id: int, book: Book) -> list[Night]:
@@ -147,7 +148,7 @@ def vessels_of(connection: Connection, site_id: int, book: Book) -> list[Night]:
 def nights(
     connection: Connection, site_id: int, vessel: str, lo: int, hi: int, known: int
 ) -> list[Night]:
-    """A vessel's closing inventories after ``lo`` and not after ``hi``, at each book's last known revision."""
+    """A vessel's closing inventories after ``lo`` and not after ``hi``, by the last known revisions."""
     query = (
         _nights(site_id)
         .join(BOOK, sa.and_(_B.site_id == _V.site_id, _B.opening == _V.opening, _B.closing == _V.closing,
@@ -163,8 +164,9 @@ def _nights(site_id: int) -> sa.Select[Any]:
     return sa.select(*columns).where(_V.site_id == site_id)
 
 
-def _night(row: sa.Row[Any]) -> Night:
-    return Night(*row[:6], bool(row[6]))
+def _night(row: Sequence[Any]) -> Night:
+    vessel, opening, closing, number, mass_kg, parts, flagged = row
+    return Night(vessel, opening, closing, number, mass_kg, parts, bool(flagged))
 
 
 def _last_known(known: int) -> sa.ScalarSelect[Any]:

@@ -94,8 +94,9 @@ def revisions(connection: Connection, site_id: int, kind: str, name: str, known:
 
 
 def listing(
-    connection: Connection, site_id: int, kind: str, at: int, known: int, *, after: str = "", limit: int = 1000
-) -> tuple[list[Definition], str | None]:
+    connection: Connection, site_id: int, kind: str, at: int, known: int, *,
+    after: str = "", limit: int = 1000,
+) -> tuple[list[Definition], str | None]:  # fmt: skip
     """A page of the bodies in force, by name from the one after ``after`` on, and the next cursor."""
     defined = (
         sa.select(_C.name)

@@ -151,6 +151,7 @@ class Store:
         held = self._lock.held() if self._lock is not None else nullcontext()
         with _translated(), held, self._engine.connect() as connection:
             connection = connection.execution_options(brimbook="write")
+            connection.begin()  # now, not at the first statement: alembic commits what it begins itself
             if self.dialect == "postgresql":
                 wait_for_turn(connection, lock_key)
             yield connection

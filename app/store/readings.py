@@ -233,7 +233,7 @@ def course(
     connection: Connection, site_id: int, series_ids: Sequence[int], lo: int, hi: int, known: int
 ) -> Course:
     """Every usable value of some series between two instants (both included), as it was known."""
-    kept: list[sa.Row[Any]] = []
+    kept: list[Any] = []
     for table in (READING, ANALYSIS):
         own = [series_id for series_id in series_ids if table_of(series_id) is table]
         if own:
@@ -246,11 +246,13 @@ def course(
                 .order_by(c.series_id, c.taken_at, c.revision)
             )
             kept.extend(row for row in _last_revisions(connection.execute(query).all()) if row[4] < BAD)
-    columns: list[list[Any]] = [list(column) for column in zip(*kept, strict=True)] or [[] for _ in Course._fields]
-    return Course(*columns)
+    if not kept:
+        return Course([], [], [], [], [], [])
+    series, taken_at, value, text, quality, revision = (list(column) for column in zip(*kept, strict=True))
+    return Course(series, taken_at, value, text, quality, revision)
 
 
-def _last_revisions(rows: Sequence[sa.Row[Any]]) -> Iterator[sa.Row[Any]]:
+def _last_revisions(rows: Sequence[Any]) -> Iterator[Any]:
     """Of rows ordered by series, instant and revision, the last of each instant."""
     for row, following_row in zip(rows, [*rows[1:], None], strict=True):
         if following_row is None or row[1] != following_row[1] or row[0] != following_row[0]:

@@ -45,7 +45,9 @@ def touched(connection: Connection, table: str, site_id: int, wanted: Wanted) ->
     return set(connection.scalars(query, _parameters(connection, site_id, wanted)))
 
 
-def revisions(connection: Connection, table: str, site_id: int, keys: Sequence[tuple[int, int]]) -> Sequence[Any]:
+def revisions(
+    connection: Connection, table: str, site_id: int, keys: Sequence[tuple[int, int]]
+) -> Sequence[Any]:
     """Every revision of the keys, in order.
 
     A row is (series, instant, revision, recorded_at, value, cited_id, quality).

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any, Literal, NamedTuple
 
 import sqlalchemy as sa
@@ -107,5 +108,6 @@ def _overlap(site_id: int, lo: int, hi: int, known: int, void: bool) -> sa.Selec
     return query if void else query.where(_C.void == 0)
 
 
-def _transfer(row: sa.Row[Any]) -> Transfer:
-    return Transfer(*row[:5], bool(row[5]), bool(row[6]), row[7])
+def _transfer(row: Sequence[Any]) -> Transfer:
+    name, revision, recorded_at, started_at, ended_at, running, void, body = row
+    return Transfer(name, revision, recorded_at, started_at, ended_at, bool(running), bool(void), body)

@@ -18,7 +18,7 @@ depends_on = None
 INTEGER = sa.Integer()
 SMALL = sa.SmallInteger().with_variant(sa.INTEGER(), "sqlite")
 INSTANT = sa.BigInteger().with_variant(sa.INTEGER(), "sqlite")
-NUMBER = sa.Double().with_variant(sa.REAL(), "sqlite")
+NUMBER: sa.types.TypeEngine[float] = sa.Double().with_variant(sa.REAL(), "sqlite")
 WORD = sa.Text(collation="C").with_variant(sa.TEXT(), "sqlite")
 BODY = sa.Text().with_variant(sa.TEXT(), "sqlite")
 
