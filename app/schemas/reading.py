@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Annotated, Any, Literal, Self
+from typing import Annotated, Literal, Self
 
-from pydantic import ConfigDict, Discriminator, Field, Tag, TypeAdapter, ValidationError, model_validator
-from pydantic_core import from_json
+from pydantic import ConfigDict, Discriminator, Field, Tag, ValidationError, model_validator
 
-from app.schemas.errors import explain, field_of
+from app.schemas.batch import RowError, rows_in, validate_each
 from app.schemas.types import (
     QUANTITIES,
     UNTAGGED,
@@ -19,10 +18,12 @@ from app.schemas.types import (
     Id,
     Instant,
     Items,
+    Known,
     QualityWord,
     Quantity,
     Source,
     Text,
+    is_none,
     refusal,
 )
 
@@ -37,8 +38,6 @@ Quality = Annotated[
     UNTAGGED,
 ]
 
-ERRORS_LISTED = 1_000
-"""Errors of a batch that are listed; all are counted."""
 QUANTITIES_OF_SITE = frozenset({"ambient_temperature_c", "barometric_pressure_kpa_abs"})
 """What a reading without a vessel may hold."""
 _EITHER = (("level_m", "ullage_m"), ("pressure_kpa", "pressure_kpa_abs"))
@@ -46,6 +45,8 @@ _EITHER = (("level_m", "ullage_m"), ("pressure_kpa", "pressure_kpa_abs"))
 
 class Values(Body):
     """The quantities of a reading; each is kept on its own. Limits are what no vessel could pass."""
+
+    model_config = ConfigDict(json_schema_extra={"examples": [{"source": "radar", "level_m": 8.231}]})
 
     source: Source = Field(
         default="", description="Where the values come from, such as radar, hand or laboratory"
@@ -214,101 +215,54 @@ class ReadingBatch(Body):
     readings: Items[Reading] = Field(description="The rows, in the order in which they count")
 
 
-class RowError(Answer):
-    """One thing wrong with one row of a batch."""
+class StoredValue(Answer):
+    """One value of a reading, as stored."""
 
     model_config = ConfigDict(
         json_schema_extra={
             "examples": [
                 {
-                    "index": 17,
-                    "field": "liquid_temperature_c",
-                    "code": "out_of_range",
-                    "detail": "liquid_temperature_c is at most 1000 °C.",
-                }
-            ]
-        }
-    )
-
-    index: int = Field(ge=0, description="Position of the row in the batch, from 0")
-    field: str = Field(description="The field; empty where it is the row as a whole")
-    code: str = Field(description="Stable word for the kind of error")
-    detail: str = Field(description="One sentence: the field, its limit and its unit")
-
-
-class BatchAnswer(Answer):
-    """What became of a batch, counted in readings."""
-
-    model_config = ConfigDict(
-        json_schema_extra={
-            "examples": [
-                {
-                    "stored": 9982, "revised": 1, "unchanged": 0, "rejected": 17,
-                    "errors": [
-                        {
-                            "index": 17, "field": "liquid_temperature_c", "code": "out_of_range",
-                            "detail": "liquid_temperature_c is at most 1000 °C.",
-                        }
-                    ],
-                    "known_at": "2026-03-14T05:00:02.417311Z",
+                    "vessel": "tk-12", "quantity": "level_m", "source": "radar",
+                    "taken_at": "2026-03-14T05:00:00Z", "value": 8.231, "quality": "good",
+                    "recorded_at": "2026-03-14T05:00:02.417311Z", "revision": 1,
                 }
             ]
         }
     )  # fmt: skip
 
-    stored: int = Field(ge=0, description="Readings with a value that was new")
-    revised: int = Field(ge=0, description="Readings that gave a known value anew, and differently")
-    unchanged: int = Field(ge=0, description="Readings that said what was known")
-    rejected: int = Field(ge=0, description="Readings that were not kept")
-    errors: Items[RowError] = Field(description="Why; the first 1,000")
-    known_at: AnsweredInstant | None = Field(description="The latest record that the answer includes")
-
-
-_ROW = TypeAdapter(Reading)
-_ROWS = TypeAdapter(list[Reading])
+    vessel: str | None = Field(description="The vessel; null for the site's own")
+    quantity: Quantity = Field(description="The quantity; its name ends in its unit")
+    source: str = Field(description="Where the value comes from")
+    taken_at: AnsweredInstant = Field(description="When it was measured")
+    value: Known = Field(default=None, description="The value [unit of the quantity]")
+    composition: dict[str, float] | None = Field(
+        default=None, exclude_if=is_none, description="Mole fractions by component, of a composition [1]"
+    )
+    sample: str | None = Field(
+        default=None, exclude_if=is_none, description="The sample that the value cites"
+    )
+    quality: QualityWord = Field(description="Its quality; bad: withdrawn")
+    recorded_at: AnsweredInstant = Field(description="When it was recorded")
+    revision: int = Field(ge=1, description="1 for the first value of this instant, then counted up")
 
 
 def validate_rows(raw: Sequence[object]) -> tuple[list[tuple[int, Reading]], list[RowError]]:
-    """The good rows with their positions, and what is wrong with the others.
-
-    All rows at once first, which is the usual case; one by one where any of them is bad.
+    """Readings with their positions in the batch, and what is wrong with the rows that are none.
 
     Parameters
     ----------
     raw : sequence of object
         Rows as parsed from JSON, or put together from another format with the same types.
     """
-    try:
-        return list(enumerate(_ROWS.validate_python(list(raw)))), []
-    except ValidationError:
-        pass
-    rows: list[tuple[int, Reading]] = []
-    errors: list[RowError] = []
-    for index, one in enumerate(raw):
-        try:
-            rows.append((index, _ROW.validate_python(one)))
-        except ValidationError as refused:
-            errors.extend(
-                RowError(index=index, field=field_of(pointer), code=code, detail=detail)
-                for pointer, code, detail in explain(refused)
-            )
-    return rows, errors
-
-
-class _Envelope(Body):
-    """A batch whose rows are not looked at yet."""
-
-    readings: Items[Any]
+    return validate_each(Reading, raw)
 
 
 def validate_batch(text: bytes) -> tuple[list[tuple[int, Reading]], list[RowError]]:
     """Rows of a JSON batch: like ``validate_rows``, from the bytes of the body.
 
-    A body that is no JSON object with a list ``readings`` raises pydantic's ``ValidationError``.
+    A body that is no object with a list ``readings`` raises pydantic's ``ValidationError``.
     """
     try:
         return list(enumerate(ReadingBatch.model_validate_json(text).readings)), []
-    except ValidationError as refused:
-        if any(error["type"] == "json_invalid" for error in refused.errors(include_url=False)):
-            raise
-    return validate_rows(_Envelope.model_validate(from_json(text)).readings)
+    except ValidationError:
+        return validate_rows(rows_in(ReadingBatch, "readings", text))

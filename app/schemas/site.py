@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 from typing import Annotated, Self
+from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
-from pydantic import ConfigDict, Field, StringConstraints, model_validator
+from pydantic import AfterValidator, ConfigDict, Field, StringConstraints, model_validator
+from pydantic_core import PydanticCustomError
 
 from app.schemas.types import Body, Instant, Text, refusal
 
@@ -26,37 +28,31 @@ class ImbalanceLimit(Body):
         return self
 
 
-ZoneName = Annotated[
-    str, StringConstraints(pattern=r"^[A-Za-z][A-Za-z0-9_+-]*(/[A-Za-z0-9_+-]+)*$", max_length=64)
-]
+def _known_zone(name: str) -> str:
+    """A zone of the IANA data base; what a machine calls its own is no zone."""
+    try:
+        if name not in ("Factory", "localtime") and not name.startswith(("posix", "right/")):
+            ZoneInfo(name)
+            return name
+    except (ZoneInfoNotFoundError, ValueError, OSError):
+        pass
+    raise PydanticCustomError(
+        "unknown_zone", "time_zone is a name of the IANA data base, such as Europe/Oslo"
+    )
+
+
+ZONE_PATTERN = r"^[A-Za-z][A-Za-z0-9_+-]*(/[A-Za-z0-9_+-]+)*$"
+ZoneName = Annotated[str, StringConstraints(pattern=ZONE_PATTERN, max_length=64), AfterValidator(_known_zone)]
 LocalTime = Annotated[str, StringConstraints(pattern=r"^([01][0-9]|2[0-3]):[0-5][0-9]$")]
 
 
-class Site(Body):
-    """One site as defined from an instant on."""
+class Conditions(Body):
+    """The states that standard volumes refer to, and the air."""
 
     model_config = ConfigDict(
-        json_schema_extra={
-            "examples": [
-                {
-                    "name": "Northbank terminal",
-                    "time_zone": "Europe/Oslo",
-                    "day_starts_at": "06:00",
-                    "elevation_m": 12.0,
-                    "imbalance_limit": {"kg": 500.0, "pct_of_throughput": 0.1},
-                }
-            ]
-        }
+        json_schema_extra={"examples": [{"base_temperature_c": 15.0, "elevation_m": 12.0}]}
     )
 
-    name: Text = Field(description="Name for people")
-    time_zone: ZoneName = Field(description="Time zone by its IANA name, such as Europe/Oslo")
-    effective_from: Instant | None = Field(
-        default=None, description="From when this definition holds; the first may leave it out"
-    )
-    day_starts_at: LocalTime = Field(
-        default="06:00", description="Local time of day at which the site's day starts"
-    )
     base_temperature_c: float = Field(
         default=15.0, ge=-50, le=100, description="Temperature of standard volumes of liquid [°C]"
     )
@@ -81,6 +77,40 @@ class Site(Body):
         le=20,
         description="Standard uncertainty of the air's pressure, shared by all vessels [kPa]",
     )
+
+    @model_validator(mode="after")
+    def _one_atmosphere(self) -> Self:
+        if self.elevation_m is not None and self.atmospheric_pressure_kpa_abs is not None:
+            detail = "A site gives elevation_m or atmospheric_pressure_kpa_abs, not both"
+            raise refusal("one_of", detail, "atmospheric_pressure_kpa_abs")
+        return self
+
+
+class Site(Conditions):
+    """One site as defined from an instant on."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "name": "Northbank terminal",
+                    "time_zone": "Europe/Oslo",
+                    "day_starts_at": "06:00",
+                    "elevation_m": 12.0,
+                    "imbalance_limit": {"kg": 500.0, "pct_of_throughput": 0.1},
+                }
+            ]
+        }
+    )
+
+    name: Text = Field(description="Name for people")
+    time_zone: ZoneName = Field(description="Time zone by its IANA name, such as Europe/Oslo")
+    effective_from: Instant | None = Field(
+        default=None, description="From when this definition holds; the first may leave it out"
+    )
+    day_starts_at: LocalTime = Field(
+        default="06:00", description="Local time of day at which the site's day starts"
+    )
     false_alarms_per_month: float = Field(
         default=0.5,
         gt=0,
@@ -97,10 +127,3 @@ class Site(Body):
         le=7 * 86400,
         description="Wait after the end of a day before it is closed by itself [s]",
     )
-
-    @model_validator(mode="after")
-    def _one_atmosphere(self) -> Self:
-        if self.elevation_m is not None and self.atmospheric_pressure_kpa_abs is not None:
-            detail = "A site gives elevation_m or atmospheric_pressure_kpa_abs, not both"
-            raise refusal("one_of", detail, "atmospheric_pressure_kpa_abs")
-        return self

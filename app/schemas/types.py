@@ -195,6 +195,29 @@ def refusal(code: str, detail: str, *place: str | int) -> ValidationError:
     return ValidationError.from_exception_data("body", [error])
 
 
+# --- answers ------------------------------------------------------------------------------------
+
+
+def _null_for_missing(value: object) -> object:
+    return None if isinstance(value, float) and math.isnan(value) else value
+
+
+def is_none(value: object) -> bool:
+    """For ``Field(exclude_if=is_none)``: a block that was not asked for or not computed is absent."""
+    return value is None
+
+
+# A number of an answer. Missing is NaN in the models and null on the wire; infinite is neither.
+Known = Annotated[float | None, BeforeValidator(_null_for_missing)]
+Warned = Literal[
+    "two_sources", "sources_disagree", "input_uncertain", "input_assumed", "atmosphere_assumed",
+    "sample_predates_receipt", "water_predates_receipt", "roof_landing_zone", "level_unchanged",
+    "saturation_low", "saturation_high", "vapour_saturated", "vapour_left_out", "guard_wide", "guard_refused",
+    "outside_table", "outside_vessel", "outside_method", "liquid_full",
+]  # fmt: skip
+"""Codes of warnings."""
+
+
 # --- choices ------------------------------------------------------------------------------------
 
 
