@@ -18,7 +18,8 @@ from app.store.tables import METADATA
 
 CATALOGUE = {
     "columns": """SELECT c.relname, a.attnum, a.attname, a.attnotnull, l.collname,
-                         format_type(a.atttypid, a.atttypmod), pg_get_expr(d.adbin, d.adrelid), a.attidentity::text
+                         format_type(a.atttypid, a.atttypmod), pg_get_expr(d.adbin, d.adrelid),
+                         a.attidentity::text
                   FROM pg_attribute a JOIN pg_class c ON c.oid = a.attrelid
                   LEFT JOIN pg_collation l ON l.oid = a.attcollation
                   LEFT JOIN pg_attrdef d ON d.adrelid = c.oid AND d.adnum = a.attnum
