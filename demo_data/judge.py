@@ -11,6 +11,7 @@ import math
 from collections import defaultdict
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, replace
+from datetime import datetime
 from typing import Any
 
 import numpy as np
@@ -21,8 +22,16 @@ from demo_data.schedule import FIRST_DAY, LAST_DAY, instant
 from demo_data.terminal import METERS
 from demo_data.truth import Vessel
 
-AMBIENT_C, EXPANSION_SHARE, LOCAL_SPAN_M, PRESSURE_OPEN_KPA = 2.0, 0.02, 1.0, 0.2
+AMBIENT_C, BAROMETER_KPA, EXPANSION_SHARE, LOCAL_SPAN_M = 2.0, 0.1, 0.02, 1.0
 Parts = dict[str, float]
+Known = dict[str, float]
+Moves = list[tuple[str, str, float]]  # an input, the name of its error, one standard uncertainty
+INPUTS = {
+    "level_m": "level_m",
+    "liquid_temperature_c": "liquid_c",
+    "pressure_kpa": "gauge_kpa",
+    "vapour_temperature_c": "vapour_c",
+}
 
 
 @dataclass(frozen=True)
@@ -68,55 +77,77 @@ class Clerk:
     def __init__(self, book: Book, found: Mapping[str, Vessel], substances: Mapping[str, dict[str, Any]]) -> None:
         self.book, self.found, self.substances = book, found, substances
         self.shells = {key: hull(one.plan.body, as_tabulated=True) for key, one in found.items()}
-        self.winners = {key: self._series(key, one.plan.winner, "level_m" if one.liquid else "pressure_kpa")
-                        for key, one in found.items()}  # fmt: skip
+        self.winners = {
+            key: self._series(key, one.plan.winner, "level_m" if one.liquid else "pressure_kpa")
+            for key, one in found.items()
+        }
 
     def _series(self, vessel: str, source: str, quantity: str) -> Series:
         return next(s for s in self.book.series if (s.vessel, s.source) == (vessel, source) and quantity in s.columns)
 
     def mass(self, key: str, when_s: int) -> tuple[float, Parts]:
         """Mass of one vessel at a close and the parts of its uncertainty."""
-        vessel, winner = self.found[key], self.winners[key]
-        plan, parts = vessel.plan, defaultdict(float)
-        site = self.book.site
-        liquid, sample = self._liquid(key), self._sample(key, when_s)
-        known = {"ambient_c": at(site, "ambient_temperature_c", when_s)[0],
-                 "barometer_kpa": at(site, "barometric_pressure_kpa_abs", when_s)[0]}  # fmt: skip
-        moves: list[tuple[str, str, float]] = [("ambient_c", "ambient", AMBIENT_C), ("barometer_kpa", f"barometer:{when_s}", 0.1)]
-        for quantity, name in (("level_m", "level_m"), ("liquid_temperature_c", "liquid_c"),
-                               ("pressure_kpa", "gauge_kpa"), ("vapour_temperature_c", "vapour_c")):  # fmt: skip
-            if quantity in winner.columns:
-                known[name], read_s = at(winner, quantity, when_s)
-                said = declared(vessel, quantity, plan.winner)
-                owner = said.get("instrument", key)
-                moves += [(name, f"{quantity}:{owner}", said["systematic"]), (name, f"r:{key}:{quantity}:{read_s}", said["random"])]
-        if plan.water_m:
-            known["water_m"], read_s = at(self._series(key, "hand", "free_water_level_m"), "free_water_level_m", when_s)
-            moves.append(("water_m", f"r:{key}:water:{read_s}", 0.003))
-        if liquid and sample:
-            said = plan.body["instruments"]["observed_density_kg_m3"]
-            known["density_15"] = sample.density
-            warmth = 0.03 * sample.density * liquid.beta[0]
-            moves += [("density_15", f"density:{said['instrument']}", said["systematic"]), ("density_15", f"sample:{sample.id}", said["random"]),
-                      ("density_15", f"bath:{said['instrument']}", warmth)]  # fmt: skip
-        elif liquid:
-            body = self.substances[plan.substance]["liquid"]
-            known["density_15"] = body["density_kg_m3"]
-            moves.append(("density_15", f"substance:{plan.substance}", body["density_uncertainty_kg_m3"]))
+        vessel, liquid = self.found[key], self._liquid(key)
+        known, moves = self._read(key, when_s)
+        if liquid:
+            known["density_15"], more = self._density(key, when_s, liquid)
+            moves += more
         here = Conditions(**known)
-        shell, roof = self.shells[key], vessel.roof_kg
+        shell, roof, gas = self.shells[key], vessel.roof_kg, vessel.plan.gas
 
         def weigh(conditions: Conditions, content: Any = liquid) -> float:
-            return float(mass_kg(shell, content, plan.gas, roof, conditions))
+            return float(mass_kg(shell, content, gas, roof, conditions))
 
         mass = weigh(here)
+        parts: Parts = defaultdict(float)
         for name, error, sigma in moves:
             step = 1e-3 * sigma
             parts[error] += 1e3 * (weigh(replace(here, **{name: getattr(here, name) + step})) - mass)
         if liquid:
-            parts[f"expansion:{plan.substance}"] += weigh(here, replace(liquid, scale=1.0 + EXPANSION_SHARE)) - mass
+            drifted = replace(liquid, scale=1.0 + EXPANSION_SHARE)
+            parts[f"expansion:{vessel.plan.substance}"] += weigh(here, drifted) - mass
         self._capacity(key, mass + roof, here.level_m, parts)
         return mass, parts
+
+    def _read(self, key: str, when_s: int) -> tuple[Known, Moves]:
+        """What the instruments showed at a close, and how wrong each may be."""
+        vessel, winner, site = self.found[key], self.winners[key], self.book.site
+        known = {
+            "ambient_c": at(site, "ambient_temperature_c", when_s)[0],
+            "barometer_kpa": at(site, "barometric_pressure_kpa_abs", when_s)[0],
+        }
+        moves: Moves = [
+            ("ambient_c", "ambient", AMBIENT_C),
+            ("barometer_kpa", f"barometer:{when_s}", BAROMETER_KPA),
+        ]
+        for quantity in winner.columns:
+            name, said = INPUTS[quantity], declared(vessel, quantity, winner.source)
+            known[name], read_s = at(winner, quantity, when_s)
+            moves.append((name, f"{quantity}:{said.get('instrument', key)}", said["systematic"]))
+            moves.append((name, f"r:{key}:{quantity}:{read_s}", said["random"]))
+        if vessel.plan.water_m:
+            dip = self._series(key, "hand", "free_water_level_m")
+            known["water_m"], read_s = at(dip, "free_water_level_m", when_s)
+            random = declared(vessel, "free_water_level_m", "hand")["random"]
+            moves.append(("water_m", f"r:{key}:water:{read_s}", random))
+        return known, moves
+
+    def _density(self, key: str, when_s: int, liquid: Declared) -> tuple[float, Moves]:
+        """Density at 15 °C: the laboratory's last, or the declared one where no sample is taken."""
+        plan = self.found[key].plan
+        sample = self._sample(key, when_s)
+        if sample is None:
+            body = self.substances[plan.substance]["liquid"]
+            unknown = ("density_15", f"substance:{plan.substance}", body["density_uncertainty_kg_m3"])
+            return body["density_kg_m3"], [unknown]
+        said = plan.body["instruments"]
+        lab, bath = said["observed_density_kg_m3"], said["observed_density_temperature_c"]
+        warmth = bath["systematic"] * sample.density * liquid.beta[0]
+        return sample.density, [
+            ("density_15", f"density:{lab['instrument']}", lab["systematic"]),
+            ("density_15", f"sample:{sample.id}", lab["random"]),
+            ("density_15", f"bath:{bath['instrument']}", warmth),
+        ]
 
     def _capacity(self, key: str, mass: float, level: float, parts: Parts) -> None:
         """The table's error as a whole, and along the level by hats of 1 m with a variance of one."""
@@ -134,8 +165,11 @@ class Clerk:
         if body is None:
             return None
         beta = body["expansivity_per_k"]
-        return Declared(tuple(beta) if isinstance(beta, list) else (beta,), body["compressibility_per_kpa"],
-                        body.get("at_pressure_kpa_abs", ATMOSPHERE_KPA))  # fmt: skip
+        return Declared(
+            tuple(beta) if isinstance(beta, list) else (beta,),
+            body["compressibility_per_kpa"],
+            body.get("at_pressure_kpa_abs", ATMOSPHERE_KPA),
+        )
 
     def _sample(self, key: str, when_s: int) -> Sample | None:
         mine = [one for one in self.book.samples if one.vessel == key and one.taken_s <= when_s]
@@ -164,8 +198,10 @@ def share_of_day(one: Mapping[str, Any], opening: str, closing: str) -> float:
 def nights(book: Book, found: Mapping[str, Vessel], substances: Mapping[str, dict[str, Any]]) -> Iterator[Night]:
     """Every vessel's imbalance on every day of the month, physical less book: a loss is negative."""
     clerk = Clerk(book, found, substances)
-    stamped = [one | {name: _seconds(one[name]) for name in ("started_at", "ended_at")} for one in book.tickets]
-    masses = {(key, day): clerk.mass(key, instant(day, "06:00")) for key in found for day in range(FIRST_DAY, LAST_DAY + 2)}
+    stamped = [one | {name: sortable(one[name]) for name in ("started_at", "ended_at")} for one in book.tickets]
+    masses = {
+        (key, day): clerk.mass(key, instant(day, "06:00")) for key in found for day in range(FIRST_DAY, LAST_DAY + 2)
+    }
     for day in range(FIRST_DAY, LAST_DAY + 1):
         opening, closing = f"{instant(day, '06:00'):012d}", f"{instant(day + 1, '06:00'):012d}"
         tonight = [(one, share_of_day(one, opening, closing)) for one in stamped]
@@ -191,7 +227,6 @@ def nights(book: Book, found: Mapping[str, Vessel], substances: Mapping[str, dic
             yield Night(day, tuple(sorted(members)), total, math.sqrt(sum(kg * kg for kg in parts.values())))
 
 
-def _seconds(text: str) -> str:
-    from datetime import datetime
-
+def sortable(text: str) -> str:
+    """An instant as text whose order is that of time: local texts are not, when the clocks change."""
     return f"{int(datetime.fromisoformat(text).timestamp()):012d}"

@@ -42,13 +42,21 @@ from demo_data.judge import Night, nights
 from demo_data.measure import BIAS_FROM_S, BIAS_M, BIASED_TANK, TWICE_ENTERED, Book, Series, book
 from demo_data.schedule import FIRST_DAY, LAST_DAY, UNRECORDED_KG, Movement, instant, local_text, movements
 from demo_data.terminal import SITE, SITE_ID, meters, plans, substances
+from demo_data.terminal import vessels as definitions
 from demo_data.truth import Vessel, vessels
 
 SEED = 98  # of the first hundred, the one whose clean nights stay furthest below the alarm
 HERE = Path(__file__).resolve().parent
 FLAGGED = ((9, "tk-21"), (17, "tk-11"), (17, "tk-12"), (24, "tk-31"))
-ORDER = ("level_m", "liquid_temperature_c", "pressure_kpa", "vapour_temperature_c", "free_water_level_m",
-         "ambient_temperature_c", "barometric_pressure_kpa_abs")  # fmt: skip
+ORDER = (
+    "level_m",
+    "liquid_temperature_c",
+    "pressure_kpa",
+    "vapour_temperature_c",
+    "free_water_level_m",
+    "ambient_temperature_c",
+    "barometric_pressure_kpa_abs",
+)
 
 
 def month(seed: int = SEED) -> tuple[dict[str, Vessel], list[Movement], Book]:
@@ -61,7 +69,14 @@ def month(seed: int = SEED) -> tuple[dict[str, Vessel], list[Movement], Book]:
 def text_of(body: Any) -> str:
     """JSON with rows of a table, and other short lists of numbers, each on one line."""
     text = json.dumps(body, indent=2, ensure_ascii=False)
-    return re.sub(r"\[\s+(-?[\d.e+-]+(?:,\s+-?[\d.e+-]+)*)\s+\]", lambda m: "[" + re.sub(r"\s+", " ", m[1]) + "]", text) + "\n"
+    return (
+        re.sub(
+            r"\[\s+(-?[\d.e+-]+(?:,\s+-?[\d.e+-]+)*)\s+\]",
+            lambda m: "[" + re.sub(r"\s+", " ", m[1]) + "]",
+            text,
+        )
+        + "\n"
+    )
 
 
 def write_text(path: Path, text: str) -> None:
@@ -85,9 +100,13 @@ def csv_of(series: Iterable[Series]) -> str:
 
 def samples_csv(written: Book) -> str:
     """The laboratory's analyses."""
-    lines = ["vessel,taken_at,source,observed_density_kg_m3,observed_density_temperature_c,observed_density_by,sample,sample_holds_from"]
+    lines = [
+        "vessel,taken_at,source,observed_density_kg_m3,observed_density_temperature_c,observed_density_by,sample,sample_holds_from"
+    ]
     for one in sorted(written.samples, key=lambda sample: (sample.taken_s, sample.vessel)):
-        lines.append(f"{one.vessel},{local_text(one.taken_s)},lab,{one.density:.2f},15.0,digital,{one.id},{local_text(one.holds_from_s)}")
+        lines.append(
+            f"{one.vessel},{local_text(one.taken_s)},lab,{one.density:.2f},15.0,digital,{one.id},{local_text(one.holds_from_s)}"
+        )
     return "\n".join(lines) + "\n"
 
 
@@ -116,24 +135,46 @@ def key_of(found: Mapping[str, Vessel], written: Book) -> dict[str, Any]:
         "first_day": date_of(FIRST_DAY),
         "last_day": date_of(LAST_DAY),
         "faults": [
-            {"kind": "level_bias", "subject": BIASED_TANK, "size": BIAS_M * 1000.0, "unit": "mm", "onset": local_text(BIAS_FROM_S),
-             "first_night": date_of(9), "flagged": flags(closed, 9),
-             "note": "the gauge stays wrong, but only the night of the step is out of balance: later nights open and close with it"},
-            {"kind": "unrecorded_transfer", "subject": "tk-11 to tk-12", "size": UNRECORDED_KG, "unit": "kg",
-             "onset": local_text(instant(17, "22:30")), "first_night": date_of(17), "flagged": flags(closed, 17)},
-            {"kind": "duplicated_transfer", "subject": f"{TWICE_ENTERED}b", "size": 1.0, "unit": "ticket", "mass_kg": twice["mass_kg"],
-             "onset": twice["started_at"], "first_night": date_of(24), "flagged": flags(closed, 24),
-             "note": f"the same truck as {TWICE_ENTERED}; the other end is the road, which has no stock"},
+            {
+                "kind": "level_bias",
+                "subject": BIASED_TANK,
+                "size": BIAS_M * 1000.0,
+                "unit": "mm",
+                "onset": local_text(BIAS_FROM_S),
+                "first_night": date_of(9),
+                "flagged": flags(closed, 9),
+                "note": "only this night is out of balance: later nights open and close with the step",
+            },
+            {
+                "kind": "unrecorded_transfer",
+                "subject": "tk-11 to tk-12",
+                "size": UNRECORDED_KG,
+                "unit": "kg",
+                "onset": local_text(instant(17, "22:30")),
+                "first_night": date_of(17),
+                "flagged": flags(closed, 17),
+            },
+            {
+                "kind": "duplicated_transfer",
+                "subject": f"{TWICE_ENTERED}b",
+                "size": 1.0,
+                "unit": "ticket",
+                "mass_kg": twice["mass_kg"],
+                "onset": twice["started_at"],
+                "first_night": date_of(24),
+                "flagged": flags(closed, 24),
+                "note": f"the same truck as {TWICE_ENTERED}; the other end is the road, which has no stock",
+            },
         ],
         "clean_nights": {
             "judged": len(clean),
             "largest_score": round(max(clean), 2),
             "false_alarms_expected_per_month": SITE["false_alarms_per_month"],
-            "note": "errors are drawn as declared, and the seed is the one of a hundred whose largest clean score is smallest: "
+            "note": "errors are as declared; the seed is that of a hundred with the smallest largest score: "
             "here no clean night is to be flagged; with another seed 0.2 nights a month would be",
         },
         "judged_together": [{"day": date_of(30), "vessels": ["tk-11", "tk-12"], "because": "line-0330 is unmetered"}],
-    }  # fmt: skip
+    }
 
 
 def date_of(day: int) -> str:
@@ -144,7 +185,12 @@ def date_of(day: int) -> str:
 def flags(closed: Iterable[Night], day: int) -> list[dict[str, Any]]:
     """The vessels to be flagged on a day, with the imbalance that our own arithmetic finds."""
     return [
-        {"day": date_of(day), "vessel": one.vessels[0], "imbalance_kg": round(one.imbalance_kg), "score": round(one.score, 1)}
+        {
+            "day": date_of(day),
+            "vessel": one.vessels[0],
+            "imbalance_kg": round(one.imbalance_kg),
+            "score": round(one.score, 1),
+        }
         for one in closed
         if one.day == day and (day, one.vessels[0]) in FLAGGED
     ]
@@ -156,7 +202,7 @@ def write(folder: Path) -> None:
     site = folder / SITE_ID
     shutil.rmtree(site, ignore_errors=True)
     write_text(site / "site.json", text_of(SITE))
-    bodies = {"substances": substances(), "vessels": {key: one.body for key, one in plans().items()}, "meters": meters()}
+    bodies = {"substances": substances(), "vessels": definitions(), "meters": meters()}
     for kind, named in bodies.items():
         for key, body in named.items():
             write_text(site / kind / f"{key}.json", text_of(body))

@@ -20,12 +20,21 @@ from demo_data.truth import Vessel, Weather, stream
 
 BIASED_TANK, BIAS_M, BIAS_FROM_S = "tk-21", 0.018, instant(10, "02:20")
 TWICE_ENTERED = "road-k-0324-2"
-DIGITS = {"level_m": 4, "liquid_temperature_c": 2, "pressure_kpa": 2, "vapour_temperature_c": 2, "free_water_level_m": 3}
+DIGITS = {
+    "level_m": 4,
+    "liquid_temperature_c": 2,
+    "pressure_kpa": 2,
+    "vapour_temperature_c": 2,
+    "free_water_level_m": 3,
+}
 HAND_DIGITS = {**DIGITS, "level_m": 3, "liquid_temperature_c": 1}
 TRUE_NAMES = {
-    "level_m": "level_m", "liquid_temperature_c": "liquid_c", "pressure_kpa": "gauge_kpa",
-    "vapour_temperature_c": "vapour_c", "free_water_level_m": "water_m",
-}  # fmt: skip
+    "level_m": "level_m",
+    "liquid_temperature_c": "liquid_c",
+    "pressure_kpa": "gauge_kpa",
+    "vapour_temperature_c": "vapour_c",
+    "free_water_level_m": "water_m",
+}
 BEGINS_S, ENDS_S = instant(0, "17:00"), instant(32, "06:10")
 
 
@@ -63,9 +72,7 @@ class Book:
 def declared(vessel: Vessel, quantity: str, source: str) -> Mapping[str, Any]:
     """Uncertainties of a quantity as the vessel's body declares them for a source."""
     body = vessel.plan.body
-    own: dict[str, Any] = next(
-        (one.get("instruments", {}) for one in body["sources"] if one["source"] == source), {}
-    )
+    own: dict[str, Any] = next((one.get("instruments", {}) for one in body["sources"] if one["source"] == source), {})
     found: Mapping[str, Any] = own.get(quantity, body["instruments"][quantity])
     return found
 
@@ -88,7 +95,9 @@ def read(vessel: Vessel, source: str, at_s: Floats, quantities: Sequence[str], s
 def dips() -> Floats:
     """When tanks are dipped: before the close and after the day's work."""
     days = range(1, 33)
-    return np.asarray(sorted([instant(d - 1, "18:10") for d in days] + [instant(d, "05:50") for d in days]), dtype=float)
+    return np.asarray(
+        sorted([instant(d - 1, "18:10") for d in days] + [instant(d, "05:50") for d in days]), dtype=float
+    )
 
 
 def readings_of(vessel: Vessel, seed: int) -> list[Series]:
@@ -135,7 +144,10 @@ def site_readings(weather: Weather, seed: int) -> Series:
     screen = rng.standard_normal()
     ambient = weather.ambient_c(at_s) + screen + 0.2 * rng.standard_normal(len(at_s))
     barometer = weather.barometer_kpa(at_s) + 0.1 * rng.standard_normal(len(at_s))
-    columns = {"ambient_temperature_c": np.round(ambient, 1), "barometric_pressure_kpa_abs": np.round(barometer, 2)}
+    columns = {
+        "ambient_temperature_c": np.round(ambient, 1),
+        "barometric_pressure_kpa_abs": np.round(barometer, 2),
+    }
     return Series("", "weather station", at_s, columns)
 
 
@@ -160,8 +172,11 @@ def ticket(one: Movement, found: Mapping[str, Vessel], seed: int) -> dict[str, A
     carrier = found.get(one.source)
     cargo = next((r.density_cargo for v in found.values() for r in v.receipts if r.movement is one), 0.0)
     true = float(carrier.density_15(np.asarray([float(one.start_s)]))[0]) if carrier else cargo
-    written |= {"standard_volume_m3": round(quantity / true, 3), "density_kg_m3": round(true + 0.05 * rng.standard_normal(), 2),
-                "density_temperature_c": 15.0}  # fmt: skip
+    written |= {
+        "standard_volume_m3": round(quantity / true, 3),
+        "density_kg_m3": round(true + 0.05 * rng.standard_normal(), 2),
+        "density_temperature_c": 15.0,
+    }
     if one.progress_s:
         part = float(one.share(float(one.progress_s))) * quantity / true
         written["progress"] = [{"at": local_text(one.progress_s), "standard_volume_m3": round(part, 3)}]
@@ -183,5 +198,3 @@ def book(found: Mapping[str, Vessel], moved: Sequence[Movement], seed: int) -> B
             tickets.append({**tickets[-1], "id": f"{one.id}b"})
     weather = next(iter(found.values())).weather
     return Book(tuple(series), tuple(samples), site_readings(weather, seed), tuple(tickets))
-
-

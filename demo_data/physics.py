@@ -42,18 +42,26 @@ class Fluid:
 
 # Fitted with CoolProp 8 to the reference equations: propane, Lemmon, McLinden & Wagner (2009), largest
 # departure 1e-6 (liquid, 0 to 32 °C) and 1.6e-4 (vapour); n-butane, Bücker & Wagner (2006), 1e-7 and
-# 6e-5; nitrogen, Span et al. (2000), 5e-5 (-5 to 35 °C, 0.5 to 4 MPa); hydrogen, Leachman et al. (2009), 5e-6.
+# 6e-5; nitrogen, Span et al. (2000), to 4 MPa, 5e-5; hydrogen, Leachman et al. (2009), to 6 MPa, 5e-6.
 FLUIDS: dict[str, Fluid] = {
     "propane": Fluid(
         0.04409562,
-        ((-0.1766266, 0.1829946, -0.1079271), (-0.02093361, 0.1059565, -0.2626045), (-0.0206859, 0.0184124, 0.1449748)),
+        (
+            (-0.1766266, 0.1829946, -0.1079271),
+            (-0.02093361, 0.1059565, -0.2626045),
+            (-0.0206859, 0.0184124, 0.1449748),
+        ),
         (6.229503, -0.0028890668, -1.29078964e-05, -9.7127942e-08, -8.51203801e-10),
         (6.59511122, -2266.15525, -22216.4368, -37559397.3),
         5.13e-6,
     ),
     "n-butane": Fluid(
         0.0581222,
-        ((-0.3214342, 0.374737, -0.3183626), (-0.1212681, 0.3806058, -0.2064477), (-0.03884005, -0.3515752, 1.079053)),
+        (
+            (-0.3214342, 0.374737, -0.3183626),
+            (-0.1212681, 0.3806058, -0.2064477),
+            (-0.03884005, -0.3515752, 1.079053),
+        ),
         (6.37033315, -0.00192246692, -4.86755748e-06, -2.32233899e-08, -1.1413446e-10),
         (5.17131343, -2785.31069, -94888.0612, -19427457.5),
         2.66e-6,
@@ -64,7 +72,7 @@ FLUIDS: dict[str, Fluid] = {
     "hydrogen": Fluid(
         0.00201588, ((0.005976185, -0.001150826, -4.936674e-05), (1.715523e-05, -2.851385e-05, 2.328837e-05))
     ),
-}  # fmt: skip
+}
 
 
 def polynomial(coefficients: tuple[float, ...], x: Any) -> Any:
@@ -189,7 +197,10 @@ class Hull:
         """
         steel = liquid_c if self.insulated else (7.0 * liquid_c + ambient_c) / 8.0
         warm = 1.0 + self.expansion_per_k * (steel - 15.0)
-        across, along = warm * (1.0 + self.across_per_kpa * gauge_kpa), warm * (1.0 + self.along_per_kpa * gauge_kpa)
+        across, along = (
+            warm * (1.0 + self.across_per_kpa * gauge_kpa),
+            warm * (1.0 + self.along_per_kpa * gauge_kpa),
+        )
         return across**2 * along * self.volume(level / across), across**2 * along * self.capacity_m3
 
 
@@ -229,7 +240,11 @@ def hull(body: Mapping[str, Any], *, as_tabulated: bool = False) -> Hull:
         top, capacity = d, math.pi * d**2 / 4.0 * (length + 4.0 * head / 3.0)
     elif kind == "box":
         floor = shape["length_m"] * shape["width_m"]
-        volume, top, capacity = (lambda level: floor * np.asarray(level, dtype=float)), shape["height_m"], floor * shape["height_m"]
+        volume, top, capacity = (
+            (lambda level: floor * np.asarray(level, dtype=float)),
+            shape["height_m"],
+            floor * shape["height_m"],
+        )
     else:
         volume, top, capacity = (lambda level: 0.0 * np.asarray(level, dtype=float)), 0.0, shape["volume_m3"]
     return Hull(volume, capacity, top, shell.get("expansion_per_k", 0.0), shell.get("insulated", False), across, along)

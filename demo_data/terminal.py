@@ -51,15 +51,32 @@ def substances() -> dict[str, Body]:
     """Bodies of the substances by id."""
     bodies: dict[str, Body] = {}
     for key, (name, density, liquid) in LIQUIDS.items():
-        bodies[key] = {"name": name, "liquid": {
-            "model": "expansivity", "density_kg_m3": density, "density_uncertainty_kg_m3": 3.0, "at_temperature_c": 15.0,
-            "at_pressure_kpa_abs": 101.325, "expansivity_per_k": liquid.beta_per_k,
-            "compressibility_per_kpa": liquid.kappa_per_kpa}}  # fmt: skip
+        bodies[key] = {
+            "name": name,
+            "liquid": {
+                "model": "expansivity",
+                "density_kg_m3": density,
+                "density_uncertainty_kg_m3": 3.0,
+                "at_temperature_c": 15.0,
+                "at_pressure_kpa_abs": 101.325,
+                "expansivity_per_k": liquid.beta_per_k,
+                "compressibility_per_kpa": liquid.kappa_per_kpa,
+            },
+        }
     for key, (name, density, pressure, beta, kappa) in LIQUEFIED.items():
-        bodies[key] = {"name": name, "liquid": {
-            "model": "expansivity", "density_kg_m3": density, "density_uncertainty_kg_m3": 0.5, "at_temperature_c": 15.0,
-            "at_pressure_kpa_abs": pressure, "expansivity_per_k": beta, "compressibility_per_kpa": kappa},
-            "vapour": virial(key)}  # fmt: skip
+        bodies[key] = {
+            "name": name,
+            "liquid": {
+                "model": "expansivity",
+                "density_kg_m3": density,
+                "density_uncertainty_kg_m3": 0.5,
+                "at_temperature_c": 15.0,
+                "at_pressure_kpa_abs": pressure,
+                "expansivity_per_k": beta,
+                "compressibility_per_kpa": kappa,
+            },
+            "vapour": virial(key),
+        }
     for key, name in GASES.items():
         bodies[key] = {"name": name, "vapour": virial(key)}
     return bodies
@@ -119,22 +136,33 @@ def tank(name: str, substance: str, shape: Body, *, gauge: bool, capacity: tuple
     if not gauge:
         level = {"level_m": TAPE, "liquid_temperature_c": THERMOMETER}
     roof = "floating_roof" in more
-    age: Body = {"level_m": 900, "liquid_temperature_c": 1800} if gauge else {"level_m": 21600, "liquid_temperature_c": 21600}
+    age: Body = (
+        {"level_m": 900, "liquid_temperature_c": 1800} if gauge else {"level_m": 21600, "liquid_temperature_c": 21600}
+    )
     return {
-        "name": name, "substance": substance, "service": "in", "shape": shape, "shell": STEEL,
+        "name": name,
+        "substance": substance,
+        "service": "in",
+        "shape": shape,
+        "shell": STEEL,
         "vapour_space": {"kind": "none" if roof else "open"},
         "sources": [*([{"source": "radar"}] if gauge else []), dipped, {"source": "lab"}],
-        "instruments": {**level, "free_water_level_m": {"random": 0.003, "systematic": 0.0},
-                        "observed_density_kg_m3": LAB, "observed_density_temperature_c": LAB_BATH,
-                        "capacity_pct": {"systematic": capacity[0], "local": capacity[1]}},
+        "instruments": {
+            **level,
+            "free_water_level_m": {"random": 0.003, "systematic": 0.0},
+            "observed_density_kg_m3": LAB,
+            "observed_density_temperature_c": LAB_BATH,
+            "capacity_pct": {"systematic": capacity[0], "local": capacity[1]},
+        },
         "max_age_s": {**age, "free_water_level_m": None, "observed_density_kg_m3": None},
         "assumed": {"pressure_kpa": {"value": 0.0, "standard_uncertainty": 0.2}},
         **more,
-    }  # fmt: skip
+    }
 
 
-def pressure_vessel(name: str, substance: str, shape: Body, shell: Body, *, liquid: bool, span_kpa: float) -> Body:
+def pressure_vessel(name: str, substance: str, shape: Body, shell: Body, *, span_kpa: float) -> Body:
     """A closed vessel with transmitters: level and liquid temperature where there is liquid."""
+    liquid = substance in LIQUEFIED
     instruments: Body = {
         "pressure_kpa": {"random": 2e-4 * span_kpa, "systematic": 6e-4 * span_kpa},
         "vapour_temperature_c": {"random": 0.1, "systematic": 0.3},
@@ -144,25 +172,44 @@ def pressure_vessel(name: str, substance: str, shape: Body, shell: Body, *, liqu
         instruments["level_m"] = {"random": 0.001, "systematic": 0.002}
         instruments["liquid_temperature_c"] = {"random": 0.05, "systematic": 0.15}
     return {
-        "name": name, "substance": substance, "service": "in", "shape": shape, "shell": shell,
-        "vapour_space": {"kind": "product"}, "sources": [{"source": "transmitter"}], "instruments": instruments,
-        "max_age_s": 900 if liquid else 7200, "hand_gauging": False,
-    }  # fmt: skip
+        "name": name,
+        "substance": substance,
+        "service": "in",
+        "shape": shape,
+        "shell": shell,
+        "vapour_space": {"kind": "product"},
+        "sources": [{"source": "transmitter"}],
+        "instruments": instruments,
+        "max_age_s": 900 if liquid else 7200,
+        "hand_gauging": False,
+    }
 
 
 def upright(diameter: float, height: float, cone: float = 0.0) -> Body:
     """An upright cylinder under a cone roof, on a flat bottom or on a cone that drains to its middle."""
     bottom = {"kind": "cone", "depth_m": cone} if cone else FLAT
     top = {"kind": "cone", "depth_m": round(diameter / 20.0, 2)}
-    return {"kind": "vertical_cylinder", "diameter_m": diameter, "height_m": height, "bottom": bottom, "top": top}
+    return {
+        "kind": "vertical_cylinder",
+        "diameter_m": diameter,
+        "height_m": height,
+        "bottom": bottom,
+        "top": top,
+    }
 
 
 def upright_table(diameter: float, height: float, at_zero: float, step: float) -> Body:
     """Capacity table of an upright shell on an uneven bottom: straight lines, so coarse rows are exact."""
     area, count = math.pi * diameter**2 / 4.0, round(height / step)
     rows = [[round(k * step, 3), round(at_zero + area * k * step, 4)] for k in range(count + 1)]
-    return {"kind": "capacity_table", "of": "vertical_cylinder", "diameter_m": diameter, "interpolation": "linear",
-            "rows": rows, "total_volume_m3": rows[-1][1]}  # fmt: skip
+    return {
+        "kind": "capacity_table",
+        "of": "vertical_cylinder",
+        "diameter_m": diameter,
+        "interpolation": "linear",
+        "rows": rows,
+        "total_volume_m3": rows[-1][1],
+    }
 
 
 def lying_table(diameter: float, length: float, step: float) -> Body:
@@ -171,42 +218,105 @@ def lying_table(diameter: float, length: float, step: float) -> Body:
     levels = [round(k * step, 3) for k in range(round(diameter / step) + 1)]
     found: Floats = volume(levels)
     rows = [[level, max(0.0, round(float(v), 4))] for level, v in zip(levels, found, strict=True)]
-    return {"kind": "capacity_table", "of": "horizontal_cylinder", "diameter_m": diameter, "interpolation": "linear",
-            "rows": rows, "total_volume_m3": round(math.pi * diameter**2 / 4.0 * length, 4)}  # fmt: skip
+    return {
+        "kind": "capacity_table",
+        "of": "horizontal_cylinder",
+        "diameter_m": diameter,
+        "interpolation": "linear",
+        "rows": rows,
+        "total_volume_m3": round(math.pi * diameter**2 / 4.0 * length, 4),
+    }
 
 
-BULLET: Body = {"kind": "horizontal_cylinder", "diameter_m": 3.2, "length_m": 18.0, "tilt_deg": 0.6, "gauge_at_m": 2.5,
-                "left_head": {"kind": "ellipsoidal", "depth_m": 0.8}, "right_head": {"kind": "ellipsoidal", "depth_m": 0.8}}
-RECEIVER: Body = {"kind": "horizontal_cylinder", "diameter_m": 2.4, "length_m": 17.0,
-                  "left_head": {"kind": "hemispherical"}, "right_head": {"kind": "hemispherical"}}  # fmt: skip
-ROOF_21: Body = {"mass_kg": 88000.0, "lands_at_m": 1.6, "floats_at_m": 1.9, "gauge_sees": "liquid"}
-ROOF_22: Body = {"mass_kg": 91000.0, "lands_at_m": 1.6, "floats_at_m": 1.9, "gauge_sees": "liquid"}
+BULLET: Body = {
+    "kind": "horizontal_cylinder",
+    "diameter_m": 3.2,
+    "length_m": 18.0,
+    "tilt_deg": 0.6,
+    "gauge_at_m": 2.5,
+    "left_head": {"kind": "ellipsoidal", "depth_m": 0.8},
+    "right_head": {"kind": "ellipsoidal", "depth_m": 0.8},
+}
+RECEIVER: Body = {
+    "kind": "horizontal_cylinder",
+    "diameter_m": 2.4,
+    "length_m": 17.0,
+    "left_head": {"kind": "hemispherical"},
+    "right_head": {"kind": "hemispherical"},
+}
+ROOF: Body = {"mass_kg": 88000.0, "lands_at_m": 1.6, "floats_at_m": 1.9, "gauge_sees": "liquid"}
 FINE, COARSE = (0.05, 0.02), (0.1, 0.03)
+
+# opening mass [kg], density at 15 °C [kg/m³, 0 for a gas], mean temperature and daily swing [°C], water [m]
+CONTENTS: dict[str, tuple[float, ...]] = {
+    "tk-11": (5.1e6, 839.4, 15.2, 0.10, 0.045),
+    "tk-12": (3.3e6, 840.6, 14.6, 0.12),
+    "tk-21": (2.3e6, 744.8, 14.9, 0.15),
+    "tk-22": (2.6e6, 746.1, 14.4, 0.15),
+    "tk-31": (1.2e6, 799.2, 15.1, 0.15),
+    "tk-41": (2.6e5, 871.3, 16.0, 0.2),
+    "tk-51": (3.4e5, 793.7, 14.8, 0.2),
+    "b-61": (3.9e4, 507.5, 14.0, 0.5),
+    "s-71": (4.2e5, 584.25, 14.5, 0.25),
+    "r-81": (1.4e3, 0.0, 14.0, 1.5),
+    "r-82": (2.4e2, 0.0, 14.0, 1.5),
+    "u-91": (1.9e4, 840.2, 13.0, 0.02),
+    "bx-95": (2.9e4, 1116.4, 15.5, 0.4),
+}
+EVERY_S = {"tk-11": 300, "tk-12": 300, "tk-21": 300, "b-61": 300, "s-71": 300, "r-81": 3600, "r-82": 3600}
+
+
+def vessels() -> dict[str, Body]:
+    """Bodies of the vessels by id, in the order of a walk along the quay."""
+    return {**tanks(), **pressure_vessels(), **small_tanks()}
+
+
+def tanks() -> dict[str, Body]:
+    """The tank farm: three gauges, four tapes."""
+    table = upright_table(24.0, 14.0, at_zero=9.6, step=0.05)
+    flat_top = upright(24.0, 14.0) | {"top": FLAT}
+    bodies = {
+        "tk-11": tank("gas oil 11", "gas-oil", upright(30.0, 14.0), gauge=True, capacity=FINE),
+        "tk-12": tank("gas oil 12", "gas-oil", upright(30.0, 14.0), gauge=True, capacity=FINE),
+        "tk-21": tank("gasoline 21", "gasoline", table, gauge=True, capacity=FINE, floating_roof=ROOF),
+        "tk-22": tank("gasoline 22", "gasoline", flat_top, gauge=False, capacity=FINE, floating_roof=ROOF),
+        "tk-31": tank("kerosene 31", "kerosene", upright(18.0, 12.0), gauge=False, capacity=FINE),
+        "tk-41": tank("toluene 41", "toluene", upright(10.0, 9.0, cone=0.4), gauge=False, capacity=FINE),
+        "tk-51": tank("ethanol 51", "ethanol", upright(12.0, 10.0), gauge=False, capacity=FINE),
+    }
+    bodies["tk-51"]["shell"] = {**STEEL, "expansion_per_k": 1.73e-5}  # stainless, type 304, from memory
+    return bodies
+
+
+def pressure_vessels() -> dict[str, Body]:
+    """Liquefied gases, and gases in receivers."""
+    sphere, stamped = {"kind": "sphere", "diameter_m": 14.0}, {"kind": "fixed_volume", "volume_m3": 50.0}
+    wall = {thickness: {**THICK, "thickness_m": thickness} for thickness in (0.018, 0.02, 0.04)}
+    return {
+        "b-61": pressure_vessel("propane bullet 61", "propane", BULLET, wall[0.018], span_kpa=1600.0),
+        "s-71": pressure_vessel("butane sphere 71", "n-butane", sphere, wall[0.02], span_kpa=600.0),
+        "r-81": pressure_vessel("nitrogen receiver 81", "nitrogen", stamped, STEEL, span_kpa=4000.0),
+        "r-82": pressure_vessel("hydrogen receiver 82", "hydrogen", RECEIVER, wall[0.04], span_kpa=6000.0),
+    }
+
+
+def small_tanks() -> dict[str, Body]:
+    """What stands about the yard."""
+    buried, box = (
+        lying_table(2.4, 8.0, step=0.01),
+        {"kind": "box", "length_m": 6.0, "width_m": 3.0, "height_m": 2.5},
+    )
+    bodies = {
+        "u-91": tank("site diesel, under the yard", "gas-oil", buried, gauge=False, capacity=COARSE),
+        "bx-95": tank("glycol box 95", "glycol", box, gauge=False, capacity=COARSE),
+    }
+    bodies["u-91"]["shell"] = {**STEEL, "insulated": True}  # the ground keeps it at its liquid's temperature
+    return bodies
 
 
 def plans() -> dict[str, Plan]:
-    """The vessels by id, in the order of a walk along the quay."""
-    box = {"kind": "box", "length_m": 6.0, "width_m": 3.0, "height_m": 2.5}
-    buried = tank("site diesel, under the yard", "gas-oil", lying_table(2.4, 8.0, 0.01), gauge=False, capacity=COARSE)
-    buried["shell"] = {**STEEL, "insulated": True}
-    stainless = tank("ethanol 51", "ethanol", upright(12.0, 10.0), gauge=False, capacity=FINE)
-    stainless["shell"] = {**STEEL, "expansion_per_k": 1.73e-5}
-    floating = upright(24.0, 14.0) | {"top": FLAT}
-    return {
-        "tk-11": Plan(tank("gas oil 11", "gas-oil", upright(30.0, 14.0), gauge=True, capacity=FINE), 300, 5.1e6, 839.4, 15.2, 0.10, 0.045),
-        "tk-12": Plan(tank("gas oil 12", "gas-oil", upright(30.0, 14.0), gauge=True, capacity=FINE), 300, 3.3e6, 840.6, 14.6, 0.12),
-        "tk-21": Plan(tank("gasoline 21", "gasoline", upright_table(24.0, 14.0, 9.6, 0.05), gauge=True, capacity=FINE, floating_roof=ROOF_21), 300, 2.3e6, 744.8, 14.9, 0.15),
-        "tk-22": Plan(tank("gasoline 22", "gasoline", floating, gauge=False, capacity=FINE, floating_roof=ROOF_22), 0, 2.6e6, 746.1, 14.4, 0.15),
-        "tk-31": Plan(tank("kerosene 31", "kerosene", upright(18.0, 12.0), gauge=False, capacity=FINE), 0, 1.2e6, 799.2, 15.1, 0.15),
-        "tk-41": Plan(tank("toluene 41", "toluene", upright(10.0, 9.0, 0.4), gauge=False, capacity=FINE), 0, 2.6e5, 871.3, 16.0, 0.2),
-        "tk-51": Plan(stainless, 0, 3.4e5, 793.7, 14.8, 0.2),
-        "b-61": Plan(pressure_vessel("propane bullet 61", "propane", BULLET, {**THICK, "thickness_m": 0.018}, liquid=True, span_kpa=1600.0), 300, 3.9e4, 507.5, 14.0, 0.5),
-        "s-71": Plan(pressure_vessel("butane sphere 71", "n-butane", {"kind": "sphere", "diameter_m": 14.0}, {**THICK, "thickness_m": 0.02}, liquid=True, span_kpa=600.0), 300, 4.2e5, 584.25, 14.5, 0.25),
-        "r-81": Plan(pressure_vessel("nitrogen receiver 81", "nitrogen", {"kind": "fixed_volume", "volume_m3": 50.0}, STEEL, liquid=False, span_kpa=4000.0), 3600, 1.4e3, 0.0, 14.0, 1.5),
-        "r-82": Plan(pressure_vessel("hydrogen receiver 82", "hydrogen", RECEIVER, {**THICK, "thickness_m": 0.04}, liquid=False, span_kpa=6000.0), 3600, 2.4e2, 0.0, 14.0, 1.5),
-        "u-91": Plan(buried, 0, 1.9e4, 840.2, 13.0, 0.02),
-        "bx-95": Plan(tank("glycol box 95", "glycol", box, gauge=False, capacity=COARSE), 0, 2.9e4, 1116.4, 15.5, 0.4),
-    }  # fmt: skip
+    """The vessels by id with what only the simulator knows."""
+    return {key: Plan(body, EVERY_S.get(key, 0), *CONTENTS[key]) for key, body in vessels().items()}
 
 
 PROVED = "2026-02-10T09:00:00+00:00"
@@ -226,7 +336,11 @@ METERS: dict[str, tuple[str, float, float]] = {
 def meters() -> dict[str, Body]:
     """Bodies of the meters by id."""
     return {
-        key: {"name": name, "random_pct": random, "systematic_pct": systematic,
-              "provings": [{"at": PROVED, "systematic_pct": systematic}]}
+        key: {
+            "name": name,
+            "random_pct": random,
+            "systematic_pct": systematic,
+            "provings": [{"at": PROVED, "systematic_pct": systematic}],
+        }
         for key, (name, random, systematic) in METERS.items()
-    }  # fmt: skip
+    }

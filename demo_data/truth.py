@@ -9,8 +9,15 @@ from zlib import crc32
 import numpy as np
 
 from demo_data.physics import (
-    Conditions, Floats, Hull, Liquid, hull, mass_kg, vapour_density, vapour_pressure_kpa_abs,
-)  # fmt: skip
+    Conditions,
+    Floats,
+    Hull,
+    Liquid,
+    hull,
+    mass_kg,
+    vapour_density,
+    vapour_pressure_kpa_abs,
+)
 from demo_data.schedule import Movement, instant
 from demo_data.terminal import LIQUEFIED, LIQUIDS, Plan
 
@@ -39,7 +46,9 @@ class Weather:
     def barometer_kpa(self, at_s: Floats) -> Floats:
         """Lows that pass every week or so."""
         days = (at_s - START_S) / DAY_S
-        waves = 0.7 * np.sin(2.0 * np.pi * days / 7.1 + self.pressed[0]) + 0.4 * np.sin(2.0 * np.pi * days / 4.3 + self.pressed[1])
+        waves = 0.7 * np.sin(2.0 * np.pi * days / 7.1 + self.pressed[0]) + 0.4 * np.sin(
+            2.0 * np.pi * days / 4.3 + self.pressed[1]
+        )
         return np.asarray(101.2 + waves)
 
 
@@ -104,7 +113,11 @@ class Vessel:
         days = (at_s - START_S) / DAY_S
         one, two, three = self.phases
         found = self.plan.mean_c + 0.5 * np.sin(2.0 * np.pi * days / 15.0 + one) + 0.025 * (days - 15.0)
-        found = found + self.plan.swing_c * np.sin(2.0 * np.pi * days + two) + 0.15 * np.sin(2.0 * np.pi * days / 6.1 + three)
+        found = (
+            found
+            + self.plan.swing_c * np.sin(2.0 * np.pi * days + two)
+            + 0.15 * np.sin(2.0 * np.pi * days / 6.1 + three)
+        )
         for receipt in self.receipts:
             cargo = receipt.movement
             share = cargo.mass_kg / (receipt.before_kg + cargo.mass_kg) * cargo.share(at_s)
@@ -126,7 +139,9 @@ class Vessel:
 
         def excess(level: Floats) -> Floats:
             at = Conditions(**{**known.__dict__, "level_m": level})
-            return np.asarray(mass_kg(self.shell, self.liquid, self.plan.gas, self.roof_kg, at, self.stretch(level)) - mass)
+            return np.asarray(
+                mass_kg(self.shell, self.liquid, self.plan.gas, self.roof_kg, at, self.stretch(level)) - mass
+            )
 
         level = bisect(excess, np.full(mass.shape, 0.02), np.full(mass.shape, self.shell.top_m * 0.999))
         return Conditions(**{**known.__dict__, "level_m": level})
@@ -141,7 +156,7 @@ class Vessel:
         return Conditions(0.0, 0.0, vapour_c, ambient, gauge, vapour_c, barometer, 0.0)
 
     def stretch(self, level: Floats) -> Floats:
-        """True volume over that of the table: a fixed error of the whole, and one that varies along the level."""
+        """True volume over that of the table: an error of the whole, and one along the level."""
         return np.asarray((1.0 + self.factor) * (1.0 + self.local(level)))
 
 
@@ -157,7 +172,7 @@ def bisect(excess: Callable[[Floats], Floats], low: Floats, high: Floats) -> Flo
 
 
 def local_error(rng: np.random.Generator, share: float) -> Callable[[Floats], Floats]:
-    """An unknown, smooth function of level of this standard deviation, about 1 m in its swing: three cosines."""
+    """An unknown, smooth function of level with this standard deviation: three cosines."""
     lengths, phases = rng.uniform(2.0, 5.0, 3), rng.uniform(0.0, 2.0 * np.pi, 3)
     weights = rng.standard_normal(3) / np.sqrt(1.5)
 
@@ -187,9 +202,17 @@ def vessels(plans: dict[str, Plan], moved: Sequence[Movement], seed: int) -> dic
             plan = Plan(**{**plan.__dict__, "density_15": plan.density_15 + offset[kind]})
         flows = tuple(one for one in moved if key in (one.source, one.target))
         found[key] = Vessel(
-            key, plan, hull(plan.body), liquid, 0.01 * capacity["systematic"] * rng.standard_normal(),
-            local_error(rng, 0.01 * capacity["local"]), flows, (), tuple(rng.uniform(0.0, 6.28, 3)), weather,
-        )  # fmt: skip
+            key,
+            plan,
+            hull(plan.body),
+            liquid,
+            0.01 * capacity["systematic"] * rng.standard_normal(),
+            local_error(rng, 0.01 * capacity["local"]),
+            flows,
+            (),
+            tuple(rng.uniform(0.0, 6.28, 3)),
+            weather,
+        )
     return with_receipts(found, moved)
 
 
@@ -207,5 +230,3 @@ def with_receipts(found: dict[str, Vessel], moved: Sequence[Movement]) -> dict[s
             raise ValueError(f"{one.id} blends while {one.target} moves: change the schedule")
         found[one.target] = Vessel(**{**target.__dict__, "receipts": (*target.receipts, receipt)})
     return found
-
-
