@@ -138,9 +138,7 @@ class Vessels:
             Columns of shape (n,). [as above]
         """
         taken = {
-            item.name: value[rows]
-            for item in fields(self)
-            if isinstance(value := getattr(self, item.name), np.ndarray)
+            item.name: value[rows] for item in fields(self) if isinstance(value := getattr(self, item.name), np.ndarray)
         }
         return replace(self, expansivity=tuple(b[rows] for b in self.expansivity), **taken)
 

@@ -105,9 +105,7 @@ def inventory(vessels: Vessels, rows: IntArray | None, state: State) -> Inventor
     return result
 
 
-def _compute(
-    method: Method, vessels: Vessels, state: State, result: Inventory, where: IntArray | slice
-) -> None:
+def _compute(method: Method, vessels: Vessels, state: State, result: Inventory, where: IntArray | slice) -> None:
     """One block of one method: its columns go to their rows of the result."""
     size = len(result.marks[where])
     step = _Step(vessels, state, np.zeros(size, dtype=np.intp), {}, {})
@@ -246,9 +244,7 @@ def _liquid_sensitivities(
         s.liquid_temperature, 0.0, temperature_ref=s.density_temperature, pressure_ref=0.0,
         coefficients=b, origin=origin, compressibility=0.0,
     )  # fmt: skip
-    sens["level"] = net * out["shell_factor"] * out["surface_area"] + slope * (
-        net * v.roof_volume_per_mass - share
-    )
+    sens["level"] = net * out["shell_factor"] * out["surface_area"] + slope * (net * v.roof_volume_per_mass - share)
     sens["water_level"] = -net * sens["_water_area"]
     sens["liquid_temperature"] = -beta * full + v.liquid_weight * shell
     sens["ambient_temperature"] = (1.0 - v.liquid_weight) * shell
@@ -287,7 +283,7 @@ def _vapour_conditions(step: _Step, method: Method) -> tuple[FloatArray, FloatAr
         return pressure, temperature, nowhere, nowhere
     assert v.saturation is not None
     row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
-    at_liquid, _ = v.saturation.pressure(s.liquid_temperature, row)
+    at_liquid, liquid_slope = v.saturation.pressure(s.liquid_temperature, row)
     by_liquid = np.isnan(pressure) & np.isnan(temperature)
     pressure = np.where(by_liquid, at_liquid, pressure)
     temperature = np.where(by_liquid, s.liquid_temperature, temperature)
@@ -298,7 +294,7 @@ def _vapour_conditions(step: _Step, method: Method) -> tuple[FloatArray, FloatAr
         boiling = v.saturation.temperature(pressure, row)
         temperature = np.where(by_pressure, boiling, temperature)
     tolerance = SATURATION_COVERAGE * np.hypot(
-        s.pressure_uncertainty, np.where(np.isfinite(slope), slope, 0.0) * s.temperature_uncertainty
+        s.pressure_uncertainty, np.where(np.isfinite(slope), slope, liquid_slope) * s.temperature_uncertainty
     )
     measured = np.isfinite(s.pressure) & ~by_liquid
     known = np.isfinite(at_vapour)
@@ -316,7 +312,7 @@ def _vapour_conditions(step: _Step, method: Method) -> tuple[FloatArray, FloatAr
 
 def _vapour(step: _Step, method: Method) -> None:
     """Vapour volume, its density by the virial equation, its mass and derivatives."""
-    v, s, out, sens = step.vessels, step.state, step.out, step.sens
+    v, s, out = step.vessels, step.state, step.out
     assert v.vapour is not None
     assert step.conditions is not None
     pressure, temperature, by_pressure, by_liquid = step.conditions
@@ -370,7 +366,7 @@ def _vapour_sensitivities(
     saturated: tuple[BoolArray, BoolArray],
 ) -> None:  # fmt: skip
     """Derivatives of the vapour mass, added to those of the liquid."""
-    v, s, out, sens = step.vessels, step.state, step.out, step.sens
+    v, out, sens = step.vessels, step.out, step.sens
     mass, density = out["vapour_mass"], np.where(np.isfinite(gas.density), gas.density, 0.0)
     by_p, by_t = np.where(np.isfinite(by_p), by_p, 0.0), np.where(np.isfinite(by_t), by_t, 0.0)
     reach = sens.get("_reach", np.ones(1))

@@ -9,9 +9,7 @@ import numpy as np
 from models.arrays import ArrayLike, FloatArray, as_floats
 
 
-def expansivity(
-    temperature: ArrayLike, *, coefficients: Sequence[ArrayLike], origin: ArrayLike
-) -> FloatArray:
+def expansivity(temperature: ArrayLike, *, coefficients: Sequence[ArrayLike], origin: ArrayLike) -> FloatArray:
     """Thermal expansivity β of the liquid at a temperature.
 
     Parameters
@@ -91,9 +89,7 @@ def log_volume_ratio(
     .. [1] J. M. Smith, H. C. Van Ness, M. M. Abbott, "Introduction to Chemical Engineering
        Thermodynamics", 7th ed., McGraw-Hill, 2005, ch. 3 (from memory).
     """
-    t, p, t_ref, p_ref, kappa = as_floats(
-        temperature, pressure, temperature_ref, pressure_ref, compressibility
-    )
+    t, p, t_ref, p_ref, kappa = as_floats(temperature, pressure, temperature_ref, pressure_ref, compressibility)
     here, there = t - origin, t_ref - origin
     if len(coefficients) == 1:  # the common case, without cancellation between two integrals
         return np.asarray(coefficients[0] * (t - t_ref) - kappa * (p - p_ref))

@@ -1,0 +1,71 @@
+"""The same arithmetic with nothing stored: one vessel, one substance, readings that stand alone."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from app.schemas.calculation import CalculationReading, InventoryCalculation
+from app.services.choose import Candidates
+from app.services.collect import INPUTS, Collected, conversion, names_of
+from app.services.compile import CompiledVessel, compile_bodies
+from app.services.explain import answers
+from app.services.ingest import quality_of, text_of
+from app.services.measure import measure
+from app.services.parts import Origin
+
+
+def calculate(request: InventoryCalculation, *, working: bool, budget: bool) -> list[dict[str, Any]]:
+    """One inventory for each reading, in order; nothing is carried from one to the next."""
+    vessel = compile_bodies("vessel", request.site, request.vessel, request.substance)
+    if not request.readings:
+        return []
+    results = answers(measure(collected(vessel, request.readings)), working=working, budget=budget)
+    for result, reading in zip(results, request.readings, strict=True):
+        result.pop("vessel")
+        result.pop("substance")
+        if reading.taken_at is None:
+            result.pop("at")
+    return results
+
+
+def collected(vessel: CompiledVessel, readings: tuple[CalculationReading, ...]) -> Collected:
+    """Readings as candidates, each at its own instant with nothing before or after it."""
+    at = np.array([reading.taken_at or 0 for reading in readings], dtype=np.int64)
+    result = Collected(at, (vessel,))
+    for spec in INPUTS:
+        columns = [(quantity, "") for quantity in spec.quantities]
+        result.candidates[spec.name] = Candidates.empty(len(at), len(columns))
+        result.texts[spec.name] = np.full((len(at), len(columns)), None, dtype=object)
+        result.origins[spec.name] = Origin([columns])
+        for quantity in spec.companions:
+            empty = np.full((len(at), len(columns)), None, dtype=object)
+            result.companions[(spec.name, quantity)] = (Candidates.empty(len(at), len(columns)), empty)
+        for quantity in names_of(spec):
+            _place(result, vessel, spec.name, quantity, spec.quantities, readings)
+    return result
+
+
+def _place(
+    result: Collected, vessel: CompiledVessel, name: str, quantity: str, quantities: tuple[str, ...],
+    readings: tuple[CalculationReading, ...],
+) -> None:  # fmt: skip
+    """One quantity of every reading into its column; the source of a reading chooses its instruments."""
+    own = quantity in quantities
+    column = quantities.index(quantity) if own else 0
+    if own:
+        target, texts = result.candidates[name], result.texts[name]
+    else:
+        target, texts = result.companions[(name, quantity)]
+    convert = conversion(vessel, quantity, readings[0].source)
+    for row, reading in enumerate(readings):
+        value = getattr(reading, quantity, None)
+        if value is None or quality_of(reading, quantity) > 1:
+            continue
+        target.before_at[row, column] = result.at[row]
+        target.before_quality[row, column] = quality_of(reading, quantity)
+        if isinstance(value, int | float) and not isinstance(value, bool):
+            target.before[row, column] = convert(float(value))
+        else:
+            texts[row, column] = text_of(value)

@@ -1,0 +1,312 @@
+"""One measured row as an answer: what it is, what it rests on, and what is doubtful about it."""
+
+from __future__ import annotations
+
+import json
+import math
+from typing import Any
+
+from app.schemas.types import format_instant
+from app.services.choose import NEVER
+from app.services.collect import INPUTS
+from app.services.measure import Measured
+from app.services.parts import at_row, estimate, sigmas
+from app.services.working import budget_lines, working_steps
+from models import constants, instruments
+from models.columns import UNMEASURED, Mark
+from models.estimate import Estimate
+from models.mass import standard_uncertainty
+
+QUALITY = ("good", "uncertain", "bad")
+NEEDED = {
+    "level": ("level_m", "a level or an ullage"),
+    "liquid_temperature": ("liquid_temperature_c", "the liquid's temperature"),
+    "vapour_temperature": ("vapour_temperature_c", "the gas's temperature"),
+    "pressure": ("pressure_kpa", "the gas's pressure"),
+}
+WARNINGS: dict[Mark, tuple[str, str]] = {
+    Mark.ROOF_LANDING_ZONE: (
+        "roof_landing_zone",
+        "the level lies between lands_at_m and floats_at_m: what the roof displaces is only estimated there",
+    ),
+    Mark.SATURATION_LOW: (
+        "saturation_low",
+        "the pressure lies below the vapour pressure at both temperatures by more than twice its uncertainty: "
+        "look for gauge and absolute confused, a warm thermometer, a lighter product withdrawn, or another product",
+    ),
+    Mark.SATURATION_HIGH: (
+        "saturation_high",
+        "the pressure lies above the vapour pressure at both temperatures by more than twice its uncertainty: "
+        "look for gas that does not condense, a cold thermometer, or a lighter product",
+    ),
+    Mark.VAPOUR_SATURATED: (
+        "vapour_saturated",
+        "the vapour was above saturation beside its liquid and is taken as saturated at its pressure",
+    ),
+    Mark.VAPOUR_LEFT_OUT: (
+        "vapour_left_out",
+        "the vapour cannot be computed here and is left out; at most 1 % of the liquid, it stands in the budget",
+    ),
+    Mark.GUARD_WIDE: (
+        "guard_wide",
+        "the vapour is so dense that the virial equation has a wider uncertainty, which stands in the budget",
+    ),
+    Mark.GUARD_REFUSED: (
+        "guard_refused",
+        "the vapour is too dense for the virial equation: beyond half of its critical density or too near to "
+        "the limit of a stable vapour",
+    ),
+    Mark.LIQUID_FULL: ("liquid_full", "the vessel is full of liquid: no vapour space is left"),
+    Mark.OUTSIDE_VESSEL: ("outside_vessel", "the level lies outside the vessel"),
+    Mark.OUTSIDE_TABLE: (
+        "outside_table",
+        "the level lies outside the capacity table, which is never extrapolated",
+    ),
+    Mark.OUTSIDE_METHOD: (
+        "outside_method",
+        "a temperature lies outside the range of the virial coefficients",
+    ),
+    Mark.NO_VAPOUR_ROOT: (
+        "guard_refused",
+        "the virial equation has no vapour at this pressure and temperature: it would condense",
+    ),
+}
+
+
+def status(measured: Measured, row: int) -> str:
+    """``measured``, ``uncertain`` or ``unmeasured``."""
+    if not math.isfinite(measured.result["mass"][row]):
+        return "unmeasured"
+    marks = Mark(int(measured.result.marks[row]))
+    doubtful = Mark.ROOF_LANDING_ZONE | Mark.GUARD_WIDE
+    uncertain = any(
+        c.usable[row] and c.quality[row] == 1 for name, c in measured.chosen.items() if _counts(measured, row, name)
+    )
+    return "uncertain" if marks & doubtful or uncertain else "measured"
+
+
+def mass_estimate(measured: Measured, row: int) -> Estimate | None:
+    """The row's mass with its named parts, None where it has none. [kg]"""
+    if not math.isfinite(measured.result["mass"][row]):
+        return None
+    return estimate(measured.result, measured.parts, row)
+
+
+def answers(measured: Measured, *, working: bool = False, budget: bool = False) -> list[dict[str, Any]]:
+    """Every row as the contract's inventory."""
+    spread = standard_uncertainty(measured.result, sigmas(measured.parts))
+    return [
+        _answer(measured, row, float(spread[row]), working=working, budget=budget)
+        for row in range(measured.collected.rows)
+    ]
+
+
+def _number(value: float) -> float | None:
+    return float(value) if math.isfinite(value) else None
+
+
+FIELDS = (
+    ("gross_observed_volume_m3", "gross_observed_volume"), ("free_water_volume_m3", "free_water_volume"),
+    ("gross_standard_volume_m3", "gross_standard_volume"), ("net_standard_volume_m3", "net_standard_volume"),
+    ("liquid_density_kg_m3", "liquid_density"), ("standard_density_kg_m3", "standard_density"),
+    ("liquid_mass_kg", "liquid_mass"), ("vapour_volume_m3", "vapour_volume"),
+    ("compressibility_factor", "compressibility_factor"), ("vapour_mass_kg", "vapour_mass"),
+    ("gas_standard_volume_m3", "gas_standard_volume"), ("mass_kg", "mass"),
+)  # fmt: skip
+
+
+def _answer(measured: Measured, row: int, spread: float, *, working: bool, budget: bool) -> dict[str, Any]:
+    vessel, result = measured.vessel(row), measured.result
+    state = status(measured, row)
+    unmeasured = state == "unmeasured"
+    filled = float(result["level_fraction"][row])
+    answer: dict[str, Any] = {
+        "vessel": vessel.name,
+        "at": int(measured.collected.at[row]),
+        "status": state,
+        "substance": vessel.body.substance,
+        "fill_pct": _number(filled * 100.0) if vessel.has_liquid else None,
+    }
+    for name, column in FIELDS:
+        answer[name] = None if unmeasured else _number(result[column][row])
+    answer["mass_uncertainty_kg"] = None if unmeasured else _number(spread)
+    answer["available_mass_kg"] = None if unmeasured else _available(measured, row)
+    answer["weight_in_air_kg"] = None if unmeasured else _weight_in_air(measured, row)
+    if unmeasured:
+        answer["reason"] = reason(measured, row)
+    answer["inputs"] = inputs(measured, row)
+    answer["warnings"] = warnings(measured, row)
+    answer["definitions"] = [one._asdict() for one in vessel.definitions]
+    if working and not unmeasured:
+        answer["working"] = working_steps(measured, row)
+    if budget and not unmeasured:
+        answer["budget"] = budget_lines(measured, row)
+    return answer
+
+
+def _available(measured: Measured, row: int) -> float | None:
+    """Mass above the dead stock: that volume at the liquid's density is what cannot be drawn."""
+    dead = measured.vessel(row).body.dead_stock_m3
+    mass = float(measured.result["mass"][row])
+    if not dead:
+        return mass
+    return max(0.0, mass - dead * float(measured.result["liquid_density"][row]))
+
+
+def _weight_in_air(measured: Measured, row: int) -> float | None:
+    """The liquid's weight in air by the conventional densities of OIML D 28."""
+    density = float(measured.result["liquid_density"][row])
+    if not math.isfinite(density) or density <= 0.0:
+        return None
+    air, weights = constants.CONVENTIONAL_AIR_DENSITY, constants.CONVENTIONAL_WEIGHT_DENSITY
+    return float(measured.result["liquid_mass"][row]) * (1.0 - air / density) / (1.0 - air / weights)
+
+
+def _counts(measured: Measured, row: int, name: str) -> bool:
+    """Whether an input enters this vessel's mass at all."""
+    vessel = measured.vessel(row)
+    if name in ("level", "liquid_temperature", "free_water", "density", "sediment_water"):
+        return vessel.has_liquid
+    if name in ("vapour_temperature", "vapour_composition"):
+        return vessel.has_vapour
+    if name in ("ambient", "site_ambient"):
+        insulated = vessel.parameters["liquid_weight"] == 1.0 or vessel.parameters["expansion"] == 0.0
+        own = bool(measured.chosen["ambient"].usable[row])
+        return not insulated and (name == "ambient") == own
+    return True
+
+
+def inputs(measured: Measured, row: int) -> list[dict[str, Any]]:
+    """What counted: quantity, value, age, source and quality."""
+    listed: list[dict[str, Any]] = []
+    for spec in INPUTS:
+        chosen = measured.chosen[spec.name]
+        if not chosen.usable[row] or not _counts(measured, row, spec.name):
+            continue
+        column = int(chosen.source[row])
+        quantity, source = measured.collected.origins[spec.name].of(row, column)
+        entry: dict[str, Any] = {
+            "quantity": "level_m" if quantity == "ullage_m" else quantity,
+            "value": _number(float(chosen.value[row])),
+            "age_s": float(chosen.age_us[row]) * 1e-6,
+            "source": source,
+            "quality": QUALITY[int(chosen.quality[row])],
+        }
+        text = measured.collected.texts[spec.name][row, column]
+        if text is not None:
+            entry["composition"] = json.loads(text)
+        listed.append(entry)
+    for quantity, where in measured.assumed.items():
+        if where[row]:
+            listed.append(_assumed(quantity, float(measured.vessel(row).body.assumed[quantity].value)))
+    if _water_unread(measured, row):
+        listed.append(_assumed("free_water_level_m", 0.0))
+    return listed
+
+
+def _water_unread(measured: Measured, row: int) -> bool:
+    """Free water that was never read counts as none, and is said to."""
+    assumed = measured.assumed.get("free_water_level_m")
+    known = measured.chosen["free_water"].usable[row] or (assumed is not None and assumed[row])
+    return measured.vessel(row).has_liquid and not known
+
+
+def _assumed(quantity: str, value: float) -> dict[str, Any]:
+    return {"quantity": quantity, "value": value, "quality": "assumed"}
+
+
+def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
+    """What is doubtful, and why a row has no mass."""
+    marks = Mark(int(measured.result.marks[row]))
+    found = [
+        {"code": code, "detail": detail}
+        for mark, (code, detail) in WARNINGS.items()
+        if marks & mark and not mark & UNMEASURED
+    ]
+    for spec in INPUTS:
+        chosen = measured.chosen[spec.name]
+        if not chosen.usable[row] or not _counts(measured, row, spec.name):
+            continue
+        quantity, source = measured.collected.origins[spec.name].of(row, int(chosen.source[row]))
+        if chosen.quality[row] == 1:
+            found.append({"code": "input_uncertain", "detail": f"{quantity} was posted as uncertain"})
+        if chosen.contenders[row] > 1 and not measured.vessel(row).body.sources:
+            found.append(
+                {
+                    "code": "two_sources",
+                    "detail": f"{quantity} comes from several sources and the vessel gives no order of sources; "
+                    f"the newest was taken, from source '{source}'",
+                }
+            )
+    found.extend(_assumptions(measured, row))
+    return found
+
+
+def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
+    vessel = measured.vessel(row)
+    found = []
+    for quantity, where in measured.assumed.items():
+        if where[row]:
+            found.append({"code": "input_assumed", "detail": f"{quantity} is the value that the vessel assumes"})
+    depends = vessel.has_vapour or vessel.parameters["strain_sum"] != 0.0
+    if measured.atmosphere_assumed is not None and measured.atmosphere_assumed[row] and depends:
+        found.append(
+            {
+                "code": "atmosphere_assumed",
+                "detail": "no barometer is read and the site has neither elevation_m nor "
+                "atmospheric_pressure_kpa_abs: 101.325 kPa is taken",
+            }
+        )
+    if _counts(measured, row, "site_ambient") and not measured.chosen["ambient"].usable[row]:
+        if not measured.chosen["site_ambient"].usable[row] and "ambient_temperature_c" not in measured.assumed:
+            found.append(
+                {
+                    "code": "input_assumed",
+                    "detail": "no ambient temperature is read: the shell is taken at the product's temperature, "
+                    f"with a standard uncertainty of {instruments.AMBIENT_UNREAD:g} K on the ambient's",
+                }
+            )
+    return found
+
+
+def reason(measured: Measured, row: int) -> dict[str, str]:
+    """Why a row has no mass: a value outside a limit, or the first input that it lacks."""
+    marks = Mark(int(measured.result.marks[row]))
+    for mark, (code, detail) in WARNINGS.items():
+        if marks & mark & UNMEASURED:
+            return {"code": code, "detail": detail + _limit(measured, row, mark)}
+    vessel = measured.vessel(row)
+    needed = ["level", "liquid_temperature"] if vessel.has_liquid else ["pressure", "vapour_temperature"]
+    for name in needed:
+        quantity, words = NEEDED[name]
+        assumed = quantity in measured.assumed and measured.assumed[quantity][row]
+        if measured.chosen[name].usable[row] or assumed:
+            continue
+        return {"code": "input_missing", "detail": _missing(measured, row, name, quantity, words)}
+    return {"code": "outside_method", "detail": "the inputs give no mass: look at their values"}
+
+
+def _missing(measured: Measured, row: int, name: str, quantity: str, words: str) -> str:
+    """Which input is lacking, when it was last read, and how long that would have counted."""
+    last = int(measured.collected.candidates[name].before_at[row].max())
+    age = measured.vessel(row).max_age_us(quantity)
+    if last <= int(NEVER):
+        detail = f"{words} ({quantity}) was not read within reach of this instant and is not assumed"
+    else:
+        detail = f"{words} ({quantity}) was last read at {format_instant(last)}"
+    if age is not None:
+        detail += f"; a reading counts for {age * 1e-6:g} s (max_age_s)"
+    return detail
+
+
+def _limit(measured: Measured, row: int, mark: Mark) -> str:
+    """The value and the limit that it passed, where the mark is about one."""
+    curve = measured.vessel(row).curve
+    if mark & (Mark.OUTSIDE_VESSEL | Mark.OUTSIDE_TABLE) and curve is not None:
+        level = at_row(measured.state.level, row)
+        return f": level_m is {level:.4g} m; levels run from {curve.bottom:.4g} to {curve.top:.4g} m"
+    if mark & (Mark.GUARD_REFUSED | Mark.NO_VAPOUR_ROOT | Mark.OUTSIDE_METHOD):
+        pressure = at_row(measured.state.pressure, row) / 1000.0
+        temperature = at_row(measured.state.vapour_temperature, row) - 273.15
+        return f": {pressure:.6g} kPa absolute at {temperature:.4g} °C"
+    return ""

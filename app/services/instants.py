@@ -1,0 +1,52 @@
+"""Local days of a site, as integer microseconds UTC."""
+
+from __future__ import annotations
+
+from datetime import UTC, date, datetime, time, timedelta
+from zoneinfo import ZoneInfo
+
+EPOCH = datetime(1970, 1, 1, tzinfo=UTC)
+
+
+def micros(moment: datetime) -> int:
+    """Microseconds UTC of an aware moment, exactly."""
+    return (moment - EPOCH) // timedelta(microseconds=1)
+
+
+def day_edge(day: date, starts_at: str, zone: str) -> int:
+    """The instant at which a site's day begins.
+
+    An hour that does not exist moves to the first instant after the gap, one that occurs twice is the first.
+    """
+    hour, minute = starts_at.split(":")[:2]
+    local = datetime.combine(day, time(int(hour), int(minute)), tzinfo=ZoneInfo(zone))
+    there = local.astimezone(UTC)
+    if there.astimezone(ZoneInfo(zone)).replace(tzinfo=None) == local.replace(tzinfo=None):
+        return micros(there)
+    # In the gap the two folds lie on either side of it: before it runs the old offset, after it the new one.
+    return micros(_end_of_gap(local))
+
+
+def _end_of_gap(local: datetime) -> datetime:
+    """First instant after the gap in which a local time does not exist, found by bisection."""
+    zone = local.tzinfo
+    low = local.replace(fold=1).astimezone(UTC) - timedelta(hours=3)
+    high = low + timedelta(hours=6)
+    before = low.astimezone(zone).utcoffset()
+    while high - low > timedelta(microseconds=1):
+        middle = low + (high - low) / 2
+        if middle.astimezone(zone).utcoffset() == before:
+            low = middle
+        else:
+            high = middle
+    return high
+
+
+def day_bounds(day: date, starts_at: str, zone: str) -> tuple[int, int]:
+    """Opening and closing of the day that begins on a local date: 23, 24 or 25 hours."""
+    return day_edge(day, starts_at, zone), day_edge(day + timedelta(days=1), starts_at, zone)
+
+
+def basic(instant: int) -> str:
+    """An instant in basic UTC to the second, as in the ids of periods: 20260301T050000Z."""
+    return (EPOCH + timedelta(microseconds=instant)).strftime("%Y%m%dT%H%M%SZ")

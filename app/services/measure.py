@@ -1,0 +1,382 @@
+"""Candidates become a state, the state a mass with its parts: one path for live answers, courses and closes."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from app.services.choose import Chosen, choose
+from app.services.collect import INPUTS, Collected
+from app.services.compile import (
+    CompiledVessel,
+    analysed_mixture,
+    boiling_pressure,
+    mean_atmosphere,
+    mixture_rows,
+    stack,
+)
+from app.services.parts import KELVIN, PASCAL, Errors, Part, capacity_parts, model_parts
+from models import instruments, units
+from models.columns import Inventory, Method, State
+from models.mass import inventory
+from models.vapour.series import VapourMixture
+
+FloatColumns = NDArray[np.float64]
+BoolColumns = NDArray[np.bool_]
+
+CLOSED = 1e-12  # share of a missing vapour; below it nothing is said
+
+
+@dataclass
+class Measured:
+    """n masses, what counted for each, and every error under its name."""
+
+    collected: Collected
+    chosen: dict[str, Chosen]
+    state: State
+    result: Inventory
+    parts: list[Part]
+    assumed: dict[str, BoolColumns] = field(default_factory=dict)
+    atmosphere_assumed: BoolColumns | None = None
+    mixtures: tuple[VapourMixture, ...] = ()
+
+    def mixture(self, row: int) -> VapourMixture:
+        """The vapour of a row: by its analysis, or the substance's own."""
+        own = self.vessel(row).mixture
+        if self.state.vapour_row is None:
+            assert own is not None
+            return own
+        return self.mixtures[int(self.state.vapour_row[row])]
+
+    def vessel(self, row: int) -> CompiledVessel:
+        """The vessel of a row."""
+        vessels = self.collected.vessels
+        return vessels[row if len(vessels) > 1 else 0]
+
+
+def measure(collected: Collected) -> Measured:
+    """The mass of every row by the chain."""
+    chosen = {
+        spec.name: choose(collected.candidates[spec.name], collected.at, interpolates=spec.interpolates)
+        for spec in INPUTS
+    }
+    builder = _States(collected, chosen)
+    state, extra = builder.build()
+    vessels = stack(collected.vessels, extra)
+    rows = None if len(collected.vessels) == 1 else np.arange(collected.rows, dtype=np.intp)
+    result = inventory(vessels, rows, state)
+    parts = _parts(builder, state)
+    mixtures = tuple(mixture_rows(collected.vessels, extra))
+    return Measured(collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures)
+
+
+class _States:
+    """Builds the chain's state from what counts in each row."""
+
+    def __init__(self, collected: Collected, chosen: dict[str, Chosen]) -> None:
+        self.collected = collected
+        self.chosen = chosen
+        self.vessels: Sequence[CompiledVessel] = collected.vessels
+        self.assumed: dict[str, BoolColumns] = {}
+        self.atmosphere_assumed = np.zeros(collected.rows, dtype=bool)
+        self.density_is_sample = chosen["density"].usable
+        self.ambient_unread = np.zeros(collected.rows, dtype=bool)
+        self.gauge = np.zeros(collected.rows, dtype=bool)
+
+    def of_vessels(self, values: Sequence[float]) -> FloatColumns:
+        """A column of one value a row from one value a vessel."""
+        column = np.array(values, dtype=np.float64)
+        return column if len(self.vessels) > 1 else np.full(self.collected.rows, column[0])
+
+    def value(self, name: str, quantity: str) -> FloatColumns:
+        """What counts for an input, or what the vessel's definition assumes."""
+        column = self.chosen[name].value
+        given = [vessel.body.assumed.get(quantity) for vessel in self.vessels]
+        if any(item is not None for item in given):
+            instead = self.of_vessels([np.nan if item is None else item.value for item in given])
+            use = ~self.chosen[name].usable & np.isfinite(instead)
+            self.assumed[quantity] = use
+            column = np.where(use, instead, column)
+        return column
+
+    def build(self) -> tuple[State, tuple[VapourMixture, ...]]:
+        """The state of every row, and the mixtures that analyses brought."""
+        liquid = units.kelvin(self.value("liquid_temperature", "liquid_temperature_c"))
+        atmosphere = self._atmosphere()
+        density = self._density()
+        vapour_row, extra = self._compositions()
+        water = self.value("free_water", "free_water_level_m")
+        state = State(
+            level=self.value("level", "level_m"),
+            water_level=np.where(np.isfinite(water), water, -np.inf),
+            liquid_temperature=liquid,
+            ambient_temperature=self._ambient(liquid),
+            vapour_temperature=units.kelvin(self.value("vapour_temperature", "vapour_temperature_c")),
+            pressure=self._pressure(atmosphere),
+            atmosphere=atmosphere,
+            density=density[0],
+            density_temperature=density[1],
+            density_pressure=density[2],
+            sediment_water=np.nan_to_num(self.value("sediment_water", "sediment_water_pct")) / 100.0,
+            density_is_dry=self._is_dry(),
+            pressure_uncertainty=self._spread("pressure_kpa", PASCAL),
+            temperature_uncertainty=self._spread("liquid_temperature_c", KELVIN),
+            vapour_row=vapour_row,
+        )
+        return state, extra
+
+    def _atmosphere(self) -> FloatColumns:
+        means = [mean_atmosphere(vessel.site) for vessel in self.vessels]
+        read = units.pascal(self.chosen["barometer"].value)
+        mean = self.of_vessels([pressure for pressure, _ in means])
+        unknown = self.of_vessels([float(assumed) for _, assumed in means]) > 0
+        self.atmosphere_assumed = ~np.isfinite(read) & unknown
+        return np.where(np.isfinite(read), read, mean)
+
+    def _pressure(self, atmosphere: FloatColumns) -> FloatColumns:
+        """Absolute pressure of the space; a vented tank and one under a floating roof are at the atmosphere's."""
+        column = self.value("pressure", "pressure_kpa")
+        origin, source = self.collected.origins["pressure"], self.chosen["pressure"].source
+        is_absolute = np.array(
+            [origin.of(row, int(source[row]))[0] == "pressure_kpa_abs" for row in range(self.collected.rows)]
+            if len(self.vessels) > 1
+            else [name == "pressure_kpa_abs" for name, _ in origin.columns[0]] or [False]
+        )
+        if len(self.vessels) == 1:
+            is_absolute = is_absolute[np.maximum(source, 0)] & (source >= 0)
+        vented = self.of_vessels([float(vessel.space in ("open", "none")) for vessel in self.vessels]) > 0
+        at_rest = vented & ~np.isfinite(column)
+        column = np.where(at_rest, 0.0, column)
+        self.gauge = ~is_absolute
+        return np.where(is_absolute, units.pascal(column), units.pascal(column) + atmosphere)
+
+    def _ambient(self, liquid: FloatColumns) -> FloatColumns:
+        own = self.value("ambient", "ambient_temperature_c")
+        site = self.chosen["site_ambient"].value
+        read = units.kelvin(np.where(np.isfinite(own), own, site))
+        self.ambient_unread = ~np.isfinite(read)
+        gas = units.kelvin(self.chosen["vapour_temperature"].value)
+        return np.where(np.isfinite(read), read, np.where(np.isfinite(liquid), liquid, gas))
+
+    def _density(self) -> tuple[FloatColumns, FloatColumns, FloatColumns]:
+        """The sample's density and state, or the substance's own figure."""
+        own = [self.of_vessels([vessel.density[i] for vessel in self.vessels]) for i in range(3)]
+        read = self.value("density", "observed_density_kg_m3")
+        sampled = np.isfinite(read)
+        self.density_is_sample = sampled & self.chosen["density"].usable
+        standard = self.of_vessels([vessel.parameters["standard_temperature"] for vessel in self.vessels])
+        temperature = units.kelvin(self.companion("density", "observed_density_temperature_c"))
+        temperature = np.where(np.isfinite(temperature), temperature, standard)
+        pressure = units.pascal(self.companion("density", "observed_density_pressure_kpa_abs"))
+        if sampled.any():
+            base = self.of_vessels([vessel.site.base_pressure_kpa_abs * PASCAL for vessel in self.vessels])
+            pressure = np.where(np.isfinite(pressure), pressure, np.maximum(base, self._boiling(temperature, sampled)))
+        return (
+            np.where(sampled, read, own[0]),
+            np.where(sampled, temperature, own[1]),
+            np.where(sampled, pressure, own[2]),
+        )
+
+    def _boiling(self, temperature: FloatColumns, where: BoolColumns) -> FloatColumns:
+        """Vapour pressure at each sample's temperature, where the substance has one."""
+        boiling = np.zeros(self.collected.rows)
+        for row in np.flatnonzero(where):
+            vessel = self.vessels[row if len(self.vessels) > 1 else 0]
+            if vessel.boiling is None:
+                continue
+            boiling[row] = boiling_pressure(vessel.boiling, float(temperature[row]))
+        return boiling
+
+    def companion(self, name: str, quantity: str) -> FloatColumns:
+        """What was read in the same sample as the value that counts; NaN where it was not."""
+        candidates, _ = self.collected.companions[(name, quantity)]
+        chosen = self.chosen[name]
+        rows = np.arange(self.collected.rows)
+        column = np.maximum(chosen.source, 0)
+        same = chosen.usable & (candidates.before_at[rows, column] == chosen.taken_at)
+        return np.where(same, candidates.before[rows, column], np.nan)
+
+    def companion_text(self, name: str, quantity: str, row: int) -> str | None:
+        """A text of the same sample as the value that counts."""
+        candidates, texts = self.collected.companions[(name, quantity)]
+        chosen = self.chosen[name]
+        column = int(chosen.source[row])
+        if column < 0 or candidates.before_at[row, column] != chosen.taken_at[row]:
+            return None
+        return texts[row, column]  # type: ignore[no-any-return]
+
+    def _is_dry(self) -> FloatColumns:
+        if not self.chosen["sediment_water"].usable.any():
+            return np.zeros(1)
+        return np.array(
+            [
+                float(self.companion_text("sediment_water", "density_basis", row) == "dry")
+                for row in range(self.collected.rows)
+            ]
+        )
+
+    def _spread(self, quantity: str, scale: float) -> FloatColumns:
+        """Standard uncertainty of a quantity for the saturation check, by its first source."""
+        spreads = []
+        for vessel in self.vessels:
+            source = vessel.body.sources[0].source if vessel.body.sources else ""
+            own = vessel.instrument(quantity, source)
+            spreads.append(np.hypot(own.random, own.systematic) * scale)
+        return self.of_vessels(spreads)
+
+    def _compositions(self) -> tuple[NDArray[np.intp] | None, tuple[VapourMixture, ...]]:
+        """Row of the virial series for each reading, where an analysis stands for the substance's own."""
+        chosen = self.chosen["vapour_composition"]
+        texts = self.collected.texts["vapour_composition"]
+        if not chosen.usable.any():
+            return None, ()
+        own = [vessel.mixture for vessel in self.vessels]
+        found: list[VapourMixture | None] = []
+        seen: dict[tuple[int, str], VapourMixture | None] = {}
+        for row in range(self.collected.rows):
+            which = row if len(self.vessels) > 1 else 0
+            text = texts[row, int(chosen.source[row])] if chosen.source[row] >= 0 else None
+            mixture = own[which]
+            if text is not None and mixture is not None:
+                key = (which, str(text))
+                if key not in seen:
+                    seen[key] = analysed_mixture(self.vessels[which], json.loads(text))
+                mixture = seen[key]
+            found.append(mixture)
+        extra = tuple(dict.fromkeys(mixture for mixture in seen.values() if mixture is not None))
+        place = mixture_rows(tuple(self.vessels), extra)
+        return np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp), extra
+
+
+def _parts(builder: _States, state: State) -> list[Part]:
+    """Every error of every input, named."""
+    errors = Errors(builder.vessels, builder.collected.rows)
+    chosen, origins = builder.chosen, builder.collected.origins
+    errors.measured("level_m", "level", "level", chosen["level"], origins["level"])
+    errors.measured("free_water_level_m", "water", "water_level", chosen["free_water"], origins["free_water"])
+    errors.measured(
+        "liquid_temperature_c", "temperature", "liquid_temperature", chosen["liquid_temperature"],
+        origins["liquid_temperature"], stale=instruments.STALE_TEMPERATURE,
+    )  # fmt: skip
+    errors.measured(
+        "vapour_temperature_c", "vapour-temperature", "vapour_temperature", chosen["vapour_temperature"],
+        origins["vapour_temperature"], stale=instruments.STALE_TEMPERATURE,
+    )  # fmt: skip
+    errors.measured(
+        "pressure_kpa", "pressure", "pressure", chosen["pressure"], origins["pressure"], scale=PASCAL,
+        stale=instruments.STALE_PRESSURE_KPA,
+    )  # fmt: skip
+    capacity_parts(errors, state.level)
+    _surroundings(builder, errors)
+    _sample(builder, errors)
+    _vapour(builder, errors)
+    for quantity, name in ASSUMABLE.items():
+        if quantity in builder.assumed:
+            scale = PASCAL if quantity == "pressure_kpa" else 1.0
+            errors.assumed(quantity, name, builder.assumed[quantity], scale=scale)
+    errors.add(
+        "floating_roof", "roof", 1.0 / np.sqrt(12.0), "random",
+        lambda row: f"roof:{errors.vessel(row).name}:{builder.collected.at[row]}", declared=lambda row: False,
+    )  # fmt: skip
+    model_parts(errors)
+    return errors.parts
+
+
+ASSUMABLE = {
+    "level_m": "level", "liquid_temperature_c": "liquid_temperature", "pressure_kpa": "pressure",
+    "vapour_temperature_c": "vapour_temperature", "ambient_temperature_c": "ambient_temperature",
+    "free_water_level_m": "water_level", "observed_density_kg_m3": "density",
+}  # fmt: skip
+
+
+def _surroundings(builder: _States, errors: Errors) -> None:
+    """Ambient temperature and atmosphere: the site's, shared by all of its vessels."""
+    chosen = builder.chosen
+    own, site = chosen["ambient"].usable, chosen["site_ambient"].usable
+    errors.measured("ambient_temperature_c", "ambient", "ambient_temperature", chosen["ambient"],
+                    builder.collected.origins["ambient"])  # fmt: skip
+    default = instruments.DEFAULTS["ambient_temperature_c"].systematic
+    errors.add(
+        "ambient_temperature_c", "ambient_temperature", np.where(~own & site, default, 0.0), "systematic",
+        lambda row: "ambient:site", declared=lambda row: False,
+    )  # fmt: skip
+    unread = builder.ambient_unread & ~builder.assumed.get("ambient_temperature_c", np.zeros(1, dtype=bool))
+    errors.add(
+        "ambient_temperature_c", "ambient_temperature", np.where(unread, instruments.AMBIENT_UNREAD, 0.0),
+        "systematic", lambda row: f"ambient-unread:{errors.vessel(row).name}", declared=lambda row: False,
+    )  # fmt: skip
+    spread = builder.of_vessels([vessel.site.barometer_uncertainty_kpa for vessel in builder.vessels])
+    read = chosen["barometer"]
+    errors.add(
+        "barometric_pressure_kpa_abs", "pressure", np.where(builder.gauge, spread, 0.0), "systematic",
+        lambda row: "barometer:site" if read.source[row] < 0 else f"barometer:site:{read.taken_at[row]}",
+        scale=PASCAL,
+    )  # fmt: skip
+
+
+def _sample(builder: _States, errors: Errors) -> None:
+    """Density: the instrument's error, the sample's own, its thermometer's; or the substance's figure."""
+    chosen, origins = builder.chosen["density"], builder.collected.origins["density"]
+    texts = builder.companion_text
+
+    def sample(row: int) -> str:
+        cited = texts("density", "sample", row)
+        own = f"{errors.vessel(row).name}:{chosen.taken_at[row]}"
+        return f"sample:{cited or own}"
+
+    known = [
+        errors.vessel(row).instrument("observed_density_kg_m3", origins.of(row, int(chosen.source[row]))[1])
+        for row in range(builder.collected.rows if len(errors.vessels) > 1 else 1)
+    ]
+    thermometers = [
+        errors.vessel(row).instrument("observed_density_temperature_c", "").systematic for row in range(len(known))
+    ]
+
+    def of(row: int):  # type: ignore[no-untyped-def]
+        return known[row if len(known) > 1 else 0]
+
+    sampled = builder.density_is_sample
+    for sigma, kind, name in (
+        ([k.systematic for k in known], "systematic", lambda row: f"density:{of(row).name}"),
+        ([k.random for k in known], "random", sample),
+    ):
+        errors.add(
+            "observed_density_kg_m3", "density", np.where(sampled, np.array(sigma), 0.0), kind, name,  # type: ignore[arg-type]
+            declared=lambda row: of(row).declared, instrument=lambda row: of(row).name,
+        )  # fmt: skip
+    errors.add(
+        "observed_density_temperature_c", "density_temperature", np.where(sampled, np.array(thermometers), 0.0),
+        "systematic", lambda row: f"density-temperature:{of(row).name}", declared=lambda row: False,
+    )  # fmt: skip
+    own_figure = ~sampled & ~builder.assumed.get("observed_density_kg_m3", np.zeros(1, dtype=bool))
+    spread = builder.of_vessels([v.density_uncertainty for v in builder.vessels])
+    errors.add(
+        "density_kg_m3", "density", np.where(own_figure & np.isfinite(spread), spread, 0.0), "systematic",
+        lambda row: f"density:substance:{errors.vessel(row).body.substance}",
+        declared=lambda row: errors.vessel(row).density_declared,
+    )  # fmt: skip
+    errors.measured("sediment_water_pct", "sediment-water", "sediment_water", builder.chosen["sediment_water"],
+                    builder.collected.origins["sediment_water"], scale=0.01)  # fmt: skip
+
+
+def _vapour(builder: _States, errors: Errors) -> None:
+    """A vapour's temperature taken from its saturation, and an analysis's share of the molar mass."""
+    two_phase = builder.of_vessels([float(bool(v.method & Method.SATURATION)) for v in builder.vessels]) > 0
+    read = builder.chosen["vapour_temperature"].usable | builder.assumed.get(
+        "vapour_temperature_c", np.zeros(1, dtype=bool)
+    )
+    errors.add(
+        "vapour_temperature_c", "vapour_temperature",
+        np.where(two_phase & ~read, instruments.SATURATED_VAPOUR_TEMPERATURE, 0.0), "systematic",
+        lambda row: f"vapour-temperature-assumed:{errors.vessel(row).name}", declared=lambda row: False,
+    )  # fmt: skip
+    mixed = builder.of_vessels([float(v.mixture is not None and v.mixed) for v in builder.vessels]) > 0
+    share = instruments.DEFAULTS["vapour_composition"].systematic / 100.0
+    errors.add(
+        "vapour_composition", "molar_mass", np.where(mixed, share, 0.0), "systematic",
+        lambda row: f"composition:{errors.vessel(row).body.substance}", declared=lambda row: False,
+    )  # fmt: skip

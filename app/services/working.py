@@ -1,0 +1,226 @@
+"""The working behind one mass, step by step, and its budget, part by part."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from typing import Any
+
+from app.services.compile import virial_columns
+from app.services.measure import Measured
+from app.services.parts import at_row
+from models.columns import Mark, Method
+
+Step = dict[str, Any]
+
+ORDER = "API MPMS ch. 12.1.1, order of calculation (from memory)"
+STRAIN = "V(h; ε) = (1+ε)³ V(h/(1+ε)): homogeneous strain at a fixed level; 2ε for upright cylinders, the C_TSh of API MPMS 12.1.1"
+EXPONENTIAL = "definitions of β and κ, integrated: CRC Handbook of Chemistry and Physics, 87th ed."
+
+
+def working_steps(measured: Measured, row: int) -> list[Step]:
+    """Each factor with its symbol, value, unit, method and reference, in the order of the chain."""
+    vessel = measured.vessel(row)
+    steps: list[Step] = []
+    if vessel.has_liquid:
+        steps.extend(_geometry(measured, row))
+        steps.extend(_liquid(measured, row))
+    if vessel.has_vapour:
+        steps.extend(_vapour(measured, row))
+    symbols = "M = M_liquid + M_vapour" if vessel.has_vapour else "M = M_liquid"
+    steps.append(_step("mass", "M", measured.result["mass"][row], "kg", symbols, ORDER))
+    return steps
+
+
+def _step(step: str, symbol: str, value: float, unit: str, method: str, reference: str) -> Step:
+    return {"step": step, "symbol": symbol, "value": float(value) if math.isfinite(value) else None, "unit": unit,
+            "method": method, "reference": reference}  # fmt: skip
+
+
+def _geometry(measured: Measured, row: int) -> Iterator[Step]:
+    vessel, result, state = measured.vessel(row), measured.result, measured.state
+    assert vessel.curve is not None
+    parameters = vessel.parameters
+    yield _step(
+        "innage",
+        "h",
+        at_row(state.level, row),
+        "m",
+        "level on the curve's datum; an ullage is taken from the reference height",
+        ORDER,
+    )
+    yield _step("volume", "V(h)", result["tank_volume"][row], "m³", vessel.curve.kind, vessel.curve.source)
+    yield _step("surface", "A(h)", result["surface_area"][row], "m²", "slope of the same curve", vessel.curve.source)
+    yield _step("shell temperature", "T_shell", result["liquid_shell_temperature"][row] - 273.15, "°C",
+                "that of the liquid (insulated)" if parameters["liquid_weight"] == 1.0 else "(7 T_liquid + T_ambient)/8",
+                "API MPMS ch. 12.1.1")  # fmt: skip
+    yield _step("shell factor", "K", result["shell_factor"][row], "1",
+                "1 + ε_x + ε_y + ε_z − ε_z h A/V; temperature and pressure strain together", STRAIN)  # fmt: skip
+    yield _step(
+        "free water",
+        "K V(h_w)",
+        result["free_water_volume"][row],
+        "m³",
+        "the same curve at the water's level",
+        ORDER,
+    )
+    if vessel.method & Method.ROOF:
+        yield _step("floating roof", "ΔV_roof", result["roof_volume"][row], "m³",
+                    "−W/ρ once afloat; W (1/ρ_table − 1/ρ) where the table deducts the roof; linear between landing and floating",
+                    "API MPMS ch. 12.1.1 (from memory)")  # fmt: skip
+    yield _step(
+        "gross observed volume",
+        "GOV",
+        result["gross_observed_volume"][row],
+        "m³",
+        "K V(h) − K V(h_w) + ΔV_roof",
+        ORDER,
+    )
+
+
+def _liquid(measured: Measured, row: int) -> Iterator[Step]:
+    result, state, vessel = measured.result, measured.state, measured.vessel(row)
+    chosen = measured.chosen["density"].usable[row]
+    yield _step("sample density", "ρ_s", at_row(state.density, row), "kg/m³",
+                "laboratory sample" if chosen else "the substance's own figure: no sample was ever read", "as read")  # fmt: skip
+    yield _step(
+        "sample temperature",
+        "T_s",
+        at_row(state.density_temperature, row) - 273.15,
+        "°C",
+        "as read",
+        "as read",
+    )
+    yield _step("sample pressure", "P_s", at_row(state.density_pressure, row) / 1000.0, "kPa", "absolute", "as read")
+    yield _step(
+        "liquid temperature",
+        "T",
+        at_row(state.liquid_temperature, row) - 273.15,
+        "°C",
+        "mean of the liquid",
+        "as read",
+    )
+    yield _step("liquid pressure", "P", _pressure(measured, row) / 1000.0, "kPa",
+                "absolute; of the space above the liquid: the liquid's own head is left out", ORDER)  # fmt: skip
+    yield _step(
+        "standard temperature",
+        "T_std",
+        vessel.parameters["standard_temperature"] - 273.15,
+        "°C",
+        "the site's base temperature",
+        "definition",
+    )
+    yield _step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa",
+                "absolute; the site's base pressure or, where higher, the vapour pressure at T_std", "definition")  # fmt: skip
+    yield _step(
+        "expansivity",
+        "β(t₀)",
+        vessel.expansivity[0],
+        "1/K",
+        "first coefficient of powers of T − t₀",
+        "definition",
+    )
+    yield _step("compressibility", "κ", float(vessel.compressibility * 1000.0), "1/kPa", "constant", "definition")
+    yield _step("density in the vessel", "ρ", result["liquid_density"][row], "kg/m³",
+                "ρ_s exp(−∫β dT from T_s to T + κ (P − P_s))", EXPONENTIAL)  # fmt: skip
+    yield _step(
+        "sediment and water",
+        "f",
+        at_row(state.sediment_water, row),
+        "1",
+        "volume fraction of the sample",
+        "as read",
+    )
+    yield _step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
+                "of the dry liquid: ρ_s taken to the standard state, less its water, over 1 − f", EXPONENTIAL)  # fmt: skip
+    yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³",
+                "GOV exp(−∫β dT from T_std to T + κ (P − P_std))", EXPONENTIAL)  # fmt: skip
+    yield _step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)
+    yield _step("liquid mass", "M_liquid", result["liquid_mass"][row], "kg", "NSV ρ_std", ORDER)
+
+
+def _pressure(measured: Measured, row: int) -> float:
+    """Pressure of the space: as read, or the vapour pressure that stood for it."""
+    read = at_row(measured.state.pressure, row)
+    return read if math.isfinite(read) else float(measured.result["vapour_pressure"][row])
+
+
+VAPOUR_BASIS = {
+    Mark.VAPOUR_AT_PRESSURE: "no vapour temperature is read: saturated at the measured pressure",
+    Mark.VAPOUR_SATURATED: "computed above saturation beside its liquid: taken as saturated at its pressure",
+    Mark.VAPOUR_AT_LIQUID_TEMPERATURE: "neither pressure nor vapour temperature is read: saturated at the liquid's temperature",
+}
+
+
+def _vapour(measured: Measured, row: int) -> Iterator[Step]:
+    result = measured.result
+    marks = Mark(int(result.marks[row]))
+    basis = next((words for mark, words in VAPOUR_BASIS.items() if marks & mark), "as read")
+    virial = ("virial equation", "definition")
+    yield _step("vapour volume", "V_v", result["vapour_volume"][row], "m³", "K_T V_total − K V(h)", STRAIN)
+    if Mark.VAPOUR_LEFT_OUT & marks:
+        yield _step(
+            "vapour mass",
+            "M_vapour",
+            0.0,
+            "kg",
+            "left out: it cannot be computed here",
+            "bounded in the budget",
+        )
+        return
+    yield _step(
+        "vapour pressure",
+        "P",
+        result["vapour_pressure"][row] / 1000.0,
+        "kPa",
+        f"absolute; {basis}",
+        "as read",
+    )
+    yield _step("vapour temperature", "T_v", result["vapour_temperature"][row] - 273.15, "°C", basis, "as read")
+    mixture = measured.mixture(row)
+    series = virial_columns((mixture,))
+    second, _, third, _ = series.second_and_third(result["vapour_temperature"][row])
+    values = {"B": (float(second) * 1e6, "cm³/mol"), "C": (float(third) * 1e12, "cm⁶/mol²")}
+    for note in series.describe(0):
+        value, unit = values.get(note.symbol, (math.nan, "1"))
+        if note.symbol in values:
+            yield _step(note.quantity, note.symbol, value, unit, note.method, note.reference)
+        else:
+            virial = (note.method, note.reference)
+    yield _step(
+        "molar mass",
+        "m",
+        float(series.molar_mass[0]) * 1e3,
+        "g/mol",
+        "of the vapour's composition",
+        "components",
+    )
+    yield _step("compressibility factor", "Z", result["compressibility_factor"][row], "1", *virial)
+    yield _step("reduced density", "ρ_r", result["reduced_density"][row], "1",
+                "molar density times the critical volume: how far from an ideal gas", virial[1])  # fmt: skip
+    yield _step("vapour density", "ρ_v", result["vapour_density"][row], "kg/m³", "P m/(Z R T_v)", virial[1])
+    yield _step("vapour mass", "M_vapour", result["vapour_mass"][row], "kg", "V_v ρ_v", ORDER)
+
+
+def budget_lines(measured: Measured, row: int) -> list[dict[str, Any]]:
+    """Every error of this mass: its size, its sensitivity and what it contributes, largest first."""
+    lines = []
+    for part in measured.parts:
+        sigma = at_row(part.sigma, row)
+        sensitivity = float(measured.result.sensitivities[part.sensitivity][row])
+        contribution = sensitivity * sigma
+        if contribution == 0.0 or not math.isfinite(contribution):
+            continue
+        scale = part.scale
+        lines.append(
+            {
+                "input": part.quantity,
+                "instrument": part.instrument(row),
+                "standard_uncertainty": sigma / scale,
+                "sensitivity": sensitivity * scale,
+                "contribution_kg": contribution,
+                "kind": part.kind,
+                "declared": bool(part.declared(row)),
+            }
+        )
+    return sorted(lines, key=lambda line: -abs(line["contribution_kg"]))
