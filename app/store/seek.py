@@ -3,7 +3,8 @@
 A list of what is wanted goes in as one parameter (JSON on SQLite, arrays on PostgreSQL). The order of the
 join is an instruction in all of them: CROSS JOIN after a materialised list on SQLite, LATERAL with a LIMIT
 or OFFSET on PostgreSQL; a plan that starts from the values reads all of them. Bounds on ``taken_at`` that
-hold for the whole list are parameters, so that PostgreSQL leaves out the months beyond them.
+hold for the whole list are parameters on PostgreSQL, which leaves out the months beyond them; SQLite would
+seek by these bounds instead of by each row's own instants, and read all between.
 """
 
 from __future__ import annotations
@@ -18,6 +19,8 @@ from sqlalchemy.engine import Connection
 
 from app.store.tables import BAD
 
+Wanted = Sequence[tuple[int, int, int]]  # a series and two instants
+
 # The revision that counts at an instant of series {series}: the newest that was known.
 _KNOWN_REVISION = """(SELECT max(n.revision) FROM {table} n
     WHERE n.site_id = :site AND n.series_id = {series} AND n.taken_at = {instant} {bounds}
@@ -29,14 +32,15 @@ _SQLITE_LIST = """WITH w(series_id, a, b) AS MATERIALIZED (
     FROM json_each(:wanted))"""
 _POSTGRESQL_LIST = """unnest(CAST(:series AS integer[]), CAST(:a AS bigint[]), CAST(:b AS bigint[]))
     AS w(series_id, a, b)"""
-_BOUNDS = "AND {row}.taken_at >= :lo AND {row}.taken_at <= :hi"
 
-Wanted = Sequence[tuple[int, int, int]]  # a series and two instants
+
+def _bounds(dialect: str, row: str) -> str:
+    return f"AND {row}.taken_at >= :lo AND {row}.taken_at <= :hi" if dialect == "postgresql" else ""
 
 
 def touched(connection: Connection, table: str, site_id: int, wanted: Wanted) -> set[int]:
     """The series that have any value from the first instant to the second."""
-    within = f"s.taken_at >= w.a AND s.taken_at <= w.b {_BOUNDS.format(row='s')}"
+    within = f"s.taken_at >= w.a AND s.taken_at <= w.b {_bounds(connection.dialect.name, 's')}"
     any_value = f"""EXISTS (
         SELECT 1 FROM {table} s WHERE s.site_id = :site AND s.series_id = w.series_id AND {within})"""
     source = "w" if connection.dialect.name == "sqlite" else _POSTGRESQL_LIST
@@ -53,7 +57,7 @@ def revisions(
     A row is (series, instant, revision, recorded_at, value, cited_id, quality).
     """
     columns = "s.series_id, s.taken_at, s.revision, s.recorded_at, s.value, s.cited_id, s.quality"
-    bounds = _BOUNDS.format(row="s")
+    bounds = _bounds(connection.dialect.name, "s")
     where = f"s.site_id = :site AND s.series_id = w.series_id AND s.taken_at = w.a {bounds}"
     if connection.dialect.name == "sqlite":
         query = f"{_SQLITE_LIST} SELECT {columns} FROM w CROSS JOIN {table} s WHERE {where}"
@@ -76,10 +80,11 @@ def neighbours(
 @cache
 def _neighbours(dialect: str, table: str, newest: bool) -> str:
     order = "DESC" if newest else "ASC"
-    bounds = _BOUNDS.format(row="n") if dialect == "postgresql" else ""
-    revision = _KNOWN_REVISION.format(table=table, series="w.series_id", instant="s.taken_at", bounds=bounds)
+    revision = _KNOWN_REVISION.format(
+        table=table, series="w.series_id", instant="s.taken_at", bounds=_bounds(dialect, "n")
+    )
     within = f"""s.site_id = :site AND s.series_id = w.series_id AND s.taken_at >= w.a AND s.taken_at <= w.b
-        {_BOUNDS.format(row="s")} AND {_USABLE} AND s.revision = {revision}"""
+        {_bounds(dialect, "s")} AND {_USABLE} AND s.revision = {revision}"""
     columns = "s.taken_at, s.value, s.cited_id, s.quality, s.revision, s.recorded_at"
     answer = "r.series_id, r.taken_at, r.value, c.body, r.quality, r.revision, r.recorded_at"
     cited = "LEFT JOIN cited c ON c.site_id = :site AND c.cited_id = r.cited_id"
@@ -102,8 +107,8 @@ def _text(query: str) -> sa.TextClause:
 
 
 def _parameters(connection: Connection, site_id: int, wanted: Wanted) -> dict[str, Any]:
-    bounds = {"site": site_id, "lo": min(row[1] for row in wanted), "hi": max(row[2] for row in wanted)}
     if connection.dialect.name == "sqlite":
-        return {**bounds, "wanted": json.dumps(wanted)}
+        return {"site": site_id, "wanted": json.dumps(wanted)}
     series, first, last = zip(*wanted, strict=True)
-    return {**bounds, "series": list(series), "a": list(first), "b": list(last)}
+    lists = {"series": list(series), "a": list(first), "b": list(last)}
+    return {"site": site_id, "lo": min(first), "hi": max(last), **lists}
