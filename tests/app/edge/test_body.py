@@ -2,27 +2,31 @@
 
 from __future__ import annotations
 
+import asyncio
 import gzip
 import json
+import tracemalloc
 from collections.abc import Iterator
 
 import pytest
+from fastapi import FastAPI, Request
 from fastapi.testclient import TestClient
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
+from starlette.types import Message
+
+from app.edge.body import PATIENCE, ReceivedBytes, decoded
+from app.errors import TooLarge
+from app.settings import Settings
 
 GOOD = {"rows": [{"vessel": "tk-1", "taken_at": "2026-03-14T06:00:00+01:00", "level_m": 8.2315}]}
 JSON = {"Content-Type": "application/json"}
 LIMIT = 20_000  # of the probe
 
 
-def post(
-    client: TestClient, content: bytes, path: str = "/rows", **headers: str
-) -> tuple[int, list[str], str]:
+def post(client: TestClient, content: bytes, path: str = "/rows", **headers: str) -> tuple[int, list[str], str]:
     """Status, codes (the problem's, then each error's place and code), and the text."""
-    answer = client.post(
-        path, content=content, headers=JSON | {k.replace("_", "-"): v for k, v in headers.items()}
-    )
+    answer = client.post(path, content=content, headers=JSON | {k.replace("_", "-"): v for k, v in headers.items()})
     if answer.status_code == 200:
         return 200, [], answer.text
     problem = answer.json()
@@ -71,6 +75,36 @@ def test_a_body_over_the_limit_is_refused_whether_its_length_is_announced_or_not
         answer = client.post("/rows", content=content, headers=JSON)
         assert (answer.status_code, answer.json()["code"]) == (413, "too_large")
         assert answer.headers["content-type"] == "application/problem+json"
+
+
+def test_of_a_body_far_over_the_limit_only_a_few_times_the_limit_is_received() -> None:
+    blocks = 0
+
+    async def receive() -> Message:
+        nonlocal blocks
+        blocks += 1
+        return {"type": "http.request", "body": b" " * 1000, "more_body": blocks < 1000}
+
+    app = FastAPI()
+    app.state.settings = Settings(max_body_mb=LIMIT / 1e6)
+    headers = [(b"content-type", b"application/json")]
+    request = Request({"type": "http", "method": "POST", "headers": headers, "app": app}, receive)
+    with pytest.raises(TooLarge):
+        asyncio.run(ReceivedBytes("application/json")(request))
+    assert blocks == PATIENCE * LIMIT // 1000 + 1
+
+
+def test_a_bomb_is_not_inflated_to_find_out_that_it_is_one(probe: FastAPI) -> None:
+    bomb = gzip.compress(b" " * 50_000_000)
+    headers = [(b"content-encoding", b"gzip")]
+    request = Request({"type": "http", "method": "POST", "headers": headers, "app": probe})
+    tracemalloc.start()
+    try:
+        with pytest.raises(TooLarge):
+            decoded(request, bomb)
+        assert tracemalloc.get_traced_memory()[1] < 1_000_000
+    finally:
+        tracemalloc.stop()
 
 
 def test_a_body_of_exactly_the_limit_is_read(client: TestClient) -> None:
@@ -165,9 +199,9 @@ def test_a_refusal_never_repeats_what_was_sent(client: TestClient, content: byte
 
 
 scalars = st.none() | st.booleans() | st.integers() | st.floats() | st.text(max_size=20)
-names = st.sampled_from(
-    ["rows", "vessel", "taken_at", "level_m", "count", "values", "shape", "kind"]
-) | st.text(max_size=8)
+names = st.sampled_from(["rows", "vessel", "taken_at", "level_m", "count", "values", "shape", "kind"]) | st.text(
+    max_size=8
+)
 documents = st.recursive(
     scalars,
     lambda inner: st.lists(inner, max_size=4) | st.dictionaries(names, inner, max_size=6),
