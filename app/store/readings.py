@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Iterator, Sequence
+from itertools import chain, pairwise
 from typing import Any, Literal, NamedTuple
 
 import sqlalchemy as sa
@@ -254,8 +255,8 @@ def course(
 
 def _last_revisions(rows: Sequence[Any]) -> Iterator[Any]:
     """Of rows ordered by series, instant and revision, the last of each instant."""
-    for row, following_row in zip(rows, [*rows[1:], None], strict=True):
-        if following_row is None or row[1] != following_row[1] or row[0] != following_row[0]:
+    for row, after in pairwise(chain(rows, (None,))):
+        if after is None or row[1] != after[1] or row[0] != after[0]:
             yield row
 
 
