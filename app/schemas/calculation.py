@@ -25,9 +25,7 @@ class CalculationReading(Values):
 
     model_config = ConfigDict(
         json_schema_extra={
-            "examples": [
-                {"level_m": 8.231, "liquid_temperature_c": 17.4, "barometric_pressure_kpa_abs": 100.9}
-            ]
+            "examples": [{"level_m": 8.231, "liquid_temperature_c": 17.4, "barometric_pressure_kpa_abs": 100.9}]
         }
     )
 
@@ -69,9 +67,7 @@ class InventoryCalculation(Body):
         }
     )  # fmt: skip
 
-    site: Conditions = Field(
-        default=Conditions(), description="The states that standard volumes refer to, and the air"
-    )
+    site: Conditions = Field(default=Conditions(), description="The states that standard volumes refer to, and the air")
     vessel: CalculationVessel = Field(description="The vessel")
     substance: Substance = Field(description="What it holds")
     readings: Items[CalculationReading] = Field(max_length=CALCULATED, description="The readings")
@@ -127,21 +123,15 @@ class Stream(Body):
     value: float | None = Field(
         default=None, ge=-1e15, le=1e15, description="As measured; null: not measured [any one unit]"
     )
-    random: float = Field(
-        default=0.0, ge=0, le=1e15, description="Standard uncertainty of its own [unit of the value]"
-    )
-    systematic: Items[SharedError] = Field(
-        default=(), max_length=100, description="Errors that it shares with others"
-    )
+    random: float = Field(default=0.0, ge=0, le=1e15, description="Standard uncertainty of its own [unit of the value]")
+    systematic: Items[SharedError] = Field(default=(), max_length=100, description="Errors that it shares with others")
 
     @model_validator(mode="after")
     def _measured_with_uncertainty(self) -> Self:
         if self.from_ == self.to:
             raise refusal("impossible", "from and to are two different ends", "to")
         if self.value is not None and self.random == 0 and not any(one.value for one in self.systematic):
-            raise refusal(
-                "missing", "A measured stream has an uncertainty: random, systematic, or both", "random"
-            )
+            raise refusal("missing", "A measured stream has an uncertainty: random, systematic, or both", "random")
         names = [one.instrument for one in self.systematic]
         if len(set(names)) < len(names):
             raise refusal("twice", "An instrument stands once in systematic", "systematic")
@@ -185,9 +175,7 @@ class BalanceCalculation(Body):
         for at, one in enumerate(self.streams):
             for name, end in (("from", one.from_), ("to", one.to)):
                 if end not in known and not end.startswith(BOUNDARY):
-                    raise refusal(
-                        "unknown_node", "A stream's end is one of nodes, or a boundary", "streams", at, name
-                    )
+                    raise refusal("unknown_node", "A stream's end is one of nodes, or a boundary", "streams", at, name)
         return self
 
 
@@ -207,9 +195,7 @@ class StreamBalance(Answer):
 
     id: str = Field(description="Its id")
     value: Known = Field(description="As measured [unit of the value]")
-    reconciled: Known = Field(
-        description="As reconciled; null where nothing determines it [unit of the value]"
-    )
+    reconciled: Known = Field(description="As reconciled; null where nothing determines it [unit of the value]")
     uncertainty: Known = Field(description="Standard uncertainty of reconciled [unit of the value]")
     adjustment: Known = Field(description="Measured less reconciled [unit of the value]")
     score: Known = Field(description="Maximum-power statistic of a fault of this stream alone [1]")
@@ -224,9 +210,7 @@ class NodeBalance(Answer):
     )
 
     id: str = Field(description="Its name")
-    imbalance: Known = Field(
-        description="Out less in, as measured; null where a stream is not [unit of the values]"
-    )
+    imbalance: Known = Field(description="Out less in, as measured; null where a stream is not [unit of the values]")
     uncertainty: Known = Field(description="Standard uncertainty of the imbalance [unit of the values]")
     score: Known = Field(description="Maximum-power statistic of a loss at this node alone [1]")
 

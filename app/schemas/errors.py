@@ -115,6 +115,8 @@ def _sentence(error: Mapping[str, Any], steps: Sequence[int | str]) -> str:
     unit = unit_of(next((step for step in reversed(steps) if isinstance(step, str)), ""))
     measure = f" {unit}" if unit else ""
     limits = error.get("ctx", {})
+    if kind == "extra_forbidden" and len(steps) < len(error["loc"]):
+        return f"{name} has a field that it does not know."
     if kind in _LIMITS:
         key, words = _LIMITS[kind]
         return f"{name} is {words} {limits[key]:.10g}{measure}."

@@ -48,12 +48,8 @@ class Instrument(Body):
     offset: float | None = Field(
         default=None, ge=-1e6, le=1e6, description="Correction added to each reading [unit of the quantity]"
     )
-    calibrated_at: Instant | None = Field(
-        default=None, description="When its unknown offset was last renewed"
-    )
-    instrument: Text | None = Field(
-        default=None, description="Name, where several vessels share it and its error"
-    )
+    calibrated_at: Instant | None = Field(default=None, description="When its unknown offset was last renewed")
+    instrument: Text | None = Field(default=None, description="Name, where several vessels share it and its error")
     local: float | None = Field(
         default=None, ge=0, le=100, description="Error of a capacity table that varies along the level [%]"
     )
@@ -67,9 +63,7 @@ def _of_their_kind(instruments: dict[str, Instrument]) -> dict[str, Instrument]:
         wrong = ("random", "offset") if quantity == "capacity_pct" else ("local", "local_span_m")
         for name in wrong:
             if getattr(one, name) is not None:
-                owner = (
-                    "no part of capacity_pct" if quantity == "capacity_pct" else "a part of capacity_pct only"
-                )
+                owner = "no part of capacity_pct" if quantity == "capacity_pct" else "a part of capacity_pct only"
                 raise refusal("conflicting", f"{name} is {owner}", quantity, name)
     return instruments
 
@@ -88,9 +82,7 @@ class SourceOfValues(Body):
             "examples": [
                 {
                     "source": "hand",
-                    "instruments": {
-                        "level_m": {"random": 0.0015, "systematic": 0.001, "instrument": "tape 7"}
-                    },
+                    "instruments": {"level_m": {"random": 0.0015, "systematic": 0.001, "instrument": "tape 7"}},
                 }
             ]
         }
@@ -131,9 +123,7 @@ def _no_older_than_may_be(ages: dict[str, float | None]) -> dict[str, float | No
         if age is None:
             raise refusal("impossible", f"{quantity} cannot hold until replaced; give an age in s", quantity)
         if age > LONGEST_AGE_S:
-            raise refusal(
-                "out_of_range", f"{quantity} holds at most 35 days, {LONGEST_AGE_S:.0f} s", quantity
-            )
+            raise refusal("out_of_range", f"{quantity} holds at most 35 days, {LONGEST_AGE_S:.0f} s", quantity)
     return ages
 
 

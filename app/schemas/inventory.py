@@ -35,9 +35,7 @@ class InputUsed(Answer):
 
     model_config = ConfigDict(
         json_schema_extra={
-            "examples": [
-                {"quantity": "level_m", "value": 8.231, "age_s": 120.0, "source": "radar", "quality": "good"}
-            ]
+            "examples": [{"quantity": "level_m", "value": 8.231, "age_s": 120.0, "source": "radar", "quality": "good"}]
         }
     )
 
@@ -46,13 +44,9 @@ class InputUsed(Answer):
     composition: dict[str, float] | None = Field(
         default=None, exclude_if=is_none, description="Mole fractions by component, of a composition [1]"
     )
-    age_s: Known = Field(
-        default=None, description="Time since it was measured; negative after the instant [s]"
-    )
+    age_s: Known = Field(default=None, description="Time since it was measured; negative after the instant [s]")
     source: str | None = Field(default=None, description="Where it comes from; null where it is assumed")
-    quality: Literal["good", "uncertain", "assumed"] = Field(
-        description="Its quality, or assumed: never read"
-    )
+    quality: Literal["good", "uncertain", "assumed"] = Field(description="Its quality, or assumed: never read")
 
 
 class Check(Answer):
@@ -76,25 +70,19 @@ class Check(Answer):
     difference: Known = Field(
         description="Second value less the one that counts, at its instant [unit of the quantity]"
     )
-    standard_uncertainty: Known = Field(
-        description="Standard uncertainty of the difference [unit of the quantity]"
-    )
+    standard_uncertainty: Known = Field(description="Standard uncertainty of the difference [unit of the quantity]")
 
 
 class DefinitionUsed(Answer):
     """The revision of a definition that a result was computed by."""
 
     model_config = ConfigDict(
-        json_schema_extra={
-            "examples": [{"kind": "vessel", "id": "tk-12", "effective_from": None, "revision": 1}]
-        }
+        json_schema_extra={"examples": [{"kind": "vessel", "id": "tk-12", "effective_from": None, "revision": 1}]}
     )
 
     kind: Literal["site", "substance", "vessel", "meter"] = Field(description="What is defined")
     id: str = Field(description="Its id")
-    effective_from: AnsweredInstant | None = Field(
-        description="From when it holds; null: for all time before, too"
-    )
+    effective_from: AnsweredInstant | None = Field(description="From when it holds; null: for all time before, too")
     revision: int = Field(ge=1, description="Its revision")
 
 
@@ -117,7 +105,7 @@ class Step(Answer):
 
     step: str = Field(description="What is computed")
     symbol: str = Field(description="Its symbol")
-    value: Known = Field(description="Its value, in unit")
+    value: Known = Field(description="Its value [as unit says]")
     unit: str = Field(description="Unit of the value; 1 for a ratio")
     method: str = Field(description="How it is computed")
     reference: str = Field(description="Where the method is published, or common practice")
@@ -139,15 +127,11 @@ class Contribution(Answer):
     )  # fmt: skip
 
     input: str = Field(description="The input that the error is of")
-    instrument: str | None = Field(
-        default=None, description="The instrument whose error it is, where there is one"
-    )
+    instrument: str | None = Field(default=None, description="The instrument whose error it is, where there is one")
     standard_uncertainty: Known = Field(description="Standard uncertainty of the input [unit of the input]")
     sensitivity: Known = Field(description="Change of mass per unit of the input [kg per unit of the input]")
     contribution_kg: Known = Field(description="Their product, with its sign [kg]")
-    kind: Literal["random", "systematic", "model"] = Field(
-        description="Fresh each time, standing, or of the method"
-    )
+    kind: Literal["random", "systematic", "model"] = Field(description="Fresh each time, standing, or of the method")
     declared: bool = Field(description="False where the uncertainty is a default")
 
 
@@ -159,7 +143,8 @@ class Inventory(Answer):
             "examples": [
                 {
                     "vessel": "tk-12", "substance": "gasoline-95", "at": "2026-03-14T05:00:00Z",
-                    "status": "measured", "fill_pct": 45.2, "gross_observed_volume_m3": 15957.4, "free_water_volume_m3": 0.0,
+                    "status": "measured", "fill_pct": 45.2, "gross_observed_volume_m3": 15957.4,
+                    "free_water_volume_m3": 0.0,
                     "gross_standard_volume_m3": 15910.3, "net_standard_volume_m3": 15907.1,
                     "liquid_density_kg_m3": 742.9, "standard_density_kg_m3": 745.1,
                     "liquid_mass_kg": 11852380.0, "mass_kg": 11852380.0, "mass_uncertainty_kg": 9480.0,
@@ -176,14 +161,10 @@ class Inventory(Answer):
         }
     )  # fmt: skip
 
-    vessel: str | None = Field(
-        default=None, exclude_if=is_none, description="The vessel; absent in a calculation"
-    )
+    vessel: str | None = Field(default=None, exclude_if=is_none, description="The vessel; absent in a calculation")
     substance: str | None = Field(default=None, exclude_if=is_none, description="What it held")
     at: AnsweredInstant | None = Field(default=None, exclude_if=is_none, description="The instant")
-    status: Status = Field(
-        description="Whether the mass is measured, uncertain, unmeasured, or out of service"
-    )
+    status: Status = Field(description="Whether the mass is measured, uncertain, unmeasured, or out of service")
     reason: Said | None = Field(default=None, exclude_if=is_none, description="Why it is unmeasured")
     fill_pct: Known = Field(default=None, description="Liquid and water in parts of the capacity [%]")
     gross_observed_volume_m3: Known = Field(
@@ -191,20 +172,12 @@ class Inventory(Answer):
     )
     free_water_volume_m3: Known = Field(default=None, description="Free water below the liquid [m³]")
     gross_standard_volume_m3: Known = Field(default=None, description="Liquid in its standard state [m³]")
-    net_standard_volume_m3: Known = Field(
-        default=None, description="The same without sediment and water [m³]"
-    )
-    liquid_density_kg_m3: Known = Field(
-        default=None, description="Density of the liquid in the vessel [kg/m³]"
-    )
+    net_standard_volume_m3: Known = Field(default=None, description="The same without sediment and water [m³]")
+    liquid_density_kg_m3: Known = Field(default=None, description="Density of the liquid in the vessel [kg/m³]")
     standard_density_kg_m3: Known = Field(default=None, description="Density in its standard state [kg/m³]")
-    liquid_mass_kg: Known = Field(
-        default=None, description="Mass of the liquid, without sediment and water [kg]"
-    )
+    liquid_mass_kg: Known = Field(default=None, description="Mass of the liquid, without sediment and water [kg]")
     vapour_volume_m3: Known = Field(default=None, description="Volume above the liquid, or of the gas [m³]")
-    compressibility_factor: Known = Field(
-        default=None, description="Compressibility factor of the vapour or gas [1]"
-    )
+    compressibility_factor: Known = Field(default=None, description="Compressibility factor of the vapour or gas [1]")
     vapour_mass_kg: Known = Field(default=None, description="Mass of the substance's vapour or gas [kg]")
     gas_standard_volume_m3: Known = Field(default=None, description="The gas at the gas base conditions [m³]")
     mass_kg: Known = Field(default=None, description="Liquid plus vapour of the substance [kg]")

@@ -18,9 +18,7 @@ class Page(Answer, Generic[T]):
     """Part of a listing, oldest first; its pages share what was known."""
 
     model_config = ConfigDict(
-        json_schema_extra={
-            "examples": [{"items": [], "next": None, "known_at": "2026-03-14T05:00:02.417311Z"}]
-        }
+        json_schema_extra={"examples": [{"items": [], "next": None, "known_at": "2026-03-14T05:00:02.417311Z"}]}
     )
 
     items: Items[T] = Field(description="The items of this page")
@@ -48,9 +46,7 @@ class Defined(Answer, Generic[T]):
     )
 
     id: str = Field(description="Its id")
-    effective_from: AnsweredInstant | None = Field(
-        description="From when it holds; null: for all time before, too"
-    )
+    effective_from: AnsweredInstant | None = Field(description="From when it holds; null: for all time before, too")
     revision: int = Field(ge=1, description="1 for the first text of this effective_from, then counted up")
     recorded_at: AnsweredInstant = Field(description="When it was recorded")
     definition: T = Field(description="The body as it was sent, defaults not filled in")

@@ -48,9 +48,7 @@ class Values(Body):
 
     model_config = ConfigDict(json_schema_extra={"examples": [{"source": "radar", "level_m": 8.231}]})
 
-    source: Source = Field(
-        default="", description="Where the values come from, such as radar, hand or laboratory"
-    )
+    source: Source = Field(default="", description="Where the values come from, such as radar, hand or laboratory")
     quality: Quality = Field(default="good", description="One word for all, or a map from quantity to word")
 
     level_m: float | None = Field(default=None, ge=-10, le=150, description="Level above the zero [m]")
@@ -131,9 +129,7 @@ class Values(Body):
         default=None, ge=0, le=1e7, description="Rain, snow and other load on the floating roof [kg]"
     )
     empty: bool | None = Field(default=None, description="True: a stock-take of 0 ± 0; false says nothing")
-    sample: Text | None = Field(
-        default=None, description="Id of the sample; values that cite one share its error"
-    )
+    sample: Text | None = Field(default=None, description="Id of the sample; values that cite one share its error")
     sample_holds_from: Instant | None = Field(
         default=None, description="From when the sample stands for the content; taken_at if left out"
     )
@@ -186,9 +182,7 @@ class Reading(Values):
             raise refusal("no_value", "A reading gives a value of at least one quantity")
         site = [name for name in named if name in QUANTITIES_OF_SITE]
         if self.vessel is None and len(site) < len(named):
-            detail = (
-                "Without a vessel a reading holds ambient_temperature_c and barometric_pressure_kpa_abs only"
-            )
+            detail = "Without a vessel a reading holds ambient_temperature_c and barometric_pressure_kpa_abs only"
             raise refusal("missing", detail, "vessel")
         if self.vessel is not None and "barometric_pressure_kpa_abs" in named:
             detail = "barometric_pressure_kpa_abs is the site's: send it in a reading without vessel"
@@ -238,9 +232,7 @@ class StoredValue(Answer):
     composition: dict[str, float] | None = Field(
         default=None, exclude_if=is_none, description="Mole fractions by component, of a composition [1]"
     )
-    sample: str | None = Field(
-        default=None, exclude_if=is_none, description="The sample that the value cites"
-    )
+    sample: str | None = Field(default=None, exclude_if=is_none, description="The sample that the value cites")
     quality: QualityWord = Field(description="Its quality; bad: withdrawn")
     recorded_at: AnsweredInstant = Field(description="When it was recorded")
     revision: int = Field(ge=1, description="1 for the first value of this instant, then counted up")

@@ -11,9 +11,7 @@ from pydantic_core import PydanticCustomError
 from app.schemas.inventory import Status
 from app.schemas.types import Answer, AnsweredInstant, Body, Instant, Items, Known, is_none, refusal
 
-RECONCILIATION_PATTERN = (
-    r"^([0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8}T[0-9]{6}Z--[0-9]{8}T[0-9]{6}Z)(\.[1-9][0-9]{0,8})?$"
-)
+RECONCILIATION_PATTERN = r"^([0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8}T[0-9]{6}Z--[0-9]{8}T[0-9]{6}Z)(\.[1-9][0-9]{0,8})?$"
 ReconciliationId = Annotated[str, StringConstraints(pattern=RECONCILIATION_PATTERN)]
 """A day or two instants in basic UTC, and the revision; without one, the newest."""
 Observability = Literal["redundant", "nonredundant", "observable", "unobservable"]
@@ -23,9 +21,7 @@ def _real_date(text: str) -> str:
     try:
         date.fromisoformat(text)
     except ValueError:
-        raise PydanticCustomError(
-            "not_a_date", "There is no such date; a day is a text such as 2026-03-14"
-        ) from None
+        raise PydanticCustomError("not_a_date", "There is no such date; a day is a text such as 2026-03-14") from None
     return text
 
 
@@ -57,9 +53,7 @@ class ReconciliationRequest(Body):
         if (self.day is None) == (self.opening is None and self.closing is None):
             raise refusal("one_of", "A period is given by day, or by opening and closing")
         if self.day is None and (self.opening is None or self.closing is None):
-            raise refusal(
-                "missing", "opening and closing come together", "closing" if self.opening else "opening"
-            )
+            raise refusal("missing", "opening and closing come together", "closing" if self.opening else "opening")
         if self.opening is not None and self.closing is not None and self.closing <= self.opening:
             raise refusal("impossible", "closing is after opening", "closing")
         return self
@@ -73,9 +67,7 @@ class LimitedBy(Answer):
     )
 
     instrument: str = Field(description="The instrument")
-    detectable_without_it_kg: Known = Field(
-        description="Imbalance that could be seen if it had no error [kg]"
-    )
+    detectable_without_it_kg: Known = Field(description="Imbalance that could be seen if it had no error [kg]")
 
 
 class VesselBook(Answer):
@@ -97,9 +89,7 @@ class VesselBook(Answer):
     )  # fmt: skip
 
     vessel: str = Field(description="The vessel")
-    status: Status = Field(
-        description="Whether its masses are measured, uncertain, unmeasured, or out of service"
-    )
+    status: Status = Field(description="Whether its masses are measured, uncertain, unmeasured, or out of service")
     verdict: Literal["pass", "fail", "inconclusive"] | None = Field(
         default=None,
         description="fail if flagged; inconclusive if a limit is set that could not be seen or is passed",
@@ -113,9 +103,7 @@ class VesselBook(Answer):
     imbalance_kg: Known = Field(default=None, description="Measured closing mass less book mass [kg]")
     imbalance_uncertainty_kg: Known = Field(default=None, description="Its standard uncertainty [kg]")
     score: Known = Field(default=None, description="Imbalance in parts of its standard uncertainty [1]")
-    p_value: Known = Field(
-        default=None, description="Chance of such a score or a larger if nothing is wrong [1]"
-    )
+    p_value: Known = Field(default=None, description="Chance of such a score or a larger if nothing is wrong [1]")
     detectable_imbalance_kg: Known = Field(
         default=None, description="Imbalance that would be flagged with a chance of 95 % [kg]"
     )
@@ -162,9 +150,7 @@ class TransferBook(Answer):
     measured_mass_kg: Known = Field(
         default=None, description="Its part in the period, as measured; null unmetered [kg]"
     )
-    reconciled_mass_kg: Known = Field(
-        default=None, exclude_if=is_none, description="The same as reconciled [kg]"
-    )
+    reconciled_mass_kg: Known = Field(default=None, exclude_if=is_none, description="The same as reconciled [kg]")
     reconciled_uncertainty_kg: Known = Field(
         default=None, exclude_if=is_none, description="Standard uncertainty of the reconciled mass [kg]"
     )
@@ -180,17 +166,13 @@ class VesselGroup(Answer):
 
     model_config = ConfigDict(
         json_schema_extra={
-            "examples": [
-                {"members": ["tk-12", "tk-14"], "degrees_of_freedom": 2, "p_value": 0.44, "statistic": 1.64}
-            ]
+            "examples": [{"members": ["tk-12", "tk-14"], "degrees_of_freedom": 2, "p_value": 0.44, "statistic": 1.64}]
         }
     )
 
     members: Items[str] = Field(description="The vessels")
     degrees_of_freedom: int = Field(ge=0, description="Independent balances")
-    p_value: Known = Field(
-        default=None, description="Chance of such a statistic or a larger if nothing is wrong [1]"
-    )
+    p_value: Known = Field(default=None, description="Chance of such a statistic or a larger if nothing is wrong [1]")
     statistic: Known = Field(
         default=None, exclude_if=is_none, description="Weighted sum of squares, with detail=true [1]"
     )
@@ -258,6 +240,4 @@ class Reconciliation(Answer):
     groups: Items[VesselGroup] | None = Field(
         default=None, exclude_if=is_none, description="Vessels tied together by transfers, tested as one"
     )
-    totals: Items[PeriodTotal] | None = Field(
-        default=None, exclude_if=is_none, description="One for each substance"
-    )
+    totals: Items[PeriodTotal] | None = Field(default=None, exclude_if=is_none, description="One for each substance")

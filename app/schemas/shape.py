@@ -41,9 +41,7 @@ class TorisphericalHead(Body):
     """A spherical crown joined to the shell by a toroidal knuckle."""
 
     model_config = ConfigDict(
-        json_schema_extra={
-            "examples": [{"kind": "torispherical", "crown_radius_m": 2.4, "knuckle_radius_m": 0.24}]
-        }
+        json_schema_extra={"examples": [{"kind": "torispherical", "crown_radius_m": 2.4, "knuckle_radius_m": 0.24}]}
     )
 
     kind: Literal["torispherical"] = Field(description="Crown and knuckle")
@@ -63,9 +61,7 @@ class ConicalHead(Body):
 class ConicalBottom(ConicalHead):
     """A cone down from the shell, or up into the tank."""
 
-    model_config = ConfigDict(
-        json_schema_extra={"examples": [{"kind": "cone", "depth_m": 0.35, "inverted": True}]}
-    )
+    model_config = ConfigDict(json_schema_extra={"examples": [{"kind": "cone", "depth_m": 0.35, "inverted": True}]})
 
     inverted: bool = Field(default=False, description="Whether it points up into the tank")
 
@@ -128,9 +124,7 @@ class VerticalCylinder(Body):
         _head_fits(self.top, self.diameter_m, "top")
         inverted = isinstance(self.bottom, ConicalBottom) and self.bottom.inverted
         if inverted and self.bottom.depth_m >= self.height_m:  # type: ignore[union-attr]
-            raise refusal(
-                "impossible", "depth_m of an inverted bottom is less than height_m", "bottom", "depth_m"
-            )
+            raise refusal("impossible", "depth_m of an inverted bottom is less than height_m", "bottom", "depth_m")
         return self
 
 
@@ -240,9 +234,7 @@ class CapacityTable(Body):
     of: Literal["vertical_cylinder", "horizontal_cylinder", "sphere", "box"] | None = Field(
         default=None, description="The shape that the table is of"
     )
-    diameter_m: float | None = Field(
-        default=None, gt=0, le=200, description="Inside diameter of that shape [m]"
-    )
+    diameter_m: float | None = Field(default=None, gt=0, le=200, description="Inside diameter of that shape [m]")
     interpolation: Literal["linear", "monotone_cubic"] = Field(
         default="linear", description="Between rows; beyond them there is nothing"
     )

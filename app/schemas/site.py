@@ -36,9 +36,7 @@ def _known_zone(name: str) -> str:
             return name
     except (ZoneInfoNotFoundError, ValueError, OSError):
         pass
-    raise PydanticCustomError(
-        "unknown_zone", "time_zone is a name of the IANA data base, such as Europe/Oslo"
-    )
+    raise PydanticCustomError("unknown_zone", "time_zone is a name of the IANA data base, such as Europe/Oslo")
 
 
 ZONE_PATTERN = r"^[A-Za-z][A-Za-z0-9_+-]*(/[A-Za-z0-9_+-]+)*$"
@@ -49,9 +47,7 @@ LocalTime = Annotated[str, StringConstraints(pattern=r"^([01][0-9]|2[0-3]):[0-5]
 class Conditions(Body):
     """The states that standard volumes refer to, and the air."""
 
-    model_config = ConfigDict(
-        json_schema_extra={"examples": [{"base_temperature_c": 15.0, "elevation_m": 12.0}]}
-    )
+    model_config = ConfigDict(json_schema_extra={"examples": [{"base_temperature_c": 15.0, "elevation_m": 12.0}]})
 
     base_temperature_c: float = Field(
         default=15.0, ge=-50, le=100, description="Temperature of standard volumes of liquid [°C]"
@@ -108,9 +104,7 @@ class Site(Conditions):
     effective_from: Instant | None = Field(
         default=None, description="From when this definition holds; the first may leave it out"
     )
-    day_starts_at: LocalTime = Field(
-        default="06:00", description="Local time of day at which the site's day starts"
-    )
+    day_starts_at: LocalTime = Field(default="06:00", description="Local time of day at which the site's day starts")
     false_alarms_per_month: float = Field(
         default=0.5,
         gt=0,
@@ -118,9 +112,7 @@ class Site(Conditions):
         description="Mean number of nights with any flag when nothing is wrong [per month]",
     )
     window_nights: int = Field(default=30, ge=2, le=400, description="Nights that trends look back over")
-    imbalance_limit: ImbalanceLimit | None = Field(
-        default=None, description="How much may be missing over a night"
-    )
+    imbalance_limit: ImbalanceLimit | None = Field(default=None, description="How much may be missing over a night")
     close_delay_s: float = Field(
         default=1800.0,
         ge=0,

@@ -61,9 +61,7 @@ Rows = Annotated[
     Field(min_length=2, max_length=1000),
     AfterValidator(_temperatures_rise),
 ]
-NumberOrRows = Annotated[
-    Annotated[float, Tag("number")] | Annotated[Rows, Tag("list")], _NUMBER_OR_LIST, UNTAGGED
-]
+NumberOrRows = Annotated[Annotated[float, Tag("number")] | Annotated[Rows, Tag("list")], _NUMBER_OR_LIST, UNTAGGED]
 Expansivity = Annotated[
     Annotated[float, Field(ge=-0.01, le=0.05), Tag("number")]
     | Annotated[Items[float], Field(min_length=1, max_length=8), Tag("list")],
@@ -100,9 +98,7 @@ class ExpansivityLiquid(Body):
         default=None, ge=0, le=5000,
         description="Standard uncertainty of the density; 1 % of it if left out [kg/m³]",
     )  # fmt: skip
-    at_temperature_c: float = Field(
-        default=15.0, ge=-273.15, le=1000, description="Temperature t₀ of the density [°C]"
-    )
+    at_temperature_c: float = Field(default=15.0, ge=-273.15, le=1000, description="Temperature t₀ of the density [°C]")
     at_pressure_kpa_abs: float | None = Field(
         default=None, ge=0, le=1e6,
         description="Absolute pressure of the density; left out: the site's base pressure or, where higher, "
@@ -134,9 +130,7 @@ class Component(Body):
 
     id: ComponentId = Field(description="Name of the component, such as propane or carbon-dioxide")
     mole_fraction: float = Field(gt=0, le=1, description="Mole fraction [1]")
-    critical_temperature_k: float | None = Field(
-        default=None, gt=0, le=5000, description="Critical temperature [K]"
-    )
+    critical_temperature_k: float | None = Field(default=None, gt=0, le=5000, description="Critical temperature [K]")
     critical_pressure_kpa_abs: float | None = Field(
         default=None, gt=0, le=1e6, description="Critical pressure [kPa absolute]"
     )
@@ -179,19 +173,13 @@ class VirialVapour(Body):
 
     model: Literal["virial"] = Field(description="The virial equation of state")
     components: Items[Component] = Field(min_length=1, max_length=50, description="The mixture")
-    form: Literal["density", "pressure"] = Field(
-        default="density", description="Series in density, or in pressure"
-    )
-    terms: Literal[2, 3] = Field(
-        default=3, description="Terms kept: to the second, or to the third coefficient"
-    )
+    form: Literal["density", "pressure"] = Field(default="density", description="Series in density, or in pressure")
+    terms: Literal[2, 3] = Field(default=3, description="Terms kept: to the second, or to the third coefficient")
     coefficients: Literal["fitted", "correlation", "measured"] | None = Field(
         default=None,
         description="Where B and C come from; left out: fitted where all components are, else correlation",
     )
-    second_virial: Literal["tsonopoulos", "abbott"] = Field(
-        default="tsonopoulos", description="Correlation for B"
-    )
+    second_virial: Literal["tsonopoulos", "abbott"] = Field(default="tsonopoulos", description="Correlation for B")
     third_virial: Literal["orbey_vera"] = Field(default="orbey_vera", description="Correlation for C")
     second_virial_cm3_mol: NumberOrRows | None = Field(
         default=None, description="Measured B: a number, or rows of [t_c, value] with their range [cm³/mol]"

@@ -110,9 +110,7 @@ class Transfer(MovedQuantity):
         alias="from", description="The vessel or boundary that lost it, such as tk-12 or boundary:jetty-1"
     )
     to: End = Field(description="The vessel or boundary that gained it")
-    by: Literal["meter", "weighbridge", "ship", "gauging", "statement"] = Field(
-        description="How it was measured"
-    )
+    by: Literal["meter", "weighbridge", "ship", "gauging", "statement"] = Field(description="How it was measured")
     meter: Id | None = Field(default=None, description="The meter, where it was measured by one")
     started_at: Instant = Field(description="When it started")
     ended_at: Instant | None = Field(default=None, description="When it ended; left out: still running")
@@ -200,19 +198,13 @@ class Transfer(MovedQuantity):
         earlier, at_least = self.started_at, 0.0
         for at, one in enumerate(self.progress):
             if one.quantities() != mine:
-                raise refusal(
-                    "conflicting", "progress gives the quantity that the transfer gives", "progress", at
-                )
+                raise refusal("conflicting", "progress gives the quantity that the transfer gives", "progress", at)
             running = float(getattr(one, mine[0])) if mine else 0.0
             late = self.ended_at is not None and one.at > self.ended_at
             if one.at < earlier or late:
-                raise refusal(
-                    "impossible", "progress stands in order, within the transfer", "progress", at, "at"
-                )
+                raise refusal("impossible", "progress stands in order, within the transfer", "progress", at, "at")
             if not at_least <= running <= (getattr(self, mine[0]) if mine else 0.0):
-                raise refusal(
-                    "impossible", "progress never falls, and ends at the whole", "progress", at, *mine
-                )
+                raise refusal("impossible", "progress never falls, and ends at the whole", "progress", at, *mine)
             earlier, at_least = one.at, running
         return self
 

@@ -89,9 +89,7 @@ def parse_instant(text: object) -> int:
         raise PydanticCustomError("not_an_instant", "There is no such date, time or offset") from None
     microseconds += int(fraction[:6].ljust(6, "0")) if fraction else 0
     if not _FIRST <= microseconds < _END:
-        raise PydanticCustomError(
-            "not_an_instant", f"An instant lies in the years {FIRST_YEAR} to {LAST_YEAR}"
-        )
+        raise PydanticCustomError("not_an_instant", f"An instant lies in the years {FIRST_YEAR} to {LAST_YEAR}")
     return microseconds
 
 
@@ -112,9 +110,7 @@ def _instant_or_microseconds(value: object) -> int:
 
 
 _AS_TEXT = PlainSerializer(format_instant, return_type=str)
-_INSTANT_SCHEMA = WithJsonSchema(
-    {"type": "string", "format": "date-time", "examples": ["2026-03-14T06:00:00+01:00"]}
-)
+_INSTANT_SCHEMA = WithJsonSchema({"type": "string", "format": "date-time", "examples": ["2026-03-14T06:00:00+01:00"]})
 Instant = Annotated[int, BeforeValidator(parse_instant), _AS_TEXT, _INSTANT_SCHEMA]
 AnsweredInstant = Annotated[int, BeforeValidator(_instant_or_microseconds), _AS_TEXT, _INSTANT_SCHEMA]
 
@@ -189,9 +185,7 @@ def refusal(code: str, detail: str, *place: str | int) -> ValidationError:
     place : str or int
         Steps from the body that the rule belongs to; none points at the body itself.
     """
-    error = InitErrorDetails(
-        type=PydanticCustomError(code, "{detail}", {"detail": detail}), loc=place, input=None
-    )
+    error = InitErrorDetails(type=PydanticCustomError(code, "{detail}", {"detail": detail}), loc=place, input=None)
     return ValidationError.from_exception_data("body", [error])
 
 

@@ -56,9 +56,7 @@ class Shell(Body):
         le=2,
         description="Thickness of the wall; left out, pressure does not strain it [m]",
     )
-    elastic_modulus_gpa: float = Field(
-        default=207.0, gt=0, le=2000, description="Young's modulus of the wall [GPa]"
-    )
+    elastic_modulus_gpa: float = Field(default=207.0, gt=0, le=2000, description="Young's modulus of the wall [GPa]")
     poisson_ratio: float = Field(default=0.3, ge=0, lt=0.5, description="Poisson's ratio of the wall [1]")
     courses: Items[Course] = Field(
         default=(), max_length=100,
@@ -76,9 +74,7 @@ class FloatingRoof(Body):
     )
 
     mass_kg: float = Field(gt=0, le=1e8, description="Mass of the roof [kg]")
-    lands_at_m: float = Field(
-        ge=0, le=150, description="Liquid level at which it starts to stand on legs [m]"
-    )
+    lands_at_m: float = Field(ge=0, le=150, description="Liquid level at which it starts to stand on legs [m]")
     floats_at_m: float = Field(ge=0, le=150, description="Liquid level from which it is fully afloat [m]")
     gauge_sees: Literal["liquid", "roof"] = Field(default="liquid", description="What the level gauge sees")
 
@@ -208,14 +204,10 @@ class Vessel(Body):
     effective_from: Instant | None = Field(
         default=None, description="From when this definition holds; the first may leave it out"
     )
-    service: Literal["in", "out"] = Field(
-        default="in", description="In service, or out: empty, cleaned, isolated"
-    )
+    service: Literal["in", "out"] = Field(default="in", description="In service, or out: empty, cleaned, isolated")
     shape: Shape = Field(description="What turns a level into a volume")
     shell: Shell = Field(default=Shell(), description="Strain of the wall by temperature and pressure")
-    floating_roof: FloatingRoof | None = Field(
-        default=None, description="The floating roof, where there is one"
-    )
+    floating_roof: FloatingRoof | None = Field(default=None, description="The floating roof, where there is one")
     vapour_space: VapourSpace | None = Field(
         default=None,
         description="What is above the liquid; left out: product where the substance has a vapour model "
@@ -227,16 +219,12 @@ class Vessel(Body):
         max_length=50,
         description="Sources in the order in which they count; none: the newest value",
     )
-    instruments: Instruments = Field(
-        default_factory=dict, description="Errors of the instruments by quantity"
-    )
+    instruments: Instruments = Field(default_factory=dict, description="Errors of the instruments by quantity")
     max_age_s: MaxAge | None = Field(
         default=None,
         description="How long a value counts: one number, or one by quantity; null: until replaced [s]",
     )
-    assumed: Assumptions = Field(
-        default_factory=dict, description="Values for what is never read, by quantity"
-    )
+    assumed: Assumptions = Field(default_factory=dict, description="Values for what is never read, by quantity")
     deadwood: Items[Deadwood] = Field(
         default=(), max_length=1000,
         description="Rows of [from_m, to_m, volume_m3], positive where it takes room [m, m, m³]",
@@ -293,7 +281,5 @@ class Vessel(Body):
             raise refusal("conflicting", "A capacity table is net of deadwood already", "deadwood")
         for at, (bottom, top, _) in enumerate(self.deadwood):
             if top <= bottom:
-                raise refusal(
-                    "impossible", "Deadwood ends above its beginning: from_m < to_m, in m", "deadwood", at
-                )
+                raise refusal("impossible", "Deadwood ends above its beginning: from_m < to_m, in m", "deadwood", at)
         return self
