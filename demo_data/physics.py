@@ -270,6 +270,7 @@ def mass_kg(shell: Hull, liquid: Liquid | None, gas: str, roof_kg: float, at: Co
     steel_c = at.liquid_c if liquid else at.vapour_c
     wet, whole = shell.stretched(at.level_m, steel_c, at.ambient_c, at.gauge_kpa)
     water, _ = shell.stretched(at.water_m, steel_c, at.ambient_c, at.gauge_kpa)
+    water = np.where(np.asarray(at.water_m) > 0.0, water, 0.0)  # no water is no volume, also on an uneven bottom
     wet, water, whole = wet * stretch, water * stretch, whole * stretch
     total = 0.0
     if liquid:

@@ -10,9 +10,11 @@ from CoolProp.CoolProp import PropsSI
 
 from demo_data.physics import (
     FLUIDS,
+    Conditions,
     Liquid,
     hull,
     lying_volume,
+    mass_kg,
     sphere_volume,
     table_volume,
     upright_volume,
@@ -113,3 +115,17 @@ def test_liquid_of_given_expansivity_uses_the_exponential_form() -> None:
     liquid = Liquid(8.5e-4, 7.7e-7)
     expected = 840.0 * math.exp(-8.5e-4 * 10.0 + 7.7e-7 * 1000.0)
     assert liquid.density(840.0, 25.0, 1101.325) == pytest.approx(expected, rel=1e-14)
+
+
+def test_no_water_takes_no_room_on_an_uneven_bottom() -> None:
+    """A table that begins at 9.6 m³ holds them as liquid where no water was found."""
+    shape = {
+        "kind": "capacity_table",
+        "of": "vertical_cylinder",
+        "rows": [[0.0, 9.6], [2.0, 29.6]],
+        "total_volume_m3": 29.6,
+    }
+    full = hull({"shape": shape, "shell": {}})
+    dry, wet = (mass_kg(full, Liquid(), "", 0.0, Conditions(1.0, water, density_15=800.0)) for water in (0.0, 0.1))
+    assert float(dry) == pytest.approx(800.0 * 19.6, rel=1e-12)
+    assert float(wet) == pytest.approx(800.0 * 9.0, rel=1e-12)
