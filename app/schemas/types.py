@@ -9,6 +9,7 @@ from __future__ import annotations
 import json
 import math
 import re
+from collections.abc import Collection
 from datetime import UTC, datetime, timedelta
 from typing import Annotated, Any, Literal, TypeVar, get_args
 
@@ -245,11 +246,18 @@ UNTAGGED = WrapValidator(_untagged)
 # --- what was sent ------------------------------------------------------------------------------
 
 
-def canonical(body: BaseModel) -> str:
+def canonical(body: BaseModel, *, without: Collection[str] = ()) -> str:
     """What was sent, in one spelling: defaults not filled in, keys sorted, instants in UTC.
 
     Two bodies that say the same give the same text, so a repeat is recognised; a default that changes
     later is no revision of a body that never named it.
+
+    Parameters
+    ----------
+    body : BaseModel
+        A validated body.
+    without : collection of str
+        Fields that stand elsewhere, and make no difference here: an id that the path also names.
     """
-    sent = body.model_dump(mode="json", exclude_unset=True, by_alias=True)
+    sent = body.model_dump(mode="json", exclude_unset=True, by_alias=True, exclude=set(without))
     return json.dumps(sent, sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)

@@ -11,6 +11,7 @@ from typing import Any, Union, get_args, get_origin
 
 import pytest
 from pydantic import BaseModel, ValidationError
+from pydantic.json_schema import JsonSchemaMode
 
 import app.schemas
 from app.schemas.errors import UNITS, unit_of
@@ -116,8 +117,9 @@ def test_longest_ending_gives_the_unit() -> None:
 
 @pytest.mark.parametrize("model", EVERY, ids=lambda model: model.__name__)
 def test_schema_can_be_written(model: type[BaseModel]) -> None:
-    for mode in ("validation", "serialization"):
-        schema = model.model_json_schema(mode=mode)  # type: ignore[arg-type]
+    modes: tuple[JsonSchemaMode, ...] = ("validation", "serialization")
+    for mode in modes:
+        schema = model.model_json_schema(mode=mode)
         assert schema["description"]
         assert schema["additionalProperties"] is False
 

@@ -17,7 +17,7 @@ def test_defaults_are_those_of_the_contract() -> None:
     assert (site.base_temperature_c, site.base_pressure_kpa_abs) == (15.0, 101.325)
     assert (site.gas_base_temperature_c, site.barometer_uncertainty_kpa) == (0.0, 1.0)
     assert (site.false_alarms_per_month, site.window_nights, site.close_delay_s) == (0.5, 30, 1800.0)
-    assert site.elevation_m is site.atmospheric_pressure_kpa_abs is site.imbalance_limit is None
+    assert (site.elevation_m, site.atmospheric_pressure_kpa_abs, site.imbalance_limit) == (None, None, None)
 
 
 @pytest.mark.parametrize("zone", ["Europe/Oslo", "UTC", "America/Argentina/Buenos_Aires", "Etc/GMT+3"])

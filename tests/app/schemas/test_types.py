@@ -200,7 +200,9 @@ def test_canonical_text_is_one_for_all_spellings(document: str) -> None:
 
 def test_canonical_text_fills_in_nothing() -> None:
     assert canonical(Thing.model_validate_json("{}")) == "{}"
-    assert canonical(Thing.model_validate_json('{"size_m": 1.0}')) == '{"size_m":1.0}'
+    named = Thing.model_validate_json('{"size_m": 1.0, "from": "a"}')
+    assert canonical(named) == '{"from":"a","size_m":1.0}'
+    assert canonical(named, without={"origin"}) == '{"size_m":1.0}'
 
 
 @settings(max_examples=50, derandomize=True, deadline=None)
