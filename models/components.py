@@ -12,6 +12,7 @@ from models.constants import GAS_CONSTANT, STANDARD_ATMOSPHERE
 from models.errors import DefinitionError
 
 SOURCE = "critical constants of the substance's reference equation of state"
+GIVEN = "given with the substance"
 POLAR_FAMILIES = frozenset(
     ("water", "ammonia", "methanol", "alkanol", "ether", "ketone", "haloalkane", "polar")
 )
@@ -267,5 +268,5 @@ def given_component(
         critical_pressure,
         critical_volume,
         acentric_factor,
-        source="given with the substance",
+        source=GIVEN,
     )

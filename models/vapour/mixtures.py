@@ -9,7 +9,7 @@ from typing import NamedTuple
 import numpy as np
 
 from models.arrays import ArrayLike, FloatArray, as_floats
-from models.components import Component
+from models.components import GIVEN, Component
 from models.constants import GAS_CONSTANT
 from models.vapour.correlations import quantum_constants, second_virial, third_virial
 
@@ -70,7 +70,7 @@ def pair_interaction(first: Component, second: Component) -> tuple[float, bool]:
     if families <= HYDROCARBONS:
         v1, v2 = first.critical_volume, second.critical_volume
         return 1.0 - 8.0 * math.sqrt(v1 * v2) / (v1 ** (1 / 3) + v2 ** (1 / 3)) ** 3, True  # eq. 4
-    return 0.0, families == {"simple"} and {first.source, second.source} != {"given with the substance"}
+    return 0.0, families == {"simple"} and GIVEN not in (first.source, second.source)
 
 
 def pair_constants(first: Constants, second: Constants, interaction: float) -> Constants:

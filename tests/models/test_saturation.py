@@ -1,0 +1,142 @@
+"""Vapour pressures against the saturation lines of CoolProp, mixtures against Raoult's law."""
+
+import CoolProp
+import numpy as np
+import pytest
+from chemicals.vapor_pressure import Ambrose_Walton
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from models.components import COMPONENTS, component, given_component
+from models.errors import DefinitionError
+from models.saturation import (
+    WAGNER,
+    SaturationColumns,
+    saturation_temperature,
+    vapour_pressure,
+    wagner_constants,
+)
+
+OTHER_NAMES = {
+    "carbon-dioxide": "CarbonDioxide", "carbon-monoxide": "CarbonMonoxide", "hydrogen-sulfide": "HydrogenSulfide",
+    "sulfur-dioxide": "SulfurDioxide", "nitrous-oxide": "NitrousOxide", "carbonyl-sulfide": "CarbonylSulfide",
+    "sulfur-hexafluoride": "SulfurHexafluoride", "dimethyl-ether": "DimethylEther",
+    "hydrogen-chloride": "HydrogenChloride", "isobutene": "IsoButene", "1-butene": "1-Butene",
+    "n-butane": "n-Butane", "n-pentane": "n-Pentane", "n-hexane": "n-Hexane", "n-heptane": "n-Heptane",
+    "n-octane": "n-Octane", "n-nonane": "n-Nonane", "n-decane": "n-Decane", "isobutane": "IsoButane",
+    "isopentane": "Isopentane",
+    "cis-2-butene": "cis-2-Butene", "trans-2-butene": "trans-2-Butene", "ethylbenzene": "EthylBenzene",
+    "cyclohexane": "CycloHexane", "o-xylene": "o-Xylene", "m-xylene": "m-Xylene", "p-xylene": "p-Xylene",
+    "r134a": "R134a",
+}  # fmt: skip
+# Where along its range each line is compared; the worst departure there is the one that the table states.
+AT = np.linspace(0.0, 0.985, 60)
+
+
+def saturation_line(name: str, temperatures: np.ndarray) -> np.ndarray:
+    state = CoolProp.AbstractState("HEOS", OTHER_NAMES.get(name, name.capitalize()))
+    pressures = []
+    for t in temperatures:
+        state.update(CoolProp.QT_INPUTS, 1, t)
+        pressures.append(state.p())
+    return np.array(pressures)
+
+
+@pytest.mark.parametrize("name", sorted(WAGNER))
+def test_every_substance_follows_its_reference_line(name: str) -> None:
+    lowest, highest, *_, departure = WAGNER[name]
+    temperatures = lowest + AT * (highest - lowest)
+    found = vapour_pressure(temperatures, name) / saturation_line(name, temperatures) - 1.0
+    assert np.abs(found).max() == pytest.approx(departure, rel=1e-3)
+    if name != "n-heptane":  # its fit ends below the critical point, where two published points differ
+        assert highest == component(name).critical_temperature
+
+
+def test_every_substance_of_the_table_has_a_line() -> None:
+    assert set(WAGNER) == set(COMPONENTS)
+
+
+@pytest.mark.parametrize(
+    ("name", "bar"),
+    [  # at -20, 0, 20 and 40 degrees Celsius, and slopes in bar/K, by CoolProp 8.0.0
+        ("propane", ((2.445, 0.088), (4.745, 0.145), (8.365, 0.220), (13.694, 0.316))),
+        ("n-butane", ((0.452, 0.020), (1.032, 0.039), (2.076, 0.067), (3.785, 0.106))),
+        ("isobutane", ((0.725, 0.031), (1.570, 0.056), (3.022, 0.092), (5.312, 0.140))),
+        ("propylene", ((3.056, 0.108), (5.841, 0.174), (10.170, 0.262), (16.484, 0.373))),
+        ("ammonia", ((1.900, 0.084), (4.292, 0.161), (8.570, 0.274), (15.545, 0.431))),
+        ("dimethyl-ether", ((1.242, 0.052), (2.667, 0.093), (5.096, 0.153), (8.897, 0.231))),
+    ],
+)
+def test_pressure_and_slope_at_four_temperatures(name: str, bar: tuple[tuple[float, float], ...]) -> None:
+    columns = SaturationColumns.from_compositions([{name: 1.0}])
+    pressure, slope = columns.pressure([253.15, 273.15, 293.15, 313.15])
+    assert pressure / 1e5 == pytest.approx([p for p, _ in bar], rel=4e-4, abs=1e-3)
+    assert slope / 1e5 == pytest.approx([s for _, s in bar], abs=6e-4)
+
+
+@pytest.mark.parametrize("acentric", [0.0, 0.1, 0.35, 0.6])
+def test_a_substance_given_in_full_takes_corresponding_states(acentric: float) -> None:
+    given = given_component(
+        "ours", critical_temperature=500.0, critical_pressure=3e6, acentric_factor=acentric, molar_mass=0.1
+    )
+    columns = SaturationColumns.from_compositions([[(given, 1.0)]])
+    t = np.array([260.0, 300.0, 350.0, 400.0, 450.0, 490.0])
+    expected = [Ambrose_Walton(x, 500.0, 3e6, acentric) for x in t]
+    assert columns.pressure(t)[0] == pytest.approx(expected, rel=1e-12)
+    assert np.isnan(columns.pressure([249.9, 500.1])[0]).all()
+    assert columns.departure[0] == 0.01
+
+
+def test_the_tables_own_substance_under_other_constants_is_not_the_tables() -> None:
+    own = given_component(
+        "propane",
+        critical_temperature=370.0,
+        critical_pressure=4.25e6,
+        acentric_factor=0.15,
+        molar_mass=0.0441,
+    )
+    assert wagner_constants(own) != wagner_constants(component("propane"))
+
+
+def test_outside_the_line_is_nan_and_says_so() -> None:
+    columns = SaturationColumns.from_compositions([{"propane": 1.0}, {"water": 1.0}])
+    t = np.array([166.0, 167.0, 369.89, 370.0, np.nan])
+    assert columns.inside(t).tolist() == [False, True, True, False, False]
+    pressure, slope = columns.pressure(t)
+    assert np.isnan(pressure).tolist() == [True, False, False, True, True]
+    assert np.isnan(slope).tolist() == [True, False, False, True, True]
+    assert np.isnan(columns.temperature([1.0, 5e6, np.nan])).all()
+    assert columns.inside([280.0, 280.0], np.array([0, 1])).all()
+
+
+def test_a_liquid_mixture_boils_by_raoults_law() -> None:
+    # 50/50 propane and n-butane at 20 degrees: y(propane) = 0.80, from the pure pressures 8.365 and 2.076 bar.
+    columns = SaturationColumns.from_compositions([{"propane": 0.5, "n-butane": 0.5}, {"propane": 1.0}])
+    pressure, _ = columns.pressure(293.15)
+    assert float(pressure) / 1e5 == pytest.approx(0.5 * (8.365 + 2.076), abs=2e-3)
+    assert columns.vapour_fractions(293.15) == pytest.approx([0.801, 0.199], abs=1e-3)
+    assert np.isnan(columns.vapour_fractions(20.0)).all()
+    both, _ = columns.pressure([293.15, 293.15], np.array([0, 1]))
+    assert both / 1e5 == pytest.approx([5.2205, 8.365], abs=2e-3)
+
+
+@pytest.mark.parametrize("composition", [{"propane": 0.5}, {"propane": 1.2, "n-butane": -0.2}])
+def test_fractions_of_a_liquid_are_a_whole(composition: dict[str, float]) -> None:
+    with pytest.raises(DefinitionError, match="sum"):
+        SaturationColumns.from_compositions([composition])
+
+
+@settings(derandomize=True, max_examples=50, deadline=None)
+@given(t=st.floats(200.0, 365.0), x=st.floats(0.0, 1.0))
+def test_the_temperature_undoes_the_pressure(t: float, x: float) -> None:
+    columns = SaturationColumns.from_compositions([{"propane": x, "n-butane": 1.0 - x}])
+    pressure, slope = columns.pressure(t)
+    assert float(columns.temperature(pressure)) == pytest.approx(t, rel=1e-11)
+    step = 1e-3
+    secant = (columns.pressure(t + step)[0] - columns.pressure(t - step)[0]) / (2.0 * step)
+    assert float(slope) == pytest.approx(float(secant), rel=1e-6)
+
+
+def test_a_column_is_inverted_at_once() -> None:
+    t = np.linspace(250.0, 360.0, 501)
+    assert saturation_temperature(vapour_pressure(t, "propane"), "propane") == pytest.approx(t, rel=1e-12)
