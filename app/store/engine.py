@@ -159,7 +159,10 @@ class Store:
 
     def close(self) -> None:
         """Give all connections back; the last one to leave a SQLite file moves its log into it."""
-        with self._lock.held() if self._lock is not None else nullcontext():
+        try:
+            with self._lock.held() if self._lock is not None else nullcontext():
+                self._engine.dispose()
+        except (LockTimeout, LockUnusable):
             self._engine.dispose()
 
     def _make_site(self, connection: Connection, name: str) -> int:

@@ -94,9 +94,10 @@ def test_random_histories_hold_as_a_dictionary_would(store: Store, site_id: str)
         for _ in range(60):
             at, known = T0 + dice.randrange(-1, 7) * DAY + dice.choice((-1, 0, 1)), dice.choice(said)[0]
             found = definitions.in_force(connection, site, "vessel", at, known)
-            expected = {name: body for name in "abc" if (body := expected_at(name, at, known)) is not None}
-            assert {one.name: one.body for one in found} == expected
-            assert [one.name for one in found] == sorted(expected)
+            bodies = {name: expected_at(name, at, known) for name in "abc"}
+            held_then = {name: text for name, text in bodies.items() if text is not None}
+            assert {one.name: one.body for one in found} == held_then
+            assert [one.name for one in found] == sorted(held_then)
             end = at + dice.randrange(1, 4) * DAY
             line = definitions.timeline(connection, site, "vessel", at, end, known)
             for moment in (at, at + DAY // 2, end - 1):

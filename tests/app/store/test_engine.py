@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 import sqlite3
 import threading
 from collections.abc import Callable
@@ -121,16 +120,11 @@ def test_what_fails_leaves_nothing(store: Store, site_id: str) -> None:
 def test_the_nth_statement_that_fails_leaves_nothing(store: Store, site_id: str) -> None:
     """Whichever statement fails, the transaction is kept as a whole or not at all."""
     level(store, site_id, T0, 1.0)
-    batch = [Value("tk-2", "observed_density_kg_m3", "lab", T0, 742.0, "S1"), Value("tk-2", "sample", "lab", T0, None, "S1")]
+    density = Value("tk-2", "observed_density_kg_m3", "lab", T0, 742.0, "S1")
+    batch = [density, Value("tk-2", "sample", "lab", T0, None, "S1")]
     failures = 0
     for fail_at in range(1, 40):
-        count = 0
-
-        def fail(*_: object) -> None:
-            nonlocal count
-            count += 1
-            if count == fail_at:
-                raise OSError("the cable was cut")
+        fail = failing_at(fail_at)
 
         sa.event.listen(store._engine, "before_cursor_execute", fail)
         try:
@@ -148,6 +142,18 @@ def test_the_nth_statement_that_fails_leaves_nothing(store: Store, site_id: str)
         pytest.fail("the transaction never ran to its end")
     assert failures >= 8
     assert len(recorded(store, site_id)) == 2
+
+
+def failing_at(turn: int) -> Callable[..., None]:
+    left = turn
+
+    def fail(*_: object) -> None:
+        nonlocal left
+        left -= 1
+        if left == 0:
+            raise OSError("the cable was cut")
+
+    return fail
 
 
 def test_a_reading_transaction_cannot_write(store: Store) -> None:
@@ -222,7 +228,8 @@ def test_a_database_that_cannot_be_reached_is_unavailable(tmp_path: Path, url: C
 
 def test_a_server_that_goes_away_is_unavailable_and_found_again(postgresql_store: Store, site_id: str) -> None:
     level(postgresql_store, site_id, T0, 1.0)
-    end_all = "SELECT pg_terminate_backend(pid) FROM pg_stat_activity WHERE pid <> pg_backend_pid() AND datname = current_database()"
+    end_all = """SELECT pg_terminate_backend(pid) FROM pg_stat_activity
+                 WHERE pid <> pg_backend_pid() AND datname = current_database()"""
     with pytest.raises(StoreUnavailable), postgresql_store.writing(site_id) as writing:
         with postgresql_store.reading() as connection:
             connection.exec_driver_sql(end_all)
@@ -237,7 +244,7 @@ def test_a_server_that_goes_away_is_unavailable_and_found_again(postgresql_store
         ("postgres://u:p%40ss@db:5433/brim", "postgresql+psycopg"),
         ("postgresql://u@db/brim", "postgresql+psycopg"),
         ("postgresql+psycopg://u@db/brim", "postgresql+psycopg"),
-        ("sqlite:////tmp/brim.db", "sqlite"),
+        ("sqlite:////var/lib/brim.db", "sqlite"),
     ],
 )
 def test_urls_are_normalised(given: str, driver: str) -> None:
@@ -255,7 +262,7 @@ def test_the_folder_of_the_database_is_made(tmp_path: Path) -> None:
     store = Store.open(f"sqlite:///{tmp_path}/a/b/brimbook.db")
     store.migrate()
     store.close()
-    assert sorted(os.listdir(tmp_path / "a" / "b")) == ["brimbook.db", "brimbook.db.lock"]
+    assert sorted(path.name for path in (tmp_path / "a" / "b").iterdir()) == ["brimbook.db", "brimbook.db.lock"]
     with sqlite3.connect(tmp_path / "a" / "b" / "brimbook.db") as other:
         assert other.execute("PRAGMA integrity_check").fetchone() == ("ok",)
     other.close()

@@ -33,8 +33,10 @@ def test_processes_and_threads_take_turns(tmp_path: Path) -> None:
     threads = [threading.Thread(target=add, args=(path, counter, 20)) for _ in range(3)]
     for thread in threads:
         thread.start()
-    for worker in (*threads, *processes):
-        worker.join(timeout=30)
+    for thread in threads:
+        thread.join(timeout=30)
+    for process in processes:
+        process.join(timeout=30)
     assert counter.read_text() == "120"
 
 

@@ -87,9 +87,9 @@ def random_value(dice: random.Random, recorded: list[int]) -> Value:
     if kind < 0.15:
         text = dice.choice(('{"nitrogen":1.0}', '{"nitrogen":0.5,"hydrogen":0.5}'))
         return Value(vessel, "vapour_composition", source, instant, None, text, quality, corrects)
-    text = dice.choice(("S17", "S18", "naïve — 試料")) if kind < 0.3 else None
+    sample = dice.choice(("S17", "S18", "naïve — 試料")) if kind < 0.3 else None
     value = dice.choice((0.0, -0.0, 1.5, 0.1 + 0.2, 0.3, 5e-324, 1.7976931348623157e308))
-    return Value(vessel, dice.choice(NUMBERS), source, instant, value, text, quality, corrects)
+    return Value(vessel, dice.choice(NUMBERS), source, instant, value, sample, quality, corrects)
 
 
 def test_random_batches_are_kept_and_found_as_a_dictionary_would(store: Store, site_id: str) -> None:
