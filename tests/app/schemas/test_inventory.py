@@ -10,7 +10,33 @@ from pydantic import ValidationError
 from app.schemas.inventory import Contribution, InputUsed, Inventory, Step, SubstanceTotal, WarningSaid
 
 # The words as the contract lists them.
-PROMISED = ["vessel", "at", "status", "fill_pct", "gross_observed_volume_m3", "free_water_volume_m3", "gross_standard_volume_m3", "net_standard_volume_m3", "liquid_density_kg_m3", "standard_density_kg_m3", "liquid_mass_kg", "vapour_volume_m3", "compressibility_factor", "vapour_mass_kg", "gas_standard_volume_m3", "mass_kg", "mass_uncertainty_kg", "available_mass_kg", "weight_in_air_kg", "inputs", "checks", "warnings", "definitions", "working", "budget"]
+PROMISED = [
+    "vessel",
+    "at",
+    "status",
+    "fill_pct",
+    "gross_observed_volume_m3",
+    "free_water_volume_m3",
+    "gross_standard_volume_m3",
+    "net_standard_volume_m3",
+    "liquid_density_kg_m3",
+    "standard_density_kg_m3",
+    "liquid_mass_kg",
+    "vapour_volume_m3",
+    "compressibility_factor",
+    "vapour_mass_kg",
+    "gas_standard_volume_m3",
+    "mass_kg",
+    "mass_uncertainty_kg",
+    "available_mass_kg",
+    "weight_in_air_kg",
+    "inputs",
+    "checks",
+    "warnings",
+    "definitions",
+    "working",
+    "budget",
+]
 
 
 def test_words_are_those_of_the_contract() -> None:
