@@ -78,7 +78,18 @@ class Trust(NamedTuple):
     power: Value = 1.0
 
     def of_form(self, form: str, terms: int) -> Trust:
-        """The same coefficients in one of the forms of ``LIMITS``. [1]"""
+        """The same coefficients in one of the forms of ``LIMITS``.
+
+        Parameters
+        ----------
+        form, terms : str and int
+            Form of the series and its number of terms. [1]
+
+        Returns
+        -------
+        Trust
+            With the form's limits and its own error. [1]
+        """
         good, wide = LIMITS[form, terms]
         short, power = SHORTENED.get((form, terms), (np.inf, 1.0))
         return self._replace(good=good, wide=wide, short=short, power=power)

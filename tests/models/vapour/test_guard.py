@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from models.components import component, given_component
+from models.vapour.fitted import FITTED
 from models.vapour.guard import (
     MEASURED,
     Trust,
@@ -49,8 +50,8 @@ def test_a_correlation_below_its_lowest_temperature_is_uncertain_and_a_fit_is_no
 def test_more_than_five_per_cent_of_a_polar_or_quantum_gas_is_uncertain_by_correlation() -> None:
     for name in ("ammonia", "hydrogen"):
         pair = (component(name), component("nitrogen"))
-        assert correlated_trust(pair, (0.049, 0.951)).doubtful == 0.0
-        assert correlated_trust(pair, (0.051, 0.949)).doubtful == 1.0
+        assert correlated_trust(pair, (0.0499, 0.9501)).doubtful == 0.0
+        assert correlated_trust(pair, (0.0501, 0.9499)).doubtful == 1.0
         assert fitted_trust(pair, (0.5, 0.5)).doubtful == 0.0
 
 
@@ -70,15 +71,19 @@ def test_classes_of_correlated_gases(
     assert correlated_trust([component(n) for n in names], y)[:5] == pytest.approx(expected)
 
 
-@pytest.mark.parametrize(
-    ("name", "quadratic", "omitted"),
-    [("nitrogen", 0.04, 0.25), ("n-butane", 0.10, 0.6), ("r134a", 0.06, 1.2), ("chlorine", 0.05, 0.25),
-     ("hydrogen-chloride", 0.11, 1.2), ("dimethyl-ether", 0.18, 1.2), ("water", 0.04, 10.0),
-     ("ethane", 0.04, 0.6)],
-)  # fmt: skip
-def test_classes_of_fitted_gases(name: str, quadratic: float, omitted: float) -> None:
+@pytest.mark.parametrize("name", sorted(FITTED))
+def test_classes_of_fitted_gases(name: str) -> None:
+    own = {
+        "n-butane": (0.10, 0.6), "ethane": (0.04, 0.6), "r134a": (0.06, 1.2), "chlorine": (0.05, 0.25),
+        "hydrogen-chloride": (0.11, 1.2), "dimethyl-ether": (0.18, 1.2), "water": (0.04, 10.0),
+    }  # fmt: skip
+    quadratic, omitted = own.get(name, (0.04, 0.25))
     trust = fitted_trust((component(name),), (1.0,))
     assert trust[:5] == pytest.approx((0.0003, 0.0, quadratic, 0.0, omitted))
+
+
+def test_limits_without_a_form_are_those_of_the_default_form() -> None:
+    assert verdicts(PLAIN, [0.1999, 0.2001, 0.2999, 0.3001]) == [0, 1, 1, 2]
 
 
 def test_measured_coefficients_are_trusted_to_two_per_cent_of_b() -> None:
