@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from typing import Annotated, Literal, Self
 
-from pydantic import ConfigDict, Discriminator, Field, Tag, model_validator
+from pydantic import ConfigDict, Discriminator, Field, Tag, ValidationError, model_validator
 
-from app.schemas.types import UNTAGGED, Body, End, Id, Instant, Items, refusal
+from app.schemas.batch import RowError, rows_in, validate_each
+from app.schemas.types import UNTAGGED, Answer, AnsweredInstant, Body, End, Id, Instant, Items, refusal
 
 LONGEST_S = 31 * 86_400
 """How long a transfer lasts at most; transfers that touch a night are found by it."""
@@ -209,6 +210,12 @@ class Transfer(MovedQuantity):
         return self
 
 
+class NamedTransfer(Transfer):
+    """A transfer of a batch, where no path names it."""
+
+    id: Id = Field(description="Its id")
+
+
 class TransferBatch(Body):
     """Transfers posted together, each with its id."""
 
@@ -229,11 +236,39 @@ class TransferBatch(Body):
         }
     )  # fmt: skip
 
-    transfers: Items[Transfer] = Field(max_length=10_000, description="The transfers")
+    transfers: Items[NamedTransfer] = Field(description="The transfers, in the order in which they count")
 
-    @model_validator(mode="after")
-    def _each_with_its_id(self) -> Self:
-        for at, one in enumerate(self.transfers):
-            if one.id is None:
-                raise refusal("missing", "Each transfer of a batch has its id", "transfers", at, "id")
-        return self
+
+class StoredTransfer(Answer):
+    """A transfer as stored."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "id": "road-77", "revision": 1, "recorded_at": "2026-03-14T08:52:11.003120Z",
+                    "transfer": {
+                        "from": "tk-12", "to": "boundary:rack-2", "by": "weighbridge",
+                        "started_at": "2026-03-14T08:00:00Z", "ended_at": "2026-03-14T08:40:00Z",
+                        "mass_kg": 21840.0, "mass_uncertainty_kg": 20.0,
+                    },
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    id: str = Field(description="Its id")
+    revision: int = Field(ge=1, description="1 for the first text of this ticket, then counted up")
+    recorded_at: AnsweredInstant = Field(description="When it was recorded")
+    transfer: Transfer = Field(description="The ticket, defaults filled in; void if it was struck")
+
+
+def validate_transfers(text: bytes) -> tuple[list[tuple[int, NamedTransfer]], list[RowError]]:
+    """Transfers of a JSON batch with their positions, and what is wrong with the rows that are none.
+
+    A body that is no object with a list ``transfers`` raises pydantic's ``ValidationError``.
+    """
+    try:
+        return list(enumerate(TransferBatch.model_validate_json(text).transfers)), []
+    except ValidationError:
+        return validate_each(NamedTransfer, rows_in(TransferBatch, "transfers", text))

@@ -6,8 +6,9 @@ import json
 from typing import Any
 
 import pytest
+from pydantic import ValidationError
 
-from app.schemas.transfer import Transfer, TransferBatch
+from app.schemas.transfer import Transfer, TransferBatch, validate_transfers
 from app.schemas.types import canonical
 
 # As the contract prints it.
@@ -17,7 +18,7 @@ EXAMPLE: dict[str, Any] = json.loads("""
  "standard_volume_m3": 35500.0, "density_kg_m3": 745.2, "density_temperature_c": 15.0, "sediment_water_pct": 0.02,
  "progress": [{"at": "2026-03-14T06:00:00+01:00", "standard_volume_m3": 17990.0}]}
 """)
-TICKET = {
+TICKET: dict[str, Any] = {
     "from": "tk-12", "to": "boundary:rack-2", "by": "weighbridge", "mass_uncertainty_kg": 20, "mass_kg": 21840.0,
     "started_at": "2026-03-14T09:00:00Z", "ended_at": "2026-03-14T09:40:00Z",
 }  # fmt: skip
@@ -101,3 +102,21 @@ def test_batch_names_each_transfer(refusals: Any) -> None:
     named = {**TICKET, "id": "road-77"}
     assert refusals(TransferBatch, {"transfers": [named]}) == {}
     assert refusals(TransferBatch, {"transfers": [named, TICKET]}) == {"/transfers/1/id": "missing"}
+
+
+def test_bad_tickets_of_a_batch_are_named_and_the_others_kept() -> None:
+    tickets = [{**TICKET, "id": f"road-{at}"} for at in range(6)]
+    tickets[1]["mass_kg"] = -1
+    del tickets[3]["id"]
+    tickets[4]["void"] = True
+    kept, errors = validate_transfers(json.dumps({"transfers": tickets}).encode())
+    assert [(at, one.id) for at, one in kept] == [(0, "road-0"), (2, "road-2"), (4, "road-4"), (5, "road-5")]
+    assert [(one.index, one.field, one.code) for one in errors] == [
+        (1, "mass_kg", "out_of_range"), (3, "id", "missing"),
+    ]  # fmt: skip
+
+
+@pytest.mark.parametrize("text", [b"", b"[]", b'{"readings": []}', b'{"transfers": {}}'])
+def test_body_that_is_no_batch_is_refused(text: bytes) -> None:
+    with pytest.raises(ValidationError):
+        validate_transfers(text)
