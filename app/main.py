@@ -10,7 +10,7 @@ from typing import Any
 from fastapi import APIRouter, FastAPI, Request, Response
 from fastapi.telemetry import TelemetryConfig
 
-from app.api import health
+from app.api import health, inventory, meters, readings, sites, substances, transfers, vessels
 from app.clock import Clock
 from app.edge import openapi, problems
 from app.edge.hosts import Hosts
@@ -21,7 +21,10 @@ from app.store.engine import Store
 from models.errors import ModelError
 
 # In the order of the flow, which is the order in which /openapi.json lists them.
-ROUTERS: list[APIRouter] = [health.router]
+ROUTERS: list[APIRouter] = [
+    module.router
+    for module in (sites, substances, vessels, meters, readings, transfers, inventory, health)
+]
 QUIET = TelemetryConfig(tracing=False, metrics=False, logs=False, operation_spans=False, auto_configure=False)
 DESCRIPTION = """Readings of tanks and pressure vessels in; mass with its standard uncertainty, and books
 closed every night, out. Every number carries its unit in its name; `_kpa` is gauge unless it ends in

@@ -89,3 +89,7 @@ OPEN_SPACE_KPA = 0.2  # kPa, pressure and vacuum valves of a vented tank; common
 
 STALE_TEMPERATURE = 0.05 / 3600.0  # K/s carried forward, 0.05 K an hour; common practice
 STALE_PRESSURE_KPA = 2.0 / 3600.0  # kPa/s carried forward, 2 kPa an hour; common practice
+
+# A meter of which nothing is declared: Directive 2014/32/EU, annex VII, class 0.5, ±0.3 % for the meter alone.
+METER_RANDOM_PCT = 0.05  # percent, repeatability; common practice
+METER_SYSTEMATIC_PCT = 0.3 * _RECTANGULAR  # percent

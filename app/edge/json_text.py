@@ -20,18 +20,20 @@ class _Pairs(list[tuple[str, Any]]):
     """An object of the document with every key that it had."""
 
 
-def check(text: bytes) -> None:
+def check(text: bytes, *, rows_judged_alone: bool = False) -> None:
     """Raise ``Unprocessable`` where a key stands twice, a number is not finite, or text holds NUL.
 
     Parameters
     ----------
     text : bytes
         JSON that has been parsed once already, so its nesting is known to be shallow.
+    rows_judged_alone : bool
+        True for a batch: a number that is not finite is named with its row by the row's own model.
     """
     if b"\\u0000" in text:
         raise _refusal("", "control_character", "Text must not hold the character NUL.")
     try:
-        json.loads(text, object_pairs_hook=_once, parse_constant=_no_number)
+        json.loads(text, object_pairs_hook=_once, parse_constant=_no_opinion if rows_judged_alone else _no_number)
     except _TwiceError:
         place = _first_twice(json.loads(text, object_pairs_hook=_Pairs), "") or ""
         detail = "A key stands twice in this object; which of the two counts cannot be known."
@@ -51,6 +53,10 @@ def _once(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
 
 def _no_number(_: str) -> NoReturn:
     raise _refusal("", "not_finite", "NaN and Infinity are no numbers of JSON; leave the value out.")
+
+
+def _no_opinion(_: str) -> float:
+    return 0.0
 
 
 def _below(pointer: str, key: str) -> str:

@@ -84,7 +84,8 @@ def ingest(
     with store.reading() as connection:
         site_id = site_number(connection, site)
         known_vessels = {
-            one.name for one in definitions.in_force(connection, site_id, "vessel", ALL_TIME, watermark(connection, site_id))
+            one.name
+            for one in definitions.in_force(connection, site_id, "vessel", ALL_TIME, watermark(connection, site_id))
         }
         outcome.known_at = watermark(connection, site_id)
     good = list(_acceptable(rows, errors, known_vessels, clock.now() + FUTURE_US))
@@ -115,9 +116,7 @@ def _error(index: int, field: str, code: str, detail: str) -> RowError:
     return RowError(index=index, field=field, code=code, detail=detail)
 
 
-def _write(
-    writing: Writing, rows: Sequence[tuple[int, Reading]], errors: list[RowError], outcome: Outcome
-) -> None:
+def _write(writing: Writing, rows: Sequence[tuple[int, Reading]], errors: list[RowError], outcome: Outcome) -> None:
     """One transaction: the values of all rows, and what became of each row."""
     values: list[Value] = []
     owner: list[int] = []

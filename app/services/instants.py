@@ -5,6 +5,8 @@ from __future__ import annotations
 from datetime import UTC, date, datetime, time, timedelta
 from zoneinfo import ZoneInfo
 
+from models.errors import DefinitionError
+
 EPOCH = datetime(1970, 1, 1, tzinfo=UTC)
 
 
@@ -50,3 +52,13 @@ def day_bounds(day: date, starts_at: str, zone: str) -> tuple[int, int]:
 def basic(instant: int) -> str:
     """An instant in basic UTC to the second, as in the ids of periods: 20260301T050000Z."""
     return (EPOCH + timedelta(microseconds=instant)).strftime("%Y%m%dT%H%M%SZ")
+
+
+def check_zone(name: str) -> None:
+    """Refuse a time zone that the tz database does not know."""
+    try:
+        ZoneInfo(name)
+    except (KeyError, ValueError, OSError):
+        raise DefinitionError(
+            "time_zone is no name of the IANA time zone database; Europe/Oslo is one", field=None
+        ) from None

@@ -181,11 +181,13 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     series = virial_columns((mixture,))
     second, _, third, _ = series.second_and_third(result["vapour_temperature"][row])
     values = {"B": (float(second) * 1e6, "cm³/mol"), "C": (float(third) * 1e12, "cm⁶/mol²")}
-    for note in series.describe(0):
-        value, unit = values.get(note.symbol, (math.nan, "1"))
+    notes = series.describe(0)
+    inside = series.lowest[0] <= result["vapour_temperature"][row] <= series.highest[0]
+    for note in notes if inside else notes[::-1]:
         if note.symbol in values:
+            value, unit = values.pop(note.symbol)
             yield _step(note.quantity, note.symbol, value, unit, note.method, note.reference)
-        else:
+        elif note.symbol == "Z":
             virial = (note.method, note.reference)
     yield _step(
         "molar mass",

@@ -1,0 +1,30 @@
+"""Calculations: the same arithmetic with nothing stored."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+from fastapi import APIRouter, Depends, Query
+
+from app.edge.body import json_body
+from app.schemas.calculation import Balance, BalanceCalculation, InventoryCalculation, InventoryResults
+from app.services import balance, calculate
+
+router = APIRouter(prefix="/v1/calculations", tags=["calculations"])
+
+
+@router.post("/inventory")
+def calculate_inventory(
+    body: Annotated[InventoryCalculation, Depends(json_body(InventoryCalculation))],
+    working: Annotated[bool, Query(description="With the steps")] = False,
+    budget: Annotated[bool, Query(description="With the budget of the uncertainty")] = False,
+) -> InventoryResults:
+    """One inventory for each reading; each reading stands alone."""
+    results = calculate.calculate(body, working=working, budget=budget)
+    return InventoryResults.model_validate({"results": results})
+
+
+@router.post("/balance")
+def calculate_balance(body: Annotated[BalanceCalculation, Depends(json_body(BalanceCalculation))]) -> Balance:
+    """A network of nodes and streams, reconciled and tested."""
+    return Balance.model_validate(balance.solve_network(body))

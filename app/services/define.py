@@ -1,0 +1,214 @@
+"""Definitions are put, dated, and read back as they were in force and as they were known."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any, TypeVar
+
+from pydantic import BaseModel
+from sqlalchemy import Connection
+
+from app.errors import Conflict, FieldError, NotFound, Unprocessable
+from app.schemas.meter import Meter
+from app.schemas.site import Site
+from app.schemas.substance import Substance
+from app.schemas.types import canonical
+from app.schemas.vessel import Vessel
+from app.services.compile import compile_bodies
+from app.services.find import ALL_TIME, site_number, watermark
+from app.services.instants import check_zone
+from app.store import books, definitions, sites
+from app.store.definitions import Definition, EffectiveFromNeeded
+from app.store.engine import Store, Writing
+from app.store.tables import ALWAYS
+from models.errors import ModelError
+
+B = TypeVar("B", bound=BaseModel)
+KINDS: dict[str, type[BaseModel]] = {"site": Site, "substance": Substance, "vessel": Vessel, "meter": Meter}
+
+
+@dataclass(frozen=True)
+class Put:
+    """What became of a definition."""
+
+    outcome: str
+    known_at: int
+
+
+def put_site(store: Store, name: str, body: Site, request: str = "") -> Put:
+    """Define a site or revise it; the first definition makes it."""
+    _check(lambda: check_zone(body.time_zone), "time_zone")
+    with store.writing(name, deed="site", request=request, create=True) as writing:
+        if not writing.created:
+            _zone_is_free(writing, name, body)
+        return _put(writing, "site", name, body)
+
+
+def put(store: Store, site: str, kind: str, name: str, body: Substance | Vessel | Meter, request: str = "") -> Put:
+    """Define a substance, a vessel or a meter of a site, or revise it."""
+    with store.reading() as connection:
+        site_number(connection, site)
+    if isinstance(body, Substance):
+        _check(lambda: _substance_can_be(body), "")
+    with store.writing(site, deed=kind, request=request) as writing:
+        if isinstance(body, Vessel):
+            _vessel_fits(writing, site, name, body)
+        return _put(writing, kind, name, body)
+
+
+def _put(writing: Writing, kind: str, name: str, body: Any) -> Put:
+    try:
+        outcome = definitions.put(writing, kind, name, body.effective_from, canonical(body))
+    except EffectiveFromNeeded:
+        raise Unprocessable(
+            f"This {kind} is defined already: another definition says from when it holds, in effective_from",
+            code="effective_from_missing",
+            errors=[FieldError("/effective_from", "missing", "effective_from is an RFC 3339 instant with an offset")],
+        ) from None
+    return Put(outcome, writing.recorded_at)
+
+
+def _check(act: Any, pointer: str) -> None:
+    """What the models refuse of a definition, as a refusal of the body."""
+    try:
+        act()
+    except ModelError as refused:
+        place = f"{pointer}/{refused.field}" if refused.field else pointer
+        raise Unprocessable(
+            refused.detail, code=refused.code, errors=[FieldError(place, refused.code, refused.detail, refused.index)]
+        ) from None
+
+
+def _zone_is_free(writing: Writing, name: str, body: Site) -> None:
+    """The zone and the start of the day stand for closed days; they change only from the last close on."""
+    newest = books.newest_closing(writing.connection, writing.site_id)
+    if newest is None:
+        return
+    begins = ALWAYS if body.effective_from is None else body.effective_from
+    found = definitions.in_force(
+        writing.connection, writing.site_id, "site", max(begins, newest - 1), writing.recorded_at
+    )
+    former = Site.model_validate_json(found[0].body) if found else body
+    changed = (former.time_zone, former.day_starts_at) != (body.time_zone, body.day_starts_at)
+    if changed and begins < newest:
+        raise Conflict(
+            "Days are closed by this time_zone and day_starts_at; they change only from the end of the last closed day on",
+            code="zone_in_use",
+        )
+
+
+def _substance_can_be(body: Substance) -> None:
+    """Compile the substance in a vessel of its own kind: unknown components and impossible values show."""
+    shape: dict[str, Any] = {"kind": "fixed_volume", "volume_m3": 1.0}
+    if body.liquid is not None:
+        shape = {"kind": "sphere", "diameter_m": 1.0}
+    vessel = Vessel.model_validate({"name": "any", "substance": "any", "shape": shape})
+    compile_bodies("any", PLAIN_SITE, vessel, body)
+
+
+PLAIN_SITE = Site.model_validate({"name": "any", "time_zone": "UTC"})
+
+
+def _vessel_fits(writing: Writing, site: str, name: str, body: Vessel) -> None:
+    """The vessel's substance exists when the vessel begins, and the two go together."""
+    _computed(body)
+    if body.substance is None:
+        return
+    begins = ALWAYS if body.effective_from is None else body.effective_from
+    at = max(begins, 0)
+    found = definitions.in_force(
+        writing.connection, writing.site_id, "substance", at, writing.recorded_at, [body.substance]
+    ) or definitions.in_force(
+        writing.connection, writing.site_id, "substance", ALL_TIME, writing.recorded_at, [body.substance]
+    )
+    if not found:
+        raise Unprocessable(
+            "The vessel's substance is not defined at this site: put the substance first",
+            code="unknown_substance",
+            errors=[FieldError("/substance", "unknown_substance", "substance names one of this site's substances")],
+        )
+    substance = Substance.model_validate_json(found[0].body)
+    own = definitions.in_force(writing.connection, writing.site_id, "site", at, writing.recorded_at) or (
+        definitions.in_force(writing.connection, writing.site_id, "site", ALL_TIME, writing.recorded_at)
+    )
+    _check(lambda: compile_bodies(name, Site.model_validate_json(own[0].body), body, substance), "")
+
+
+def _computed(body: Vessel) -> None:
+    """What the body may say but this version does not compute is refused, not left aside."""
+    refused: list[FieldError] = []
+    if body.vapour_space is not None and body.vapour_space.kind == "blanketed":
+        detail = "This version computes the vapour spaces product, open and none"
+        refused.append(FieldError("/vapour_space/kind", "not_computed", detail))
+    if body.shell.courses:
+        detail = "This version does not compute the head of the liquid by courses"
+        refused.append(FieldError("/shell/courses", "not_computed", detail))
+    if body.floating_roof is not None and body.floating_roof.gauge_sees == "roof":
+        detail = "This version computes roofs under which the gauge sees the liquid"
+        refused.append(FieldError("/floating_roof/gauge_sees", "not_computed", detail))
+    if refused:
+        raise Unprocessable(refused[0].detail, code="not_computed", errors=refused)
+
+
+def check_computed(body: Vessel) -> None:
+    """The same refusals for a vessel that is only calculated with."""
+    _computed(body)
+
+
+def newest(connection: Connection, site: str, kind: str, name: str, at: int | None, as_of: int | None) -> Definition:
+    """One definition: as in force at an instant, or the one that holds last."""
+    site_id = site_number(connection, site)
+    known = watermark(connection, site_id, as_of)
+    found = definitions.in_force(connection, site_id, kind, ALL_TIME if at is None else at, known, [name])
+    if not found:
+        raise NotFound(f"There is no {kind} of that id here", code=f"unknown_{kind}")
+    return found[0]
+
+
+def defined(one: Definition) -> dict[str, Any]:
+    """A stored definition as an answer; the body stays the text that was sent."""
+    return {
+        "id": one.name,
+        "effective_from": None if one.effective_from == ALWAYS else one.effective_from,
+        "revision": one.revision,
+        "recorded_at": one.recorded_at,
+    }
+
+
+def body_of(kind: str, one: Definition) -> BaseModel:
+    """The stored text as its model again."""
+    return KINDS[kind].model_validate_json(one.body)
+
+
+def site_names(connection: Connection, after: str, limit: int) -> tuple[list[Definition], str | None]:
+    """A page of sites as they hold last, and the next cursor."""
+    found = sites.listing(connection, after, limit + 1)
+    page = []
+    for site_id, name in found[:limit]:
+        page.extend(
+            definitions.in_force(connection, site_id, "site", ALL_TIME, sites.watermark(connection, site_id), [name])
+        )
+    return page, found[limit - 1][1] if len(found) > limit else None
+
+
+def listing(
+    connection: Connection, site: str, kind: str, at: int | None, as_of: int | None, after: str | None, limit: int
+) -> tuple[list[Definition], str | None, int]:
+    """A page of definitions in force by id, the next cursor, and what was known."""
+    site_id = site_number(connection, site)
+    known = watermark(connection, site_id, as_of)
+    when = ALL_TIME if at is None else at
+    page, following = definitions.listing(connection, site_id, kind, when, known, after=after or "", limit=limit)
+    return page, following, known
+
+
+def revisions(
+    connection: Connection, site: str, kind: str, name: str, as_of: int | None
+) -> tuple[list[Definition], int]:
+    """Everything that was ever said of a name, and what was known."""
+    site_id = site_number(connection, site)
+    known = watermark(connection, site_id, as_of)
+    found = definitions.revisions(connection, site_id, kind, name, known)
+    if not found:
+        raise NotFound(f"There is no {kind} of that id here", code=f"unknown_{kind}")
+    return found, known

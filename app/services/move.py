@@ -1,0 +1,261 @@
+"""Transfers: tickets are kept, and each becomes a mass with named errors, whole or for a part of its time."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+from app.errors import FieldError, NotFound, Unprocessable
+from app.schemas.batch import RowError
+from app.schemas.meter import Meter
+from app.schemas.transfer import MovedQuantity, Transfer
+from app.schemas.types import canonical
+from app.services.compile import CompiledVessel, density_at
+from app.services.find import ALL_TIME, site_number
+from app.store import definitions, transfers
+from app.store.engine import Store, Writing
+from app.store.transfers import Transfer as Ticket
+from models import constants, instruments, units
+from models.estimate import Estimate, combine
+
+BOUNDARY = "boundary:"
+SPLIT_SHARE = 0.05  # of the whole, of a ticket divided by time; at most half of its smaller part
+
+
+@dataclass(frozen=True)
+class Moved:
+    """One ticket in one period: what it moved between its ends, None where nothing was measured."""
+
+    name: str
+    source: str | None  # None is a boundary
+    target: str | None
+    mass: Estimate | None
+    water: bool
+
+
+def put(store: Store, site: str, name: str, body: Transfer, request: str = "") -> tuple[str, int]:
+    """Keep a ticket; its ends and its meter must be defined. The outcome and the ``recorded_at``."""
+    with store.reading() as connection:
+        site_number(connection, site)
+    with store.writing(site, deed="transfer", request=request) as writing:
+        refused = _refusals(writing, body)
+        if refused:
+            raise Unprocessable(refused[0].detail, code=refused[0].code, errors=refused)
+        text = canonical(without_id(body))
+        outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, void=body.void)
+        return outcome, writing.recorded_at
+
+
+def put_many(
+    store: Store, site: str, rows: Sequence[tuple[int, Transfer]], errors: list[RowError], request: str = ""
+) -> tuple[dict[str, int], list[RowError], int]:
+    """Keep the good tickets of a batch; counts of outcomes, what was refused, and the ``recorded_at``."""
+    counts = {"created": 0, "revised": 0, "unchanged": 0}
+    with store.reading() as connection:
+        site_number(connection, site)
+    with store.writing(site, deed="transfers", request=request) as writing:
+        for index, body in rows:
+            assert body.id is not None
+            problems = _refusals(writing, body)
+            errors.extend(
+                RowError(index=index, field=one.pointer.strip("/"), code=one.code, detail=one.detail)
+                for one in problems
+            )
+            if not problems:
+                text = canonical(without_id(body))
+                counts[transfers.put(writing, body.id, body.started_at, body.ended_at, text, void=body.void)] += 1
+        return counts, sorted(errors, key=lambda error: error.index), writing.recorded_at
+
+
+def without_id(body: Transfer) -> Transfer:
+    """The ticket as it would be put under its own path: the id is not part of it."""
+    return Transfer.model_construct(
+        body.model_fields_set - {"id"}, **{name: getattr(body, name) for name in Transfer.model_fields if name != "id"}
+    )
+
+
+def _refusals(writing: Writing, body: Transfer) -> list[FieldError]:
+    """Ends and meters that nobody defined, and ways of measuring that this version does not compute."""
+    found: list[FieldError] = []
+    for pointer, end in (("/from", body.from_), ("/to", body.to)):
+        if not end.startswith(BOUNDARY) and not _known(writing, "vessel", end):
+            detail = "It is neither a vessel of this site nor a boundary, such as boundary:jetty-1"
+            found.append(FieldError(pointer, "unknown_vessel", detail))
+    if body.meter is not None and not _known(writing, "meter", body.meter):
+        found.append(FieldError("/meter", "unknown_meter", "This site has no meter of that id"))
+    if body.vapour_return is not None and (isinstance(body.vapour_return, str) or body.vapour_return.mass_kg is None):
+        detail = "This version takes a vapour return by its mass_kg"
+        found.append(FieldError("/vapour_return", "not_computed", detail))
+    return found
+
+
+def _known(writing: Writing, kind: str, name: str) -> bool:
+    return bool(definitions.in_force(writing.connection, writing.site_id, kind, ALL_TIME, writing.recorded_at, [name]))
+
+
+def body_of(ticket: Ticket) -> Transfer:
+    """A stored ticket as its body again."""
+    return Transfer.model_validate_json(ticket.body)
+
+
+def current(store: Store, site: str, name: str, as_of: int | None) -> tuple[Ticket, Transfer]:
+    """One ticket as it is known."""
+    with store.reading() as connection:
+        site_id = site_number(connection, site)
+        found = transfers.current(connection, site_id, name, ALL_TIME if as_of is None else as_of)
+    if found is None:
+        raise NotFound("There is no transfer of that id here", code="unknown_transfer")
+    return found, body_of(found)
+
+
+def moved(
+    ticket: Ticket, opening: int, closing: int, vessels: Mapping[str, CompiledVessel], meters: Mapping[str, Meter],
+    standard: Mapping[str, Estimate],
+) -> Moved:  # fmt: skip
+    """What a ticket moved within a period, with its errors named.
+
+    ``standard`` is the standard density of each vessel at the period's close with its parts, for tickets
+    in volume that bring no density of their own.
+    """
+    body = body_of(ticket)
+    source = None if body.from_.startswith(BOUNDARY) else body.from_
+    target = None if body.to.startswith(BOUNDARY) else body.to
+    unmeasured = body.unmetered or body.by == "gauging"
+    if unmeasured or body.of == "water":
+        return Moved(ticket.name, source, target, None, body.of == "water")
+    vessel = vessels.get(source or "") or vessels.get(target or "")
+    kind = body.quantities()[0]
+    factor = _kilograms_per_unit(
+        ticket.name, body, kind, vessel, standard.get(source or "") or standard.get(target or "")
+    )
+    whole = float(getattr(body, kind))
+    share, split = _part(ticket.name, body, kind, whole, ticket.ended_at, opening, closing)
+    if factor is None:
+        return Moved(ticket.name, source, target, None, water=False)
+    net = 1.0 - body.sediment_water_pct / 100.0
+    returned = _returned(body) * (share / whole if whole else 0.0)
+    mass = Estimate(
+        share * factor.value * net - returned, {name: share * net * part for name, part in factor.parts.items()}
+    )
+    errors = _ticket_errors(ticket.name, body, meters, mass.value, share / whole if whole else 0.0)
+    errors.update({name: part * factor.value * net for name, part in split.items()})
+    return Moved(ticket.name, source, target, combine([(1.0, mass), (1.0, Estimate(0.0, errors))]), water=False)
+
+
+def _returned(body: Transfer) -> float:
+    given = body.vapour_return
+    return 0.0 if given is None or isinstance(given, str) else given.mass_kg or 0.0
+
+
+def _kilograms_per_unit(
+    name: str, body: Transfer, kind: str, vessel: CompiledVessel | None, standard: Estimate | None
+) -> Estimate | None:
+    """Mass of one unit of the ticket's quantity, with the errors of the density that it rests on."""
+    if kind == "mass_kg":
+        return Estimate(1.0)
+    own = _own_density(name, body, vessel)
+    density = own or standard
+    if density is None or vessel is None or vessel.substance.liquid is None:
+        return None
+    if kind == "standard_volume_m3":
+        return density
+    if kind == "observed_volume_m3":
+        assert body.temperature_c is not None
+        base = vessel.parameters["standard_temperature"], vessel.parameters["standard_pressure"]
+        pressure = base[1] if body.pressure_kpa is None else body.pressure_kpa * units.PASCAL_PER_KPA + base[1]
+        temperature = float(units.kelvin(body.temperature_c))
+        ratio = density_at(vessel, temperature, pressure) / density_at(vessel, *base)
+        return Estimate(density.value * ratio, {name: part * ratio for name, part in density.parts.items()})
+    air, weights = constants.CONVENTIONAL_AIR_DENSITY, constants.CONVENTIONAL_WEIGHT_DENSITY
+    return Estimate((1.0 - air / weights) / (1.0 - air / density.value))  # weight in air to mass, OIML D 28
+
+
+def _own_density(name: str, body: Transfer, vessel: CompiledVessel | None) -> Estimate | None:
+    """The ticket's own density, taken to the vessel's standard state."""
+    if body.density_kg_m3 is None or vessel is None or vessel.substance.liquid is None:
+        return None
+    assert body.density_temperature_c is not None
+    base = vessel.parameters["standard_temperature"], vessel.parameters["standard_pressure"]
+    there = float(units.kelvin(body.density_temperature_c))
+    ratio = density_at(vessel, *base) / density_at(vessel, there, base[1])
+    instrument = vessel.instrument("observed_density_kg_m3", "lab")
+    return Estimate(
+        body.density_kg_m3 * ratio,
+        {
+            f"density:{instrument.name}": instrument.systematic * ratio,
+            f"sample:ticket:{name}": instrument.random * ratio,
+        },
+    )
+
+
+def _ticket_errors(
+    name: str, body: Transfer, meters: Mapping[str, Meter], mass: float, share: float
+) -> dict[str, float]:
+    """Repeatability and factor of what measured the ticket."""
+    if body.meter is None:
+        spread = body.mass_uncertainty_kg or 0.0
+        return {f"t:{name}": spread * share} if spread else {}
+    meter = meters.get(body.meter)
+    random = instruments.METER_RANDOM_PCT if meter is None or meter.random_pct is None else meter.random_pct
+    systematic, proved = _factor(meter, body.started_at)
+    return {f"t:{name}": mass * random / 100.0, f"meter:{body.meter}:{proved}": mass * systematic / 100.0}
+
+
+def _factor(meter: Meter | None, started_at: int) -> tuple[float, str]:
+    """Shared error of a meter between two provings, in percent, and which interval it is."""
+    systematic = instruments.METER_SYSTEMATIC_PCT
+    if meter is not None and meter.systematic_pct is not None:
+        systematic = meter.systematic_pct
+    proved = ""
+    for proving in meter.provings if meter is not None else ():
+        if proving.at <= started_at:
+            proved = str(proving.at)
+            systematic = systematic if proving.systematic_pct is None else proving.systematic_pct
+    return systematic, proved
+
+
+def _part(
+    name: str, body: Transfer, kind: str, whole: float, ended_at: int, opening: int, closing: int
+) -> tuple[float, dict[str, float]]:
+    """How much of the quantity falls into the period, and the errors of dividing it, in its own unit.
+
+    The parts of all periods always add up to the ticket; an error of the division is + before, − after.
+    """
+    points = _running(body, kind, whole, ended_at)
+    before, early = _at(points, opening)
+    after, late = _at(points, closing)
+    errors: dict[str, float] = {}
+    if early:
+        errors[f"split:{name}:{opening}"] = -early
+    if late:
+        errors[f"split:{name}:{closing}"] = late
+    return after - before, errors
+
+
+def _running(body: Transfer, kind: str, whole: float, ended_at: int) -> list[tuple[int, float]]:
+    """Instants and running quantities from the start to the end, or to the last progress of one that runs."""
+    points = [(body.started_at, 0.0)]
+    points.extend((one.at, _quantity(one, kind)) for one in body.progress)
+    if body.ended_at is not None:
+        points.append((ended_at, whole))
+    elif not body.progress:
+        points.append((body.started_at, whole))
+    return points
+
+
+def _quantity(one: MovedQuantity, kind: str) -> float:
+    return float(getattr(one, kind))
+
+
+def _at(points: list[tuple[int, float]], instant: int) -> tuple[float, float]:
+    """Running quantity at an instant, by the points or by time between them, and its standard uncertainty."""
+    if instant <= points[0][0]:
+        return 0.0, 0.0
+    for (start, low), (end, high) in zip(points, points[1:], strict=False):
+        if instant == end:
+            return high, 0.0
+        if start < instant < end:
+            whole = high - low
+            first = whole * (instant - start) / (end - start)
+            return low + first, min(SPLIT_SHARE * whole, 0.5 * min(first, whole - first))
+    return points[-1][1], 0.0

@@ -1,0 +1,67 @@
+"""What was stored is read back as it was known: values of a vessel, and tickets of a site."""
+
+from __future__ import annotations
+
+import json
+from typing import Any
+
+from app.errors import NotFound, Unprocessable
+from app.schemas.transfer import Transfer
+from app.services.find import ALL_TIME, site_number, watermark
+from app.store import definitions, readings, transfers
+from app.store.engine import Store
+
+QUALITY = ("good", "uncertain", "bad")
+Period = tuple[int, int]
+Place = tuple[int, str, int] | None
+
+
+def values(
+    store: Store, site: str, vessel: str, period: Period, source: str | None, place: Place, limit: int,
+    as_of: int | None,
+) -> tuple[list[dict[str, Any]], tuple[int, str] | None, int]:  # fmt: skip
+    """A page of a vessel's values, the place behind it, and what all pages of the listing know."""
+    _in_order(period)
+    with store.reading() as connection:
+        site_id = site_number(connection, site)
+        known = watermark(connection, site_id, as_of if place is None else place[2])
+        if not definitions.in_force(connection, site_id, "vessel", ALL_TIME, known, [vessel]):
+            raise NotFound("There is no vessel of that id here", code="unknown_vessel")
+        page, following = readings.listing(
+            connection, site_id, vessel, *period, known, source=source,
+            cursor=None if place is None else place[:2], limit=limit,
+        )  # fmt: skip
+    found = []
+    for one in page:
+        for quantity, value in sorted(one.values.items()):
+            found.append(_stored(vessel, one.taken_at, one.source, quantity, value))
+    return found, following, known
+
+
+def _stored(vessel: str, taken_at: int, source: str, quantity: str, value: readings.Found) -> dict[str, Any]:
+    answer: dict[str, Any] = {
+        "vessel": vessel, "quantity": quantity, "source": source, "taken_at": taken_at, "value": value.value,
+        "quality": QUALITY[value.quality], "recorded_at": value.recorded_at, "revision": value.revision,
+    }  # fmt: skip
+    if value.cited is not None:
+        key = "composition" if quantity.endswith("composition") else "text"
+        answer[key] = json.loads(value.cited) if key == "composition" else value.cited
+    return answer
+
+
+def _in_order(period: Period) -> None:
+    if period[1] <= period[0]:
+        raise Unprocessable("to is after from", code="impossible")
+
+
+def tickets(
+    store: Store, site: str, period: Period, place: Place, limit: int, as_of: int | None
+) -> tuple[list[tuple[transfers.Transfer, Transfer]], tuple[int, str] | None, int]:
+    """A page of the tickets that touch a period, struck ones too, by end and id."""
+    _in_order(period)
+    with store.reading() as connection:
+        site_id = site_number(connection, site)
+        known = watermark(connection, site_id, as_of if place is None else place[2])
+        cursor = None if place is None else place[:2]
+        page, following = transfers.listing(connection, site_id, *period, known, cursor=cursor, limit=limit)
+    return [(one, Transfer.model_validate_json(one.body)) for one in page], following, known
