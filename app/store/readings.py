@@ -69,24 +69,11 @@ class Listed(NamedTuple):
     values: dict[str, Found]
 
 
-class _Row(NamedTuple):
-    position: int
-    series_id: int
-    taken_at: int
-    value: float | None
-    cited_id: int | None
-    quality: int
-    corrects: int | None
-
-
-class _Kept(NamedTuple):
-    revision: int
-    recorded_at: int
-    value: float | None
-    cited_id: int | None
-    quality: int
-
-
+# Plain tuples: a batch makes one of each for every value, and named ones take four times as long.
+_Row = tuple[int, int, int, float | None, int | None, int, int | None]
+"""Position in the batch, series, instant, value, citation, quality, what it corrects."""
+_Kept = tuple[int, int, float | None, int | None, int]
+"""Revision, recorded_at, value, citation, quality."""
 _Key = tuple[int, int]  # series, instant
 
 
@@ -101,18 +88,18 @@ def write_values(writing: Writing, values: Sequence[Value]) -> list[Outcome]:
     else writes, so it cannot go stale, and one rule serves new values, repeats and corrections.
     """
     rows = _rows(writing, values)
-    outcomes: list[Outcome] = ["unchanged"] * len(values)
+    outcomes: list[Outcome] = ["stored"] * len(values)
     for table in (READING, ANALYSIS):
-        own = [row for row in rows if table_of(row.series_id) is table]
+        own = [row for row in rows if table_of(row[1]) is table]
         if own:
             _write(writing, table, own, outcomes)
     return outcomes
 
 
 def _rows(writing: Writing, values: Sequence[Value]) -> list[_Row]:
-    series = numbered(writing, {(value.vessel, value.quantity, value.source) for value in values})
+    series = numbered(writing, {value[:3] for value in values})
     texts = cited(writing, {value.cited for value in values if value.cited is not None})
-    rows = []
+    rows: list[_Row] = []
     for position, (vessel, quantity, source, taken_at, value, text, quality, corrects) in enumerate(values):
         if value is not None:
             if not math.isfinite(value):
@@ -122,40 +109,43 @@ def _rows(writing: Writing, values: Sequence[Value]) -> list[_Row]:
             raise ValueError(f"the value at index {position} says nothing")
         cited_id = None if text is None else texts[text]
         number = series[vessel, quantity, source]
-        rows.append(_Row(position, number, taken_at, value, cited_id, quality, corrects))
+        rows.append((position, number, taken_at, value, cited_id, quality, corrects))
     return rows
 
 
 def _write(writing: Writing, table: sa.Table, rows: Sequence[_Row], outcomes: list[Outcome]) -> None:
-    keys = {(row.series_id, row.taken_at) for row in rows}
-    standing = _standing(writing.connection, table, writing.site_id, keys)
+    standing = _standing(writing.connection, table, writing.site_id, {row[1:3] for row in rows})
+    site_id, recorded_at = writing.site_id, writing.recorded_at
     new: list[tuple[int, int, int, int, int, float | None, int | None, int]] = []
-    for row in rows:
-        kept = standing.setdefault((row.series_id, row.taken_at), [])
-        outcome = outcomes[row.position] = _outcome(kept, row)
-        if outcome in ("stored", "revised"):
-            revision = kept[-1].revision + 1 if kept else 1
-            kept.append(_Kept(revision, writing.recorded_at, row.value, row.cited_id, row.quality))
-            new.append((
-                writing.site_id, row.series_id, row.taken_at, revision,
-                writing.recorded_at, row.value, row.cited_id, row.quality,
-            ))  # fmt: skip
+    for position, series_id, taken_at, value, cited_id, quality, corrects in rows:
+        said = (value, cited_id, quality)
+        kept = standing.get((series_id, taken_at))
+        if kept is None and corrects is None:  # "stored", and most of all values
+            revision = 1
+            standing[series_id, taken_at] = [(1, recorded_at, *said)]
+        else:
+            outcome = outcomes[position] = _outcome(kept, said, corrects)
+            if kept is None or outcome != "revised":
+                continue
+            revision = kept[-1][0] + 1
+            kept.append((revision, recorded_at, *said))
+        new.append((site_id, series_id, taken_at, revision, recorded_at, value, cited_id, quality))
     if new:
-        new.sort(key=lambda row: row[:4])  # in the order of the key: neighbours share pages
+        new.sort()  # in the order of the key: neighbours share pages
         if table is READING:
             make_months(writing.store, (row[2] for row in new))
         _insert(writing.connection, table, new)
 
 
-def _outcome(kept: Sequence[_Kept], row: _Row) -> Outcome:
-    if not kept:
-        return "stored" if row.corrects is None else "stale_correction"
-    said = (row.value, row.cited_id, row.quality)
-    if row.corrects is None:
+def _outcome(kept: Sequence[_Kept] | None, said: tuple[float | None, int | None, int], corrects: int | None) -> Outcome:
+    """What becomes of a value where something is kept, or where it corrects something."""
+    if kept is None:
+        return "stale_correction"
+    if corrects is None:
         return "unchanged" if any(said == one[2:] for one in kept) else "revised"
     if said == kept[-1][2:]:
         return "unchanged"
-    return "revised" if kept[-1].recorded_at == row.corrects else "stale_correction"
+    return "revised" if kept[-1][1] == corrects else "stale_correction"
 
 
 _COLUMNS = "site_id, series_id, taken_at, revision, recorded_at, value, cited_id, quality"
@@ -184,14 +174,14 @@ def _standing(
         bounds: dict[int, tuple[int, int]] = {}
         for series_id, at in keys:
             lo, hi = bounds.get(series_id, (at, at))
-            bounds[series_id] = (min(lo, at), max(hi, at))
+            bounds[series_id] = (at if at < lo else lo, at if at > hi else hi)
         wanted = [(series_id, lo, hi) for series_id, (lo, hi) in bounds.items()]
         met = seek.touched(connection, table.name, site_id, wanted)
         keys = {key for key in keys if key[0] in met}
     found: dict[_Key, list[_Kept]] = {}
     if keys:
-        for series_id, taken_at, *kept in seek.revisions(connection, table.name, site_id, sorted(keys)):
-            found.setdefault((series_id, taken_at), []).append(_Kept(*kept))
+        for row in seek.revisions(connection, table.name, site_id, sorted(keys)):
+            found.setdefault(row[:2], []).append(row[2:])
     return found
 
 
