@@ -15,7 +15,6 @@ from models.arrays import ArrayLike, FloatArray, IntArray, as_floats
 from models.components import Component, component
 from models.errors import DefinitionError
 
-EXPONENTS = (1.0, 1.5, 2.5, 5.0)
 AMBROSE_WALTON = (
     (-5.97616, 1.29874, -0.60394, -1.06841),
     (-5.03365, 1.11505, -5.41217, -7.46628),

@@ -52,6 +52,15 @@ def test_every_substance_follows_its_reference_line(name: str) -> None:
         assert highest == component(name).critical_temperature
 
 
+@pytest.mark.parametrize("name", sorted(WAGNER))
+def test_a_line_begins_at_the_triple_point_or_where_it_is_cold_enough(name: str) -> None:
+    """In whole kelvin, at the triple point or at the lower of 0.45 Tc and -30 degrees."""
+    state = CoolProp.AbstractState("HEOS", OTHER_NAMES.get(name, name.capitalize()))
+    starts = max(state.Ttriple(), min(0.45 * component(name).critical_temperature, 243.15))
+    exact = {"hydrogen": 15.0, "helium": 2.4, "neon": 24.6, "water": 273.16}
+    assert WAGNER[name][0] == exact.get(name, np.ceil(starts))
+
+
 def test_every_substance_of_the_table_has_a_line() -> None:
     assert set(WAGNER) == set(COMPONENTS)
 
@@ -84,6 +93,7 @@ def test_a_substance_given_in_full_takes_corresponding_states(acentric: float) -
     expected = [Ambrose_Walton(x, 500.0, 3e6, acentric) for x in t]
     assert columns.pressure(t)[0] == pytest.approx(expected, rel=1e-12)
     assert np.isnan(columns.pressure([249.9, 500.1])[0]).all()
+    assert np.isfinite(columns.pressure([250.1, 499.9])[0]).all()
     assert columns.departure[0] == 0.01
 
 
