@@ -105,6 +105,8 @@ def test_random_histories_hold_as_a_dictionary_would(store: Store, site_id: str)
                     of_name = [one for one in line if one.name == name and one.effective_from <= moment]
                     assert (of_name[-1].body if of_name else None) == expected_at(name, moment, known)
             assert all(one.effective_from < end for one in line)
+            for name in "abc":
+                assert sum(one.effective_from <= at for one in line if one.name == name) <= 1
 
 
 def test_kinds_and_sites_do_not_meet(store: Store, site_id: str) -> None:

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import signal
 import sqlite3
+import subprocess
+import sys
 import threading
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
@@ -14,10 +17,12 @@ import sqlalchemy as sa
 
 from app.store import readings, sites
 from app.store.engine import DiskFull, Store, StoreUnavailable, UnknownSite, Writing, normalised
+from app.store.lock import LockTimeout, WriterLock
 from app.store.readings import Value
 from app.store.tables import RECORDING, SITE
 
 T0 = 1_767_225_600_000_000
+ROOT = Path(__file__).resolve().parents[3]
 
 
 def recorded(store: Store, site: str) -> list[int]:
@@ -178,6 +183,60 @@ def test_sqlite_keeps_what_it_acknowledged(sqlite_store: Store) -> None:
         assert pragma(connection, "foreign_keys") == 1
         assert pragma(connection, "busy_timeout") == 30_000
         assert pragma(connection, "mmap_size") == 0
+
+
+def test_a_sqlite_writer_holds_its_locks_from_before_it_begins_until_it_ends(sqlite_store: Store) -> None:
+    path = Path(str(sqlite_store.url.database))
+    other = WriterLock(path.with_name(path.name + ".lock"), 0.02)
+    foreign = sqlite3.connect(path, timeout=0, isolation_level=None)
+    with sqlite_store.transaction(lock_key=1):
+        with pytest.raises(LockTimeout), other.held():
+            pass
+        with pytest.raises(sqlite3.OperationalError, match="locked"):
+            foreign.execute("BEGIN IMMEDIATE")
+    with other.held():
+        foreign.execute("BEGIN IMMEDIATE")
+        foreign.execute("ROLLBACK")
+    foreign.close()
+
+
+# A process of its own, not a fork: SQLite must not carry connections across one.
+WRITE_UNTIL_KILLED = f"""
+import itertools, sys
+from app.store import readings
+from app.store.engine import Store
+
+url, site, first = sys.argv[1:]
+store = Store.open(url)
+for number in itertools.count(int(first)):
+    with store.writing(site) as writing:
+        batch = [readings.Value(f"tk-{{number}}", "level_m", "radar", {T0} + index, 1.0) for index in range(3)]
+        readings.write_values(writing, batch)
+    print(f"tk-{{number}}", flush=True)
+"""
+
+
+def test_what_was_acknowledged_survives_a_kill_and_nothing_is_kept_in_part(store: Store, site_id: str) -> None:
+    with store.writing(site_id, create=True):
+        pass
+    url, acknowledged = store.url.render_as_string(hide_password=False), list[str]()
+    for turn in range(3):
+        arguments = [sys.executable, "-c", WRITE_UNTIL_KILLED, url, site_id, str(turn * 1000)]
+        with subprocess.Popen(arguments, cwd=ROOT, stdout=subprocess.PIPE, text=True) as process:
+            assert process.stdout is not None
+            acknowledged += [process.stdout.readline().strip() for _ in range(6)]
+            process.kill()
+            acknowledged += process.stdout.read().split()
+        assert process.returncode == -signal.SIGKILL
+    with store.writing(site_id):  # the lock of the killed is free
+        pass
+    with store.reading() as connection:
+        site = sites.number(connection, site_id)
+        kept = {one.vessel: one.series_id for one in readings.series_of(connection, site)}
+        course = readings.course(connection, site, list(kept.values()), T0, T0 + 3, 2**62)
+    assert len(acknowledged) >= 18
+    assert set(acknowledged) <= set(kept)
+    assert sorted(course.series_id) == sorted(3 * list(kept.values()))
 
 
 def test_a_full_disk_says_so_and_what_was_kept_stays_readable(tmp_path: Path, site_id: str) -> None:
