@@ -58,6 +58,18 @@ def mark_touched(writing: Writing, lo: int, hi: int, cause: str) -> list[tuple[i
     return periods
 
 
+def mark_opening_at(writing: Writing, instant: int, cause: str) -> list[tuple[int, int]]:
+    """Make due every closed period that opens at an instant: its opening is what was just closed anew."""
+    b = BOOK.c
+    following = (
+        sa.select(b.opening, b.closing).where(b.site_id == writing.site_id, b.opening == instant)
+        .distinct().order_by(b.closing)
+    )  # fmt: skip
+    periods = [(opening, closing) for opening, closing in writing.connection.execute(following)]
+    mark(writing, periods, cause)
+    return periods
+
+
 def listing(connection: Connection, site_id: int | None = None) -> list[Due]:
     """What is due, of one site or of all, oldest close first, so that books chain."""
     query = sa.select(*_COLUMNS).order_by(_C.closing, _C.opening, _C.site_id)

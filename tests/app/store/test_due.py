@@ -98,6 +98,17 @@ def test_closed_periods_that_late_data_touch_become_due(store: Store, site_id: s
     assert listed(store, site_id) == NIGHTS[2:4]
 
 
+def test_a_night_closed_anew_makes_the_periods_due_that_open_with_it(store: Store, site_id: str) -> None:
+    month = (NIGHTS[1][0], NIGHTS[4][1])
+    with store.writing(site_id, create=True) as writing:
+        for opening, closing in (*NIGHTS, month):
+            books.write_book(writing, opening, closing, "d", 1, "1.0", "{}", [])
+    with store.writing(site_id) as writing:
+        assert due.mark_opening_at(writing, NIGHTS[0][1], "the night before") == [NIGHTS[1], month]
+        assert due.mark_opening_at(writing, NIGHTS[4][1], "the night before") == []
+    assert listed(store, site_id) == [NIGHTS[1], month]
+
+
 def test_workers_at_once_count_every_attempt(store: Store, site_id: str) -> None:
     mark(store, site_id, [NIGHTS[0]])
     with ThreadPoolExecutor(8) as pool:

@@ -286,6 +286,24 @@ def test_instants_without_end_are_no_trouble(store: Store, site_id: str) -> None
         assert readings.listing(connection, site, "nobody", 0, T0, 2**62) == ([], None)
 
 
+@pytest.mark.parametrize("text", ["\ud800", "a\x00b", "\udfff\ud800 S1"])
+def test_text_that_no_database_should_see_is_kept_as_it_is_or_not_at_all(
+    store: Store, site_id: str, text: str
+) -> None:
+    """The door refuses it; should it come through, nothing else may come of it."""
+    write(store, site_id, level(1.0))
+    odd = Value("tk-1", "sample", "lab", T0, None, text)
+    try:
+        write(store, site_id, level(2.0, T0 + 1), odd)
+    except (UnicodeEncodeError, sa.exc.DBAPIError):
+        assert newest_level(store, site_id, T0 + 1) == 1.0
+        return
+    with store.reading() as connection:
+        site = number(connection, site_id)
+        page, _ = readings.listing(connection, site, "tk-1", T0, T0 + 1, 2**62, source="lab")
+    assert page[0].values["sample"].cited == text
+
+
 def test_two_sites_do_not_meet(store: Store, site_id: str) -> None:
     other = f"{site_id}-b"
     assert write(store, site_id, level(1.0))[0] == ["stored"]
