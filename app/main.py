@@ -10,7 +10,7 @@ from typing import Any
 from fastapi import APIRouter, FastAPI, Request, Response
 from fastapi.telemetry import TelemetryConfig
 
-from app.api import health, inventory, meters, readings, sites, substances, transfers, vessels
+from app.api import health, inventory, meters, readings, reconciliations, sites, substances, transfers, vessels
 from app.clock import Clock
 from app.edge import openapi, problems
 from app.edge.hosts import Hosts
@@ -23,7 +23,7 @@ from models.errors import ModelError
 # In the order of the flow, which is the order in which /openapi.json lists them.
 ROUTERS: list[APIRouter] = [
     module.router
-    for module in (sites, substances, vessels, meters, readings, transfers, inventory, health)
+    for module in (sites, substances, vessels, meters, readings, transfers, inventory, reconciliations, health)
 ]
 QUIET = TelemetryConfig(tracing=False, metrics=False, logs=False, operation_spans=False, auto_configure=False)
 DESCRIPTION = """Readings of tanks and pressure vessels in; mass with its standard uncertainty, and books

@@ -135,6 +135,25 @@ class VesselBook(Answer):
     )
 
 
+class Imbalance(VesselBook):
+    """One vessel of one closed period, in a flat list over many."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "reconciliation": "2026-03-14.1", "opening": "2026-03-14T05:00:00Z",
+                    "closing": "2026-03-15T05:00:00Z", "vessel": "tk-12", "status": "measured", "flagged": False,
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    reconciliation: str = Field(description="The period, with its revision")
+    opening: AnsweredInstant = Field(description="Start of the period")
+    closing: AnsweredInstant = Field(description="End of the period")
+
+
 class TransferBook(Answer):
     """One transfer, as measured and as reconciled."""
 

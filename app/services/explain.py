@@ -15,6 +15,7 @@ from app.services.working import budget_lines, working_steps
 from models import constants, instruments
 from models.columns import UNMEASURED, Mark
 from models.estimate import Estimate
+from models.liquid.expansivity import expansivity
 from models.mass import standard_uncertainty
 
 QUALITY = ("good", "uncertain", "bad")
@@ -310,3 +311,58 @@ def _limit(measured: Measured, row: int, mark: Mark) -> str:
         temperature = at_row(measured.state.vapour_temperature, row) - 273.15
         return f": {pressure:.6g} kPa absolute at {temperature:.4g} °C"
     return ""
+
+
+def inputs_read(measured: Measured, row: int) -> list[list[Any]]:
+    """Every stored value that counted in a row, by its key: what a close rests on."""
+    found: list[list[Any]] = []
+    for spec in INPUTS:
+        chosen = measured.chosen[spec.name]
+        if not chosen.usable[row] or not _counts(measured, row, spec.name):
+            continue
+        column = int(chosen.source[row])
+        quantity, source = measured.collected.origins[spec.name].of(row, column)
+        text = measured.collected.texts[spec.name][row, column]
+        companions = [[name, _companion(measured, row, spec.name, name, column)] for name in spec.companions]
+        found.append(
+            [quantity, source, int(chosen.taken_at[row]), int(chosen.after_at[row]), float(chosen.value[row]) if text is None else text,
+             int(chosen.quality[row]), companions]
+        )  # fmt: skip
+    return found
+
+
+def _companion(measured: Measured, row: int, name: str, quantity: str, column: int) -> Any:
+    candidates, texts = measured.collected.companions[(name, quantity)]
+    if candidates.before_at[row, column] != measured.chosen[name].taken_at[row]:
+        return None
+    text = texts[row, column]
+    return _number(float(candidates.before[row, column])) if text is None else text
+
+
+def standard_density(measured: Measured, row: int) -> Estimate:
+    """Density of the vessel's liquid at its standard state, with the errors of its sample. [kg/m³]"""
+    value = float(measured.result["standard_density"][row])
+    if not math.isfinite(value):
+        return Estimate(math.nan)
+    per_unit = value / at_row(measured.state.density, row)
+    vessel = measured.vessel(row)
+    beta = float(
+        expansivity(
+            at_row(measured.state.density_temperature, row), coefficients=vessel.expansivity, origin=vessel.density[1]
+        )
+    )
+    slopes = {"density": per_unit, "density_temperature": value * beta}
+    named: dict[str, float] = {}
+    for part in measured.parts:
+        slope = slopes.get(part.sensitivity)
+        sigma = at_row(part.sigma, row)
+        if slope is not None and sigma != 0.0:
+            name = part.name(row)
+            named[name] = named.get(name, 0.0) + slope * sigma
+    return Estimate(value, named)
+
+
+def read_at(measured: Measured, row: int) -> int | None:
+    """When the level of a row was read, or the pressure of a vessel that has none."""
+    chosen = measured.chosen["level" if measured.vessel(row).has_liquid else "pressure"]
+    return int(chosen.taken_at[row]) if chosen.usable[row] else None

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from datetime import UTC, datetime, time, timedelta
+from zoneinfo import ZoneInfo
 
 from sqlalchemy import Connection
 
@@ -11,6 +13,7 @@ from app.schemas.meter import Meter
 from app.schemas.site import Site
 from app.schemas.vessel import Vessel
 from app.services.compile import CompiledVessel, InForce, compile_texts
+from app.services.instants import EPOCH, Period, day_bounds, micros, parse_label
 from app.store import definitions
 from app.store.definitions import Definition
 from app.store.tables import ALWAYS
@@ -83,3 +86,21 @@ def meters_in_force(connection: Connection, site_id: int, at: int, known: int) -
     """The meters of a site at an instant, by id."""
     found = definitions.in_force(connection, site_id, "meter", at, known)
     return {one.name: Meter.model_validate_json(one.body) for one in found}
+
+
+def period_of(connection: Connection, site_id: int, name: str, label: str, known: int) -> Period:
+    """A period by its id: two instants, or a local day of the site by the zone in force on it."""
+    parsed = parse_label(label)
+    if isinstance(parsed, Period):
+        return parsed
+    noon = micros(datetime.combine(parsed, time(12), tzinfo=UTC))
+    body, _ = site_body(connection, site_id, name, noon, known)
+    return Period(*day_bounds(parsed, body.day_starts_at, body.time_zone), day=label)
+
+
+def labelled(connection: Connection, site_id: int, name: str, bounds: tuple[int, int], known: int) -> Period:
+    """A period by its instants; one that is a day of the site is named as that day."""
+    body, _ = site_body(connection, site_id, name, bounds[0], known)
+    day = (EPOCH + timedelta(microseconds=bounds[0])).astimezone(ZoneInfo(body.time_zone)).date()
+    is_day = day_bounds(day, body.day_starts_at, body.time_zone) == bounds
+    return Period(*bounds, day=day.isoformat() if is_day else None)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from datetime import UTC, date, datetime, time, timedelta
 from zoneinfo import ZoneInfo
 
@@ -62,3 +63,30 @@ def check_zone(name: str) -> None:
         raise DefinitionError(
             "time_zone is no name of the IANA time zone database; Europe/Oslo is one", field=None
         ) from None
+
+
+@dataclass(frozen=True)
+class Period:
+    """A half-open period of a site; a day of it where ``day`` is given."""
+
+    opening: int
+    closing: int
+    day: str | None = None
+
+    @property
+    def label(self) -> str:
+        """The period's id without its revision."""
+        return self.day or f"{basic(self.opening)}--{basic(self.closing)}"
+
+
+def parse_basic(text: str) -> int:
+    """The instant of a basic UTC text such as 20260301T050000Z."""
+    return micros(datetime.strptime(text, "%Y%m%dT%H%M%SZ").replace(tzinfo=UTC))
+
+
+def parse_label(text: str) -> Period | date:
+    """A period's id without its revision: two instants, or a local date."""
+    if "--" in text:
+        opening, closing = (parse_basic(part) for part in text.split("--"))
+        return Period(opening, closing)
+    return date.fromisoformat(text)

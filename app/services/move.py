@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from app.errors import FieldError, NotFound, Unprocessable
 from app.schemas.batch import RowError
 from app.schemas.meter import Meter
-from app.schemas.transfer import MovedQuantity, Transfer
+from app.schemas.transfer import MovedQuantity, NamedTransfer, Transfer
 from app.schemas.types import canonical
 from app.services.compile import CompiledVessel, density_at
 from app.services.find import ALL_TIME, site_number
@@ -41,13 +41,13 @@ def put(store: Store, site: str, name: str, body: Transfer, request: str = "") -
         refused = _refusals(writing, body)
         if refused:
             raise Unprocessable(refused[0].detail, code=refused[0].code, errors=refused)
-        text = canonical(without_id(body))
+        text = canonical(body)
         outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, void=body.void)
         return outcome, writing.recorded_at
 
 
 def put_many(
-    store: Store, site: str, rows: Sequence[tuple[int, Transfer]], errors: list[RowError], request: str = ""
+    store: Store, site: str, rows: Sequence[tuple[int, NamedTransfer]], errors: list[RowError], request: str = ""
 ) -> tuple[dict[str, int], list[RowError], int]:
     """Keep the good tickets of a batch; counts of outcomes, what was refused, and the ``recorded_at``."""
     counts = {"created": 0, "revised": 0, "unchanged": 0}
@@ -55,23 +55,15 @@ def put_many(
         site_number(connection, site)
     with store.writing(site, deed="transfers", request=request) as writing:
         for index, body in rows:
-            assert body.id is not None
             problems = _refusals(writing, body)
             errors.extend(
                 RowError(index=index, field=one.pointer.strip("/"), code=one.code, detail=one.detail)
                 for one in problems
             )
             if not problems:
-                text = canonical(without_id(body))
+                text = canonical(body, without={"id"})
                 counts[transfers.put(writing, body.id, body.started_at, body.ended_at, text, void=body.void)] += 1
         return counts, sorted(errors, key=lambda error: error.index), writing.recorded_at
-
-
-def without_id(body: Transfer) -> Transfer:
-    """The ticket as it would be put under its own path: the id is not part of it."""
-    return Transfer.model_construct(
-        body.model_fields_set - {"id"}, **{name: getattr(body, name) for name in Transfer.model_fields if name != "id"}
-    )
 
 
 def _refusals(writing: Writing, body: Transfer) -> list[FieldError]:

@@ -1,0 +1,182 @@
+"""The balances of a period as books: each vessel's figures, verdict and limits, each substance's total."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Any
+
+from app.schemas.site import ImbalanceLimit
+from app.services import explain
+from app.services.move import Moved
+from app.services.take_stock import Stock
+from models.balance.night import Movement, Night, Row, limits, night
+from models.estimate import Estimate, combine
+
+if TYPE_CHECKING:
+    from app.services.close import Opening
+
+MONTH_DAYS = 30.44  # days of a mean month
+
+
+def books_of(closing: Stock, opening: Opening, moves: Sequence[Moved], known: int) -> tuple[dict[str, Any], set[str]]:
+    """The blocks of a reconciliation that this version computes, and the vessels that are flagged."""
+    measured = closing.masses
+    known_ends = set(measured)
+    movements = [
+        Movement(one.name, _end(one.source, known_ends), _end(one.target, known_ends), one.mass) for one in moves
+    ]
+    alarm = min(0.99, closing.site.body.false_alarms_per_month / MONTH_DAYS)
+    result = night(opening.masses, measured, movements, alarm)
+    vessels = [_vessel(answer, closing, opening, movements, result) for answer in closing.answers]
+    flagged = {one["vessel"] for one in vessels if one["flagged"]}
+    in_service = [one for one in vessels if one["status"] != "out_of_service"]
+    body = {
+        "status": "imbalanced" if flagged else "balanced",
+        "complete": all(one["imbalance_kg"] is not None for one in in_service),
+        "vessels": vessels,
+        "transfers": [
+            {
+                "transfer": one.name,
+                "measured_mass_kg": None if one.mass is None else one.mass.value,
+                "observability": result.observability[one.name],
+            }
+            for one in movements
+        ],
+        "groups": [
+            {"members": list(one.members), "statistic": _number(one.statistic),
+             "degrees_of_freedom": one.degrees_of_freedom, "p_value": _number(one.p_value)}
+            for one in result.groups
+        ],
+        "totals": _totals(closing, opening, movements),
+    }  # fmt: skip
+    return body, flagged
+
+
+def _end(name: str | None, known: set[str]) -> str | None:
+    """An end that has an inventory of its own; a junction's and a boundary's is beyond the books."""
+    return name if name in known else None
+
+
+def _number(value: float) -> float | None:
+    return float(value) if math.isfinite(value) else None
+
+
+def read_at(stock: Stock, vessel: str) -> int | None:
+    """When the inventory of a vessel was read."""
+    names = [one.name for one in stock.site.vessels]
+    if stock.measured is None or vessel not in names:
+        return None
+    return explain.read_at(stock.measured, names.index(vessel))
+
+
+def _sum(masses: Sequence[Estimate]) -> float:
+    return math.fsum(mass.value for mass in masses)
+
+
+def _vessel(
+    answer: Mapping[str, Any], closing: Stock, opening: Opening, movements: Sequence[Movement], result: Night
+) -> dict[str, Any]:
+    """One vessel's books; merged vessels carry the book and the imbalance of the whole."""
+    name = answer["vessel"]
+    row = next((one for one in result.rows if name in one.members), None)
+    members = (name,) if row is None else row.members
+    received = [one.mass for one in movements if one.target in members and one.source not in members and one.mass]
+    delivered = [one.mass for one in movements if one.source in members and one.target not in members and one.mass]
+    before, after = opening.masses.get(name), closing.masses[name]
+    book = None
+    if row is not None:
+        opened = [opening.masses[one] for one in members]
+        book = math.fsum(one.value for one in opened if one is not None) + _sum(received) - _sum(delivered)
+    entry: dict[str, Any] = {
+        "vessel": name,
+        "status": answer["status"],
+        "flagged": bool(row is not None and row.flagged),
+        "opening_mass_kg": None if before is None else before.value,
+        "closing_mass_kg": None if after is None else after.value,
+        "received_kg": _sum(received),
+        "delivered_kg": _sum(delivered),
+        "book_mass_kg": book,
+        "imbalance_kg": None if row is None else row.imbalance.value,
+        "imbalance_uncertainty_kg": None if row is None else row.imbalance.uncertainty,
+        "score": None if row is None else _number(row.score),
+        "p_value": None if row is None else row.p_value,
+        "detectable_imbalance_kg": None if row is None else _number(row.detectable),
+        "opening_read_at": opening.read_at.get(name),
+        "closing_read_at": read_at(closing, name),
+        "judged_with": [one for one in members if one != name],
+    }
+    return entry | _verdict(name, closing, row, result.critical, max(_sum(received), _sum(delivered)))
+
+
+def _verdict(name: str, closing: Stock, row: Row | None, critical: float, throughput: float) -> dict[str, Any]:
+    """fail if flagged; inconclusive if a limit is set that the instruments cannot see or that is passed."""
+    vessel = closing.site.vessel(name)
+    own: ImbalanceLimit | None = None if vessel is None else vessel.body.imbalance_limit
+    limit = own or closing.site.body.imbalance_limit
+    entry: dict[str, Any] = {}
+    if row is not None:
+        entry["limited_by"] = [
+            {"instrument": one, "detectable_without_it_kg": without}
+            for one, without in limits(row, critical, instrument)
+        ]
+    if row is None:
+        return entry | {"verdict": None if vessel is None else "inconclusive"}
+    if limit is None:
+        return entry | {"verdict": "fail" if row.flagged else "pass"}
+    allowed = limit.kg + limit.pct_of_throughput / 100.0 * throughput
+    over = abs(row.imbalance.value) > allowed
+    unseen = row.detectable > allowed
+    verdict = "fail" if row.flagged else "inconclusive" if over or unseen else "pass"
+    return entry | {"verdict": verdict, "over_limit": over}
+
+
+def instrument(error: str) -> str:
+    """What a reader would go and look at, from an error's name: stamps of single readings are left out."""
+    kind, _, rest = error.partition(":")
+    if kind in ("r", "stale"):
+        return rest.rpartition(":")[0].replace(":", " ") + (", each reading" if kind == "r" else ", carried forward")
+    if kind == "t":
+        return f"ticket {rest}"
+    return f"{kind} {rest}"
+
+
+def _totals(closing: Stock, opening: Opening, movements: Sequence[Movement]) -> list[dict[str, Any]]:
+    """Each substance over the whole site; errors that vessels and tickets share add up as shared."""
+    held: dict[str, list[str]] = {}
+    for vessel in closing.site.vessels:
+        held.setdefault(str(vessel.body.substance), []).append(vessel.name)
+    totals = []
+    for substance, names in sorted(held.items()):
+        own = set(names)
+        received = [one for one in movements if one.target in own and one.source not in own]
+        delivered = [one for one in movements if one.source in own and one.target not in own]
+        opened = [opening.masses.get(name) for name in names]
+        closed = [closing.masses[name] for name in names]
+        complete = not any(mass is None for mass in opened + closed + [one.mass for one in received + delivered])
+        entry: dict[str, Any] = {
+            "substance": substance,
+            "opening_mass_kg": _known(opened),
+            "closing_mass_kg": _known(closed),
+            "received_kg": _known([one.mass for one in received]),
+            "delivered_kg": _known([one.mass for one in delivered]),
+            "complete": complete,
+        }
+        if complete:
+            signed = [
+                (1.0, closed),
+                (-1.0, opened),
+                (-1.0, [m.mass for m in received]),
+                (1.0, [m.mass for m in delivered]),
+            ]
+            imbalance = combine((sign, mass) for sign, masses in signed for mass in masses if mass is not None)
+            entry |= {"imbalance_kg": imbalance.value, "imbalance_uncertainty_kg": imbalance.uncertainty}
+        totals.append(entry)
+    return totals
+
+
+def _known(masses: Sequence[Estimate | None]) -> float | None:
+    """Sum of masses, None where one is not known."""
+    return (
+        None if any(mass is None for mass in masses) else math.fsum(mass.value for mass in masses if mass is not None)
+    )
