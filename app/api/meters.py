@@ -29,9 +29,7 @@ def put_meter(
 @router.get("/{meter}", response_model_exclude_unset=True)
 def get_meter(request: Request, site: PathId, meter: PathId, at: At = None, as_of: AsOf = None) -> Defined[Meter]:
     """The meter as defined at an instant, or as it holds last."""
-    with request.app.state.store.reading() as connection:
-        one = define.newest(connection, site, "meter", meter, at, as_of)
-    return Defined[Meter](**define.defined(one), definition=Meter.model_validate_json(one.body))
+    return Defined[Meter].model_validate(define.newest(request.app.state.store, site, "meter", meter, at, as_of))
 
 
 @router.get("", response_model_exclude_unset=True)
@@ -39,7 +37,6 @@ def list_meters(
     request: Request, site: PathId, at: At = None, as_of: AsOf = None, limit: Limit = LIMIT, cursor: Cursor = None
 ) -> Page[Defined[Meter]]:
     """Every meter of the site in force at an instant, by id."""
-    with request.app.state.store.reading() as connection:
-        page, after, known = define.listing(connection, site, "meter", at, as_of, cursor, limit)
-    items = [Defined[Meter](**define.defined(one), definition=Meter.model_validate_json(one.body)) for one in page]
-    return Page(items=items, next=after, known_at=known)
+    store = request.app.state.store
+    page, after, known = define.listing(store, site, "meter", at, as_of, cursor, limit)
+    return Page[Defined[Meter]].model_validate({"items": page, "next": after, "known_at": known})

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Any
+from typing import Annotated
 
 from fastapi import APIRouter, Depends, Request, Response
 
@@ -28,18 +28,11 @@ def put_site(
 @router.get("/{site}", response_model_exclude_unset=True)
 def get_site(request: Request, site: PathId, at: At = None, as_of: AsOf = None) -> Defined[Site]:
     """The site as defined at an instant, or as it holds last."""
-    with request.app.state.store.reading() as connection:
-        one = define.newest(connection, site, "site", site, at, as_of)
-    return Defined[Site](**define.defined(one), definition=_body(one))
+    return Defined[Site].model_validate(define.newest(request.app.state.store, site, "site", site, at, as_of))
 
 
 @router.get("", response_model_exclude_unset=True)
 def list_sites(request: Request, limit: Limit = LIMIT, cursor: Cursor = None) -> Page[Defined[Site]]:
     """Every site, by id."""
-    with request.app.state.store.reading() as connection:
-        page, after = define.site_names(connection, cursor or "", limit)
-    return Page(items=[Defined[Site](**define.defined(one), definition=_body(one)) for one in page], next=after)
-
-
-def _body(one: Any) -> Site:
-    return Site.model_validate_json(one.body)
+    page, after = define.site_listing(request.app.state.store, cursor, limit)
+    return Page[Defined[Site]].model_validate({"items": page, "next": after})

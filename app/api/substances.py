@@ -31,9 +31,9 @@ def get_substance(
     request: Request, site: PathId, substance: PathId, at: At = None, as_of: AsOf = None
 ) -> Defined[Substance]:
     """The substance as defined at an instant, or as it holds last."""
-    with request.app.state.store.reading() as connection:
-        one = define.newest(connection, site, "substance", substance, at, as_of)
-    return Defined[Substance](**define.defined(one), definition=Substance.model_validate_json(one.body))
+    return Defined[Substance].model_validate(
+        define.newest(request.app.state.store, site, "substance", substance, at, as_of)
+    )
 
 
 @router.get("", response_model_exclude_unset=True)
@@ -41,9 +41,6 @@ def list_substances(
     request: Request, site: PathId, at: At = None, as_of: AsOf = None, limit: Limit = LIMIT, cursor: Cursor = None
 ) -> Page[Defined[Substance]]:
     """Every substance of the site in force at an instant, by id."""
-    with request.app.state.store.reading() as connection:
-        page, after, known = define.listing(connection, site, "substance", at, as_of, cursor, limit)
-    items = [
-        Defined[Substance](**define.defined(one), definition=Substance.model_validate_json(one.body)) for one in page
-    ]
-    return Page(items=items, next=after, known_at=known)
+    store = request.app.state.store
+    page, after, known = define.listing(store, site, "substance", at, as_of, cursor, limit)
+    return Page[Defined[Substance]].model_validate({"items": page, "next": after, "known_at": known})

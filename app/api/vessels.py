@@ -29,9 +29,7 @@ def put_vessel(
 @router.get("/{vessel}", response_model_exclude_unset=True)
 def get_vessel(request: Request, site: PathId, vessel: PathId, at: At = None, as_of: AsOf = None) -> Defined[Vessel]:
     """The vessel as defined at an instant, or as it holds last."""
-    with request.app.state.store.reading() as connection:
-        one = define.newest(connection, site, "vessel", vessel, at, as_of)
-    return Defined[Vessel](**define.defined(one), definition=Vessel.model_validate_json(one.body))
+    return Defined[Vessel].model_validate(define.newest(request.app.state.store, site, "vessel", vessel, at, as_of))
 
 
 @router.get("", response_model_exclude_unset=True)
@@ -39,16 +37,13 @@ def list_vessels(
     request: Request, site: PathId, at: At = None, as_of: AsOf = None, limit: Limit = LIMIT, cursor: Cursor = None
 ) -> Page[Defined[Vessel]]:
     """Every vessel of the site in force at an instant, by id."""
-    with request.app.state.store.reading() as connection:
-        page, after, known = define.listing(connection, site, "vessel", at, as_of, cursor, limit)
-    items = [Defined[Vessel](**define.defined(one), definition=Vessel.model_validate_json(one.body)) for one in page]
-    return Page(items=items, next=after, known_at=known)
+    store = request.app.state.store
+    page, after, known = define.listing(store, site, "vessel", at, as_of, cursor, limit)
+    return Page[Defined[Vessel]].model_validate({"items": page, "next": after, "known_at": known})
 
 
 @router.get("/{vessel}/revisions", response_model_exclude_unset=True)
 def list_vessel_revisions(request: Request, site: PathId, vessel: PathId, as_of: AsOf = None) -> Page[Defined[Vessel]]:
     """Everything that was ever said of a vessel, in the order in which it was recorded."""
-    with request.app.state.store.reading() as connection:
-        said, known = define.revisions(connection, site, "vessel", vessel, as_of)
-    items = [Defined[Vessel](**define.defined(one), definition=Vessel.model_validate_json(one.body)) for one in said]
-    return Page(items=items, next=None, known_at=known)
+    said, known = define.revisions(request.app.state.store, site, "vessel", vessel, as_of)
+    return Page[Defined[Vessel]].model_validate({"items": said, "next": None, "known_at": known})

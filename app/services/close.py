@@ -60,10 +60,9 @@ def close(
     text = json.dumps(body, sort_keys=True, ensure_ascii=False, allow_nan=False)
     with store.writing(site, deed="close", request=request) as writing:
         book, new = books.write_book(writing, period.opening, period.closing, digest, known, METHOD, text, vessels)
-        if new:
-            due.finish(writing, period.opening, period.closing, known)
-            if book.revision > 1:
-                due.mark_opening_at(writing, period.closing, "the night before was closed anew")
+        due.finish(writing, period.opening, period.closing, known)
+        if new and book.revision > 1:
+            due.mark_opening_at(writing, period.closing, "the night before was closed anew")
     return answer(site, book, detail=detail), new
 
 

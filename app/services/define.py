@@ -6,7 +6,6 @@ from dataclasses import dataclass
 from typing import Any, TypeVar
 
 from pydantic import BaseModel
-from sqlalchemy import Connection
 
 from app.errors import Conflict, FieldError, NotFound, Unprocessable
 from app.schemas.meter import Meter
@@ -14,6 +13,7 @@ from app.schemas.site import Site
 from app.schemas.substance import Substance
 from app.schemas.types import canonical
 from app.schemas.vessel import Vessel
+from app.services import mark
 from app.services.compile import compile_bodies
 from app.services.find import ALL_TIME, site_number, watermark
 from app.services.instants import check_zone
@@ -65,6 +65,9 @@ def _put(writing: Writing, kind: str, name: str, body: Any) -> Put:
             code="effective_from_missing",
             errors=[FieldError("/effective_from", "missing", "effective_from is an RFC 3339 instant with an offset")],
         ) from None
+    if outcome != "unchanged":
+        begins = ALWAYS if body.effective_from is None else body.effective_from
+        mark.period(writing, begins, ALL_TIME, f"{kind} defined anew")
     return Put(outcome, writing.recorded_at)
 
 
@@ -155,60 +158,58 @@ def check_computed(body: Vessel) -> None:
     _computed(body)
 
 
-def newest(connection: Connection, site: str, kind: str, name: str, at: int | None, as_of: int | None) -> Definition:
+def newest(store: Store, site: str, kind: str, name: str, at: int | None, as_of: int | None) -> dict[str, Any]:
     """One definition: as in force at an instant, or the one that holds last."""
-    site_id = site_number(connection, site)
-    known = watermark(connection, site_id, as_of)
-    found = definitions.in_force(connection, site_id, kind, ALL_TIME if at is None else at, known, [name])
+    with store.reading() as connection:
+        site_id = site_number(connection, site)
+        known = watermark(connection, site_id, as_of)
+        found = definitions.in_force(connection, site_id, kind, ALL_TIME if at is None else at, known, [name])
     if not found:
         raise NotFound(f"There is no {kind} of that id here", code=f"unknown_{kind}")
-    return found[0]
+    return defined(kind, found[0])
 
 
-def defined(one: Definition) -> dict[str, Any]:
-    """A stored definition as an answer; the body stays the text that was sent."""
+def defined(kind: str, one: Definition) -> dict[str, Any]:
+    """A stored definition as an answer; its body is the text that was sent."""
     return {
         "id": one.name,
         "effective_from": None if one.effective_from == ALWAYS else one.effective_from,
         "revision": one.revision,
         "recorded_at": one.recorded_at,
+        "definition": KINDS[kind].model_validate_json(one.body),
     }
 
 
-def body_of(kind: str, one: Definition) -> BaseModel:
-    """The stored text as its model again."""
-    return KINDS[kind].model_validate_json(one.body)
-
-
-def site_names(connection: Connection, after: str, limit: int) -> tuple[list[Definition], str | None]:
-    """A page of sites as they hold last, and the next cursor."""
-    found = sites.listing(connection, after, limit + 1)
-    page = []
-    for site_id, name in found[:limit]:
-        page.extend(
-            definitions.in_force(connection, site_id, "site", ALL_TIME, sites.watermark(connection, site_id), [name])
-        )
+def site_listing(store: Store, after: str | None, limit: int) -> tuple[list[dict[str, Any]], str | None]:
+    """A page of sites as they hold last, by id, and the next cursor."""
+    page: list[dict[str, Any]] = []
+    with store.reading() as connection:
+        found = sites.listing(connection, after or "", limit + 1)
+        for site_id, name in found[:limit]:
+            known = sites.watermark(connection, site_id)
+            own = definitions.in_force(connection, site_id, "site", ALL_TIME, known, [name])
+            page.extend(defined("site", one) for one in own)
     return page, found[limit - 1][1] if len(found) > limit else None
 
 
 def listing(
-    connection: Connection, site: str, kind: str, at: int | None, as_of: int | None, after: str | None, limit: int
-) -> tuple[list[Definition], str | None, int]:
+    store: Store, site: str, kind: str, at: int | None, as_of: int | None, after: str | None, limit: int
+) -> tuple[list[dict[str, Any]], str | None, int]:
     """A page of definitions in force by id, the next cursor, and what was known."""
-    site_id = site_number(connection, site)
-    known = watermark(connection, site_id, as_of)
-    when = ALL_TIME if at is None else at
-    page, following = definitions.listing(connection, site_id, kind, when, known, after=after or "", limit=limit)
-    return page, following, known
+    with store.reading() as connection:
+        site_id = site_number(connection, site)
+        known = watermark(connection, site_id, as_of)
+        when = ALL_TIME if at is None else at
+        page, following = definitions.listing(connection, site_id, kind, when, known, after=after or "", limit=limit)
+    return [defined(kind, one) for one in page], following, known
 
 
-def revisions(
-    connection: Connection, site: str, kind: str, name: str, as_of: int | None
-) -> tuple[list[Definition], int]:
-    """Everything that was ever said of a name, and what was known."""
-    site_id = site_number(connection, site)
-    known = watermark(connection, site_id, as_of)
-    found = definitions.revisions(connection, site_id, kind, name, known)
+def revisions(store: Store, site: str, kind: str, name: str, as_of: int | None) -> tuple[list[dict[str, Any]], int]:
+    """Everything that was ever said of a name in the order in which it was recorded, and what was known."""
+    with store.reading() as connection:
+        site_id = site_number(connection, site)
+        known = watermark(connection, site_id, as_of)
+        found = definitions.revisions(connection, site_id, kind, name, known)
     if not found:
         raise NotFound(f"There is no {kind} of that id here", code=f"unknown_{kind}")
-    return found, known
+    return [defined(kind, one) for one in found], known

@@ -10,6 +10,7 @@ from typing import Any
 from app.clock import Clock
 from app.schemas.batch import ERRORS_LISTED, RowError
 from app.schemas.reading import Reading, Values
+from app.services import mark
 from app.services.find import ALL_TIME, site_number
 from app.store import definitions, readings
 from app.store.engine import Store, Writing
@@ -18,6 +19,7 @@ from app.store.sites import watermark
 
 QUALITY = {"good": 0, "uncertain": 1, "bad": 2}
 FUTURE_US = 300_000_000  # µs; clocks of historians run ahead by less
+EARLIEST_US = 946_684_800_000_000  # µs, 2000-01-01: PostgreSQL keeps a partition for each month
 BLOCK = 5_000  # rows of one transaction where more than two such blocks came
 WHOLE = 10_000
 
@@ -104,6 +106,8 @@ def _acceptable(
     for index, reading in rows:
         if reading.vessel is not None and reading.vessel not in vessels:
             errors.append(_error(index, "vessel", "unknown_vessel", "This site has no vessel of that id"))
+        elif reading.taken_at < EARLIEST_US:
+            errors.append(_error(index, "taken_at", "too_old", "taken_at lies before the year 2000"))
         elif reading.taken_at > latest:
             errors.append(
                 _error(index, "taken_at", "future", "taken_at lies more than 300 s ahead of this server's clock")
@@ -137,6 +141,11 @@ def _write(writing: Writing, rows: Sequence[tuple[int, Reading]], errors: list[R
             outcome.stored += 1
         else:
             outcome.unchanged += 1
+    changed = ("stored", "revised")
+    mark.readings(
+        writing,
+        [(one.taken_at, one.named()) for (_, one), fate in zip(rows, fates, strict=True) if fate & set(changed)],
+    )
     outcome.known_at = writing.recorded_at
 
 

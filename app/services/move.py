@@ -10,6 +10,7 @@ from app.schemas.batch import RowError
 from app.schemas.meter import Meter
 from app.schemas.transfer import MovedQuantity, NamedTransfer, Transfer
 from app.schemas.types import canonical
+from app.services import mark
 from app.services.compile import CompiledVessel, density_at
 from app.services.find import ALL_TIME, site_number
 from app.store import definitions, transfers
@@ -42,8 +43,7 @@ def put(store: Store, site: str, name: str, body: Transfer, request: str = "") -
         if refused:
             raise Unprocessable(refused[0].detail, code=refused[0].code, errors=refused)
         text = canonical(body)
-        outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, void=body.void)
-        return outcome, writing.recorded_at
+        return _keep(writing, name, body, text), writing.recorded_at
 
 
 def put_many(
@@ -62,8 +62,20 @@ def put_many(
             )
             if not problems:
                 text = canonical(body, without={"id"})
-                counts[transfers.put(writing, body.id, body.started_at, body.ended_at, text, void=body.void)] += 1
+                counts[_keep(writing, body.id, body, text)] += 1
         return counts, sorted(errors, key=lambda error: error.index), writing.recorded_at
+
+
+def _keep(writing: Writing, name: str, body: Transfer, text: str) -> str:
+    """Keep one ticket; the closed nights that it or its former text touches become due."""
+    former = transfers.current(writing.connection, writing.site_id, name, writing.recorded_at)
+    outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, void=body.void)
+    if outcome != "unchanged":
+        last = writing.recorded_at if body.ended_at is None else body.ended_at
+        mark.period(writing, body.started_at, last, "late or corrected transfer")
+        if former is not None:
+            mark.period(writing, former.started_at, former.ended_at, "late or corrected transfer")
+    return outcome
 
 
 def _refusals(writing: Writing, body: Transfer) -> list[FieldError]:
