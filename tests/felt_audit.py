@@ -336,25 +336,22 @@ def audit(chosen: list[Number], jobs: int, limit: int) -> tuple[dict[Number, int
         prepared = (home, libraries_of_tests())
         with ProcessPoolExecutor(jobs, get_context("fork"), initializer=prepare, initargs=prepared) as pool:
             passes = dict(zip(named, pool.map(baseline, named, repeat(600)), strict=True))
-            fit = {
-                path: tuple([n for n in names if passes[n]] for names in both) for path, both in tests.items()
-            }
+            fit = {path: tuple([n for n in names if passes[n]] for names in both) for path, both in tests.items()}
             judged = [number for number in chosen if any(fit[number.path])]
             results: dict[Number, int] = {}
             answers = pool.map(felt, judged, [fit[number.path] for number in judged], repeat(limit))
             for done, (number, circle) in enumerate(zip(judged, answers, strict=True), 1):
                 results[number] = circle
-                print(f"\r{done}/{len(judged)} ", end="", file=sys.stderr, flush=True)
-    print("\r", end="", file=sys.stderr)
+                if sys.stderr.isatty():
+                    end = "\n" if done == len(judged) else "\r"
+                    print(f"{done}/{len(judged)}", end=end, file=sys.stderr, flush=True)
     failing = [f"{test}: does not pass as it is, not used" for test in named if not passes[test]]
     return results, failing + [f"{path}: no test to feel it" for path in sorted(fit) if not any(fit[path])]
 
 
 def row(title: str, circles: list[int]) -> str:
     own, users, none = (circles.count(circle) for circle in (1, 2, 0))
-    return (
-        f"{title:36} {len(circles):7} {own:8} {users:9} {none:6} {100.0 * (own + users) / len(circles):7.1f}"
-    )
+    return f"{title:36} {len(circles):7} {own:8} {users:9} {none:6} {100.0 * (own + users) / len(circles):7.1f}"
 
 
 def table(results: dict[Number, int], refused: list[str]) -> str:
