@@ -27,6 +27,7 @@ from models.saturation import SaturationColumns
 from models.vapour.series import VapourColumns, VapourMixture
 
 Boiling = tuple[tuple[Component, float], ...]  # a liquid as substances and mole fractions
+WATER_DENSITY = float(water_density(288.15))  # at 15 °C, whatever the base: a mass does not depend on the base
 UNINSULATED_LIQUID_WEIGHT = 7.0 / 8.0  # API MPMS 12.1.1: T_shell = (7 T_liquid + T_ambient)/8
 HOUR_US, DAY_US = 3_600_000_000, 86_400_000_000
 MAX_AGE_US: dict[str, int | None] = {
@@ -321,7 +322,7 @@ def _site_parameters(site: Conditions, boiling: Boiling | None) -> dict[str, flo
     return {
         "standard_temperature": temperature,
         "standard_pressure": max(pressure, boiling_pressure(boiling, temperature)),
-        "water_density": float(water_density(temperature)),
+        "water_density": WATER_DENSITY,
     }
 
 

@@ -132,7 +132,7 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "as read",
     )
     yield _step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
-                "of the dry liquid: ρ_s taken to the standard state, less its water, over 1 − f", EXPONENTIAL)  # fmt: skip
+                "of the dry liquid: ρ_s less f times the water's 999.1 kg/m³, over 1 − f (a dry sample: ρ_s), taken to the standard state", EXPONENTIAL)  # fmt: skip
     yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³",
                 "GOV exp(−∫β dT from T_std to T + κ (P − P_std))", EXPONENTIAL)  # fmt: skip
     yield _step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)

@@ -165,3 +165,70 @@ def test_a_port_in_use_is_70(store: str, capsys: pytest.CaptureFixture[str]) -> 
 def test_the_deadline_that_was_set_is_the_one_that_is_kept(store: str) -> None:
     with serving(store, BRIMBOOK_RECEIVE_DEADLINE_S="0.5") as (port, _):
         assert 0.4 < closed_after(port, b"GET /health HT") < 5
+
+
+# --- verbs that work on a store ------------------------------------------------------------------
+
+
+@pytest.fixture(scope="module")
+def demo(tmp_path_factory):
+    """What ``brimbook demo --no-serve`` says in a data folder of its own, and that folder."""
+    folder = tmp_path_factory.mktemp("demo")
+    environment = {**os.environ, "XDG_DATA_HOME": str(folder)}
+    environment.pop("BRIMBOOK_DATABASE_URL", None)
+    return brimbook(environment, "demo", "--no-serve"), environment, folder / "brimbook" / "demo.db"
+
+
+def brimbook(environment, *words):
+    command = [sys.executable, "-m", "app.cli", *words]
+    return subprocess.run(command, env=environment, capture_output=True, text=True, timeout=120, check=False)
+
+
+def test_the_demo_loads_closes_and_names_what_was_planted(demo):
+    done, _, _ = demo
+    assert done.returncode == 0, done.stderr
+    assert "48,268 readings stored" in done.stdout
+    flagged = [line for line in done.stdout.splitlines() if "imbalanced" in line]
+    assert [line.split()[1] for line in flagged] == ["2026-03-09.1:", "2026-03-17.1:", "2026-03-24.1:"]
+    assert "31 days closed, 3 flagged" in done.stdout
+    assert "unrecorded_transfer, tk-11 to tk-12, 26000 kg" in done.stdout
+
+
+@pytest.mark.parametrize(("day", "code"), [("2026-03-17", 10), ("2026-03-16", 0)])
+def test_closing_a_day_says_by_its_exit_code_what_it_found(demo, day, code):
+    _, environment, database = demo
+    done = brimbook(
+        {**environment, "BRIMBOOK_DATABASE_URL": f"sqlite:///{database}"}, "close", "--site", "lontra-quay", "--day", day
+    )
+    assert done.returncode == code, done.stderr
+    assert f"lontra-quay {day}.1" in done.stdout and "visible kg" in done.stdout
+
+
+def test_a_day_without_readings_is_incomplete(demo):
+    _, environment, database = demo
+    done = brimbook(
+        {**environment, "BRIMBOOK_DATABASE_URL": f"sqlite:///{database}"},
+        "close", "--site", "lontra-quay", "--day", "2026-05-05",
+    )  # fmt: skip
+    assert done.returncode == 11 and "incomplete: no balance for" in done.stdout
+
+
+def test_what_cannot_be_closed_is_a_sentence_and_not_a_traceback(demo):
+    _, environment, database = demo
+    url = {**environment, "BRIMBOOK_DATABASE_URL": f"sqlite:///{database}"}
+    assert brimbook(url, "close", "--site", "lontra-quay", "--day", "soon").returncode == 64
+    for words in (("--site", "nowhere", "--day", "2026-03-17"), ("--site", "lontra-quay", "--day", "2199-01-01")):
+        done = brimbook(url, "close", *words)
+        assert done.returncode == 70
+        assert done.stderr.startswith("Error: ") and "Traceback" not in done.stderr
+
+
+def test_loading_a_folder_again_changes_nothing_and_a_bad_one_is_named(demo, tmp_path):
+    _, environment, database = demo
+    url = {**environment, "BRIMBOOK_DATABASE_URL": f"sqlite:///{database}"}
+    folder = Path(__file__).resolve().parents[2] / "demo_data" / "lontra-quay"
+    done = brimbook(url, "load", str(folder))
+    assert done.returncode == 0 and "0 readings stored, 0 revised, 48,268 unchanged" in done.stdout
+    (tmp_path / "empty").mkdir()
+    done = brimbook(url, "load", str(tmp_path / "empty"))
+    assert done.returncode == 70 and "a site's folder holds site.json" in done.stderr
