@@ -8,10 +8,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, fields, replace
 from enum import IntFlag
+from typing import Any
 
 import numpy as np
 
-from models.arrays import FloatArray, IntArray
+from models.arrays import BoolArray, FloatArray, IntArray
 from models.geometry.curves import Curves
 from models.saturation import SaturationColumns
 from models.vapour.series import VapourColumns
@@ -86,7 +87,7 @@ class Vessels:
     standard_temperature, standard_pressure : FloatArray, shape (v,)
         Standard state of the liquid. [K, Pa]
     water_density : FloatArray, shape (v,)
-        Density of the water in a sample at the standard state. [kg/m³]
+        Density of the water in a sample. [kg/m³]
     vapour, vapour_row : VapourColumns or None, IntArray, shape (v,)
         Virial series of the vapours, and the row of each vessel's own. [1]
     saturation, saturation_row : SaturationColumns or None, IntArray, shape (v,)
@@ -137,7 +138,7 @@ class Vessels:
         Vessels
             Columns of shape (n,). [as above]
         """
-        taken = {
+        taken: dict[str, Any] = {
             item.name: value[rows] for item in fields(self) if isinstance(value := getattr(self, item.name), np.ndarray)
         }
         return replace(self, expansivity=tuple(b[rows] for b in self.expansivity), **taken)
@@ -201,7 +202,7 @@ class State:
         State
             Columns of shape (m,) or (1,). [as above]
         """
-        taken = {
+        taken: dict[str, Any] = {
             item.name: value[rows] if len(value) > 1 else value
             for item in fields(self)
             if (value := getattr(self, item.name)) is not None
@@ -231,6 +232,6 @@ class Inventory:
         return self.columns[name]
 
     @property
-    def measured(self) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:
+    def measured(self) -> BoolArray:
         """True where the row has a mass. [1]"""
-        return (self.marks & int(UNMEASURED)) == 0
+        return np.asarray((self.marks & int(UNMEASURED)) == 0)
