@@ -390,6 +390,28 @@ def test_a_small_vapour_that_cannot_be_computed_is_left_out_within_its_bound() -
     assert math.isnan(refused["mass"][0])
 
 
+def test_a_vapour_is_left_out_up_to_one_percent_of_its_liquid() -> None:
+    case = replace(BULLET_CASE, curve=shapes.box(length=1.0, width=1.0, height=1.0), vessel={"expansion": 0.0}).reads(
+        level=0.95, liquid_temperature=353.15, vapour_temperature=math.nan, pressure=math.nan, density=500.0
+    )
+    pressure = inventory(vessels([case]), None, state([case]))["vapour_pressure"][0]
+    assert pressure == pytest.approx(31.3e5, rel=0.005)  # Lemmon et al. 2009, by CoolProp 8.0.0
+    ideal = 0.0440956 * pressure / (GAS_CONSTANT * 353.15)
+    cases = [case.reads(level=1.0 / (1.0 + share * 500.0 / (2.0 * ideal))) for share in (0.00995, 0.01005)]
+    marks = inventory(vessels(cases), np.arange(2), state(cases)).marks
+    assert [bool(mark & Mark.VAPOUR_LEFT_OUT) for mark in marks] == [True, False]
+    assert [bool(mark & Mark.GUARD_REFUSED) for mark in marks] == [False, True]
+
+
+@pytest.mark.parametrize(("off", "low"), [(-1.985e5, False), (-2.015e5, True)])
+def test_a_pressure_is_doubted_beyond_twice_its_uncertainty(off: float, low: bool) -> None:
+    case = BULLET_CASE.reads(
+        liquid_temperature=293.15, vapour_temperature=293.15, pressure=8.3646e5 + off, pressure_uncertainty=1e5,
+        temperature_uncertainty=0.0,
+    )  # fmt: skip
+    assert bool(inventory(vessels([case]), None, state([case])).marks[0] & Mark.SATURATION_LOW) is low
+
+
 # --- columns --------------------------------------------------------------------------------------
 
 
