@@ -237,6 +237,9 @@ class Curves:
         wanted, width = v - c0, self.widths[piece]
         low, high = np.zeros_like(v), width.copy()
         t = 0.5 * width
+        rise = width * (c1 + width * (c2 + width * c3))
+        full = wanted >= rise  # on a knot, to the last bit
+        done = full | np.isnan(wanted)
         for _ in range(INVERSE_STEPS):
             excess = t * (c1 + t * (c2 + t * c3)) - wanted
             slope = c1 + t * (2.0 * c2 + 3.0 * t * c3)
@@ -244,12 +247,14 @@ class Curves:
             with np.errstate(divide="ignore", invalid="ignore"):
                 newton = t - excess / slope
             new = np.where((newton > low) & (newton < high), newton, 0.5 * (low + high))
-            new = np.where(excess == 0.0, t, new)
-            moved = np.abs(new - t)
+            new = np.where(done | (excess == 0.0), t, new)
+            done |= np.abs(new - t) <= INVERSE_TOLERANCE * width
             t = new
-            if not np.any(moved > INVERSE_TOLERANCE * width):
+            if done.all():
                 break
-        level = np.minimum(self.knots[piece] + t, self.top[rows])
+        above = np.minimum(piece + 1, len(self.knots) - 1)
+        end = np.where(piece + 1 < self.starts[rows + 1], self.knots[above], self.top[rows])
+        level = np.where(full, end, np.minimum(self.knots[piece] + t, end))
         level = np.where(v <= self.coefficients[self.starts[rows], 0], self.bottom[rows], level)
         return np.where(np.isnan(v), np.nan, level).reshape(shape)
 

@@ -35,8 +35,9 @@ def afloat_fraction(level: ArrayLike, lands_at: ArrayLike, floats_at: ArrayLike)
     """
     h, low, high = as_floats(level, lands_at, floats_at)
     zone = high - low
-    inside = np.divide(h - low, zone, out=np.where(h >= high, 1.0, 0.0) + 0.0 * (h + zone), where=zone > 0.0)  # eq. 1
-    return np.clip(inside, 0.0, 1.0)
+    step = np.where(h >= high, 1.0, 0.0) + 0.0 * h
+    inside = np.where(zone > 0.0, (h - low) / np.where(zone > 0.0, zone, 1.0), step)  # eq. 1
+    return np.asarray(np.clip(inside, 0.0, 1.0))
 
 
 def landing_zone(level: ArrayLike, lands_at: ArrayLike, floats_at: ArrayLike) -> BoolArray:

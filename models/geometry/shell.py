@@ -80,9 +80,9 @@ def pressure_strain(
         return 0.0, 0.0
     if kind not in STRAINS:
         raise DefinitionError(f"no strain is known of this shape; known are {', '.join(STRAINS)}", field="of")
-    ratio = positive(diameter, "diameter_m") / positive(thickness, "thickness_m") / elastic_modulus
-    if not (np.isfinite(ratio) and ratio > 0.0):
+    if not (np.isfinite(elastic_modulus) and elastic_modulus > 0.0):
         raise DefinitionError("elastic_modulus_gpa must be above 0 GPa", field="elastic_modulus_gpa")
+    ratio = positive(diameter, "diameter_m") / positive(thickness, "thickness_m") / elastic_modulus
     if not 0.0 <= poisson_ratio <= 0.5:
         raise DefinitionError(
             f"poisson_ratio is {poisson_ratio:.6g}; it must be between 0 and 0.5", field="poisson_ratio"

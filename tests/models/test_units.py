@@ -1,0 +1,43 @@
+"""Conversions and the standard atmosphere."""
+
+import numpy as np
+import pytest
+
+from models import units
+
+EARTH_RADIUS = 6_356_766.0  # m, ISO 2533:1975, nominal
+
+
+# ISO 2533:1975, "Standard Atmosphere", by geopotential altitude (values from memory).
+@pytest.mark.parametrize(
+    ("geopotential", "hectopascal"),
+    [(-500.0, 1074.78), (0.0, 1013.25), (500.0, 954.608), (1000.0, 898.746), (2000.0, 794.952), (5000.0, 540.199)],
+)
+def test_the_standard_atmosphere_by_geopotential_altitude(geopotential, hectopascal):
+    elevation = EARTH_RADIUS * geopotential / (EARTH_RADIUS - geopotential)
+    assert units.atmospheric_pressure(elevation) / 100.0 == pytest.approx(
+        hectopascal, abs=6e-3 if geopotential < 0 else 6e-4
+    )
+
+
+# U.S. Standard Atmosphere, 1976, by geometric altitude (values from memory, rounded to the digits given).
+@pytest.mark.parametrize(("elevation", "hectopascal"), [(1000.0, 898.76), (2000.0, 795.01), (5000.0, 540.48)])
+def test_the_standard_atmosphere_by_elevation(elevation, hectopascal):
+    assert units.atmospheric_pressure(elevation) / 100.0 == pytest.approx(hectopascal, abs=6e-3)
+
+
+def test_temperatures_there_and_back():
+    assert units.kelvin([0.0, 15.0, -40.0]) == pytest.approx([273.15, 288.15, 233.15], rel=1e-15)
+    assert units.celsius(units.kelvin(np.array([-33.4, 0.0, 250.0]))) == pytest.approx([-33.4, 0.0, 250.0], abs=1e-13)
+
+
+def test_pressures_there_and_back():
+    assert units.pascal(101.325) == pytest.approx(101_325.0, rel=1e-15)
+    assert units.kilopascal(101_325.0) == pytest.approx(101.325, rel=1e-15)
+    assert units.pascal(-0.5) == -500.0
+
+
+def test_exact_factors():
+    assert units.CUBIC_METRE_PER_CUBIC_CENTIMETRE * 1e6 == 1.0
+    assert units.KILOGRAM_PER_GRAM * 1000.0 == 1.0
+    assert units.SECONDS_PER_DAY == 24 * 60 * 60
