@@ -69,7 +69,8 @@ def put_many(
 def _keep(writing: Writing, name: str, body: Transfer, text: str) -> str:
     """Keep one ticket; the closed nights that it or its former text touches become due."""
     former = transfers.current(writing.connection, writing.site_id, name, writing.recorded_at)
-    outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, void=body.void)
+    ends = tuple("" if end.startswith(BOUNDARY) else end for end in (body.from_, body.to))
+    outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, ends=(ends[0], ends[1]), void=body.void)
     if outcome != "unchanged":
         last = writing.recorded_at if body.ended_at is None else body.ended_at
         mark.period(writing, body.started_at, last, "late or corrected transfer")

@@ -208,6 +208,20 @@ def following(
     return _neighbours(connection, site_id, pairs, known, newest=False)
 
 
+def newest_each(
+    connection: Connection, site_id: int, wanted: Iterable[tuple[int, int, int]], known: int
+) -> list[Found]:
+    """Like ``newest``, each series (once) by two instants of its own: the oldest that counts, and the latest."""
+    return _neighbours(connection, site_id, list(wanted), known, newest=True)
+
+
+def following_each(
+    connection: Connection, site_id: int, wanted: Iterable[tuple[int, int, int]], known: int
+) -> list[Found]:
+    """Like ``following``, each series (once) by two instants of its own, both included."""
+    return _neighbours(connection, site_id, list(wanted), known, newest=False)
+
+
 def _neighbours(
     connection: Connection, site_id: int, wanted: Sequence[tuple[int, int, int]], known: int, *, newest: bool
 ) -> list[Found]:

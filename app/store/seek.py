@@ -101,6 +101,36 @@ def _neighbours(dialect: str, table: str, newest: bool) -> str:
           AND r.revision = {revision}"""
 
 
+_ENDS_SQLITE = """WITH w(vessel, a) AS MATERIALIZED (
+    SELECT json_extract(value, '$[0]'), json_extract(value, '$[1]') FROM json_each(:wanted))"""
+_ENDS_POSTGRESQL = "unnest(CAST(:vessels AS text[]), CAST(:a AS bigint[])) AS w(vessel, a)"
+
+
+def tickets(
+    connection: Connection, site_id: int, wanted: Sequence[tuple[str, int]], before: int, known: int
+) -> Sequence[Any]:
+    """Tickets that end after each vessel's instant and begin before one, by either end; twice if by both.
+
+    A row is (name, revision, recorded_at, started_at, ended_at, running, void, body).
+    """
+    sqlite = connection.dialect.name == "sqlite"
+    prefix, source = (_ENDS_SQLITE, "w CROSS JOIN transfer t") if sqlite else ("", f"{_ENDS_POSTGRESQL} JOIN transfer t ON true")
+    columns = "t.name, t.revision, t.recorded_at, t.started_at, t.ended_at, t.running, t.void, t.body"
+    last = """(SELECT max(n.revision) FROM transfer n
+        WHERE n.site_id = t.site_id AND n.name = t.name AND n.recorded_at <= :known)"""
+    halves = [
+        f"""SELECT {columns} FROM {source} WHERE t.site_id = :site AND t.{end} = w.vessel AND t.ended_at > w.a
+            AND t.started_at < :before AND t.recorded_at <= :known AND t.void = 0 AND t.revision = {last}"""
+        for end in ("source", "target")
+    ]
+    parameters: dict[str, Any] = {"site": site_id, "before": before, "known": known}
+    if sqlite:
+        parameters["wanted"] = json.dumps(wanted)
+    else:
+        parameters |= {"vessels": [vessel for vessel, _ in wanted], "a": [first for _, first in wanted]}
+    return connection.execute(_text(f"{prefix} {' UNION ALL '.join(halves)}"), parameters).all()
+
+
 @cache
 def _text(query: str) -> sa.TextClause:
     return sa.text(query)

@@ -165,15 +165,19 @@ DEFINITION = sa.Table(
     must("recorded_at", instant()), must("body", body()), recorded("definition"), sqlite_strict=True,
 )  # fmt: skip
 
-# A transfer that still runs is kept as ending when it must at the latest, so that one index finds it.
+# A transfer that still runs is kept as ending when it must at the latest, so that one index finds it. Its
+# ends stand beside its body, so that what touched a vessel since a reading is a seek; a boundary is "".
 TRANSFER = sa.Table(
     "transfer", METADATA, key("site_id", integer()), key("name", word()), key("revision", small()),
     must("recorded_at", instant()), must("started_at", instant()), must("ended_at", instant()),
+    must("source", word()), must("target", word()),
     must("running", small()), must("void", small()), must("body", body()), recorded("transfer"),
     sa.CheckConstraint(
         f"ended_at >= started_at AND ended_at - started_at <= {LONGEST_TRANSFER}", name="transfer_period"
     ),
-    sa.Index("transfer_by_end", "site_id", "ended_at"), sqlite_strict=True,
+    sa.Index("transfer_by_end", "site_id", "ended_at"),
+    sa.Index("transfer_by_source", "site_id", "source", "ended_at"),
+    sa.Index("transfer_by_target", "site_id", "target", "ended_at"), sqlite_strict=True,
 )  # fmt: skip
 
 BOOK = sa.Table(

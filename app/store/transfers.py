@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any, Literal, NamedTuple
 
 import sqlalchemy as sa
 from sqlalchemy.engine import Connection
 
+from app.store import seek
 from app.store.engine import Writing
 from app.store.tables import LONGEST_TRANSFER, TRANSFER
 
@@ -34,9 +35,10 @@ _COLUMNS = (
 
 
 def put(
-    writing: Writing, name: str, started_at: int, ended_at: int | None, body: str, *, void: bool = False
-) -> Outcome:
-    """Keep a ticket; the same again changes nothing, anything else is its next revision."""
+    writing: Writing, name: str, started_at: int, ended_at: int | None, body: str, *,
+    ends: tuple[str, str] = ("", ""), void: bool = False,
+) -> Outcome:  # fmt: skip
+    """Keep a ticket between two vessels (a boundary is ``""``); the same again changes nothing."""
     end = started_at + LONGEST_TRANSFER if ended_at is None else ended_at
     if not 0 <= end - started_at <= LONGEST_TRANSFER:
         raise ValueError(f"transfer {name} lasts from 0 to 31 days")
@@ -47,7 +49,7 @@ def put(
     writing.connection.execute(sa.insert(TRANSFER), {
         "site_id": writing.site_id, "name": name, "revision": 1 if former is None else former.revision + 1,
         "recorded_at": writing.recorded_at, "started_at": started_at, "ended_at": end,
-        "running": int(ended_at is None), "void": int(void), "body": body,
+        "source": ends[0], "target": ends[1], "running": int(ended_at is None), "void": int(void), "body": body,
     })  # fmt: skip
     return "created" if former is None else "revised"
 
@@ -106,6 +108,20 @@ def _overlap(site_id: int, lo: int, hi: int, known: int, void: bool) -> sa.Selec
         sa.or_(_C.ended_at > lo, _C.started_at == lo), _C.recorded_at <= known, _C.revision == last_known,
     )  # fmt: skip
     return query if void else query.where(_C.void == 0)
+
+
+def touching(
+    connection: Connection, site_id: int, since: Mapping[str, int], before: int, known: int
+) -> list[Transfer]:
+    """Tickets with an end at some vessels that moved something since an instant of each, and before one.
+
+    Struck ones are left out. Each vessel is a seek by its name and the end of the ticket.
+    """
+    wanted = [(name, first) for name, first in since.items()]
+    if not wanted:
+        return []
+    found = {row[0]: _transfer(row) for row in seek.tickets(connection, site_id, wanted, before, known)}
+    return sorted(found.values(), key=lambda one: (one.ended_at, one.name))
 
 
 def _transfer(row: Sequence[Any]) -> Transfer:

@@ -100,12 +100,15 @@ def make_definitions_and_transfers() -> None:
     op.create_table(
         "transfer", key("site_id", INTEGER), key("name", WORD), key("revision", SMALL),
         must("recorded_at", INSTANT), must("started_at", INSTANT), must("ended_at", INSTANT),
+        must("source", WORD), must("target", WORD),
         must("running", SMALL), must("void", SMALL), must("body", BODY), recorded("transfer"),
         sa.CheckConstraint(
             "ended_at >= started_at AND ended_at - started_at <= 2678400000000", name="transfer_period"
         ), **STRICT,
     )  # fmt: skip
     op.create_index("transfer_by_end", "transfer", ["site_id", "ended_at"])
+    op.create_index("transfer_by_source", "transfer", ["site_id", "source", "ended_at"])
+    op.create_index("transfer_by_target", "transfer", ["site_id", "target", "ended_at"])
 
 
 def make_books() -> None:

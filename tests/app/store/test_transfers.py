@@ -99,7 +99,8 @@ def test_a_ticket_that_no_transfer_could_have_is_refused_here_and_by_the_databas
     with pytest.raises(ValueError, match="31 days"):
         put(store, site_id, "t-1", T0, ended)
     put(store, site_id, "t-2", T0, T0)
-    row = {"name": "t-3", "revision": 1, "started_at": T0, "ended_at": ended, "running": 0, "void": 0, "body": ""}
+    row = {"name": "t-3", "revision": 1, "started_at": T0, "ended_at": ended, "source": "", "target": "",
+           "running": 0, "void": 0, "body": ""}  # fmt: skip
     with pytest.raises(sa.exc.IntegrityError, match="transfer_period"), store.writing(site_id) as writing:
         row |= {"site_id": writing.site_id, "recorded_at": writing.recorded_at}
         writing.connection.execute(sa.insert(TRANSFER), row)
@@ -142,3 +143,28 @@ def test_periods_that_follow_each_other_share_no_short_ticket_and_miss_none(stor
         put(store, site_id, f"t-{index:02}", T0 + index * HOUR, T0 + index * HOUR)
     halves = [names(store, site_id, T0, T0 + 12 * HOUR), names(store, site_id, T0 + 12 * HOUR, T0 + 25 * HOUR)]
     assert halves == [[f"t-{index:02}" for index in range(12)], [f"t-{index:02}" for index in range(12, 25)]]
+
+
+def test_what_touched_a_vessel_is_found_by_either_end_from_its_own_instant_on(store: Store, site_id: str) -> None:
+    """Against a plain filter over a few hundred tickets between five vessels and the boundary."""
+    draw = random.Random(26)
+    kept: dict[str, tuple[int, int, str, str, bool]] = {}
+    with store.writing(site_id, create=True) as writing:
+        for number_of in range(300):
+            name = f"t-{number_of % 250}"  # the last fifty revise the first ones
+            source, target = draw.sample(["", "a", "b", "c", "d", "e"], 2)
+            started = T0 + draw.randrange(20 * DAY)
+            ended = started + draw.randrange(2 * DAY)
+            void = draw.random() < 0.1
+            transfers.put(writing, name, started, ended, f'{{"n":{number_of}}}', ends=(source, target), void=void)
+            kept[name] = (started, ended, source, target, void)
+    since = {"a": T0 + 3 * DAY, "b": T0 + 12 * DAY}
+    before = T0 + 15 * DAY
+    expected = {
+        name for name, (started, ended, source, target, void) in kept.items()
+        if not void and started < before and any(ended > since[end] for end in (source, target) if end in since)
+    }  # fmt: skip
+    with store.reading() as connection:
+        found = transfers.touching(connection, number(connection, site_id), since, before, 2**62)
+        assert transfers.touching(connection, number(connection, site_id), {}, before, 2**62) == []
+    assert {one.name for one in found} == expected and len(found) == len(expected)
