@@ -407,7 +407,10 @@ def _sum(step: _Step, method: Method) -> None:
     vapour = out.get("vapour_mass", np.zeros(1))
     out["mass"] = out["liquid_mass"] + vapour + 0.0 * step.marks
     if method & Method.VAPOUR:
-        out["gas_standard_volume"] = vapour / step.vessels.gas_standard_density
+        v, analysed = step.vessels, step.state.vapour_row
+        assert v.vapour is not None
+        heavier = 1.0 if analysed is None else v.vapour.molar_mass[analysed] / v.vapour.molar_mass[v.vapour_row]
+        out["gas_standard_volume"] = vapour / (v.gas_standard_density * heavier)
 
 
 def standard_uncertainty(result: Inventory, sigmas: Mapping[str, tuple[FloatArray, ...]]) -> FloatArray:

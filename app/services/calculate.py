@@ -35,13 +35,16 @@ def collected(vessel: CompiledVessel, readings: tuple[CalculationReading, ...]) 
     at = np.array([reading.taken_at or 0 for reading in readings], dtype=np.int64)
     result = Collected(at, (vessel,))
     for spec in INPUTS:
-        columns = [(quantity, "") for quantity in spec.quantities]
-        result.candidates[spec.name] = Candidates.empty(len(at), len(columns))
-        result.texts[spec.name] = np.full((len(at), len(columns)), None, dtype=object)
-        result.origins[spec.name] = Origin([columns])
+        sources = [reading.source for reading in readings]
+        sources = sources[:1] if len(set(sources)) == 1 else sources
+        columns = [[(quantity, source) for quantity in spec.quantities] for source in sources]
+        width = len(spec.quantities)
+        result.candidates[spec.name] = Candidates.empty(len(at), width)
+        result.texts[spec.name] = np.full((len(at), width), None, dtype=object)
+        result.origins[spec.name] = Origin(columns)
         for quantity in spec.companions:
-            empty = np.full((len(at), len(columns)), None, dtype=object)
-            result.companions[(spec.name, quantity)] = (Candidates.empty(len(at), len(columns)), empty)
+            empty = np.full((len(at), width), None, dtype=object)
+            result.companions[(spec.name, quantity)] = (Candidates.empty(len(at), width), empty)
         for quantity in names_of(spec):
             _place(result, vessel, spec.name, quantity, spec.quantities, readings)
     return result
@@ -58,7 +61,7 @@ def _place(
         target, texts = result.candidates[name], result.texts[name]
     else:
         target, texts = result.companions[(name, quantity)]
-    convert = conversion(vessel, quantity, readings[0].source)
+    convert = {source: conversion(vessel, quantity, source) for source in {reading.source for reading in readings}}
     for row, reading in enumerate(readings):
         value = getattr(reading, quantity, None)
         if value is None or quality_of(reading, quantity) > 1:
@@ -66,6 +69,6 @@ def _place(
         target.before_at[row, column] = result.at[row]
         target.before_quality[row, column] = quality_of(reading, quantity)
         if isinstance(value, int | float) and not isinstance(value, bool):
-            target.before[row, column] = convert(float(value))
+            target.before[row, column] = convert[reading.source](float(value))
         else:
             texts[row, column] = text_of(value)

@@ -9,6 +9,7 @@ from typing import Any
 from app.schemas.types import format_instant
 from app.services.choose import NEVER
 from app.services.collect import INPUTS
+from app.services.compile import virial_columns
 from app.services.measure import Measured
 from app.services.parts import at_row, estimate, sigmas
 from app.services.working import budget_lines, working_steps
@@ -23,7 +24,7 @@ NEEDED = {
     "level": ("level_m", "a level or an ullage"),
     "liquid_temperature": ("liquid_temperature_c", "the liquid's temperature"),
     "vapour_temperature": ("vapour_temperature_c", "the gas's temperature"),
-    "pressure": ("pressure_kpa", "the gas's pressure"),
+    "pressure": ("pressure_kpa", "the pressure of the gas, or of the space above the liquid"),
 }
 WARNINGS: dict[Mark, tuple[str, str]] = {
     Mark.ROOF_LANDING_ZONE: (
@@ -168,11 +169,14 @@ def _counts(measured: Measured, row: int, name: str) -> bool:
     vessel = measured.vessel(row)
     if name in ("level", "liquid_temperature", "free_water", "density", "sediment_water"):
         return vessel.has_liquid
-    if name in ("vapour_temperature", "vapour_composition"):
+    if name == "vapour_temperature":  # beside a liquid it counts with a pressure only
+        return vessel.has_vapour and (not vessel.has_liquid or math.isfinite(at_row(measured.state.pressure, row)))
+    if name == "vapour_composition":
         return vessel.has_vapour
     if name in ("ambient", "site_ambient"):
         insulated = vessel.parameters["liquid_weight"] == 1.0 or vessel.parameters["expansion"] == 0.0
-        own = bool(measured.chosen["ambient"].usable[row])
+        assumed = measured.assumed.get("ambient_temperature_c")
+        own = bool(measured.chosen["ambient"].usable[row]) or (assumed is not None and bool(assumed[row]))
         return not insulated and (name == "ambient") == own
     return True
 
@@ -271,19 +275,30 @@ def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
 
 
 def reason(measured: Measured, row: int) -> dict[str, str]:
-    """Why a row has no mass: a value outside a limit, or the first input that it lacks."""
+    """Why a row has no mass: the first input that it lacks, or a value outside a limit."""
+    vessel = measured.vessel(row)
+    state = measured.state
+    lacking = {
+        name: not math.isfinite(at_row(getattr(state, name), row))
+        for name in ("level", "liquid_temperature", "pressure", "vapour_temperature")
+    }
+    needed = ["pressure", "vapour_temperature"]
+    if vessel.has_liquid:  # a space that can be saturated needs nothing read
+        needed = ["level", "liquid_temperature"] + ([] if vessel.has_vapour else ["pressure"])
     marks = Mark(int(measured.result.marks[row]))
     for mark, (code, detail) in WARNINGS.items():
         if marks & mark & UNMEASURED:
-            return {"code": code, "detail": detail + _limit(measured, row, mark)}
-    vessel = measured.vessel(row)
-    needed = ["level", "liquid_temperature"] if vessel.has_liquid else ["pressure", "vapour_temperature"]
+            return {"code": code, "detail": _limit(measured, row, mark, detail)}
     for name in needed:
-        quantity, words = NEEDED[name]
-        assumed = quantity in measured.assumed and measured.assumed[quantity][row]
-        if measured.chosen[name].usable[row] or assumed:
-            continue
-        return {"code": "input_missing", "detail": _missing(measured, row, name, quantity, words)}
+        if lacking[name]:
+            quantity, words = NEEDED[name]
+            return {"code": "input_missing", "detail": _missing(measured, row, name, quantity, words)}
+    if vessel.has_vapour and not math.isfinite(float(measured.result["vapour_pressure"][row])):
+        celsius = at_row(state.liquid_temperature, row) - 273.15
+        return {
+            "code": "outside_method",
+            "detail": f"no pressure is read, and at {celsius:.4g} °C the substance has no vapour pressure that we know",
+        }
     return {"code": "outside_method", "detail": "the inputs give no mass: look at their values"}
 
 
@@ -300,17 +315,26 @@ def _missing(measured: Measured, row: int, name: str, quantity: str, words: str)
     return detail
 
 
-def _limit(measured: Measured, row: int, mark: Mark) -> str:
-    """The value and the limit that it passed, where the mark is about one."""
+def _limit(measured: Measured, row: int, mark: Mark, detail: str) -> str:
+    """The value and the limit that it passed."""
     curve = measured.vessel(row).curve
     if mark & (Mark.OUTSIDE_VESSEL | Mark.OUTSIDE_TABLE) and curve is not None:
-        level = at_row(measured.state.level, row)
-        return f": level_m is {level:.4g} m; levels run from {curve.bottom:.4g} to {curve.top:.4g} m"
-    if mark & (Mark.GUARD_REFUSED | Mark.NO_VAPOUR_ROOT | Mark.OUTSIDE_METHOD):
-        pressure = at_row(measured.state.pressure, row) / 1000.0
-        temperature = at_row(measured.state.vapour_temperature, row) - 273.15
-        return f": {pressure:.6g} kPa absolute at {temperature:.4g} °C"
-    return ""
+        level, water = at_row(measured.state.level, row), at_row(measured.state.water_level, row)
+        if curve.bottom <= level <= curve.top:
+            return f"free water lies above the liquid: free_water_level_m is {water:.4g} m, level_m is {level:.4g} m"
+        return f"{detail}: level_m is {level:.4g} m; levels run from {curve.bottom:.4g} to {curve.top:.4g} m"
+    result = measured.result
+    pressure, temperature = float(result["vapour_pressure"][row]), float(result["vapour_temperature"][row])
+    at = f"{pressure / 1000.0:.6g} kPa absolute at {temperature - 273.15:.4g} °C"
+    if mark & Mark.GUARD_REFUSED:
+        return f"{detail}: {at} is {result['reduced_density'][row]:.3g} of its critical density"
+    if mark & Mark.OUTSIDE_METHOD:
+        if pressure < 0.0:
+            return f"a pressure lies below a vacuum: {at}"
+        series = virial_columns((measured.mixture(row),))
+        low, high = series.lowest.min() - 273.15, series.highest.max() - 273.15
+        return f"{detail}: {at}; they hold from {low:.4g} to {high:.4g} °C"
+    return f"{detail}: {at}"
 
 
 def inputs_read(measured: Measured, row: int) -> list[list[Any]]:

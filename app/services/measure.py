@@ -85,6 +85,9 @@ class _States:
         self.atmosphere_assumed = np.zeros(collected.rows, dtype=bool)
         self.density_is_sample = chosen["density"].usable
         self.ambient_unread = np.zeros(collected.rows, dtype=bool)
+        self.mixed = self.of_vessels([float(vessel.mixed) for vessel in self.vessels]) > 0
+        self.vented = self.of_vessels([float(vessel.space in ("open", "none")) for vessel in self.vessels]) > 0
+        self.at_rest = np.zeros(collected.rows, dtype=bool)
         self.gauge = np.zeros(collected.rows, dtype=bool)
 
     def of_vessels(self, values: Sequence[float]) -> FloatColumns:
@@ -148,9 +151,13 @@ class _States:
         )
         if len(self.vessels) == 1:
             is_absolute = is_absolute[np.maximum(source, 0)] & (source >= 0)
-        vented = self.of_vessels([float(vessel.space in ("open", "none")) for vessel in self.vessels]) > 0
-        at_rest = vented & ~np.isfinite(column)
-        column = np.where(at_rest, 0.0, column)
+        if any("pressure_kpa_abs" in vessel.body.assumed for vessel in self.vessels):
+            absolute = self.value("pressure", "pressure_kpa_abs")
+            instead = self.assumed["pressure_kpa_abs"] & ~np.isfinite(column)
+            self.assumed["pressure_kpa_abs"] = instead
+            column, is_absolute = np.where(instead, absolute, column), is_absolute | instead
+        self.at_rest = self.vented & ~np.isfinite(column)
+        column = np.where(self.at_rest, 0.0, column)
         self.gauge = ~is_absolute
         return np.where(is_absolute, units.pascal(column), units.pascal(column) + atmosphere)
 
@@ -246,6 +253,7 @@ class _States:
                 if key not in seen:
                     seen[key] = analysed_mixture(self.vessels[which], json.loads(text))
                 mixture = seen[key]
+                self.mixed[row] = mixture is not None and len(mixture.fractions) > 1
             found.append(mixture)
         extra = tuple(dict.fromkeys(mixture for mixture in seen.values() if mixture is not None))
         place = mixture_rows(tuple(self.vessels), extra)
@@ -273,11 +281,10 @@ def _parts(builder: _States, state: State) -> list[Part]:
     capacity_parts(errors, state.level)
     _surroundings(builder, errors)
     _sample(builder, errors)
-    _vapour(builder, errors)
+    _vapour(builder, errors, state.pressure)
     for quantity, name in ASSUMABLE.items():
         if quantity in builder.assumed:
-            scale = PASCAL if quantity == "pressure_kpa" else 1.0
-            errors.assumed(quantity, name, builder.assumed[quantity], scale=scale)
+            errors.assumed(quantity, name, builder.assumed[quantity], scale=SCALES.get(quantity, 1.0))
     errors.add(
         "floating_roof", "roof", 1.0 / np.sqrt(12.0), "random",
         lambda row: f"roof:{errors.vessel(row).name}:{builder.collected.at[row]}", declared=lambda row: False,
@@ -290,13 +297,16 @@ ASSUMABLE = {
     "level_m": "level", "liquid_temperature_c": "liquid_temperature", "pressure_kpa": "pressure",
     "vapour_temperature_c": "vapour_temperature", "ambient_temperature_c": "ambient_temperature",
     "free_water_level_m": "water_level", "observed_density_kg_m3": "density",
+    "sediment_water_pct": "sediment_water", "pressure_kpa_abs": "pressure",
 }  # fmt: skip
+SCALES = {"pressure_kpa": PASCAL, "pressure_kpa_abs": PASCAL, "sediment_water_pct": 0.01}
 
 
 def _surroundings(builder: _States, errors: Errors) -> None:
     """Ambient temperature and atmosphere: the site's, shared by all of its vessels."""
     chosen = builder.chosen
-    own, site = chosen["ambient"].usable, chosen["site_ambient"].usable
+    instead = builder.assumed.get("ambient_temperature_c", np.zeros(1, dtype=bool))
+    own, site = chosen["ambient"].usable | instead, chosen["site_ambient"].usable
     errors.measured("ambient_temperature_c", "ambient", "ambient_temperature", chosen["ambient"],
                     builder.collected.origins["ambient"])  # fmt: skip
     default = instruments.DEFAULTS["ambient_temperature_c"].systematic
@@ -304,10 +314,14 @@ def _surroundings(builder: _States, errors: Errors) -> None:
         "ambient_temperature_c", "ambient_temperature", np.where(~own & site, default, 0.0), "systematic",
         lambda row: "ambient:site", declared=lambda row: False,
     )  # fmt: skip
-    unread = builder.ambient_unread & ~builder.assumed.get("ambient_temperature_c", np.zeros(1, dtype=bool))
+    unread = builder.ambient_unread & ~instead
     errors.add(
         "ambient_temperature_c", "ambient_temperature", np.where(unread, instruments.AMBIENT_UNREAD, 0.0),
         "systematic", lambda row: f"ambient-unread:{errors.vessel(row).name}", declared=lambda row: False,
+    )  # fmt: skip
+    errors.add(
+        "pressure_kpa", "pressure", np.where(builder.at_rest, instruments.OPEN_SPACE_KPA, 0.0), "systematic",
+        lambda row: f"pressure-open:{errors.vessel(row).name}", declared=lambda row: False, scale=PASCAL,
     )  # fmt: skip
     spread = builder.of_vessels([vessel.site.barometer_uncertainty_kpa for vessel in builder.vessels])
     read = chosen["barometer"]
@@ -328,13 +342,10 @@ def _sample(builder: _States, errors: Errors) -> None:
         own = f"{errors.vessel(row).name}:{chosen.taken_at[row]}"
         return f"sample:{cited or own}"
 
-    known = [
-        errors.vessel(row).instrument("observed_density_kg_m3", origins.of(row, int(chosen.source[row]))[1])
-        for row in range(builder.collected.rows if len(errors.vessels) > 1 else 1)
-    ]
-    thermometers = [
-        errors.vessel(row).instrument("observed_density_temperature_c", "").systematic for row in range(len(known))
-    ]
+    rows = range(errors.distinct(chosen, origins))
+    sources = [origins.of(row, int(chosen.source[row]))[1] for row in rows]
+    known = [errors.vessel(row).instrument("observed_density_kg_m3", sources[row]) for row in rows]
+    thermometers = [errors.vessel(row).instrument("observed_density_temperature_c", sources[row]) for row in rows]
 
     def of(row: int):  # type: ignore[no-untyped-def]
         return known[row if len(known) > 1 else 0]
@@ -349,8 +360,10 @@ def _sample(builder: _States, errors: Errors) -> None:
             declared=lambda row: of(row).declared, instrument=lambda row: of(row).name,
         )  # fmt: skip
     errors.add(
-        "observed_density_temperature_c", "density_temperature", np.where(sampled, np.array(thermometers), 0.0),
-        "systematic", lambda row: f"density-temperature:{of(row).name}", declared=lambda row: False,
+        "observed_density_temperature_c", "density_temperature",
+        np.where(sampled, np.array([t.systematic for t in thermometers]), 0.0), "systematic",
+        lambda row: f"density-temperature:{of(row).name}",
+        declared=lambda row: thermometers[row if len(thermometers) > 1 else 0].declared,
     )  # fmt: skip
     own_figure = ~sampled & ~builder.assumed.get("observed_density_kg_m3", np.zeros(1, dtype=bool))
     spread = builder.of_vessels([v.density_uncertainty for v in builder.vessels])
@@ -363,20 +376,25 @@ def _sample(builder: _States, errors: Errors) -> None:
                     builder.collected.origins["sediment_water"], scale=0.01)  # fmt: skip
 
 
-def _vapour(builder: _States, errors: Errors) -> None:
+def _vapour(builder: _States, errors: Errors, pressure: FloatColumns) -> None:
     """A vapour's temperature taken from its saturation, and an analysis's share of the molar mass."""
     two_phase = builder.of_vessels([float(bool(v.method & Method.SATURATION)) for v in builder.vessels]) > 0
     read = builder.chosen["vapour_temperature"].usable | builder.assumed.get(
         "vapour_temperature_c", np.zeros(1, dtype=bool)
     )
+    read = read & np.isfinite(pressure)  # without a pressure the vapour is taken at the liquid's temperature
     errors.add(
         "vapour_temperature_c", "vapour_temperature",
         np.where(two_phase & ~read, instruments.SATURATED_VAPOUR_TEMPERATURE, 0.0), "systematic",
         lambda row: f"vapour-temperature-assumed:{errors.vessel(row).name}", declared=lambda row: False,
     )  # fmt: skip
-    mixed = builder.of_vessels([float(v.mixture is not None and v.mixed) for v in builder.vessels]) > 0
-    share = instruments.DEFAULTS["vapour_composition"].systematic / 100.0
+    chosen, origins = builder.chosen["vapour_composition"], builder.collected.origins["vapour_composition"]
+    known = [
+        errors.vessel(row).instrument("vapour_composition", origins.of(row, int(chosen.source[row]))[1])
+        for row in range(errors.distinct(chosen, origins))
+    ]
+    share = np.array([one.systematic / 100.0 for one in known])
     errors.add(
-        "vapour_composition", "molar_mass", np.where(mixed, share, 0.0), "systematic",
+        "vapour_composition", "molar_mass", np.where(builder.mixed, share, 0.0), "systematic",
         lambda row: f"composition:{errors.vessel(row).body.substance}", declared=lambda row: False,
     )  # fmt: skip

@@ -87,7 +87,7 @@ class Errors:
         *, scale: float = 1.0, stale: float = 0.0,
     ) -> None:  # fmt: skip
         """Systematic, random and stale parts of what an instrument of the vessel reads."""
-        known = [self._instrument(quantity, chosen, origin, row) for row in range(self._distinct(chosen, origin))]
+        known = [self._instrument(quantity, chosen, origin, row) for row in range(self.distinct(chosen, origin))]
 
         def of(row: int) -> Instrument:
             return known[row if len(known) > 1 else 0]
@@ -105,7 +105,7 @@ class Errors:
             self.add(
                 quantity, sensitivity, np.where(usable, random * share, 0.0), "random",
                 lambda row, instants=instants: (  # type: ignore[misc]
-                    f"r:{of(row).name.split('@')[0]}:{quantity}:{stamp(instants[row])}"
+                    f"r:{self._reading(chosen, origin, row)}:{quantity}:{stamp(instants[row])}"
                 ),
                 declared=lambda row: of(row).declared, instrument=lambda row: of(row).name, scale=scale,
             )  # fmt: skip
@@ -116,10 +116,15 @@ class Errors:
                 declared=lambda row: False, instrument=lambda row: of(row).name, scale=scale,
             )  # fmt: skip
 
-    def _distinct(self, chosen: Chosen, origin: Origin) -> int:
+    def distinct(self, chosen: Chosen, origin: Origin) -> int:
         """One instrument for all rows where one source won everywhere, else one a row."""
         one = len(self.vessels) == 1 and len(origin.columns) == 1 and len(np.unique(chosen.source)) == 1
         return 1 if one else self.rows
+
+    def _reading(self, chosen: Chosen, origin: Origin, row: int) -> str:
+        """Whose reading it is: vessels that share an instrument share its offset, not its scatter."""
+        source = origin.of(row, int(chosen.source[row]))[1]
+        return f"{self.vessel(row).name}/{source}" if source else self.vessel(row).name
 
     def _instrument(self, quantity: str, chosen: Chosen, origin: Origin, row: int) -> Instrument:
         named, source = origin.of(row, int(chosen.source[row]))

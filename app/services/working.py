@@ -131,8 +131,10 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "volume fraction of the sample",
         "as read",
     )
+    yield _step("water density", "ρ_w", vessel.parameters["water_density"], "kg/m³", "of the water in a wet sample, 15 °C",
+                "M. Tanaka et al., Metrologia 38 (2001) 301-309")  # fmt: skip
     yield _step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
-                "of the dry liquid: ρ_s less f times the water's 999.1 kg/m³, over 1 − f (a dry sample: ρ_s), taken to the standard state", EXPONENTIAL)  # fmt: skip
+                "(ρ_s − f ρ_w)/(1 − f) of a wet sample, ρ_s of a dry one, taken to the standard state", EXPONENTIAL)  # fmt: skip
     yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³",
                 "GOV exp(−∫β dT from T_std to T + κ (P − P_std))", EXPONENTIAL)  # fmt: skip
     yield _step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)
@@ -148,15 +150,17 @@ def _pressure(measured: Measured, row: int) -> float:
 VAPOUR_BASIS = {
     Mark.VAPOUR_AT_PRESSURE: "no vapour temperature is read: saturated at the measured pressure",
     Mark.VAPOUR_SATURATED: "computed above saturation beside its liquid: taken as saturated at its pressure",
-    Mark.VAPOUR_AT_LIQUID_TEMPERATURE: "neither pressure nor vapour temperature is read: saturated at the liquid's temperature",
+    Mark.VAPOUR_AT_LIQUID_TEMPERATURE: "no pressure is read: saturated at the liquid's temperature",
 }
 
 
 def _vapour(measured: Measured, row: int) -> Iterator[Step]:
-    result = measured.result
+    result, vessel = measured.result, measured.vessel(row)
     marks = Mark(int(result.marks[row]))
     basis = next((words for mark, words in VAPOUR_BASIS.items() if marks & mark), "as read")
     virial = ("virial equation", "definition")
+    yield _step("capacity", "V_total", vessel.capacity, "m³", "whole vessel, unstrained", "definition")
+    yield _step("full shell factor", "K_T", result["full_factor"][row], "1", "1 + ε_x + ε_y + ε_z", STRAIN)
     yield _step("vapour volume", "V_v", result["vapour_volume"][row], "m³", "K_T V_total − K V(h)", STRAIN)
     if Mark.VAPOUR_LEFT_OUT & marks:
         yield _step(
