@@ -15,6 +15,7 @@ from app.schemas.site import Conditions, Site
 from app.schemas.substance import Component as WireComponent
 from app.schemas.substance import Substance, VirialVapour
 from app.schemas.vessel import Vessel
+from app.services.find import ALL_TIME
 from app.services.shapes import capacity_curve, strain_of
 from models import constants, instruments, units
 from models.columns import Method, Vessels
@@ -77,6 +78,9 @@ class CompiledVessel:
     density_uncertainty: float
     space: str
     table: bool
+    since: int = -ALL_TIME  # µs; nothing about the liquid that was read before counts
+    until: int = ALL_TIME  # µs; nor what is read from here on: another substance, or out of service
+    history: tuple[tuple[int, Vessel], ...] = ()  # effective_from and body of every text, where there are several
 
     @property
     def has_liquid(self) -> bool:
@@ -104,13 +108,20 @@ class CompiledVessel:
             return int(given * 1e6)
         return MAX_AGE_US.get(quantity)
 
-    def instrument(self, quantity: str, source: str) -> Instrument:
-        """Errors of a quantity from a source: the source's own, the vessel's, or the defaults."""
+    def text_at(self, instant: int | None) -> Vessel:
+        """The vessel's text in force when something was read."""
+        if instant is None or not self.history:
+            return self.body
+        held = [body for begins, body in self.history if begins <= instant]
+        return held[-1] if held else self.history[0][1]
+
+    def instrument(self, quantity: str, source: str, at: int | None = None) -> Instrument:
+        """Errors of a quantity from a source when it was read: the source's own, the vessel's, or the defaults."""
         default = instruments.DEFAULTS.get(quantity)
         random = default.random if default else 0.0
         systematic = default.systematic if default else 0.0
         own = f"{self.name}/{source}" if source else self.name
-        declared = self._declared(quantity, source)
+        declared = _declared(self.text_at(at), quantity, source)
         if declared is None:
             return Instrument(own, random, systematic, 0.0, declared=False)
         since = f"@{declared.calibrated_at}" if declared.calibrated_at is not None else ""
@@ -121,12 +132,6 @@ class CompiledVessel:
             declared.offset or 0.0,
             declared=declared.random is not None or declared.systematic is not None,
         )
-
-    def _declared(self, quantity: str, source: str) -> Declared | None:
-        for item in self.body.sources:
-            if item.source == source and quantity in item.instruments:
-                return item.instruments[quantity]
-        return self.body.instruments.get(quantity)  # type: ignore[call-overload,no-any-return]
 
     @property
     def compressibility(self) -> float:
@@ -148,6 +153,13 @@ class CompiledVessel:
     def revision(self) -> str:
         """Which text of the vessel's definition this is: a new table is a new error."""
         return next((f"{one.effective_from}.{one.revision}" for one in self.definitions if one.kind == "vessel"), "")
+
+
+def _declared(body: Vessel, quantity: str, source: str) -> Declared | None:
+    for item in body.sources:
+        if item.source == source and quantity in item.instruments:
+            return item.instruments[quantity]
+    return body.instruments.get(quantity)  # type: ignore[call-overload,no-any-return]
 
 
 def base_state(site: Conditions) -> tuple[float, float]:
@@ -183,17 +195,22 @@ def virial_columns(mixtures: tuple[VapourMixture, ...]) -> VapourColumns:
     return VapourColumns.from_mixtures(list(mixtures))
 
 
+@lru_cache(maxsize=50_000)
+def vessel_of(text: str) -> Vessel:
+    """A stored text as a vessel; the same text is read once."""
+    return Vessel.model_validate_json(text)
+
+
 @lru_cache(maxsize=20_000)
 def compile_texts(
-    name: str, definitions: tuple[InForce, ...], site: str, vessel: str, substance: str
-) -> CompiledVessel:
+    name: str, definitions: tuple[InForce, ...], site: str, vessel: str, substance: str,
+    bounds: tuple[int, int], history: tuple[tuple[int, str], ...],
+) -> CompiledVessel:  # fmt: skip
     """The parameters of one vessel from the stored texts of its definitions."""
-    bodies = (
-        Site.model_validate_json(site),
-        Vessel.model_validate_json(vessel),
-        Substance.model_validate_json(substance),
-    )
-    return compile_bodies(name, *bodies, definitions=definitions)
+    bodies = Site.model_validate_json(site), vessel_of(vessel), Substance.model_validate_json(substance)
+    compiled = compile_bodies(name, *bodies, definitions=definitions)
+    texts = tuple((begins, vessel_of(text)) for begins, text in history)
+    return replace(compiled, since=bounds[0], until=bounds[1], history=texts)
 
 
 def compile_bodies(

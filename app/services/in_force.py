@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime, time, timedelta
 from zoneinfo import ZoneInfo
@@ -11,8 +12,8 @@ from sqlalchemy import Connection
 from app.errors import Conflict, NotFound
 from app.schemas.meter import Meter
 from app.schemas.site import Site
-from app.schemas.vessel import Vessel
-from app.services.compile import CompiledVessel, InForce, compile_texts
+from app.services.compile import CompiledVessel, InForce, compile_texts, vessel_of
+from app.services.find import ALL_TIME
 from app.services.instants import EPOCH, Period, day_bounds, micros, parse_label
 from app.store import definitions
 from app.store.definitions import Definition
@@ -31,6 +32,7 @@ class SiteInForce:
     body: Site
     vessels: tuple[CompiledVessel, ...]
     out: tuple[Definition, ...]
+    junctions: tuple[str, ...]
     texts: tuple[str, ...]
 
     def vessel(self, name: str) -> CompiledVessel | None:
@@ -56,30 +58,65 @@ def site_in_force(
 ) -> SiteInForce:
     """Everything that a calculation at an instant rests on; ``only`` one vessel where it is named."""
     body, own = site_body(connection, site_id, name, at, known)
-    vessels = definitions.in_force(connection, site_id, "vessel", at, known, None if only is None else [only])
-    if only is not None and not vessels:
-        raise NotFound("There is no vessel of that id at that instant", code="unknown_vessel")
+    histories = _histories(connection, site_id, known, only)
     substances = {one.name: one for one in definitions.in_force(connection, site_id, "substance", at, known)}
     compiled: list[CompiledVessel] = []
     out: list[Definition] = []
+    junctions: list[str] = []
     texts = [own.body]
-    for one in vessels:
-        parsed = Vessel.model_validate_json(one.body)
-        texts.append(f"{one.name}\n{one.effective_from}\n{one.body}")
+    for vessel, history in histories.items():
+        place = max((i for i, one in enumerate(history) if one.effective_from <= at), default=None)
+        if place is None:
+            continue
+        one = history[place]
+        parsed = vessel_of(one.body)
+        texts.append(f"{vessel}\n{one.effective_from}\n{one.body}")
         if parsed.shape.kind == JUNCTION:
-            continue
-        if parsed.service == "out":
+            junctions.append(vessel)
+        elif parsed.service == "out":
             out.append(one)
-            continue
-        substance = substances.get(parsed.substance or "")
-        if substance is None:
-            raise Conflict(
-                f"Vessel {one.name} holds a substance that is not defined at that instant", code="unknown_substance"
+        else:
+            substance = substances.get(parsed.substance or "")
+            if substance is None:
+                raise Conflict(
+                    f"Vessel {vessel} holds a substance that is not defined at that instant", code="unknown_substance"
+                )
+            texts.append(f"{substance.name}\n{substance.effective_from}\n{substance.body}")
+            cited = (named("site", own), named("vessel", one), named("substance", substance))
+            several = tuple((text.effective_from, text.body) for text in history) if len(history) > 1 else ()
+            compiled.append(
+                compile_texts(vessel, cited, own.body, one.body, substance.body, _run(history, place), several)
             )
-        texts.append(f"{substance.name}\n{substance.effective_from}\n{substance.body}")
-        cited = (named("site", own), named("vessel", one), named("substance", substance))
-        compiled.append(compile_texts(one.name, cited, own.body, one.body, substance.body))
-    return SiteInForce(name, site_id, known, body, tuple(compiled), tuple(out), tuple(texts))
+    if only is not None and not (compiled or out or junctions):
+        raise NotFound("There is no vessel of that id at that instant", code="unknown_vessel")
+    return SiteInForce(name, site_id, known, body, tuple(compiled), tuple(out), tuple(junctions), tuple(texts))
+
+
+def _histories(connection: Connection, site_id: int, known: int, only: str | None) -> dict[str, list[Definition]]:
+    """Every text of each vessel that stands, in the order of time."""
+    names = None if only is None else [only]
+    found: dict[str, list[Definition]] = {}
+    for one in definitions.timeline(connection, site_id, "vessel", -ALL_TIME, ALL_TIME, known, names):
+        found.setdefault(one.name, []).append(one)
+    return found
+
+
+def _run(history: Sequence[Definition], place: int) -> tuple[int, int]:
+    """From when to when the vessel holds the substance that it holds, in service without a break."""
+    here = vessel_of(history[place].body)
+
+    def same(one: Definition) -> bool:
+        body = vessel_of(one.body)
+        return body.substance == here.substance and body.service == "in"
+
+    first = place
+    while first > 0 and same(history[first - 1]):
+        first -= 1
+    last = place
+    while last + 1 < len(history) and same(history[last + 1]):
+        last += 1
+    since = -ALL_TIME if first == 0 else history[first].effective_from
+    return since, ALL_TIME if last + 1 == len(history) else history[last + 1].effective_from
 
 
 def meters_in_force(connection: Connection, site_id: int, at: int, known: int) -> dict[str, Meter]:
