@@ -208,14 +208,14 @@ def _ticket_errors(
 
 def _factor(meter: Meter | None, started_at: int) -> tuple[float, str]:
     """Shared error of a meter between two provings, in percent, and which interval it is."""
-    systematic = instruments.METER_SYSTEMATIC_PCT
+    own = instruments.METER_SYSTEMATIC_PCT
     if meter is not None and meter.systematic_pct is not None:
-        systematic = meter.systematic_pct
-    proved = ""
+        own = meter.systematic_pct
+    systematic, proved = own, ""
     for proving in meter.provings if meter is not None else ():
         if proving.at <= started_at:
             proved = str(proving.at)
-            systematic = systematic if proving.systematic_pct is None else proving.systematic_pct
+            systematic = own if proving.systematic_pct is None else proving.systematic_pct
     return systematic, proved
 
 
