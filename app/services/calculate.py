@@ -66,7 +66,7 @@ def _place(
         value = getattr(reading, quantity, None)
         if value is None or quality_of(reading, quantity) > 1:
             continue
-        target.before_at[row, column] = result.at[row]
+        target.before_at[row, column] = target.before_taken[row, column] = result.at[row]
         target.before_quality[row, column] = quality_of(reading, quantity)
         if isinstance(value, int | float) and not isinstance(value, bool):
             target.before[row, column] = convert[reading.source](float(value))

@@ -12,27 +12,36 @@ from sqlalchemy import Connection
 from app.services.choose import ALWAYS, NEVER, Candidates
 from app.services.compile import CompiledVessel
 from app.services.parts import Origin
+from app.services.samples import Sample, samples_at, samples_of
 from app.store import readings
-from app.store.readings import Found
+from app.store.readings import Found, Series
 
 SITE = ""  # the vessel of a row that is the site's own
 
 Text = NDArray[np.object_]
+Instants = NDArray[np.int64]
+Convert = Callable[[float, int], float]
 
 
 @dataclass(frozen=True)
 class InputSpec:
-    """One input of the chain: the quantities that give it, and how they behave in time."""
+    """One input of the chain: the quantities that give it, and how they behave in time.
+
+    A ``sample`` stands from when it says that it does, until the next one; its companions are what was read
+    of the same sample.
+    """
 
     name: str
     quantities: tuple[str, ...]
     interpolates: bool = False
     of_site: bool = False
+    sample: bool = False
     companions: tuple[str, ...] = ()
 
 
 INPUTS: tuple[InputSpec, ...] = (
     InputSpec("level", ("level_m", "ullage_m"), interpolates=True),
+    InputSpec("empty", ("empty",)),
     InputSpec("free_water", ("free_water_level_m",)),
     InputSpec("liquid_temperature", ("liquid_temperature_c",), interpolates=True),
     InputSpec("vapour_temperature", ("vapour_temperature_c",), interpolates=True),
@@ -43,11 +52,14 @@ INPUTS: tuple[InputSpec, ...] = (
     InputSpec(
         "density",
         ("observed_density_kg_m3",),
+        sample=True,
         companions=("observed_density_temperature_c", "observed_density_pressure_kpa_abs", "sample"),
     ),
-    InputSpec("sediment_water", ("sediment_water_pct",), companions=("density_basis", "sample")),
-    InputSpec("vapour_composition", ("vapour_composition",), companions=("sample",)),
+    InputSpec("sediment_water", ("sediment_water_pct",), sample=True, companions=("density_basis", "sample")),
+    InputSpec("vapour_composition", ("vapour_composition",), sample=True, companions=("sample",)),
+    InputSpec("roof_load", ("roof_load_kg",)),
 )
+ALWAYS_KEPT = ("ambient_temperature_c",)  # not about the liquid: carried over a change of substance
 
 
 def names_of(spec: InputSpec) -> tuple[str, ...]:
@@ -57,9 +69,12 @@ def names_of(spec: InputSpec) -> tuple[str, ...]:
 
 @dataclass
 class Collected:
-    """Candidates of every input over n rows; texts and companions stand beside their columns."""
+    """Candidates of every input over n rows; texts and companions stand beside their columns.
 
-    at: NDArray[np.int64]
+    ``at`` is the instant of each row; one vessel stands for all rows, or each row has its own.
+    """
+
+    at: Instants
     vessels: tuple[CompiledVessel, ...]
     candidates: dict[str, Candidates] = field(default_factory=dict)
     origins: dict[str, Origin] = field(default_factory=dict)
@@ -72,202 +87,265 @@ class Collected:
         return len(self.at)
 
 
-def at_instant(
-    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], at: int, known: int
-) -> Collected:
-    """Candidates of many vessels at one instant: the newest values before it, the next ones after."""
-    slots = _slots(connection, site_id, vessels)
-    before = readings.newest(
-        connection, site_id, [(slot.series, _oldest(slot.max_age, at)) for slot in slots], at, known
-    )
-    moving = [slot for slot in slots if slot.interpolates]
-    after = readings.following(connection, site_id, [(slot.series, at + slot.max_age) for slot in moving], at, known)
-    collected = _frame(slots, np.full(len(vessels), at, dtype=np.int64), vessels, per_row=True)
-    earlier, later = {found.series_id: found for found in before}, {found.series_id: found for found in after}
-    for slot in slots:
-        _place(collected, slot, slot.rows, earlier.get(slot.series), later.get(slot.series))
-    return collected
-
-
-def over_course(
-    connection: Connection, site_id: int, vessel: CompiledVessel, at: NDArray[np.int64], known: int
-) -> Collected:
-    """Candidates of one vessel at many instants: each series is read once and searched."""
-    slots = _slots(connection, site_id, (vessel,))
-    collected = _frame(slots, at, (vessel,), per_row=False)
-    low, high = int(at.min()), int(at.max())
-    lasting = [slot for slot in slots if slot.max_age >= ALWAYS]
-    passing = [slot for slot in slots if slot.max_age < ALWAYS]
-    reach = max((slot.max_age for slot in passing), default=0)
-    for some, oldest, latest in ((lasting, int(NEVER), high), (passing, low - reach, high + reach)):
-        series = sorted({slot.series for slot in some})
-        if not series:
-            continue
-        found = readings.course(connection, site_id, series, oldest, latest, known)
-        owner = np.array(found.series_id, dtype=np.int64)
-        taken = np.array(found.taken_at, dtype=np.int64)
-        value = np.array([np.nan if one is None else one for one in found.value], dtype=np.float64)
-        text, quality = np.array(found.cited, dtype=object), np.array(found.quality, dtype=np.int64)
-        for slot in some:
-            own = np.flatnonzero(owner == slot.series)
-            _fill(collected, slot, taken[own], value[own], text[own], quality[own])
-    return collected
-
-
 @dataclass(frozen=True)
-class _Slot:
-    """One series and the columns that it feeds."""
+class Slot:
+    """One stored series and the column of an input that it feeds."""
 
     series: int
     spec: InputSpec
+    owner: str
     quantity: str
     source: str
     column: int
     rows: tuple[int, ...]
     max_age: int
     rank: int
-    interpolates: bool
-    convert: Callable[[float], float]
+    convert: Convert
 
     @property
     def companion(self) -> bool:
+        """Whether it is read beside the input's own quantity."""
         return self.quantity not in self.spec.quantities
 
 
-def _slots(connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...]) -> list[_Slot]:
+def collect(
+    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], at: Instants, known: int
+) -> Collected:
+    """Candidates of many vessels, each at its own instant, or of one vessel at many."""
+    slots = _slots(connection, site_id, vessels)
+    collected = _frame(slots, at, vessels)
+    passing = [slot for slot in slots if not slot.spec.sample]
+    if len(vessels) == 1 and len(at) > 1:
+        _courses(connection, site_id, collected, passing, known)
+        samples = samples_of(connection, site_id, _sampled(slots), int(at.max()), known)
+    else:
+        moved = len(np.unique(at)) > 1
+        shared = [slot for slot in passing if slot.spec.of_site] if moved else []
+        _neighbours(connection, site_id, collected, [slot for slot in passing if slot not in shared], known)
+        _courses(connection, site_id, collected, shared, known)
+        instants = {vessel.name: int(at[row]) for row, vessel in enumerate(vessels)}
+        samples = samples_at(connection, site_id, _sampled(slots), instants, known)
+    for slot in slots:
+        if slot.spec.sample:
+            _fill_samples(collected, slot, samples.get((slot.owner, slot.source, slot.spec.quantities[0]), []))
+    return collected
+
+
+def _sampled(slots: Sequence[Slot]) -> list[tuple[str, str, str, dict[str, int]]]:
+    """Owner, source and main quantity of each kind of sample, with the series of all that it may hold."""
+    found: dict[tuple[str, str, str], dict[str, int]] = {}
+    for slot in slots:
+        if slot.spec.sample:
+            found.setdefault((slot.owner, slot.source, slot.spec.quantities[0]), {})[slot.quantity] = slot.series
+    holds = {(slot.owner, slot.source): slot.series for slot in slots if slot.quantity == "sample_holds_from"}
+    for (owner, source, _), series in found.items():
+        if (owner, source) in holds:
+            series["sample_holds_from"] = holds[(owner, source)]
+    return [(*key, series) for key, series in found.items()]
+
+
+def _slots(connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...]) -> list[Slot]:
     """Every stored series that feeds an input of one of the vessels, with its column."""
     index = {vessel.name: row for row, vessel in enumerate(vessels)}
-    known = readings.series_of(connection, site_id, [*index, SITE])
-    slots: list[_Slot] = []
-    by_owner: dict[tuple[str, str], dict[str, int]] = {}
-    for owner, quantity, source, series in sorted(
-        (item.vessel, item.quantity, item.source, item.series_id) for item in known
-    ):
-        by_owner.setdefault((owner, quantity), {})[source] = series
-    for spec in INPUTS:
-        owners: Iterable[str] = (SITE,) if spec.of_site else index
-        for owner in owners:
-            slots.extend(_owner_slots(spec, owner, by_owner, index, vessels))
+    by_owner: dict[str, list[Series]] = {}
+    for item in readings.series_of(connection, site_id, [*index, SITE]):
+        by_owner.setdefault(item.vessel, []).append(item)
+    slots: list[Slot] = []
+    every = tuple(range(len(vessels)))
+    for owner, items in by_owner.items():
+        items.sort(key=lambda item: (item.quantity, item.source))
+        rows = every if owner == SITE else (index[owner],)
+        for spec in INPUTS:
+            if spec.of_site == (owner == SITE):
+                slots.extend(_owner_slots(spec, owner, items, rows, vessels[rows[0]]))
     return slots
 
 
 def _owner_slots(
-    spec: InputSpec, owner: str, by_owner: dict[tuple[str, str], dict[str, int]], index: dict[str, int],
-    vessels: tuple[CompiledVessel, ...],
-) -> list[_Slot]:  # fmt: skip
-    row = index.get(owner)
-    rows = tuple(range(len(vessels))) if row is None else (row,)
-    vessel = vessels[rows[0]]
-    found: list[_Slot] = []
+    spec: InputSpec, owner: str, items: Sequence[Series], rows: tuple[int, ...], vessel: CompiledVessel
+) -> Iterable[Slot]:
     columns: dict[tuple[str, str], int] = {}
     for quantity in spec.quantities:
-        for source in by_owner.get((owner, quantity), {}):
-            columns[(quantity, source)] = len(columns)
-    for quantity in names_of(spec):
-        for source, series in by_owner.get((owner, quantity), {}).items():
-            if quantity in spec.quantities:
-                column = columns[(quantity, source)]
-            elif (spec.quantities[0], source) in columns:
-                column = columns[(spec.quantities[0], source)]
-            else:
-                continue
-            age = vessel.max_age_us(quantity if quantity in spec.quantities else spec.quantities[0])
-            found.append(
-                _Slot(
-                    series, spec, quantity, source, column, rows, int(ALWAYS) if age is None else age,
-                    vessel.rank(source), spec.interpolates and quantity in spec.quantities,
-                    conversion(vessel, quantity, source),
-                )
-            )  # fmt: skip
-    return found
+        for item in items:
+            if item.quantity == quantity:
+                columns[(quantity, item.source)] = len(columns)
+    looked_at = names_of(spec) + (("sample_holds_from",) if spec.sample else ())
+    for item in items:
+        if item.quantity not in looked_at:
+            continue
+        main = item.quantity if item.quantity in spec.quantities else spec.quantities[0]
+        column = columns.get((main, item.source))
+        if column is None:
+            continue
+        age = vessel.max_age_us("level_m" if main == "empty" else main)
+        yield Slot(
+            item.series_id, spec, owner, item.quantity, item.source, column, rows,
+            int(ALWAYS) if age is None else age, vessel.rank(item.source),
+            conversion(vessel, item.quantity, item.source),
+        )  # fmt: skip
 
 
-def conversion(vessel: CompiledVessel, quantity: str, source: str) -> Callable[[float], float]:
-    """A stored value as the input's: known errors corrected, an ullage made an innage."""
-    offset = vessel.instrument(quantity, source).offset
+def conversion(vessel: CompiledVessel, quantity: str, source: str) -> Convert:
+    """A stored value as the input's: the known error of then corrected, an ullage made an innage."""
+    history = vessel.history
+
+    def offset(at: int) -> float:
+        return vessel.instrument(quantity, source, at if history else None).offset
+
     if quantity == "ullage_m":
-        gauging = vessel.body.gauging
-        height = gauging.reference_height_m if gauging is not None else None
+        height = vessel.body.gauging.reference_height_m
         if height is None:
-            return lambda value: float("nan")
-        return lambda value: height - (value + offset)
-    return lambda value: value + offset
+            return lambda value, at: float("nan")
+        return lambda value, at: height - (value + offset(at))
+    return lambda value, at: value + offset(at)
 
 
-def _oldest(max_age: int, at: int) -> int:
-    return int(NEVER) if max_age >= ALWAYS else at - max_age
-
-
-def _frame(
-    slots: Sequence[_Slot], at: NDArray[np.int64], vessels: tuple[CompiledVessel, ...], *, per_row: bool
-) -> Collected:
+def _frame(slots: Sequence[Slot], at: Instants, vessels: tuple[CompiledVessel, ...]) -> Collected:
     """Empty candidates of the right width, with the origin of each column."""
     collected = Collected(at, vessels)
+    per_row = len(vessels) > 1
     for spec in INPUTS:
         own = [slot for slot in slots if slot.spec is spec]
         width = max((slot.column + 1 for slot in own), default=0)
-        collected.candidates[spec.name] = Candidates.empty(len(at), width)
-        collected.texts[spec.name] = np.full((len(at), max(width, 1)), None, dtype=object)
         names: list[list[tuple[str, str]]] = [[("", "")] * width for _ in range(len(at) if per_row else 1)]
         for slot in own:
             if not slot.companion:
                 for row in slot.rows if per_row else (0,):
                     names[row][slot.column] = (slot.quantity, slot.source)
         collected.origins[spec.name] = Origin(names)
+        collected.candidates[spec.name], collected.texts[spec.name] = blank(len(at), width)
         for quantity in spec.companions:
-            collected.companions[(spec.name, quantity)] = (
-                Candidates.empty(len(at), width),
-                np.full((len(at), max(width, 1)), None, dtype=object),
-            )
+            collected.companions[(spec.name, quantity)] = blank(len(at), width)
     return collected
 
 
-def _place(collected: Collected, slot: _Slot, rows: tuple[int, ...], before: Found | None, after: Found | None) -> None:
+def blank(rows: int, width: int) -> tuple[Candidates, Text]:
+    """Columns in which nothing was read."""
+    return Candidates.empty(rows, width), np.full((rows, max(width, 1)), None, dtype=object)
+
+
+def _bounds(slot: Slot, vessel: CompiledVessel, at: int) -> tuple[int, int]:
+    """Between which instants a value of a series may count at an instant, both included."""
+    oldest = int(NEVER) if slot.max_age >= ALWAYS else at - slot.max_age
+    latest = at + min(slot.max_age, int(ALWAYS)) if slot.max_age < ALWAYS else at
+    if slot.spec.of_site or slot.quantity in ALWAYS_KEPT:
+        return oldest, latest
+    return max(oldest, vessel.since), min(latest, vessel.until - 1)
+
+
+def _neighbours(connection: Connection, site_id: int, collected: Collected, slots: Sequence[Slot], known: int) -> None:
+    """The newest value of each series at its row's instant, and the next one after it."""
+    before, after = [], []
+    for slot in slots:
+        row = slot.rows[0]
+        at = int(collected.at[row])
+        oldest, latest = _bounds(slot, collected.vessels[min(row, len(collected.vessels) - 1)], at)
+        if oldest <= at:
+            before.append((slot.series, oldest, at))
+        if at < latest:
+            after.append((slot.series, at + 1, latest))
+    earlier = {found.series_id: found for found in readings.newest_each(connection, site_id, before, known)}
+    later = {found.series_id: found for found in readings.following_each(connection, site_id, after, known)}
+    for slot in slots:
+        _place(collected, slot, earlier.get(slot.series), later.get(slot.series))
+
+
+def _place(collected: Collected, slot: Slot, before: Found | None, after: Found | None) -> None:
     """One series' neighbours of the instant into the rows that it feeds."""
     target, texts = _target(collected, slot)
-    picked = rows[0] if len(rows) == 1 else slice(None)
+    picked = list(slot.rows)
     target.rank[picked, slot.column] = slot.rank
     target.max_age[picked, slot.column] = slot.max_age
     if before is not None:
         target.before_at[picked, slot.column] = before.taken_at
+        target.before_taken[picked, slot.column] = before.taken_at
         target.before_quality[picked, slot.column] = before.quality
         if before.value is not None:
-            target.before[picked, slot.column] = slot.convert(before.value)
+            target.before[picked, slot.column] = slot.convert(before.value, before.taken_at)
         texts[picked, slot.column] = before.cited
     if after is not None and after.value is not None:
         target.after_at[picked, slot.column] = after.taken_at
         target.after_quality[picked, slot.column] = after.quality
-        target.after[picked, slot.column] = slot.convert(after.value)
+        target.after[picked, slot.column] = slot.convert(after.value, after.taken_at)
 
 
-def _target(collected: Collected, slot: _Slot) -> tuple[Candidates, Text]:
+def _target(collected: Collected, slot: Slot) -> tuple[Candidates, Text]:
     if slot.companion:
         return collected.companions[(slot.spec.name, slot.quantity)]
     return collected.candidates[slot.spec.name], collected.texts[slot.spec.name]
 
 
-def _fill(
-    collected: Collected, slot: _Slot, taken: NDArray[np.int64], values: NDArray[np.float64], texts: Text,
-    quality: NDArray[np.int64],
-) -> None:  # fmt: skip
+def _courses(connection: Connection, site_id: int, collected: Collected, slots: Sequence[Slot], known: int) -> None:
+    """Each series is read once over all instants and searched for its neighbours of each."""
+    if not slots:
+        return
+    low, high = int(collected.at.min()), int(collected.at.max())
+    reach = max((slot.max_age for slot in slots if slot.max_age < ALWAYS), default=0)
+    lasting = any(slot.max_age >= ALWAYS for slot in slots)
+    series = sorted({slot.series for slot in slots})
+    oldest = int(NEVER) if lasting else low - reach
+    found = readings.course(connection, site_id, series, oldest, high + reach, known)
+    owner = np.array(found.series_id, dtype=np.int64)
+    taken = np.array(found.taken_at, dtype=np.int64)
+    value = np.array([np.nan if one is None else one for one in found.value], dtype=np.float64)
+    quality = np.array(found.quality, dtype=np.int64)
+    for slot in slots:
+        vessel = collected.vessels[min(slot.rows[0], len(collected.vessels) - 1)]
+        own = owner == slot.series
+        if not (slot.spec.of_site or slot.quantity in ALWAYS_KEPT):
+            own &= (taken >= vessel.since) & (taken < vessel.until)
+        own = np.flatnonzero(own)
+        _fill(collected, slot, taken[own], value[own], quality[own])
+
+
+def _fill(collected: Collected, slot: Slot, taken: Instants, values: NDArray[np.float64], quality: Instants) -> None:
     """One series searched for its neighbours of every instant."""
-    target, target_texts = _target(collected, slot)
+    target, _ = _target(collected, slot)
     target.rank[:, slot.column] = slot.rank
     target.max_age[:, slot.column] = slot.max_age
     if not len(taken):
         return
-    converted = np.asarray(slot.convert(values))  # type: ignore[arg-type]
+    vessel = collected.vessels[min(slot.rows[0], len(collected.vessels) - 1)]
+    if vessel.history:
+        converted = np.array([slot.convert(value, int(at)) for value, at in zip(values, taken, strict=True)])
+    else:
+        converted = np.asarray(slot.convert(values, 0))  # type: ignore[arg-type]
     position = np.searchsorted(taken, collected.at, side="right") - 1
     has = position >= 0
     here = np.maximum(position, 0)
     target.before_at[:, slot.column] = np.where(has, taken[here], NEVER)
+    target.before_taken[:, slot.column] = target.before_at[:, slot.column]
     target.before[:, slot.column] = np.where(has, converted[here], np.nan)
     target.before_quality[:, slot.column] = np.where(has, quality[here], 0)
-    target_texts[:, slot.column] = np.where(has, texts[here], None)
-    if slot.interpolates:
-        beyond = position + 1
-        there = np.minimum(beyond, len(taken) - 1)
-        follows = beyond < len(taken)
-        target.after_at[:, slot.column] = np.where(follows, taken[there], NEVER)
-        target.after[:, slot.column] = np.where(follows, converted[there], np.nan)
-        target.after_quality[:, slot.column] = np.where(follows, quality[there], 0)
+    there = np.minimum(position + 1, len(taken) - 1)
+    follows = position + 1 < len(taken)
+    target.after_at[:, slot.column] = np.where(follows, taken[there], NEVER)
+    target.after[:, slot.column] = np.where(follows, converted[there], np.nan)
+    target.after_quality[:, slot.column] = np.where(follows, quality[there], 0)
+
+
+def _fill_samples(collected: Collected, slot: Slot, samples: Sequence[Sample]) -> None:
+    """The sample that stands at each instant: the newest that begins at or before it."""
+    if slot.quantity == "sample_holds_from":
+        return
+    target, texts = _target(collected, slot)
+    rows = np.array(slot.rows if len(collected.vessels) > 1 else range(collected.rows))
+    target.rank[rows, slot.column] = slot.rank
+    target.max_age[rows, slot.column] = slot.max_age
+    vessel = collected.vessels[min(slot.rows[0], len(collected.vessels) - 1)]
+    own = [one for one in samples if vessel.since <= one.begins < vessel.until]
+    begins = np.array([one.begins for one in own], dtype=np.int64)
+    place = np.searchsorted(begins, collected.at[rows], side="right") - 1
+    for row, position in zip(rows, place, strict=True):
+        if position < 0:
+            continue
+        sample = own[position]
+        value = sample.values.get(slot.quantity)
+        if value is None:
+            continue
+        target.before_at[row, slot.column] = sample.begins
+        target.before_taken[row, slot.column] = sample.taken_at
+        target.before_quality[row, slot.column] = value.quality
+        if value.value is not None:
+            target.before[row, slot.column] = slot.convert(value.value, sample.taken_at)
+        texts[row, slot.column] = value.cited

@@ -357,7 +357,7 @@ def inputs_read(measured: Measured, row: int) -> list[list[Any]]:
 
 def _companion(measured: Measured, row: int, name: str, quantity: str, column: int) -> Any:
     candidates, texts = measured.collected.companions[(name, quantity)]
-    if candidates.before_at[row, column] != measured.chosen[name].taken_at[row]:
+    if candidates.before_at[row, column] != measured.chosen[name].begins[row]:
         return None
     text = texts[row, column]
     return _number(float(candidates.before[row, column])) if text is None else text

@@ -204,7 +204,7 @@ class _States:
         chosen = self.chosen[name]
         rows = np.arange(self.collected.rows)
         column = np.maximum(chosen.source, 0)
-        same = chosen.usable & (candidates.before_at[rows, column] == chosen.taken_at)
+        same = chosen.usable & (candidates.before_at[rows, column] == chosen.begins)
         return np.where(same, candidates.before[rows, column], np.nan)
 
     def companion_text(self, name: str, quantity: str, row: int) -> str | None:
@@ -212,7 +212,7 @@ class _States:
         candidates, texts = self.collected.companions[(name, quantity)]
         chosen = self.chosen[name]
         column = int(chosen.source[row])
-        if column < 0 or candidates.before_at[row, column] != chosen.taken_at[row]:
+        if column < 0 or candidates.before_at[row, column] != chosen.begins[row]:
             return None
         return texts[row, column]  # type: ignore[no-any-return]
 

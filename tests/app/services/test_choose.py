@@ -15,9 +15,10 @@ def candidates(*sources, max_age=HOUR):
     for k, (rank, before_at, before, after_at, after, quality) in enumerate(sources):
         c.rank[0, k] = rank
         if before_at is not None:
-            c.before_at[0, k], c.before[0, k], c.before_quality[0, k] = before_at, before, quality
+            c.before_at[0, k] = c.before_taken[0, k] = before_at
+            c.before[0, k], c.before_quality[0, k] = before, quality
         if after_at is not None:
-            c.after_at[0, k], c.after[0, k] = after_at, after
+            c.after_at[0, k], c.after[0, k], c.after_quality[0, k] = after_at, after, quality
     c.max_age[:] = max_age
     return c
 
@@ -71,9 +72,7 @@ def test_samples_are_never_interpolated():
 
 
 def test_a_value_exactly_at_the_instant_is_taken_as_it_is():
-    chosen = choose(
-        candidates((0, 20 * MINUTE, 5.0, 30 * MINUTE, 8.0, 0)), at(20 * MINUTE), interpolates=True
-    )
+    chosen = choose(candidates((0, 20 * MINUTE, 5.0, 30 * MINUTE, 8.0, 0)), at(20 * MINUTE), interpolates=True)
     assert chosen.value[0] == 5.0 and chosen.after_at[0] < 0
 
 
@@ -87,3 +86,30 @@ def test_until_replaced_holds_for_years():
         candidates((0, 0, 840.0, None, None, 0), max_age=ALWAYS), at(20 * 365 * 24 * HOUR), interpolates=False
     )
     assert chosen.value[0] == 840.0
+
+
+def test_a_close_takes_the_first_value_after_it_where_there_is_none_before():
+    def ahead(reach):
+        return choose(
+            candidates((0, None, None, 70 * MINUTE, 8.0, 1)), at(HOUR), interpolates=True, ahead=np.array([reach])
+        )
+
+    chosen = ahead(HOUR)
+    assert chosen.value[0] == 8.0 and chosen.taken_at[0] == 70 * MINUTE and chosen.age_us[0] == -10 * MINUTE
+    assert chosen.quality[0] == 1 and chosen.share[0] == 0.0 and chosen.after_at[0] < 0
+    assert not ahead(9 * MINUTE).usable[0]
+
+
+def test_a_value_before_the_close_goes_before_one_after_it():
+    chosen = choose(
+        candidates((0, None, None, 61 * MINUTE, 8.0, 0), (0, 30 * MINUTE, 5.0, None, None, 0)),
+        at(HOUR), interpolates=True, ahead=np.array([HOUR]),
+    )  # fmt: skip
+    assert chosen.value[0] == 5.0 and chosen.source[0] == 1
+
+
+def test_what_a_sample_counts_from_may_differ_from_when_it_was_drawn():
+    c = candidates((0, 20 * MINUTE, 840.0, None, None, 0), max_age=ALWAYS)
+    c.before_taken[0, 0] = 90 * MINUTE
+    chosen = choose(c, at(HOUR), interpolates=False)
+    assert chosen.begins[0] == 20 * MINUTE and chosen.taken_at[0] == 90 * MINUTE and chosen.age_us[0] == -30 * MINUTE
