@@ -6,7 +6,7 @@ from typing import Annotated
 
 from fastapi import APIRouter, Depends, Request, Response
 
-from app.api.parameters import AsOf, At, Cursor, Limit, PathId
+from app.api.parameters import AsOf, At, Cursor, Limit, PathId, name_cursor, open_name
 from app.edge.body import json_body
 from app.schemas.listing import LIMIT, Defined, Page, Written
 from app.schemas.meter import Meter
@@ -38,5 +38,6 @@ def list_meters(
 ) -> Page[Defined[Meter]]:
     """Every meter of the site in force at an instant, by id."""
     store = request.app.state.store
-    page, after, known = define.listing(store, site, "meter", at, as_of, cursor, limit)
-    return Page[Defined[Meter]].model_validate({"items": page, "next": after, "known_at": known})
+    behind, known = open_name(cursor, as_of)
+    page, after, known = define.listing(store, site, "meter", at, known, behind, limit)
+    return Page[Defined[Meter]].model_validate({"items": page, "next": name_cursor(after, known), "known_at": known})

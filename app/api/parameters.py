@@ -30,18 +30,24 @@ Cursor = Annotated[str | None, Query(max_length=200, description="The `next` of 
 PathId = Annotated[str, Path(pattern=ID_PATTERN, description="Chosen by the client")]
 
 
-def open_cursor(text: str | None) -> tuple[int, str, int] | None:
+_NUMBER = re.compile(r"-?[0-9]{1,18}|-?[1-8][0-9]{18}", re.ASCII)  # what 64 bits hold
+_NAME = re.compile(r"[^\u0000-\u001f\u007f-\u009f\ud800-\udfff]*")
+
+
+def open_cursor(text: str | None, *, name: re.Pattern[str] = _NAME) -> tuple[int, str, int] | None:
     """A cursor as instant, name and ``known_at``; anything else is refused, not guessed."""
     if text is None:
         return None
-    parts = text.split("~")
-    if len(parts) != 3 or not all(_NUMBER.fullmatch(part) for part in (parts[0], parts[2])):
-        raise Unprocessable(
-            "That is no cursor of this listing: take next of the page before as it stands",
-            code="not_a_cursor",
-            errors=[FieldError("/cursor", "not_a_cursor", "cursor is the next of the page before")],
-        )
-    return int(parts[0]), parts[1], int(parts[2])
+    instant, _, rest = text.partition("~")
+    middle, _, known = rest.rpartition("~")  # a source may hold the separator, a number cannot
+    if not (_NUMBER.fullmatch(instant) and _NUMBER.fullmatch(known) and name.fullmatch(middle)):
+        raise _no_cursor()
+    return int(instant), middle, int(known)
+
+
+def open_numbers(text: str | None) -> tuple[int, str, int] | None:
+    """A cursor of a listing of periods, whose name is an instant too."""
+    return open_cursor(text, name=_NUMBER)
 
 
 def cursor_of(instant: int, name: str, known: int) -> str:
@@ -49,4 +55,24 @@ def cursor_of(instant: int, name: str, known: int) -> str:
     return f"{instant}~{name}~{known}"
 
 
-_NUMBER = re.compile(r"-?[0-9]{1,19}", re.ASCII)
+def open_name(text: str | None, as_of: int | None) -> tuple[str, int | None]:
+    """A cursor of a listing by id: the id that it is behind, and the watermark that its pages share."""
+    if text is None:
+        return "", as_of
+    name, _, known = text.partition("~")
+    if not (re.fullmatch(ID_PATTERN, name) and _NUMBER.fullmatch(known)):
+        raise _no_cursor()
+    return name, int(known)
+
+
+def name_cursor(name: str | None, known: int) -> str | None:
+    """The cursor behind an id; none on the last page."""
+    return None if name is None else f"{name}~{known}"
+
+
+def _no_cursor() -> Unprocessable:
+    return Unprocessable(
+        "That is no cursor of this listing: take next of the page before as it stands",
+        code="not_a_cursor",
+        errors=[FieldError("/query/cursor", "not_a_cursor", "cursor is the next of the page before")],
+    )

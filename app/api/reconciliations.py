@@ -6,7 +6,7 @@ from typing import Annotated
 
 from fastapi import APIRouter, Depends, Path, Query, Request, Response
 
-from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_cursor
+from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_numbers
 from app.edge.body import json_body
 from app.schemas.listing import LIMIT, Page
 from app.schemas.reconciliation import RECONCILIATION_PATTERN, Imbalance, Reconciliation, ReconciliationRequest
@@ -47,7 +47,7 @@ def list_reconciliations(
     as_of: AsOf = None,
 ) -> Page[Reconciliation]:  # fmt: skip
     """Closed periods by their close, each at its newest revision."""
-    place = open_cursor(cursor)
+    place = open_numbers(cursor)
     found, following, known = close.listing(request.app.state.store, site, (first, last), place, limit, as_of)
     after = None if following is None else cursor_of(*following, known)
     return Page[Reconciliation].model_validate({"items": found, "next": after, "known_at": known})
@@ -60,7 +60,7 @@ def list_imbalances(
     flagged: Annotated[bool | None, Query(description="Only those that are flagged, or are not")] = None,
 ) -> Page[Imbalance]:  # fmt: skip
     """The vessels of many closed periods as one flat list; a page holds the vessels of `limit` periods."""
-    place = open_cursor(cursor)
+    place = open_numbers(cursor)
     found, following, known = close.listing(request.app.state.store, site, (first, last), place, limit, as_of)
     after = None if following is None else cursor_of(*following, known)
     items = close.imbalances(found, flagged=flagged)

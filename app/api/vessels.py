@@ -6,7 +6,7 @@ from typing import Annotated
 
 from fastapi import APIRouter, Depends, Request, Response
 
-from app.api.parameters import AsOf, At, Cursor, Limit, PathId
+from app.api.parameters import AsOf, At, Cursor, Limit, PathId, name_cursor, open_name
 from app.edge.body import json_body
 from app.schemas.listing import LIMIT, Defined, Page, Written
 from app.schemas.vessel import Vessel
@@ -38,8 +38,9 @@ def list_vessels(
 ) -> Page[Defined[Vessel]]:
     """Every vessel of the site in force at an instant, by id."""
     store = request.app.state.store
-    page, after, known = define.listing(store, site, "vessel", at, as_of, cursor, limit)
-    return Page[Defined[Vessel]].model_validate({"items": page, "next": after, "known_at": known})
+    behind, known = open_name(cursor, as_of)
+    page, after, known = define.listing(store, site, "vessel", at, known, behind, limit)
+    return Page[Defined[Vessel]].model_validate({"items": page, "next": name_cursor(after, known), "known_at": known})
 
 
 @router.get("/{vessel}/revisions", response_model_exclude_unset=True)

@@ -233,6 +233,15 @@ class StoredValue(Answer):
         default=None, exclude_if=is_none, description="Mole fractions by component, of a composition [1]"
     )
     sample: str | None = Field(default=None, exclude_if=is_none, description="The sample that the value cites")
+    sample_holds_from: AnsweredInstant | None = Field(
+        default=None, exclude_if=is_none, description="From when the sample stands for the content, where it was said"
+    )
+    observed_density_by: Literal["digital", "hydrometer"] | None = Field(
+        default=None, exclude_if=is_none, description="Instrument of a density, where it was said"
+    )
+    density_basis: Literal["wet", "dry"] | None = Field(
+        default=None, exclude_if=is_none, description="Of the wet sample or of the dry substance, where it was said"
+    )
     quality: QualityWord = Field(description="Its quality; bad: withdrawn")
     recorded_at: AnsweredInstant = Field(description="When it was recorded")
     revision: int = Field(ge=1, description="1 for the first value of this instant, then counted up")

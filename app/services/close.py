@@ -17,7 +17,7 @@ from app.services import judge, move
 from app.services.explain import inputs_read, standard_density
 from app.services.find import site_number
 from app.services.in_force import labelled, meters_in_force, period_of
-from app.services.instants import Period
+from app.services.instants import Period, in_order
 from app.services.take_stock import Stock, stock_at
 from app.store import books, definitions, due, sites, transfers
 from app.store.books import Book, BookVessel
@@ -175,6 +175,7 @@ def listing(
     store: Store, site: str, period: tuple[int, int], place: tuple[int, str, int] | None, limit: int, as_of: int | None
 ) -> tuple[list[dict[str, Any]], tuple[int, str] | None, int]:
     """A page of closed periods by their close, each at its newest revision, and the place behind it."""
+    in_order(period)
     with store.reading() as connection:
         site_id = site_number(connection, site)
         newest = sites.watermark(connection, site_id)

@@ -6,6 +6,8 @@ from dataclasses import dataclass
 from datetime import UTC, date, datetime, time, timedelta
 from zoneinfo import ZoneInfo
 
+from app.errors import FieldError, Unprocessable
+from app.schemas.types import FIRST_YEAR, LAST_YEAR
 from models.errors import DefinitionError
 
 EPOCH = datetime(1970, 1, 1, tzinfo=UTC)
@@ -79,6 +81,14 @@ class Period:
         return self.day or f"{basic(self.opening)}--{basic(self.closing)}"
 
 
+def in_order(bounds: tuple[int, int]) -> None:
+    """Refuse bounds of a listing or a course that end before they begin."""
+    if bounds[1] <= bounds[0]:
+        raise Unprocessable(
+            "to is after from", code="impossible", errors=[FieldError("/query/to", "impossible", "to is after from")]
+        )
+
+
 def parse_basic(text: str) -> int:
     """The instant of a basic UTC text such as 20260301T050000Z."""
     return micros(datetime.strptime(text, "%Y%m%dT%H%M%SZ").replace(tzinfo=UTC))
@@ -86,7 +96,19 @@ def parse_basic(text: str) -> int:
 
 def parse_label(text: str) -> Period | date:
     """A period's id without its revision: two instants, or a local date."""
-    if "--" in text:
-        opening, closing = (parse_basic(part) for part in text.split("--"))
-        return Period(opening, closing)
-    return date.fromisoformat(text)
+    try:
+        if "--" in text:
+            opening, closing = (parse_basic(part) for part in text.split("--"))
+            return Period(opening, closing)
+        day = date.fromisoformat(text)
+    except ValueError:
+        raise _no_such(
+            "The id of a period is a date, or two instants in basic UTC; there is no such date or time"
+        ) from None
+    if not FIRST_YEAR <= day.year <= LAST_YEAR:
+        raise _no_such(f"A day lies in the years {FIRST_YEAR} to {LAST_YEAR}")
+    return day
+
+
+def _no_such(detail: str) -> Unprocessable:
+    return Unprocessable(detail, code="not_a_period")

@@ -3,13 +3,16 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Mapping
 from typing import Any
 
-from app.errors import NotFound, Unprocessable
+from app.errors import NotFound
 from app.schemas.transfer import Transfer
 from app.services.find import ALL_TIME, site_number, watermark
+from app.services.instants import in_order
 from app.store import definitions, readings, transfers
 from app.store.engine import Store
+from app.store.tables import LABORATORY
 
 QUALITY = ("good", "uncertain", "bad")
 Period = tuple[int, int]
@@ -21,7 +24,7 @@ def values(
     as_of: int | None,
 ) -> tuple[list[dict[str, Any]], tuple[int, str] | None, int]:  # fmt: skip
     """A page of a vessel's values, the place behind it, and what all pages of the listing know."""
-    _in_order(period)
+    in_order(period)
     with store.reading() as connection:
         site_id = site_number(connection, site)
         known = watermark(connection, site_id, as_of if place is None else place[2])
@@ -33,9 +36,29 @@ def values(
         )  # fmt: skip
     found = []
     for one in page:
+        said = {name: one.values[name] for name in LABELS if name in one.values}
         for quantity, value in sorted(one.values.items()):
-            found.append(_stored(vessel, one.taken_at, one.source, quantity, value))
+            if quantity not in said:
+                found.append(_stored(vessel, one.taken_at, one.source, quantity, value) | _labels(quantity, said))
     return found, following, known
+
+
+LABELS = {
+    "sample": LABORATORY,
+    "sample_holds_from": LABORATORY,
+    "observed_density_by": {"observed_density_kg_m3"},
+    "density_basis": {"observed_density_kg_m3", "sediment_water_pct"},
+}
+"""What a reading says about its sample, and the values that it is said of."""
+
+
+def _labels(quantity: str, said: Mapping[str, readings.Found]) -> dict[str, Any]:
+    """What was said about a value's sample, beside the value."""
+    return {
+        name: found.cited if found.value is None else int(found.value)
+        for name, found in said.items()
+        if quantity in LABELS[name]
+    }
 
 
 def _stored(vessel: str, taken_at: int, source: str, quantity: str, value: readings.Found) -> dict[str, Any]:
@@ -44,21 +67,15 @@ def _stored(vessel: str, taken_at: int, source: str, quantity: str, value: readi
         "quality": QUALITY[value.quality], "recorded_at": value.recorded_at, "revision": value.revision,
     }  # fmt: skip
     if value.cited is not None:
-        key = "composition" if quantity.endswith("composition") else "text"
-        answer[key] = json.loads(value.cited) if key == "composition" else value.cited
+        answer["composition"] = json.loads(value.cited)
     return answer
-
-
-def _in_order(period: Period) -> None:
-    if period[1] <= period[0]:
-        raise Unprocessable("to is after from", code="impossible")
 
 
 def tickets(
     store: Store, site: str, period: Period, place: Place, limit: int, as_of: int | None
 ) -> tuple[list[tuple[transfers.Transfer, Transfer]], tuple[int, str] | None, int]:
     """A page of the tickets that touch a period, struck ones too, by end and id."""
-    _in_order(period)
+    in_order(period)
     with store.reading() as connection:
         site_id = site_number(connection, site)
         known = watermark(connection, site_id, as_of if place is None else place[2])
