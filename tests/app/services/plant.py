@@ -72,7 +72,7 @@ class Plant:
     def put(self, kind: str, name: str, body: dict[str, Any]) -> define.Put:
         return define.put(self.store, self.site, kind, name, MODELS[kind].model_validate(body))
 
-    def tank(self, name: str, **changed: Any) -> define.Put:
+    def tank(self, name: str, /, **changed: Any) -> define.Put:
         return self.put("vessel", name, BOX | changed)
 
     def read(self, vessel: str | None, at: str, source: str = "", **values: Any) -> ingest.Outcome:
