@@ -10,7 +10,7 @@ import numpy as np
 from sqlalchemy import Connection
 
 from app.errors import Unprocessable
-from app.services.collect import at_instant, over_course
+from app.services.collect import collect
 from app.services.explain import answers, mass_estimate, reason
 from app.services.find import site_number, watermark
 from app.services.in_force import SiteInForce, named, site_in_force
@@ -45,7 +45,9 @@ def stock_at(
     masses: dict[str, Estimate | None] = {}
     measured = None
     if held.vessels:
-        measured = measure(at_instant(connection, site_id, held.vessels, at, known))
+        measured = measure(
+            collect(connection, site_id, held.vessels, np.full(len(held.vessels), at, dtype=np.int64), known)
+        )
         found = answers(measured, working=working, budget=budget)
         masses = {vessel.name: mass_estimate(measured, row) for row, vessel in enumerate(held.vessels)}
     for one in held.out:
@@ -133,7 +135,7 @@ def course(
                 cited = [named("vessel", held.out[0])._asdict()]
                 found.extend(out_of_service(vessel, int(at), cited) for at in part)
             elif held.vessels:
-                found.extend(answers(measure(over_course(connection, site_id, held.vessels[0], part, known))))
+                found.extend(answers(measure(collect(connection, site_id, held.vessels[:1], part, known))))
     return {"items": found, "next": None, "known_at": known}
 
 
