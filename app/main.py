@@ -10,7 +10,18 @@ from typing import Any
 from fastapi import APIRouter, FastAPI, Request, Response
 from fastapi.telemetry import TelemetryConfig
 
-from app.api import health, inventory, meters, readings, reconciliations, sites, substances, transfers, vessels
+from app.api import (
+    calculations,
+    health,
+    inventory,
+    meters,
+    readings,
+    reconciliations,
+    sites,
+    substances,
+    transfers,
+    vessels,
+)
 from app.clock import Clock
 from app.edge import openapi, problems
 from app.edge.hosts import Hosts
@@ -23,8 +34,10 @@ from models.errors import ModelError
 # In the order of the flow, which is the order in which /openapi.json lists them.
 ROUTERS: list[APIRouter] = [
     module.router
-    for module in (sites, substances, vessels, meters, readings, transfers, inventory, reconciliations, health)
-]
+    for module in (
+        sites, substances, vessels, meters, readings, transfers, inventory, reconciliations, calculations, health,
+    )
+]  # fmt: skip
 QUIET = TelemetryConfig(tracing=False, metrics=False, logs=False, operation_spans=False, auto_configure=False)
 DESCRIPTION = """Readings of tanks and pressure vessels in; mass with its standard uncertainty, and books
 closed every night, out. Every number carries its unit in its name; `_kpa` is gauge unless it ends in

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from typing import Self
+from typing import Annotated, Literal, Self
 
-from pydantic import ConfigDict, Field, model_validator
+from pydantic import ConfigDict, Field, Strict, model_validator
 
 from app.schemas.inventory import Inventory
 from app.schemas.reading import Values
@@ -215,19 +215,58 @@ class NodeBalance(Answer):
     score: Known = Field(description="Maximum-power statistic of a loss at this node alone [1]")
 
 
-class NodeGroup(Answer):
-    """Nodes that unmeasured or shared streams tie together, tested as one."""
+class NetworkFault(Answer):
+    """One fault of one stream or node."""
+
+    model_config = ConfigDict(json_schema_extra={"examples": [{"kind": "node_loss", "subject": "A", "magnitude": 2.7}]})
+
+    kind: Literal["stream_bias", "node_loss"] = Field(description="A stream reads wrong, or a node loses")
+    subject: str = Field(description="The stream or the node")
+    magnitude: float = Field(
+        description="Positive for a stream that reads high and for what a node lost [unit of the values]"
+    )
+
+
+class NetworkSuspect(NetworkFault):
+    """A fault that explains what chance does not, beside the other faults of its group."""
 
     model_config = ConfigDict(
         json_schema_extra={
-            "examples": [{"members": ["A"], "statistic": 3.65, "degrees_of_freedom": 1, "p_value": 0.056}]
+            "examples": [
+                {
+                    "kind": "stream_bias", "subject": "1", "magnitude": 5.4, "interval": [2.63, 8.17],
+                    "statistic": 14.6, "share": 1.0, "fault": 1,
+                    "equivalent_to": [{"kind": "node_loss", "subject": "A", "magnitude": 5.4}],
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    interval: Annotated[tuple[float, float], Strict(False)] = Field(
+        description="Interval of 95 % for the magnitude [unit of the values]"
+    )
+    statistic: float = Field(description="What it takes off the statistic of the group, given its other faults [1]")
+    share: float = Field(description="Its part of the evidence among all that could stand in its place [1]")
+    fault: int = Field(ge=1, description="Faults of a group, counted; suspects of one number are alternatives")
+    equivalent_to: Items[NetworkFault] = Field(description="Faults that no balance of these streams can tell from it")
+
+
+class NodeGroup(Answer):
+    """Nodes that streams tie together, tested as one."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {"members": ["A"], "statistic": 3.65, "degrees_of_freedom": 1, "p_value": 0.056, "suspects": []}
+            ]
         }
     )
 
     members: Items[str] = Field(description="The nodes")
-    statistic: Known = Field(description="Weighted sum of squares of the balances [1]")
+    statistic: Known = Field(description="Weighted sum of squares of the balances; null without any [1]")
     degrees_of_freedom: int = Field(ge=0, description="Independent balances")
     p_value: Known = Field(description="Chance of such a statistic or a larger if nothing is wrong [1]")
+    suspects: Items[NetworkSuspect] = Field(description="What explains it if chance does not, strongest first")
 
 
 class Balance(Answer):

@@ -42,7 +42,7 @@ WITHOUT_UNIT = {
     "statistic", "false_alarm_rate", "false_alarms_per_month", "pct_of_throughput", "kg",
     "random", "systematic", "offset", "local",
     "value", "standard_uncertainty", "difference", "sensitivity",
-    "reconciled", "uncertainty", "adjustment", "imbalance",
+    "reconciled", "uncertainty", "adjustment", "imbalance", "magnitude", "interval", "share",
     "liquid_composition", "vapour_composition", "composition", "quality",
 }  # fmt: skip
 # Lists of numbers, and maps of bodies or of numbers by quantity, whose description has the units.
