@@ -21,3 +21,6 @@ ATMOSPHERE_EARTH_RADIUS = 6_356_766.0  # m, exact by convention: geopotential al
 # Conventional weighing in air, OIML D 28:2004: what "weight in air" means.
 CONVENTIONAL_AIR_DENSITY = 1.2  # kg/m3, exact by convention
 CONVENTIONAL_WEIGHT_DENSITY = 8000.0  # kg/m3, exact by convention
+
+# Water at 60 °F and one atmosphere, to which relative densities and degrees API refer.
+WATER_DENSITY_60F = 999.016  # kg/m3, exact by convention: API MPMS 11.1-2004

@@ -18,6 +18,7 @@ from pydantic.json_schema import models_json_schema
 
 from app.edge.body import JSON, JsonBody
 from app.edge.problems import MEDIA_TYPE, Problem
+from app.edge.rows import RowsBody
 
 COMPONENT = "#/components/schemas/{model}"
 ALWAYS = {
@@ -49,27 +50,38 @@ def describe(app: FastAPI) -> dict[str, Any]:
     )
     schemas: dict[str, Any] = document.setdefault("components", {}).setdefault("schemas", {})
     bodies = dict(_bodies(app))
-    names = _add_models(schemas, [Problem, *bodies.values()])
+    names = _add_models(schemas, [Problem, *(body.model for body in bodies.values())])
     for name in UNUSED:
         schemas.pop(name, None)
     for path in document["paths"].values():
         for method, operation in path.items():
-            model = bodies.get(operation["operationId"])
-            if model is not None:
-                operation["requestBody"] = _content(JSON, names[model]) | {"required": True}
-            operation["responses"] |= _problems(method, names[Problem], has_body=model is not None)
+            body = bodies.get(operation["operationId"])
+            if body is not None:
+                content = _content(JSON, names[body.model])["content"] | _texts(body)
+                operation["requestBody"] = {"content": content, "required": True}
+            operation["responses"] |= _problems(method, names[Problem], has_body=body is not None)
     document["components"]["schemas"] = dict(sorted(schemas.items()))
     return document
 
 
-def _bodies(app: FastAPI) -> Iterator[tuple[str, type[BaseModel]]]:
-    """The id of each operation that takes a JSON body, and the model of it."""
+def _bodies(app: FastAPI) -> Iterator[tuple[str, JsonBody[Any]]]:
+    """The id of each operation that takes a JSON body, and what reads it."""
     for context in iter_route_contexts(app.routes):
         if not isinstance(context.original_route, APIRoute):
             continue
         for dependency in context.dependant.dependencies:
             if isinstance(dependency.call, JsonBody):
-                yield context.unique_id, dependency.call.model
+                yield context.unique_id, dependency.call
+
+
+def _texts(body: JsonBody[Any]) -> dict[str, Any]:
+    """The other media types of a body whose rows may also stand in a text."""
+    if not isinstance(body, RowsBody):
+        return {}
+    return {
+        media_type: {"schema": {"type": "string", "description": text.description}, "example": text.example}
+        for media_type, text in body.texts.items()
+    }
 
 
 def _content(media_type: str, reference: str) -> dict[str, Any]:

@@ -7,15 +7,13 @@
       substances/*.json
       vessels/*.json
       meters/*.json
-      readings/*.csv            columns named as the fields of a reading; a blank cell was not read
+      readings/*.csv            as they would be posted: level_m or level [ft-in-16]; a blank cell was not read
       transfers.json            {"transfers": [...]}
 """
 
 from __future__ import annotations
 
-import csv
-import json
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
@@ -24,21 +22,18 @@ from pydantic import ValidationError
 
 from app.clock import Clock
 from app.errors import AppError
-from app.schemas.batch import RowError
+from app.schemas.batch import ERRORS_LISTED, RowError
 from app.schemas.errors import explain
 from app.schemas.meter import Meter
-from app.schemas.reading import Reading, validate_rows
 from app.schemas.site import Site
 from app.schemas.substance import Substance
 from app.schemas.transfer import validate_transfers
-from app.schemas.types import MEASURED
 from app.schemas.vessel import Vessel
-from app.services import define, ingest, move
+from app.services import define, ingest, move, read_csv
 from app.store.engine import Store
 
 BLOCK = 5_000  # rows of one transaction
 FOLDERS = (("substances", "substance", Substance), ("vessels", "vessel", Vessel), ("meters", "meter", Meter))
-OBJECTS = ("quality", "liquid_composition", "vapour_composition")
 
 Progress = Callable[[str, int], None]
 
@@ -111,54 +106,19 @@ def _refused_by(path: Path, act: Callable[[], Any]) -> Any:
 
 def _readings(store: Store, clock: Clock, site: str, path: Path, result: Loaded, progress: Progress) -> None:
     """One table in blocks: each is committed before the next is read."""
-    for first, raw in _blocks(path):
-        rows, errors = validate_rows(raw)
-        done = ingest.ingest(store, clock, site, rows, errors)
-        for name in ("stored", "revised", "unchanged", "rejected"):
-            setattr(result.readings, name, getattr(result.readings, name) + getattr(done, name))
-        _note(result, path.name, errors, lambda index, first=first: f"line {first + index}")  # type: ignore[misc]
-        progress(path.name, len(raw))
-
-
-def _blocks(path: Path) -> Iterator[tuple[int, list[dict[str, Any]]]]:
-    """Rows of a table as they would stand in JSON, with the line of the first of each block."""
     with path.open(newline="", encoding="utf-8-sig") as file:
-        table = csv.DictReader(file)
-        unknown = [name for name in table.fieldnames or () if name not in Reading.model_fields]
-        if unknown:
-            raise FolderError(f"{path}: column {unknown[0]!r} is no field of a reading, such as level_m")
-        block: list[dict[str, Any]] = []
-        first = 2  # the header is line 1
-        for row in table:
-            block.append(_row(row))
-            if len(block) == BLOCK:
-                yield first, block
-                first, block = first + len(block), []
-        if block:
-            yield first, block
-
-
-def _row(cells: Mapping[str, str | None]) -> dict[str, Any]:
-    """One line: blank cells are left out; what is no number where one stands is named by the row's model."""
-    row: dict[str, Any] = {}
-    for name, text in cells.items():
-        if text is None or text == "":
-            continue
-        row[name] = text
-        if name in MEASURED:
-            try:
-                row[name] = float(text)
-            except ValueError:
-                continue
-        elif name == "empty":
-            row[name] = {"true": True, "false": False}.get(text.lower(), text)
-        elif name in OBJECTS and text.startswith("{"):
-            row[name] = json.loads(text)
-    return row
+        blocks = read_csv.blocks(file, BLOCK)
+        while (block := _refused_by(path, lambda: next(blocks, None))) is not None:
+            rows, errors = block.rows, block.errors
+            done = ingest.ingest(store, clock, site, rows, errors)
+            for name in ("stored", "revised", "unchanged", "rejected"):
+                setattr(result.readings, name, getattr(result.readings, name) + getattr(done, name))
+            _note(result, path.name, errors, lambda index, block=block: f"line {block.line(index)}")  # type: ignore[misc]
+            progress(path.name, len(block.lines))
 
 
 def _note(result: Loaded, name: str, errors: list[RowError], place: Callable[[int], str]) -> None:
     """Refused rows as sentences that name the file and the line."""
     result.rejected += len({error.index for error in errors})
-    for error in errors[: ingest.ERRORS_LISTED]:
+    for error in errors[:ERRORS_LISTED]:
         result.errors.append(f"{name}, {place(error.index)}: {error.field}: {error.detail}")
