@@ -8,7 +8,7 @@ virial equation gives the vapour's; the sum is the mass. Every step works on col
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -52,7 +52,8 @@ class _Step:
     conditions: tuple[FloatArray, FloatArray, BoolArray, BoolArray] | None = None
 
     def mark(self, where: BoolArray, flag: Mark) -> None:
-        self.marks |= np.where(where, int(flag), 0)
+        if where.any():  # hardly ever
+            self.marks |= np.where(where, int(flag), 0)
 
 
 def inventory(vessels: Vessels, rows: IntArray | None, state: State) -> Inventory:
@@ -91,29 +92,53 @@ def inventory(vessels: Vessels, rows: IntArray | None, state: State) -> Inventor
        vapour in place of an ideal gas.
     """
     total = state.rows if rows is None else len(rows)
-    result = Inventory(
-        np.zeros(total, dtype=np.intp),
-        {name: np.full(total, np.nan) for name in RESULTS},
-        {name: np.zeros(total) for name in SENSITIVITIES},
-    )
+    made = _Made(np.zeros(total, dtype=np.intp), of_one_method=rows is None)
     if rows is None:
         method = Method(int(vessels.method[0]))
         for block in blocks(total, BLOCK_ROWS):
-            _compute(method, vessels.take(slice(0, 1)), state.take(block), result, block)  # eq. 1
-        return result
+            _compute(method, vessels.take(slice(0, 1)), state.take(block), made, block)  # eq. 1
+        return made.inventory()
     methods = vessels.method[rows]
     for number in np.unique(methods):  # a handful of methods, never a loop over vessels
         members = np.flatnonzero(methods == number)
         for block in blocks(len(members), BLOCK_ROWS):
             at = members[block]
-            _compute(Method(int(number)), vessels.take(rows[at]), state.take(at), result, at)
-    return result
+            _compute(Method(int(number)), vessels.take(rows[at]), state.take(at), made, at)
+    return made.inventory()
 
 
-def _compute(method: Method, vessels: Vessels, state: State, result: Inventory, where: IntArray | slice) -> None:
+@dataclass
+class _Made:
+    """Columns of all rows, made when a block first brings one: most vessels need few of them."""
+
+    marks: IntArray
+    of_one_method: bool
+    columns: dict[str, FloatArray] = field(default_factory=dict)
+    sensitivities: dict[str, FloatArray] = field(default_factory=dict)
+
+    def put(self, step: _Step, where: IntArray | slice) -> None:
+        """One block's columns into their rows."""
+        self.marks[where] = step.marks
+        for columns, found, absent in ((self.columns, step.out, np.nan), (self.sensitivities, step.sens, 0.0)):
+            for name, column in found.items():
+                if name not in columns:  # of one method, every block brings the same columns
+                    rows = len(self.marks)
+                    columns[name] = np.empty(rows) if self.of_one_method else np.full(rows, absent)
+                columns[name][where] = column
+
+    def inventory(self) -> Inventory:
+        """The columns as they are answered; what no block brought is one value for all rows."""
+        rows = (len(self.marks),)
+        return Inventory(
+            self.marks,
+            {name: self.columns.get(name, np.broadcast_to(np.nan, rows)) for name in RESULTS},
+            {name: self.sensitivities.get(name, np.broadcast_to(0.0, rows)) for name in SENSITIVITIES},
+        )
+
+
+def _compute(method: Method, vessels: Vessels, state: State, made: _Made, where: IntArray | slice) -> None:
     """One block of one method: its columns go to their rows of the result."""
-    size = len(result.marks[where])
-    step = _Step(vessels, state, np.zeros(size, dtype=np.intp), {}, {})
+    step = _Step(vessels, state, np.zeros(len(made.marks[where]), dtype=np.intp), {}, {})
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
         if method & Method.VAPOUR:
             step.conditions = _vapour_conditions(step, method)
@@ -125,13 +150,9 @@ def _compute(method: Method, vessels: Vessels, state: State, result: Inventory, 
         if method & Method.VAPOUR:
             _vapour(step, method)
         _sum(step, method)
-    result.marks[where] = step.marks
-    lost = ~np.isfinite(step.out["mass"])
-    result.marks[where] |= np.where(lost & ((step.marks & ~_HARMLESS) == 0), int(Mark.MISSING), 0)
-    for name, column in step.out.items():
-        result.columns[name][where] = column
-    for name, column in step.sens.items():
-        result.sensitivities[name][where] = column
+    lost = ~np.isfinite(step.out["mass"]) & ((step.marks & ~_HARMLESS) == 0)
+    step.mark(lost, Mark.MISSING)
+    made.put(step, where)
 
 
 _HARMLESS = int(
@@ -156,10 +177,12 @@ def _geometry(step: _Step) -> None:
     """Level to volumes: the curve at the liquid and at the water, and the shell's factor."""
     v, s, out = step.vessels, step.state, step.out
     assert v.curves is not None
-    low, high = s.level < v.bottom, s.level > v.top
-    step.mark((low | high) & (v.is_table > 0.0), Mark.OUTSIDE_TABLE)
-    step.mark((low | high) & (v.is_table == 0.0), Mark.OUTSIDE_VESSEL)
-    level = np.where(low | high, np.nan, s.level)
+    outside = (s.level < v.bottom) | (s.level > v.top)
+    level = s.level
+    if outside.any():
+        step.mark(outside & (v.is_table > 0.0), Mark.OUTSIDE_TABLE)
+        step.mark(outside & (v.is_table == 0.0), Mark.OUTSIDE_VESSEL)
+        level = np.where(outside, np.nan, level)
     row = v.curve_row if len(v.curve_row) > 1 else int(v.curve_row[0])
     volume, area = v.curves.volume_and_area(level, row)
     wet = s.water_level > v.bottom
@@ -210,9 +233,10 @@ def _liquid(step: _Step, method: Method) -> None:
         landing = (s.level > v.roof_lands) & (s.level < v.roof_floats)
         step.mark(landing, Mark.ROOF_LANDING_ZONE)
         before_roof = before_roof + afloat * v.roof_mass * v.roof_volume_per_mass
-        displaced = afloat * v.roof_mass
-        slope = np.where(landing, v.roof_mass / (v.roof_floats - v.roof_lands), 0.0)
-        sens["roof"] = np.where(landing, v.roof_mass * share, 0.0)
+        weight = v.roof_mass if s.roof_load is None else v.roof_mass + s.roof_load
+        displaced = afloat * weight
+        slope = np.where(landing, weight / (v.roof_floats - v.roof_lands), 0.0)
+        sens["roof"] = np.where(landing, weight * share, 0.0)
         out["roof_volume"] = displaced * (v.roof_volume_per_mass - 1.0 / density)
     gross = before_roof - displaced / density
     mass = net * before_roof - displaced * share
@@ -275,9 +299,9 @@ def _vapour_conditions(step: _Step, method: Method) -> tuple[FloatArray, FloatAr
     liquid's temperature. A vapour above saturation beside its liquid is taken as saturated at its pressure.
     """
     v, s = step.vessels, step.state
-    pressure, temperature = np.broadcast_arrays(s.pressure + 0.0 * step.marks, s.vapour_temperature)
-    pressure, temperature = pressure.copy(), temperature.copy()
-    nowhere = np.zeros(len(step.marks), dtype=bool)
+    nowhere = np.zeros(step.marks.shape, dtype=bool)
+    pressure = np.broadcast_to(s.pressure, nowhere.shape)
+    temperature = np.broadcast_to(s.vapour_temperature, nowhere.shape)
     if not method & Method.SATURATION or not method & Method.LIQUID:
         return pressure, temperature, nowhere, nowhere
     assert v.saturation is not None
@@ -405,7 +429,7 @@ def _sum(step: _Step, method: Method) -> None:
     for name in ("_reach", "_water_area"):
         sens.pop(name, None)
     vapour = out.get("vapour_mass", np.zeros(1))
-    out["mass"] = out["liquid_mass"] + vapour + 0.0 * step.marks
+    out["mass"] = np.broadcast_to(out["liquid_mass"] + vapour, step.marks.shape)
     if method & Method.VAPOUR:
         v, analysed = step.vessels, step.state.vapour_row
         assert v.vapour is not None
@@ -439,10 +463,11 @@ def standard_uncertainty(result: Inventory, sigmas: Mapping[str, tuple[FloatArra
     ----------
     .. [1] JCGM 100:2008 (GUM), eq. 10.
     """
-    variance = np.zeros(len(result.marks))
-    for name, parts in sigmas.items():
-        spread = parts[0] * parts[0]
-        for part in parts[1:]:
-            spread = spread + part * part
-        variance += result.sensitivities[name] ** 2 * spread  # eq. 1
-    return np.asarray(np.sqrt(np.where(np.isfinite(result["mass"]), variance, np.nan)))
+    found = np.empty(len(result.marks))
+    for block in blocks(len(found), BLOCK_ROWS):
+        variance = np.zeros(len(found[block]))
+        for name, parts in sigmas.items():
+            squares = sum(np.square(part[block] if len(part) > 1 else part) for part in parts)
+            variance += np.square(result.sensitivities[name][block]) * squares  # eq. 1
+        found[block] = np.sqrt(np.where(np.isfinite(result["mass"][block]), variance, np.nan))
+    return found
