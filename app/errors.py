@@ -23,13 +23,14 @@ renders them all. No message repeats text that the client sent.
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, ClassVar
 
 from pydantic import ValidationError
 
 ERRORS_LISTED = 1_000
+Sentence = Callable[[Mapping[str, Any], Sequence[int | str]], str]
 
 
 @dataclass(frozen=True)
@@ -159,7 +160,9 @@ SAFE_SEGMENT = re.compile(r"[A-Za-z0-9._:-]{1,64}")
 _UNPRINTABLE = re.compile(r"[\x00-\x1f\x7f\ud800-\udfff]")
 
 
-def field_errors(refused: ValidationError, document: object, *, within: str = "") -> list[FieldError]:
+def field_errors(
+    refused: ValidationError, document: object, *, within: str = "", say: Sentence | None = None
+) -> list[FieldError]:
     """Pydantic's errors as field errors that point into the client's own document.
 
     Parameters
@@ -171,6 +174,8 @@ def field_errors(refused: ValidationError, document: object, *, within: str = ""
         locations also hold the tags of unions, which stand nowhere in the document.
     within : str
         Pointer to ``document`` inside the body, where it is only a part of it.
+    say : callable, optional
+        Makes the sentence of one error of its mapping and its steps; pydantic's own words if left out.
 
     Returns
     -------
@@ -180,18 +185,20 @@ def field_errors(refused: ValidationError, document: object, *, within: str = ""
     found: dict[tuple[str, str], FieldError] = {}
     for error in refused.errors(include_url=False, include_input=False):
         segments = _segments(error["loc"], document, absent=error["type"] == "missing")
-        one = field_error(error, segments, within=within)
+        one = field_error(error, segments, within=within, say=say)
         found.setdefault((one.pointer, one.code), one)
         if len(found) == ERRORS_LISTED:
             break
     return list(found.values())
 
 
-def field_error(error: Mapping[str, Any], segments: Sequence[int | str], *, within: str = "") -> FieldError:
+def field_error(
+    error: Mapping[str, Any], segments: Sequence[int | str], *, within: str = "", say: Sentence | None = None
+) -> FieldError:
     """One of pydantic's errors, at a place that is already known."""
     pointer = within + "".join(f"/{segment}" for segment in segments)
     index = next((segment for segment in segments if isinstance(segment, int)), None)
-    return FieldError(pointer, _code(error["type"]), _sentence(error), index)
+    return FieldError(pointer, _code(error["type"]), say(error, segments) if say else _sentence(error), index)
 
 
 def _segments(location: Sequence[int | str], document: object, *, absent: bool) -> list[int | str]:

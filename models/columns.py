@@ -164,6 +164,8 @@ class State:
         1 where the density is that of the dry liquid, 0 where it is that of the wet sample. [1]
     vapour_row : IntArray or None
         Virial series of each row where its composition was analysed; None for the vessel's own. [1]
+    roof_load : FloatArray or None
+        Rain, snow and other load on the floating roof; None for none. [kg]
     pressure_uncertainty, temperature_uncertainty : FloatArray
         Standard uncertainties for the saturation check. [Pa, K]
     """
@@ -183,11 +185,12 @@ class State:
     pressure_uncertainty: FloatArray
     temperature_uncertainty: FloatArray
     vapour_row: IntArray | None = None
+    roof_load: FloatArray | None = None
 
     @property
     def rows(self) -> int:
         """Number of readings. [1]"""
-        return max(len(getattr(self, item.name)) for item in fields(self) if item.name != "vapour_row")
+        return max(len(getattr(self, item.name)) for item in fields(self) if getattr(self, item.name) is not None)
 
     def take(self, rows: IntArray | slice) -> State:
         """The states of given rows; columns of one value for all stay as they are.

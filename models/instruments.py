@@ -93,3 +93,5 @@ STALE_PRESSURE_KPA = 2.0 / 3600.0  # kPa/s carried forward, 2 kPa an hour; commo
 # A meter of which nothing is declared: Directive 2014/32/EU, annex VII, class 0.5, ±0.3 % for the meter alone.
 METER_RANDOM_PCT = 0.05  # percent, repeatability; common practice
 METER_SYSTEMATIC_PCT = 0.3 * _RECTANGULAR  # percent
+
+BLEND_DENSITY = 3.0  # kg/m3, of a content that received an unknown density since its sample; common practice

@@ -6,7 +6,7 @@ from typing import Annotated
 
 from fastapi import APIRouter, Depends, Query
 
-from app.edge.body import json_body
+from app.api.bodies import json_body
 from app.schemas.calculation import Balance, BalanceCalculation, InventoryCalculation, InventoryResults
 from app.services import balance, calculate
 

@@ -6,8 +6,8 @@ from typing import Annotated
 
 from fastapi import APIRouter, Depends, Path, Query, Request, Response
 
+from app.api.bodies import json_body
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_numbers
-from app.edge.body import json_body
 from app.schemas.listing import LIMIT, Page
 from app.schemas.reconciliation import RECONCILIATION_PATTERN, Imbalance, Reconciliation, ReconciliationRequest
 from app.services import close

@@ -6,8 +6,8 @@ from typing import Annotated
 
 from fastapi import APIRouter, Depends, Request, Response
 
+from app.api.bodies import json_body
 from app.api.parameters import AsOf, At, Cursor, Limit, PathId, name_cursor, open_name
-from app.edge.body import json_body
 from app.schemas.listing import LIMIT, Defined, Page, Written
 from app.schemas.substance import Substance
 from app.services import define

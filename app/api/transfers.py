@@ -6,8 +6,9 @@ from typing import Annotated, Any
 
 from fastapi import APIRouter, Depends, Query, Request, Response
 
+from app.api.bodies import json_body
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_cursor
-from app.edge.body import batch_body, json_body
+from app.edge.body import batch_body
 from app.schemas.batch import BatchAnswer
 from app.schemas.listing import LIMIT, Page, Written
 from app.schemas.transfer import StoredTransfer, Transfer, TransferBatch, validate_transfers

@@ -16,7 +16,7 @@ from fastapi import Depends, Request
 from pydantic import BaseModel, ValidationError
 
 from app.edge import json_text
-from app.errors import BadRequest, FieldError, TooLarge, Unprocessable, UnsupportedMedia, field_errors
+from app.errors import BadRequest, FieldError, Sentence, TooLarge, Unprocessable, UnsupportedMedia, field_errors
 
 JSON = "application/json"
 MEGABYTE = 1_000_000
@@ -57,17 +57,18 @@ class ReceivedBytes:
 class JsonBody(Generic[M]):
     """Dependency: a JSON body, strictly validated; OpenAPI shows its model as the request's body."""
 
-    def __init__(self, model: type[M]) -> None:
+    def __init__(self, model: type[M], say: Sentence | None = None) -> None:
         self.model = model
+        self.say = say
 
     def __call__(self, request: Request, received: Annotated[bytes, Depends(ReceivedBytes(JSON))]) -> M:
         """The validated body."""
-        return parse(self.model, decoded(request, received))
+        return parse(self.model, decoded(request, received), self.say)
 
 
-def json_body(model: type[M]) -> JsonBody[M]:
-    """Dependency that reads a JSON body of this model."""
-    return JsonBody(model)
+def json_body(model: type[M], say: Sentence | None = None) -> JsonBody[M]:
+    """Dependency that reads a JSON body of this model; ``say`` makes the sentences of its refusals."""
+    return JsonBody(model, say)
 
 
 class BatchBody(JsonBody[M]):
@@ -117,12 +118,12 @@ def decoded(request: Request, received: bytes) -> bytes:
     return bytes(inflated)
 
 
-def parse(model: type[M], text: bytes) -> M:
+def parse(model: type[M], text: bytes, say: Sentence | None = None) -> M:
     """A model from JSON text, or a refusal that names every mistake and repeats none."""
     try:
         body = model.model_validate_json(text)  # strict by its own configuration
     except ValidationError as refused:
-        raise _refusal(refused, text) from None
+        raise _refusal(refused, text, say) from None
     try:
         json_text.check(text)
     except (ValueError, RecursionError):
@@ -130,11 +131,13 @@ def parse(model: type[M], text: bytes) -> M:
     return body
 
 
-def _refusal(refused: ValidationError, text: bytes) -> BadRequest | Unprocessable:
+def _refusal(
+    refused: ValidationError, text: bytes, say: Sentence | None = None
+) -> BadRequest | Unprocessable:  # fmt: skip
     first = refused.errors(include_url=False, include_input=False)[0]
     if first["type"] == "json_invalid" and not first["loc"]:
         return _malformed(first["msg"])
-    errors = field_errors(refused, pydantic_core.from_json(text))
+    errors = field_errors(refused, pydantic_core.from_json(text), say=say)
     return Unprocessable(f"The body has {len(errors)} error{'' if len(errors) == 1 else 's'}.", errors=errors)
 
 

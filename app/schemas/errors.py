@@ -84,7 +84,7 @@ def explain(refused: ValidationError) -> list[tuple[str, str, str]]:
         steps = _steps(error["loc"])
         pointer = "".join(f"/{step}" for step in steps)
         code = code_of(error["type"])
-        found.setdefault((pointer, code), (pointer, code, _sentence(error, steps)))
+        found.setdefault((pointer, code), (pointer, code, sentence(error, steps)))
     return [one for one in found.values() if not _follows_from_another(one, found)]
 
 
@@ -109,7 +109,16 @@ def _steps(location: Sequence[int | str]) -> list[int | str]:
     return steps
 
 
-def _sentence(error: Mapping[str, Any], steps: Sequence[int | str]) -> str:
+def sentence(error: Mapping[str, Any], steps: Sequence[int | str]) -> str:
+    """One of pydantic's errors in words: the field, its limit and its unit, nothing of the input.
+
+    Parameters
+    ----------
+    error : mapping
+        As ``ValidationError.errors`` lists it.
+    steps : sequence
+        Its place in the client's document.
+    """
     kind = error["type"]
     name = _subject(steps)
     unit = unit_of(next((step for step in reversed(steps) if isinstance(step, str)), ""))
@@ -126,8 +135,8 @@ def _sentence(error: Mapping[str, Any], steps: Sequence[int | str]) -> str:
         return f"{name} is {form}."
     if kind in _SENTENCES and not (kind == "missing" and error["msg"] != _PLAINLY_MISSING):
         return _SENTENCES[kind].format(name=name, unit=f", in {unit}" if unit else "", **limits)
-    sentence = str(error["msg"]).removeprefix("Value error, ").removeprefix("Assertion failed, ")
-    return sentence if sentence.endswith(".") else f"{sentence}."
+    words = str(error["msg"]).removeprefix("Value error, ").removeprefix("Assertion failed, ")
+    return words if words.endswith(".") else f"{words}."
 
 
 # A rule between fields also says ``missing``, with a sentence of its own.

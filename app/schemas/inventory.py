@@ -181,6 +181,10 @@ class Inventory(Answer):
     vapour_mass_kg: Known = Field(default=None, description="Mass of the substance's vapour or gas [kg]")
     gas_standard_volume_m3: Known = Field(default=None, description="The gas at the gas base conditions [m³]")
     mass_kg: Known = Field(default=None, description="Liquid plus vapour of the substance [kg]")
+    moved_kg: Known = Field(
+        default=None, exclude_if=is_none,
+        description="Of it what transfers moved between the reading and the instant [kg]",
+    )  # fmt: skip
     mass_uncertainty_kg: Known = Field(default=None, description="Standard uncertainty of mass_kg [kg]")
     available_mass_kg: Known = Field(default=None, description="Mass of the liquid above the dead stock [kg]")
     weight_in_air_kg: Known = Field(default=None, description="Weight in air of the liquid [kg]")

@@ -9,7 +9,7 @@ from pydantic import AfterValidator, ConfigDict, Field, StringConstraints, model
 from pydantic_core import PydanticCustomError
 
 from app.schemas.inventory import Status
-from app.schemas.types import Answer, AnsweredInstant, Body, Instant, Items, Known, is_none, refusal
+from app.schemas.types import DAY_PATTERN, Answer, AnsweredInstant, Body, Instant, Items, Known, is_none, refusal
 
 RECONCILIATION_PATTERN = r"^([0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8}T[0-9]{6}Z--[0-9]{8}T[0-9]{6}Z)(\.[1-9][0-9]{0,8})?$"
 ReconciliationId = Annotated[str, StringConstraints(pattern=RECONCILIATION_PATTERN)]
@@ -27,7 +27,7 @@ def _real_date(text: str) -> str:
 
 Day = Annotated[
     str,
-    StringConstraints(pattern=r"^(19[7-9][0-9]|2[01][0-9]{2})-[0-9]{2}-[0-9]{2}$"),
+    StringConstraints(pattern=DAY_PATTERN),
     AfterValidator(_real_date),
 ]
 

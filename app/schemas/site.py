@@ -8,7 +8,7 @@ from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 from pydantic import AfterValidator, ConfigDict, Field, StringConstraints, model_validator
 from pydantic_core import PydanticCustomError
 
-from app.schemas.types import Body, Instant, Text, refusal
+from app.schemas.types import LOCAL_TIME_PATTERN, ZONE_PATTERN, Body, Instant, Text, refusal
 
 
 class ImbalanceLimit(Body):
@@ -39,9 +39,8 @@ def _known_zone(name: str) -> str:
     raise PydanticCustomError("unknown_zone", "time_zone is a name of the IANA data base, such as Europe/Oslo")
 
 
-ZONE_PATTERN = r"^[A-Za-z][A-Za-z0-9_+-]*(/[A-Za-z0-9_+-]+)*$"
 ZoneName = Annotated[str, StringConstraints(pattern=ZONE_PATTERN, max_length=64), AfterValidator(_known_zone)]
-LocalTime = Annotated[str, StringConstraints(pattern=r"^([01][0-9]|2[0-3]):[0-5][0-9]$")]
+LocalTime = Annotated[str, StringConstraints(pattern=LOCAL_TIME_PATTERN)]
 
 
 class Conditions(Body):

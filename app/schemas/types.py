@@ -127,11 +127,17 @@ COMPONENT_PATTERN = r"^[a-z0-9][a-z0-9-]{0,39}$"
 End = Annotated[str, StringConstraints(pattern=END_PATTERN)]
 ComponentId = Annotated[str, StringConstraints(pattern=COMPONENT_PATTERN)]
 Text = Annotated[str, StringConstraints(min_length=1, max_length=200, pattern=PLAIN_PATTERN)]
+LOCAL_TIME_PATTERN = r"^([01][0-9]|2[0-3]):[0-5][0-9]$"
+ZONE_PATTERN = r"^[A-Za-z][A-Za-z0-9_+-]*(/[A-Za-z0-9_+-]+)*$"
+DAY_PATTERN = r"^(19[7-9][0-9]|2[01][0-9]{2})-[0-9]{2}-[0-9]{2}$"
 FORMS: dict[str, str] = {
     ID_PATTERN: "1 to 63 of a-z, 0-9, dot, underscore and hyphen, a letter or digit first",
     END_PATTERN: "the id of a vessel, or boundary: and a name of the same form",
     COMPONENT_PATTERN: "the name of a component in small letters, such as carbon-dioxide",
     PLAIN_PATTERN: "one line of plain text, without control characters",
+    LOCAL_TIME_PATTERN: "an hour and a minute of the day, from 00:00 to 23:59, such as 06:00",
+    ZONE_PATTERN: "a name of the IANA data base, such as Europe/Oslo",
+    DAY_PATTERN: "a local date such as 2026-03-14, in the years 1970 to 2199",
 }
 """What each pattern asks for, in words."""
 # Where a value comes from may be left out, and is then the empty text.

@@ -13,13 +13,15 @@ from sqlalchemy import Connection
 from app.clock import Clock
 from app.errors import Conflict, NotFound
 from app.schemas.meter import Meter
-from app.services import judge, move
-from app.services.explain import inputs_read, standard_density
+from app.services import judge
+from app.services.explain import inputs_read
 from app.services.find import site_number
-from app.services.in_force import labelled, meters_in_force, period_of
+from app.services.in_force import labelled, meters_in_force, period_of, site_in_force
 from app.services.instants import Period, in_order
+from app.services.regrade import Moving, regraded
+from app.services.restate import restated
 from app.services.take_stock import Stock, stock_at
-from app.store import books, definitions, due, sites, transfers
+from app.store import books, due, sites, transfers
 from app.store.books import Book, BookVessel
 from app.store.engine import Store
 from models.estimate import Estimate
@@ -32,6 +34,8 @@ class Opening:
     """Masses with which a period opens, and what they rest on."""
 
     masses: Mapping[str, Estimate | None]
+    restated: Mapping[str, float]
+    substances: Mapping[str, str]
     read_at: Mapping[str, int | None]
     grounds: str
 
@@ -70,18 +74,16 @@ def _compute(
     connection: Connection, site_id: int, site: str, period: Period, known: int
 ) -> tuple[dict[str, Any], list[BookVessel], str]:
     """The books of a period, each vessel's closing inventory, and the digest of what they rest on."""
-    closing = stock_at(connection, site_id, site, period.closing, known, definitions_at=period.closing - 1)
-    opening = _opening(connection, site_id, site, period, known)
+    closing = stock_at(
+        connection, site_id, site, period.closing, known, closing=True, definitions_at=period.closing - 1
+    )
     meters = meters_in_force(connection, site_id, period.closing - 1, known)
+    opening = _opening(connection, site_id, site, period, known, closing, meters)
     tickets = transfers.overlapping(connection, site_id, period.opening, period.closing, known)
-    held = {vessel.name: vessel for vessel in closing.site.vessels}
-    standard = {}
-    if closing.measured is not None:
-        standard = {
-            vessel.name: standard_density(closing.measured, row) for row, vessel in enumerate(closing.site.vessels)
-        }
-    moves = [move.moved(one, period.opening, period.closing, held, meters, standard) for one in tickets]
-    body, flagged = judge.books_of(closing, opening, [one for one in moves if not one.water], known)
+    moving = Moving(tickets, closing, meters)
+    moves = [one for one in moving.between(period.opening, period.closing) if not one.water]
+    pieces, regrades = regraded(moving, opening.masses, opening.substances, closing, period)
+    body, flagged = judge.books_of(closing, opening, moves, pieces, regrades)
     body |= {"site": site, "opening": period.opening, "closing": period.closing, "label": period.label,
              "known_at": known, "method": METHOD}  # fmt: skip
     grounds = [METHOD, period.opening, period.closing, opening.grounds, list(closing.site.texts),
@@ -96,14 +98,21 @@ def _meter_texts(meters: Mapping[str, Meter]) -> list[list[str]]:
 
 
 def inputs_of(stock: Stock) -> list[Any]:
-    """Every value that counted in a stock-take, by its key."""
+    """Every value that counted in a stock-take, by its key, and the tickets that carried it to the instant."""
     if stock.measured is None:
         return []
-    return [[vessel.name, inputs_read(stock.measured, row)] for row, vessel in enumerate(stock.site.vessels)]
+    read = [[vessel.name, inputs_read(stock.measured, row)] for row, vessel in enumerate(stock.site.vessels)]
+    return [read, sorted(stock.measured.tickets)]
 
 
-def _opening(connection: Connection, site_id: int, site: str, period: Period, known: int) -> Opening:
-    """The closing of the book before, at its current revision; vessels that it lacks are measured now."""
+def _opening(
+    connection: Connection, site_id: int, site: str, period: Period, known: int, closing: Stock,
+    meters: Mapping[str, Meter],
+) -> Opening:  # fmt: skip
+    """The closing of the book before, at its current revision; vessels that it lacks are measured now.
+
+    A vessel whose geometry is another at the close is opened by it, from the same readings.
+    """
     before = books.closing_at(connection, site_id, period.opening, known)
     masses: dict[str, Estimate | None] = {}
     read_at: dict[str, int | None] = {}
@@ -114,27 +123,23 @@ def _opening(connection: Connection, site_id: int, site: str, period: Period, kn
             masses[one.vessel] = None if one.mass_kg is None else Estimate(one.mass_kg, json.loads(one.parts))
             read_at[one.vessel] = former.get(one.vessel)
         grounds = [before.opening, before.closing, before.revision, before.digest]
-    stock = (
-        stock_at(connection, site_id, site, period.opening, known)
-        if _lacks(connection, site_id, period, known, masses)
-        else None
-    )
-    if stock is not None:
-        for name, mass in stock.masses.items():
-            if name not in masses:
-                masses[name] = mass
-                read_at[name] = judge.read_at(stock, name)
-        grounds.append(inputs_of(stock))
-        grounds.append(list(stock.site.texts))
-    return Opening(masses, read_at, json.dumps(grounds, sort_keys=True))
-
-
-def _lacks(
-    connection: Connection, site_id: int, period: Period, known: int, masses: Mapping[str, Estimate | None]
-) -> bool:
-    """Whether a vessel is in force that the book before does not hold."""
-    names = {one.name for one in definitions.in_force(connection, site_id, "vessel", period.opening, known)}
-    return bool(names - set(masses))
+    lacking = set(closing.masses) - set(masses)
+    held = site_in_force(connection, site_id, site, period.opening - (before is not None), known)
+    if lacking:
+        stock = stock_at(connection, site_id, site, period.opening, known, closing=True)
+        for name in lacking & set(stock.masses):
+            masses[name] = stock.masses[name]
+            read_at[name] = judge.read_at(stock, name)
+        grounds.append([inputs_of(stock), list(stock.site.texts)])
+        if before is None:
+            held = stock.site
+    anew = restated(connection, held, closing.site, period.opening, known, meters, masses)
+    grounds.append(sorted([name, one.change] for name, one in anew.items()))
+    substances = {vessel.name: str(vessel.body.substance) for vessel in held.vessels if vessel.name in masses}
+    return Opening(
+        masses | {name: one.mass for name, one in anew.items()},
+        {name: one.change for name, one in anew.items()}, substances, read_at, json.dumps(grounds, sort_keys=True),
+    )  # fmt: skip
 
 
 def _book_vessels(closing: Stock, flagged: set[str]) -> list[BookVessel]:

@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import hashlib
+import json
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
-from functools import lru_cache
+from functools import cached_property, lru_cache
 from typing import NamedTuple
 
 import numpy as np
@@ -149,10 +151,11 @@ class CompiledVessel:
         """Whether the vapour has more than one component."""
         return self.mixture is not None and len(self.mixture.fractions) > 1
 
-    @property
-    def revision(self) -> str:
-        """Which text of the vessel's definition this is: a new table is a new error."""
-        return next((f"{one.effective_from}.{one.revision}" for one in self.definitions if one.kind == "vessel"), "")
+    @cached_property
+    def table_id(self) -> str:
+        """Which table the capacity comes from: a new table has a new error, another text of the vessel not."""
+        said = [self.body.shape.model_dump_json(), [list(row) for row in self.body.deadwood], self.body.gauging.datum_m]
+        return hashlib.sha256(json.dumps(said).encode()).hexdigest()[:8]
 
 
 def _declared(body: Vessel, quantity: str, source: str) -> Declared | None:

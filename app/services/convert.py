@@ -169,11 +169,11 @@ def conversion(field: str, unit: str) -> Conversion:
             _other_dimension(field, wanted)
         return Conversion(field, factor=float(PARTS[unit]))
     parsed, target = _parsed(unit), _registry().parse_units(TARGETS[wanted])
-    if parsed.dimensionality != target.dimensionality:
-        _other_dimension(field, wanted)
+    if wanted == "°C" and _FACTOR.fullmatch(unit) is None:
+        _other_dimension(field, wanted)  # in a product a degree is a difference of temperatures
     try:
         zero, one = (_registry().Quantity(Fraction(value), parsed).to(target).magnitude for value in (0, 1))
-    except pint.PintError:  # a difference of temperatures, or a product with one
+    except pint.PintError:
         _other_dimension(field, wanted)
     return Conversion(field, factor=float(one - zero), offset=float(zero))
 

@@ -15,8 +15,7 @@ from app.services.parts import at_row, estimate, sigmas
 from app.services.working import budget_lines, working_steps
 from models import constants, instruments
 from models.columns import UNMEASURED, Mark
-from models.estimate import Estimate
-from models.liquid.expansivity import expansivity
+from models.estimate import Estimate, combine
 from models.mass import standard_uncertainty
 
 QUALITY = ("good", "uncertain", "bad")
@@ -77,21 +76,31 @@ WARNINGS: dict[Mark, tuple[str, str]] = {
 
 def status(measured: Measured, row: int) -> str:
     """``measured``, ``uncertain`` or ``unmeasured``."""
-    if not math.isfinite(measured.result["mass"][row]):
+    if not _has_mass(measured, row):
         return "unmeasured"
     marks = Mark(int(measured.result.marks[row]))
     doubtful = Mark.ROOF_LANDING_ZONE | Mark.GUARD_WIDE
     uncertain = any(
         c.usable[row] and c.quality[row] == 1 for name, c in measured.chosen.items() if _counts(measured, row, name)
     )
-    return "uncertain" if marks & doubtful or uncertain else "measured"
+    carried = measured.carried.get(row)
+    return "uncertain" if marks & doubtful or uncertain or (carried and carried.uncertain) else "measured"
+
+
+def _has_mass(measured: Measured, row: int) -> bool:
+    carried = measured.carried.get(row)
+    return bool(carried and carried.empty) or math.isfinite(measured.result["mass"][row])
 
 
 def mass_estimate(measured: Measured, row: int) -> Estimate | None:
-    """The row's mass with its named parts, None where it has none. [kg]"""
-    if not math.isfinite(measured.result["mass"][row]):
+    """The row's mass at its instant with its named parts, None where it has none. [kg]"""
+    if not _has_mass(measured, row):
         return None
-    return estimate(measured.result, measured.parts, row)
+    carried = measured.carried.get(row)
+    if carried is None:
+        return estimate(measured.result, measured.parts, row)
+    read = Estimate(0.0) if carried.empty else estimate(measured.result, measured.parts, row)
+    return combine([(1.0, read), (1.0, carried.moved), (1.0, Estimate(0.0, carried.extras))])
 
 
 def answers(measured: Measured, *, working: bool = False, budget: bool = False) -> list[dict[str, Any]]:
@@ -124,7 +133,7 @@ def _answer(measured: Measured, row: int, spread: float, *, working: bool, budge
     filled = float(result["level_fraction"][row])
     answer: dict[str, Any] = {
         "vessel": vessel.name,
-        "at": int(measured.collected.at[row]),
+        "at": measured.instant(row),
         "status": state,
         "substance": vessel.body.substance,
         "fill_pct": _number(filled * 100.0) if vessel.has_liquid else None,
@@ -132,8 +141,10 @@ def _answer(measured: Measured, row: int, spread: float, *, working: bool, budge
     for name, column in FIELDS:
         answer[name] = None if unmeasured else _number(result[column][row])
     answer["mass_uncertainty_kg"] = None if unmeasured else _number(spread)
-    answer["available_mass_kg"] = None if unmeasured else _available(measured, row)
-    answer["weight_in_air_kg"] = None if unmeasured else _weight_in_air(measured, row)
+    if not unmeasured and measured.carried.get(row) is not None:
+        _carry(measured, row, answer)
+    answer["available_mass_kg"] = None if unmeasured else _available(measured, row, answer["mass_kg"])
+    answer["weight_in_air_kg"] = None if unmeasured else _weight_in_air(measured, row, answer["liquid_mass_kg"])
     if unmeasured:
         answer["reason"] = reason(measured, row)
     answer["inputs"] = inputs(measured, row)
@@ -146,27 +157,59 @@ def _answer(measured: Measured, row: int, spread: float, *, working: bool, budge
     return answer
 
 
-def _available(measured: Measured, row: int) -> float | None:
+def _carry(measured: Measured, row: int, answer: dict[str, Any]) -> None:
+    """What moved between the reading and the instant, in mass and in the liquid's volumes."""
+    carried = measured.carried[row]
+    whole = mass_estimate(measured, row)
+    assert whole is not None
+    if carried.empty:
+        answer |= {name: 0.0 for name, _ in FIELDS if answer[name] is not None} | {"liquid_mass_kg": 0.0, "fill_pct": 0.0}
+    if carried.extras or carried.empty or carried.moved.parts:
+        answer["mass_uncertainty_kg"] = whole.uncertainty
+    answer["mass_kg"] = whole.value
+    if measured.instant(row) == int(measured.collected.at[row]) and not carried.empty:
+        return
+    moved = carried.moved.value
+    answer["moved_kg"] = moved
+    vessel = measured.vessel(row)
+    if not vessel.has_liquid:
+        answer["vapour_mass_kg"] = whole.value
+        return
+    answer["liquid_mass_kg"] += moved
+    standard, here = (float(measured.result[name][row]) for name in ("standard_density", "liquid_density"))
+    if not carried.empty and math.isfinite(standard) and math.isfinite(here):
+        answer["gross_standard_volume_m3"] += moved / standard
+        answer["net_standard_volume_m3"] += moved / standard
+        answer["gross_observed_volume_m3"] += moved / here
+        answer["fill_pct"] += 100.0 * moved / here / vessel.capacity
+
+
+def _available(measured: Measured, row: int, mass: float) -> float | None:
     """Mass above the dead stock: that volume at the liquid's density is what cannot be drawn."""
     dead = measured.vessel(row).body.dead_stock_m3
-    mass = float(measured.result["mass"][row])
-    if not dead:
+    density = float(measured.result["liquid_density"][row])
+    if not dead or not math.isfinite(density):
         return mass
-    return max(0.0, mass - dead * float(measured.result["liquid_density"][row]))
+    return max(0.0, mass - dead * density)
 
 
-def _weight_in_air(measured: Measured, row: int) -> float | None:
+def _weight_in_air(measured: Measured, row: int, mass: float) -> float | None:
     """The liquid's weight in air by the conventional densities of OIML D 28."""
     density = float(measured.result["liquid_density"][row])
     if not math.isfinite(density) or density <= 0.0:
         return None
     air, weights = constants.CONVENTIONAL_AIR_DENSITY, constants.CONVENTIONAL_WEIGHT_DENSITY
-    return float(measured.result["liquid_mass"][row]) * (1.0 - air / density) / (1.0 - air / weights)
+    return mass * (1.0 - air / density) / (1.0 - air / weights)
 
 
 def _counts(measured: Measured, row: int, name: str) -> bool:
     """Whether an input enters this vessel's mass at all."""
     vessel = measured.vessel(row)
+    carried = measured.carried.get(row)
+    if name == "empty" or (carried and carried.empty):
+        return bool(carried and carried.empty) and name == "empty"
+    if name == "roof_load":
+        return vessel.body.floating_roof is not None
     if name in ("level", "liquid_temperature", "free_water", "density", "sediment_water"):
         return vessel.has_liquid
     if name == "vapour_temperature":  # beside a liquid it counts with a pressure only
@@ -193,7 +236,7 @@ def inputs(measured: Measured, row: int) -> list[dict[str, Any]]:
         entry: dict[str, Any] = {
             "quantity": "level_m" if quantity == "ullage_m" else quantity,
             "value": _number(float(chosen.value[row])),
-            "age_s": float(chosen.age_us[row]) * 1e-6,
+            "age_s": (int(chosen.age_us[row]) + measured.instant(row) - int(measured.collected.at[row])) * 1e-6,
             "source": source,
             "quality": QUALITY[int(chosen.quality[row])],
         }
@@ -244,7 +287,8 @@ def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
                 }
             )
     found.extend(_assumptions(measured, row))
-    return found
+    carried = measured.carried.get(row)
+    return found if carried is None else found + carried.warnings
 
 
 def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
@@ -363,30 +407,10 @@ def _companion(measured: Measured, row: int, name: str, quantity: str, column: i
     return _number(float(candidates.before[row, column])) if text is None else text
 
 
-def standard_density(measured: Measured, row: int) -> Estimate:
-    """Density of the vessel's liquid at its standard state, with the errors of its sample. [kg/m³]"""
-    value = float(measured.result["standard_density"][row])
-    if not math.isfinite(value):
-        return Estimate(math.nan)
-    per_unit = value / at_row(measured.state.density, row)
-    vessel = measured.vessel(row)
-    beta = float(
-        expansivity(
-            at_row(measured.state.density_temperature, row), coefficients=vessel.expansivity, origin=vessel.density[1]
-        )
-    )
-    slopes = {"density": per_unit, "density_temperature": value * beta}
-    named: dict[str, float] = {}
-    for part in measured.parts:
-        slope = slopes.get(part.sensitivity)
-        sigma = at_row(part.sigma, row)
-        if slope is not None and sigma != 0.0:
-            name = part.name(row)
-            named[name] = named.get(name, 0.0) + slope * sigma
-    return Estimate(value, named)
-
-
 def read_at(measured: Measured, row: int) -> int | None:
     """When the level of a row was read, or the pressure of a vessel that has none."""
+    carried = measured.carried.get(row)
+    if carried is not None and carried.empty:
+        return int(measured.collected.at[row])
     chosen = measured.chosen["level" if measured.vessel(row).has_liquid else "pressure"]
     return int(chosen.taken_at[row]) if chosen.usable[row] else None

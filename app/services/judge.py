@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from app.schemas.site import ImbalanceLimit
@@ -19,16 +20,43 @@ if TYPE_CHECKING:
 MONTH_DAYS = 30.44  # days of a mean month
 
 
-def books_of(closing: Stock, opening: Opening, moves: Sequence[Moved], known: int) -> tuple[dict[str, Any], set[str]]:
+@dataclass(frozen=True)
+class Piece:
+    """What a ticket moved in a part of the period in which no vessel changed its substance."""
+
+    movement: Movement
+    given: str | None  # substance of the end that lost it; None is no vessel's
+    gained: str | None
+
+
+@dataclass(frozen=True)
+class Regrade:
+    """A vessel that took another substance within the period: its book mass then, None if not known."""
+
+    vessel: str
+    given: str
+    gained: str
+    mass: Estimate | None
+
+
+def books_of(
+    closing: Stock, opening: Opening, moves: Sequence[Moved], pieces: Sequence[Piece], regrades: Sequence[Regrade]
+) -> tuple[dict[str, Any], set[str]]:
     """The blocks of a reconciliation that this version computes, and the vessels that are flagged."""
     measured = closing.masses
     known_ends = set(measured)
     movements = [
-        Movement(one.name, _end(one.source, known_ends), _end(one.target, known_ends), one.mass) for one in moves
+        Movement(one.name, end_of(one.source, known_ends), end_of(one.target, known_ends), one.mass) for one in moves
     ]
     alarm = min(0.99, closing.site.body.false_alarms_per_month / MONTH_DAYS)
     result = night(opening.masses, measured, movements, alarm)
-    vessels = [_vessel(answer, closing, opening, movements, result) for answer in closing.answers]
+    named = {answer["vessel"]: answer["status"] for answer in closing.answers}
+    named |= dict.fromkeys(closing.site.junctions, "measured")
+    moved = {answer["vessel"]: answer.get("moved_kg") for answer in closing.answers}
+    vessels = [
+        _vessel(name, status, closing, opening, movements, result) | {"moved_kg": moved.get(name)}
+        for name, status in sorted(named.items())
+    ]
     flagged = {one["vessel"] for one in vessels if one["flagged"]}
     in_service = [one for one in vessels if one["status"] != "out_of_service"]
     body = {
@@ -48,13 +76,13 @@ def books_of(closing: Stock, opening: Opening, moves: Sequence[Moved], known: in
              "degrees_of_freedom": one.degrees_of_freedom, "p_value": _number(one.p_value)}
             for one in result.groups
         ],
-        "totals": _totals(closing, opening, movements),
+        "totals": _totals(closing, opening, pieces, regrades),
     }  # fmt: skip
     return body, flagged
 
 
-def _end(name: str | None, known: set[str]) -> str | None:
-    """An end that has an inventory of its own; a junction's and a boundary's is beyond the books."""
+def end_of(name: str | None, known: set[str]) -> str | None:
+    """An end that has a balance of its own; a boundary's is beyond the books."""
     return name if name in known else None
 
 
@@ -75,10 +103,9 @@ def _sum(masses: Sequence[Estimate]) -> float:
 
 
 def _vessel(
-    answer: Mapping[str, Any], closing: Stock, opening: Opening, movements: Sequence[Movement], result: Night
+    name: str, status: str, closing: Stock, opening: Opening, movements: Sequence[Movement], result: Night
 ) -> dict[str, Any]:
     """One vessel's books; merged vessels carry the book and the imbalance of the whole."""
-    name = answer["vessel"]
     row = next((one for one in result.rows if name in one.members), None)
     members = (name,) if row is None else row.members
     received = [one.mass for one in movements if one.target in members and one.source not in members and one.mass]
@@ -90,9 +117,10 @@ def _vessel(
         book = math.fsum(one.value for one in opened if one is not None) + _sum(received) - _sum(delivered)
     entry: dict[str, Any] = {
         "vessel": name,
-        "status": answer["status"],
+        "status": status,
         "flagged": bool(row is not None and row.flagged),
-        "opening_mass_kg": None if before is None else before.value,
+        "opening_mass_kg": None if before is None else before.value - opening.restated.get(name, 0.0),
+        "restated_kg": opening.restated.get(name),
         "closing_mass_kg": None if after is None else after.value,
         "received_kg": _sum(received),
         "delivered_kg": _sum(delivered),
@@ -141,38 +169,55 @@ def instrument(error: str) -> str:
     return f"{kind} {rest}"
 
 
-def _totals(closing: Stock, opening: Opening, movements: Sequence[Movement]) -> list[dict[str, Any]]:
+def _totals(
+    closing: Stock, opening: Opening, pieces: Sequence[Piece], regrades: Sequence[Regrade]
+) -> list[dict[str, Any]]:
     """Each substance over the whole site; errors that vessels and tickets share add up as shared."""
-    held: dict[str, list[str]] = {}
+    closed: dict[str, list[Estimate | None]] = {}
     for vessel in closing.site.vessels:
-        held.setdefault(str(vessel.body.substance), []).append(vessel.name)
-    totals = []
-    for substance, names in sorted(held.items()):
-        own = set(names)
-        received = [one for one in movements if one.target in own and one.source not in own]
-        delivered = [one for one in movements if one.source in own and one.target not in own]
-        opened = [opening.masses.get(name) for name in names]
-        closed = [closing.masses[name] for name in names]
-        complete = not any(mass is None for mass in opened + closed + [one.mass for one in received + delivered])
-        entry: dict[str, Any] = {
-            "substance": substance,
-            "opening_mass_kg": _known(opened),
-            "closing_mass_kg": _known(closed),
-            "received_kg": _known([one.mass for one in received]),
-            "delivered_kg": _known([one.mass for one in delivered]),
-            "complete": complete,
-        }
-        if complete:
-            signed = [
-                (1.0, closed),
-                (-1.0, opened),
-                (-1.0, [m.mass for m in received]),
-                (1.0, [m.mass for m in delivered]),
-            ]
-            imbalance = combine((sign, mass) for sign, masses in signed for mass in masses if mass is not None)
-            entry |= {"imbalance_kg": imbalance.value, "imbalance_uncertainty_kg": imbalance.uncertainty}
-        totals.append(entry)
-    return totals
+        closed.setdefault(str(vessel.body.substance), []).append(closing.masses[vessel.name])
+    opened: dict[str, list[Estimate | None]] = {}
+    for name, substance in opening.substances.items():
+        opened.setdefault(substance, []).append(opening.masses.get(name))
+    names = sorted({*closed, *opened, *(one.gained for one in regrades), *(one.given for one in regrades)})
+    return [_total(name, opened.get(name, []), closed.get(name, []), pieces, regrades) for name in names]
+
+
+def _total(
+    substance: str, opened: Sequence[Estimate | None], closed: Sequence[Estimate | None], pieces: Sequence[Piece],
+    regrades: Sequence[Regrade],
+) -> dict[str, Any]:  # fmt: skip
+    """One substance: what crossed the site's edge, what came from or went to another substance, the rest."""
+    received = [one.movement.mass for one in pieces if one.gained == substance and one.given is None]
+    delivered = [one.movement.mass for one in pieces if one.given == substance and one.gained is None]
+    turned: list[tuple[float, Estimate | None]] = []
+    for one in pieces:
+        if one.given != one.gained and None not in (one.given, one.gained):
+            turned += [(1.0, one.movement.mass)] if one.gained == substance else []
+            turned += [(-1.0, one.movement.mass)] if one.given == substance else []
+    for regrade in regrades:
+        turned += [(1.0, regrade.mass)] if regrade.gained == substance else []
+        turned += [(-1.0, regrade.mass)] if regrade.given == substance else []
+    signed: list[tuple[float, Estimate | None]] = [
+        *((1.0, mass) for mass in closed), *((-1.0, mass) for mass in opened), *((-1.0, mass) for mass in received),
+        *((1.0, mass) for mass in delivered), *((-sign, mass) for sign, mass in turned),
+    ]  # fmt: skip
+    complete = all(mass is not None for _, mass in signed)
+    entry: dict[str, Any] = {
+        "substance": substance,
+        "opening_mass_kg": _known(opened),
+        "closing_mass_kg": _known(closed),
+        "received_kg": _known(received),
+        "delivered_kg": _known(delivered),
+        "complete": complete,
+    }
+    if turned:
+        known = all(mass is not None for _, mass in turned)
+        entry["reclassified_kg"] = math.fsum(sign * mass.value for sign, mass in turned if mass) if known else None
+    if complete:
+        imbalance = combine((sign, mass) for sign, mass in signed if mass is not None)
+        entry |= {"imbalance_kg": imbalance.value, "imbalance_uncertainty_kg": imbalance.uncertainty}
+    return entry
 
 
 def _known(masses: Sequence[Estimate | None]) -> float | None:

@@ -55,8 +55,13 @@ class Loaded:
 
 
 def rows_in(folder: Path) -> int:
-    """How many rows of readings a folder holds."""
-    return sum(sum(1 for _ in path.open("rb")) - 1 for path in _tables(folder))
+    """How many rows of readings a folder holds, by its lines."""
+    return sum(_lines(path) - 1 for path in _tables(folder))
+
+
+def _lines(path: Path) -> int:
+    with path.open("rb") as file:
+        return sum(1 for _ in file)
 
 
 def load(store: Store, clock: Clock, folder: Path, progress: Progress = lambda _, __: None) -> Loaded:
@@ -74,7 +79,7 @@ def load(store: Store, clock: Clock, folder: Path, progress: Progress = lambda _
         _readings(store, clock, site, path, result, progress)
     tickets = folder / "transfers.json"
     if tickets.exists():
-        rows, errors = validate_transfers(tickets.read_bytes())
+        rows, errors = _read(tickets, validate_transfers)
         counts, errors, _ = move.put_many(store, site, rows, errors)
         result.transfers = counts
         _note(result, "transfers.json", errors, lambda index: f"ticket {index}")
@@ -87,9 +92,14 @@ def _tables(folder: Path) -> list[Path]:
 
 
 def _body(path: Path, model: Any) -> Any:
-    """A definition's file as its body, or a sentence that names the file, the field and the limit."""
+    """A definition's file as its body."""
+    return _read(path, model.model_validate_json)
+
+
+def _read(path: Path, act: Callable[[bytes], Any]) -> Any:
+    """What a file's bytes say, or a sentence that names the file, the field and the limit."""
     try:
-        return model.model_validate_json(path.read_bytes())
+        return act(path.read_bytes())
     except FileNotFoundError:
         raise FolderError(f"{path} is not there: a site's folder holds site.json") from None
     except ValidationError as refused:

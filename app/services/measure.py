@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Sequence
-from dataclasses import dataclass, field
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,11 +21,16 @@ from app.services.compile import (
     mixture_rows,
     stack,
 )
-from app.services.parts import KELVIN, PASCAL, Errors, Part, capacity_parts, model_parts
+from app.services.parts import KELVIN, PASCAL, Errors, Part, at_row, capacity_parts, model_parts
 from models import instruments, units
 from models.columns import Inventory, Method, State
+from models.estimate import Estimate
+from models.liquid.expansivity import expansivity
 from models.mass import inventory
 from models.vapour.series import VapourMixture
+
+if TYPE_CHECKING:
+    from app.services.carry import Carried
 
 FloatColumns = NDArray[np.float64]
 BoolColumns = NDArray[np.bool_]
@@ -43,6 +50,17 @@ class Measured:
     assumed: dict[str, BoolColumns] = field(default_factory=dict)
     atmosphere_assumed: BoolColumns | None = None
     mixtures: tuple[VapourMixture, ...] = ()
+    asked: NDArray[np.int64] | None = None
+    carried: dict[int, Carried] = field(default_factory=dict)
+    tickets: list[tuple[str, str]] = field(default_factory=list)
+
+    def instant(self, row: int) -> int:
+        """The instant that a row was asked for; it may have been read at another."""
+        return int(self.collected.at[row] if self.asked is None else self.asked[row])
+
+    def source(self, name: str, row: int) -> str:
+        """The source of what counts for an input."""
+        return self.collected.origins[name].of(row, int(self.chosen[name].source[row]))[1]
 
     def mixture(self, row: int) -> VapourMixture:
         """The vapour of a row: by its analysis, or the substance's own."""
@@ -58,28 +76,62 @@ class Measured:
         return vessels[row if len(vessels) > 1 else 0]
 
 
-def measure(collected: Collected) -> Measured:
-    """The mass of every row by the chain."""
-    chosen = {
-        spec.name: choose(collected.candidates[spec.name], collected.at, interpolates=spec.interpolates)
+@dataclass(frozen=True)
+class Blend:
+    """Density of a content that received something since its sample, None for the sample's, and its error."""
+
+    density: float | None
+    sigma: float
+    name: str
+
+
+@dataclass(frozen=True)
+class Corrections:
+    """What samples and water dips no longer say, by row."""
+
+    blends: Mapping[int, Blend]
+    dry: frozenset[int]
+
+
+def choices(collected: Collected, ahead: NDArray[np.int64] | None = None) -> dict[str, Chosen]:
+    """What counts for each input in each row; see :func:`choose` for ``ahead``."""
+    return {
+        spec.name: choose(collected.candidates[spec.name], collected.at, interpolates=spec.interpolates, ahead=ahead)
         for spec in INPUTS
     }
-    builder = _States(collected, chosen)
+
+
+def measure(
+    collected: Collected, *, ahead: NDArray[np.int64] | None = None, asked: NDArray[np.int64] | None = None,
+    corrections: Corrections | None = None,
+) -> Measured:  # fmt: skip
+    """The mass of every row by the chain."""
+    chosen = choices(collected, ahead)
+    if corrections is not None and corrections.dry:
+        water = chosen["free_water"]
+        wet = np.array([row not in corrections.dry for row in range(collected.rows)])
+        chosen["free_water"] = replace(
+            water, source=np.where(wet, water.source, -1), value=np.where(wet, water.value, np.nan)
+        )
+    builder = _States(collected, chosen, corrections)
     state, extra = builder.build()
     vessels = stack(collected.vessels, extra)
     rows = None if len(collected.vessels) == 1 else np.arange(collected.rows, dtype=np.intp)
     result = inventory(vessels, rows, state)
     parts = _parts(builder, state)
     mixtures = tuple(mixture_rows(collected.vessels, extra))
-    return Measured(collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures)
+    return Measured(
+        collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures, asked
+    )
 
 
 class _States:
     """Builds the chain's state from what counts in each row."""
 
-    def __init__(self, collected: Collected, chosen: dict[str, Chosen]) -> None:
+    def __init__(self, collected: Collected, chosen: dict[str, Chosen], corrections: Corrections | None = None) -> None:
         self.collected = collected
         self.chosen = chosen
+        self.blends = {} if corrections is None else corrections.blends
         self.vessels: Sequence[CompiledVessel] = collected.vessels
         self.assumed: dict[str, BoolColumns] = {}
         self.atmosphere_assumed = np.zeros(collected.rows, dtype=bool)
@@ -129,6 +181,7 @@ class _States:
             pressure_uncertainty=self._spread("pressure_kpa", PASCAL),
             temperature_uncertainty=self._spread("liquid_temperature_c", KELVIN),
             vapour_row=vapour_row,
+            roof_load=np.nan_to_num(self.chosen["roof_load"].value),
         )
         return state, extra
 
@@ -182,11 +235,17 @@ class _States:
         if sampled.any():
             base = self.of_vessels([vessel.site.base_pressure_kpa_abs * PASCAL for vessel in self.vessels])
             pressure = np.where(np.isfinite(pressure), pressure, np.maximum(base, self._boiling(temperature, sampled)))
-        return (
+        density = [
             np.where(sampled, read, own[0]),
             np.where(sampled, temperature, own[1]),
             np.where(sampled, pressure, own[2]),
-        )
+        ]
+        for row, blend in self.blends.items():
+            if blend.density is not None:
+                held = self.vessels[row if len(self.vessels) > 1 else 0].parameters
+                density[0][row] = blend.density
+                density[1][row], density[2][row] = held["standard_temperature"], held["standard_pressure"]
+        return density[0], density[1], density[2]
 
     def _boiling(self, temperature: FloatColumns, where: BoolColumns) -> FloatColumns:
         """Vapour pressure at each sample's temperature, where the substance has one."""
@@ -217,11 +276,13 @@ class _States:
         return texts[row, column]  # type: ignore[no-any-return]
 
     def _is_dry(self) -> FloatColumns:
-        if not self.chosen["sediment_water"].usable.any():
+        """1 where the density is that of the dry liquid: said with the sample, or a blend's."""
+        blended = {row for row, blend in self.blends.items() if blend.density is not None}
+        if not self.chosen["sediment_water"].usable.any() and not blended:
             return np.zeros(1)
         return np.array(
             [
-                float(self.companion_text("sediment_water", "density_basis", row) == "dry")
+                float(row in blended or self.companion_text("sediment_water", "density_basis", row) == "dry")
                 for row in range(self.collected.rows)
             ]
         )
@@ -398,3 +459,26 @@ def _vapour(builder: _States, errors: Errors, pressure: FloatColumns) -> None:
         "vapour_composition", "molar_mass", np.where(builder.mixed, share, 0.0), "systematic",
         lambda row: f"composition:{errors.vessel(row).body.substance}", declared=lambda row: False,
     )  # fmt: skip
+
+
+def standard_density(measured: Measured, row: int) -> Estimate:
+    """Density of the vessel's liquid at its standard state, with the errors of its sample. [kg/m³]"""
+    value = float(measured.result["standard_density"][row])
+    if not math.isfinite(value):
+        return Estimate(math.nan)
+    per_unit = value / at_row(measured.state.density, row)
+    vessel = measured.vessel(row)
+    beta = float(
+        expansivity(
+            at_row(measured.state.density_temperature, row), coefficients=vessel.expansivity, origin=vessel.density[1]
+        )
+    )
+    slopes = {"density": per_unit, "density_temperature": value * beta}
+    named: dict[str, float] = {}
+    for part in measured.parts:
+        slope = slopes.get(part.sensitivity)
+        sigma = at_row(part.sigma, row)
+        if slope is not None and sigma != 0.0:
+            name = part.name(row)
+            named[name] = named.get(name, 0.0) + slope * sigma
+    return Estimate(value, named)

@@ -158,7 +158,7 @@ def _kilograms_per_unit(
     """Mass of one unit of the ticket's quantity, with the errors of the density that it rests on."""
     if kind == "mass_kg":
         return Estimate(1.0)
-    own = _own_density(name, body, vessel)
+    own = own_density(name, body, vessel)
     density = own or standard
     if density is None or vessel is None or vessel.substance.liquid is None:
         return None
@@ -175,7 +175,7 @@ def _kilograms_per_unit(
     return Estimate((1.0 - air / weights) / (1.0 - air / density.value))  # weight in air to mass, OIML D 28
 
 
-def _own_density(name: str, body: Transfer, vessel: CompiledVessel | None) -> Estimate | None:
+def own_density(name: str, body: Transfer, vessel: CompiledVessel | None) -> Estimate | None:
     """The ticket's own density, taken to the vessel's standard state."""
     if body.density_kg_m3 is None or vessel is None or vessel.substance.liquid is None:
         return None

@@ -160,7 +160,7 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
     span = np.array([entry[2] for entry in declared])
     errors.add(
         "capacity_pct", "capacity", whole / 100.0, "systematic",
-        lambda row: f"capacity:{errors.vessel(row).name}:{errors.vessel(row).revision}", declared=lambda row: of(row)[3],
+        lambda row: f"capacity:{errors.vessel(row).name}:{errors.vessel(row).table_id}", declared=lambda row: of(row)[3],
     )  # fmt: skip
     position = np.where(np.isfinite(level), level / span, 0.0)
     lower = np.floor(position)
@@ -169,7 +169,7 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
     for knot, share in ((lower, (1.0 - weight) / norm), (lower + 1.0, weight / norm)):
         errors.add(
             "capacity_pct", "capacity_local", local / 100.0 * share, "systematic",
-            lambda row, knot=knot: f"capacity:{errors.vessel(row).name}:{errors.vessel(row).revision}:{int(at_row(knot, row))}",  # type: ignore[misc]
+            lambda row, knot=knot: f"capacity:{errors.vessel(row).name}:{errors.vessel(row).table_id}:{int(at_row(knot, row))}",  # type: ignore[misc]
             declared=lambda row: of(row)[3],
         )  # fmt: skip
 

@@ -10,10 +10,11 @@ import numpy as np
 from sqlalchemy import Connection
 
 from app.errors import Unprocessable
+from app.services.carry import measure_at
 from app.services.collect import collect
 from app.services.explain import answers, mass_estimate, reason
 from app.services.find import site_number, watermark
-from app.services.in_force import SiteInForce, named, site_in_force
+from app.services.in_force import SiteInForce, meters_in_force, named, site_in_force
 from app.services.instants import in_order
 from app.services.measure import Measured, measure
 from app.store import definitions
@@ -37,22 +38,27 @@ class Stock:
 
 def stock_at(
     connection: Connection, site_id: int, site: str, at: int, known: int, *, only: str | None = None,
-    working: bool = False, budget: bool = False, definitions_at: int | None = None,
+    working: bool = False, budget: bool = False, closing: bool = False, definitions_at: int | None = None,
 ) -> Stock:  # fmt: skip
-    """Inventories at an instant by what was known; a close uses the definitions in force just before it."""
-    held = site_in_force(connection, site_id, site, at if definitions_at is None else definitions_at, known, only)
+    """Inventories at an instant by what was known.
+
+    A close uses the definitions in force just before it (``definitions_at``), and takes a vessel that was
+    read only afterwards by its first reading there.
+    """
+    when = at if definitions_at is None else definitions_at
+    held = site_in_force(connection, site_id, site, when, known, only)
     found: list[dict[str, Any]] = []
     masses: dict[str, Estimate | None] = {}
     measured = None
     if held.vessels:
-        measured = measure(
-            collect(connection, site_id, held.vessels, np.full(len(held.vessels), at, dtype=np.int64), known)
-        )
+        meters = meters_in_force(connection, site_id, when, known)
+        measured = measure_at(connection, site_id, held.vessels, at, known, meters, closing=closing)
         found = answers(measured, working=working, budget=budget)
         masses = {vessel.name: mass_estimate(measured, row) for row, vessel in enumerate(held.vessels)}
     for one in held.out:
         found.append(out_of_service(one.name, at, [named("vessel", one)._asdict()]))
         masses[one.name] = Estimate(0.0)
+    masses |= {name: Estimate(0.0) for name in held.junctions}
     found.sort(key=lambda answer: answer["vessel"])
     return Stock(held, at, found, masses, measured)
 

@@ -1,0 +1,297 @@
+"""A mass is taken where it was read and carried to the instant by what moved in between.
+
+What was read before a receipt or a water draw no longer says all about the content: such samples are
+blended or widened, such water dips are not carried.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+from sqlalchemy import Connection
+
+from app.schemas.meter import Meter
+from app.schemas.transfer import Transfer
+from app.services import move
+from app.services.choose import ALWAYS, Chosen
+from app.services.collect import Collected, collect
+from app.services.compile import CompiledVessel
+from app.services.measure import Blend, Corrections, Measured, choices, measure, standard_density
+from app.services.parts import at_row
+from app.store import transfers
+from app.store.transfers import Transfer as Ticket
+from models import instruments
+from models.estimate import Estimate, combine
+
+DAY_US = 86_400_000_000
+LOOK_BACK_US = 400 * DAY_US  # µs; a sample older than this is not asked which receipts came after it
+STILL_M = 0.002  # m; a level that moves no more than this stands still: the step of a gauge, common practice
+CERTAIN = 6.0  # standard uncertainties of what tickets moved, before a level that stands still is doubted
+
+Instants = NDArray[np.int64]
+
+
+@dataclass
+class Carried:
+    """What happened to one row between its reading and the instant that was asked for."""
+
+    moved: Estimate = field(default_factory=lambda: Estimate(0.0))
+    empty: bool = False
+    extras: dict[str, float] = field(default_factory=dict)  # kg of each further named error
+    warnings: list[dict[str, str]] = field(default_factory=list)
+    uncertain: bool = False
+
+    def warn(self, code: str, detail: str, *, uncertain: bool = False) -> None:
+        """Say what is doubtful."""
+        self.warnings.append({"code": code, "detail": detail})
+        self.uncertain |= uncertain
+
+
+@dataclass(frozen=True)
+class Moves:
+    """The tickets that matter to a set of vessels, read once."""
+
+    tickets: Sequence[tuple[Ticket, Transfer]]
+    vessels: Mapping[str, CompiledVessel]
+    meters: Mapping[str, Meter]
+
+    def of(self, vessel: str) -> list[tuple[Ticket, Transfer]]:
+        """Those with an end at a vessel."""
+        return [(ticket, body) for ticket, body in self.tickets if vessel in (body.from_, body.to)]
+
+    def part(self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate]) -> move.Moved:
+        """What a ticket moved between two instants."""
+        return move.moved(ticket, first, last, self.vessels, self.meters, standard)
+
+
+def measure_at(
+    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], at: int, known: int,
+    meters: Mapping[str, Meter], *, closing: bool,
+) -> Measured:  # fmt: skip
+    """Masses of many vessels at one instant, each read where it was read and carried to the instant."""
+    asked = np.full(len(vessels), at, dtype=np.int64)
+    first = collect(connection, site_id, vessels, asked, known)
+    ahead = np.full(len(vessels), ALWAYS) if closing else None
+    instants, empties = _read_at(first, choices(first, ahead), asked)
+    collected = first if (instants == asked).all() else collect(connection, site_id, vessels, instants, known)
+    within = np.full(len(vessels), ALWAYS) if closing else np.maximum(asked - instants, 0)
+    measured = measure(collected, ahead=within, asked=asked)
+    carried = {row: Carried(empty=row in empties) for row in range(len(vessels))}
+    moves = _moves(connection, site_id, measured, instants, at, known, meters)
+    corrections = _corrections(measured, moves, instants, carried)
+    if corrections is not None:
+        measured = measure(collected, ahead=within, asked=asked, corrections=corrections)
+    for row, vessel in enumerate(vessels):
+        _move(measured, moves, row, vessel.name, int(instants[row]), at, carried[row])
+    measured.carried = carried
+    measured.tickets = [(ticket.name, ticket.body) for ticket, _ in moves.tickets]
+    _standing_still(connection, site_id, measured, moves, instants, known)
+    return measured
+
+
+def _read_at(collected: Collected, chosen: Mapping[str, Chosen], asked: Instants) -> tuple[Instants, set[int]]:
+    """The instant at which each row is measured, and the rows that were found empty then."""
+    instants = asked.copy()
+    empties: set[int] = set()
+    for row, vessel in enumerate(collected.vessels):
+        key = chosen["level" if vessel.has_liquid and vessel.curve is not None else "pressure"]
+        if key.usable[row] and key.share[row] == 0.0:
+            instants[row] = key.taken_at[row]
+        empty = chosen["empty"]
+        if empty.usable[row] and not (key.usable[row] and key.taken_at[row] >= empty.taken_at[row]):
+            instants[row] = empty.taken_at[row]
+            empties.add(row)
+    return instants, empties
+
+
+def _moves(
+    connection: Connection, site_id: int, measured: Measured, instants: Instants, at: int, known: int,
+    meters: Mapping[str, Meter],
+) -> Moves:  # fmt: skip
+    """Tickets since the oldest of what counts in each vessel: its reading, its sample, its water dip."""
+    vessels = measured.collected.vessels
+    since: dict[str, int] = {}
+    for row, vessel in enumerate(vessels):
+        oldest = min(int(instants[row]), at - DAY_US)
+        for name, instant in (
+            ("density", measured.chosen["density"].begins),
+            ("free_water", measured.chosen["free_water"].begins),
+        ):
+            if measured.chosen[name].usable[row]:
+                oldest = min(oldest, int(instant[row]))
+        since[vessel.name] = max(oldest, at - LOOK_BACK_US)
+    latest = max(at, int(instants.max()))
+    found = transfers.touching(connection, site_id, since, latest, known)
+    return Moves([(one, move.body_of(one)) for one in found], {vessel.name: vessel for vessel in vessels}, meters)
+
+
+def _move(measured: Measured, moves: Moves, row: int, vessel: str, read: int, at: int, carried: Carried) -> None:
+    """Receipts less deliveries between the reading and the instant, backwards where it was read after it."""
+    if read == at:
+        return
+    standard = {name: standard_density(measured, i) for i, name in enumerate(moves.vessels) if i == row}
+    sign = 1.0 if read < at else -1.0
+    terms: list[tuple[float, Estimate]] = []
+    for ticket, body in moves.of(vessel):
+        if body.of == "water" or ticket.started_at >= max(read, at) or ticket.ended_at <= min(read, at):
+            continue
+        part = moves.part(ticket, min(read, at), max(read, at), standard)
+        if part.mass is None:
+            carried.warn(
+                "input_uncertain", "an unmetered transfer ran between the reading and the instant: its part is not known",
+                uncertain=True,
+            )  # fmt: skip
+        else:
+            terms.append((sign if part.target == vessel else -sign, part.mass))
+    if terms:
+        carried.moved = combine(terms)
+
+
+def _corrections(
+    measured: Measured, moves: Moves, instants: Instants, carried: Mapping[int, Carried]
+) -> Corrections | None:
+    """What samples and water dips no longer say, row by row."""
+    blends: dict[int, Blend] = {}
+    dry: set[int] = set()
+    for row, vessel in enumerate(measured.collected.vessels):
+        if not vessel.has_liquid:
+            continue
+        own = moves.of(vessel.name)
+        blend = _sample(measured, moves, own, row, int(instants[row]), carried[row])
+        if blend is not None:
+            blends[row] = blend
+        if _water(measured, own, row, int(instants[row]), carried[row]):
+            dry.add(row)
+    return Corrections(blends, frozenset(dry)) if blends or dry else None
+
+
+def _sample(
+    measured: Measured, moves: Moves, own: Sequence[tuple[Ticket, Transfer]], row: int, read: int, carried: Carried
+) -> Blend | None:
+    """The blend of a sample with what was received after it, or the old value with a wider error."""
+    chosen = measured.chosen["density"]
+    vessel = measured.vessel(row)
+    if not chosen.usable[row]:
+        return None
+    begins = int(chosen.begins[row])
+    standard = {vessel.name: standard_density(measured, row)}
+    held = standard[vessel.name].value
+    volume = float(measured.result["gross_standard_volume"][row])
+    if not (math.isfinite(volume) and volume > 0.0 and math.isfinite(held)):
+        return None
+    received: list[tuple[Ticket, Transfer, float]] = []
+    delivered = 0.0
+    for ticket, body in own:
+        if body.of == "water" or ticket.started_at >= read or ticket.ended_at <= begins:
+            continue
+        part = moves.part(ticket, begins, read, standard)
+        mass = None if part.mass is None else part.mass.value
+        if part.target == vessel.name:
+            received.append((ticket, body, math.nan if mass is None else mass))
+        elif mass is not None:
+            delivered += mass / held
+    if not any(not mass == 0.0 for _, _, mass in received):
+        return None
+    carried.warn(
+        "sample_predates_receipt", "a receipt came after the sample that stands for the content", uncertain=True
+    )
+    return _blended(vessel, received, volume, delivered, held)
+
+
+def _blended(
+    vessel: CompiledVessel,
+    received: Sequence[tuple[Ticket, Transfer, float]],
+    volume: float,
+    delivered: float,
+    held: float,
+) -> Blend:
+    """Mass and standard volume of the heel and of each receipt, deliveries at the end."""
+    name = f"mix:{vessel.name}:{received[-1][0].name}"
+    densities = [move.own_density(ticket.name, body, vessel) for ticket, body, _ in received]
+    known = all(density is not None for density in densities) and all(math.isfinite(mass) for *_, mass in received)
+    if known:
+        parts = [
+            (mass, mass / density.value) for (*_, mass), density in zip(received, densities, strict=True) if density
+        ]
+        heel = max(0.0, volume + delivered - math.fsum(v for _, v in parts))
+        mass = heel * held + math.fsum(m for m, _ in parts)
+        blend = mass / (heel + math.fsum(v for _, v in parts))
+        return Blend(blend, abs(blend - held) / math.sqrt(3.0), name)
+    share = math.fsum(mass / held if math.isfinite(mass) else volume for *_, mass in received) / (volume + delivered)
+    return Blend(None, instruments.BLEND_DENSITY * min(1.0, share), name)
+
+
+def _water(measured: Measured, own: Sequence[tuple[Ticket, Transfer]], row: int, read: int, carried: Carried) -> bool:
+    """Whether a water dip is no longer true: free water was moved after it."""
+    chosen = measured.chosen["free_water"]
+    if not chosen.usable[row]:
+        return False
+    dipped = int(chosen.begins[row])
+    later = [(ticket, body) for ticket, body in own if ticket.started_at < read and ticket.ended_at > dipped]
+    drawn = [ticket for ticket, body in later if body.of == "water"]
+    vessel = measured.vessel(row)
+    if not drawn:
+        if any(body.to == vessel.name for _, body in later):
+            carried.warn("water_predates_receipt", "a receipt came after the free water was last dipped")
+        return False
+    carried.warn(
+        "water_predates_receipt",
+        "free water was moved after it was last dipped: it is taken as none, with what was dipped as a bound",
+        uncertain=True,
+    )
+    kilograms = float(measured.result["liquid_density"][row]) * float(measured.result["free_water_volume"][row])
+    if math.isfinite(kilograms) and kilograms > 0.0:
+        carried.extras[f"water:{vessel.name}:{drawn[-1].name}"] = kilograms / math.sqrt(3.0)
+    return True
+
+
+def _standing_still(
+    connection: Connection, site_id: int, measured: Measured, moves: Moves, instants: Instants, known: int
+) -> None:
+    """A level that did not move while tickets did is doubted, before any night is closed."""
+    suspects: dict[int, int] = {}
+    for row, vessel in enumerate(measured.collected.vessels):
+        read = int(instants[row])
+        begun = [
+            t.started_at
+            for t, b in moves.of(vessel.name)
+            if t.started_at < read and t.ended_at > read - DAY_US and b.of is None
+        ]
+        if begun and vessel.has_liquid and measured.chosen["level"].usable[row]:
+            began = max(min(begun), read - DAY_US)
+            if began < read and _certain(measured, moves, row, began, read):
+                suspects[row] = began
+    if not suspects:
+        return
+    rows = sorted(suspects)
+    vessels = tuple(measured.collected.vessels[row] for row in rows)
+    then = collect(connection, site_id, vessels, np.array([suspects[row] for row in rows], dtype=np.int64), known)
+    former = choices(then, np.full(len(rows), ALWAYS))["level"]
+    for place, row in enumerate(rows):
+        change = at_row(measured.state.level, row) - float(former.value[place])
+        if abs(change) <= STILL_M:
+            measured.carried[row].warn(
+                "level_unchanged",
+                f"the level moved {change * 1000.0:.1f} mm while tickets moved more than the gauge could miss: it may stand still",
+                uncertain=True,
+            )  # fmt: skip
+
+
+def _certain(measured: Measured, moves: Moves, row: int, first: int, last: int) -> bool:
+    """Whether what tickets moved between two instants is beyond doubt for this vessel's gauge."""
+    vessel = measured.vessel(row)
+    standard = {vessel.name: standard_density(measured, row)}
+    terms = []
+    for ticket, body in moves.of(vessel.name):
+        if body.of is None:
+            part = moves.part(ticket, first, last, standard)
+            if part.mass is not None:
+                terms.append((1.0 if part.target == vessel.name else -1.0, part.mass))
+    net = combine(terms)
+    own = vessel.instrument("level_m", measured.source("level", row))
+    per_metre = abs(float(measured.result.sensitivities["level"][row]))
+    return abs(net.value) > CERTAIN * math.hypot(math.sqrt(2.0) * own.random * per_metre, net.uncertainty)

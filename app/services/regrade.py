@@ -1,0 +1,82 @@
+"""Tickets of a period in parts, cut where a vessel takes another substance: what turned from one into another."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+from app.schemas.meter import Meter
+from app.services import move
+from app.services.instants import Period
+from app.services.judge import Piece, Regrade, end_of
+from app.services.measure import standard_density
+from app.services.move import Moved
+from app.services.take_stock import Stock
+from app.store.transfers import Transfer as Ticket
+from models.balance.night import Movement
+from models.estimate import Estimate, combine
+
+
+class Moving:
+    """The tickets of a period and what is needed to turn them into mass."""
+
+    def __init__(self, tickets: Sequence[Ticket], closing: Stock, meters: Mapping[str, Meter]) -> None:
+        self.tickets = tickets
+        self.meters = meters
+        self.vessels = {vessel.name: vessel for vessel in closing.site.vessels}
+        self.standard: dict[str, Estimate] = {}
+        if closing.measured is not None:
+            for row, vessel in enumerate(closing.site.vessels):
+                self.standard[vessel.name] = standard_density(closing.measured, row)
+
+    def between(self, first: int, last: int) -> list[Moved]:
+        """What every ticket moved between two instants."""
+        return [move.moved(one, first, last, self.vessels, self.meters, self.standard) for one in self.tickets]
+
+
+def regraded(
+    moving: Moving,
+    opening: Mapping[str, Estimate | None],
+    substances: Mapping[str, str],
+    closing: Stock,
+    period: Period,
+) -> tuple[list[Piece], list[Regrade]]:
+    """The period's tickets by the substances of their ends, and the heels that became another substance."""
+    turns = {
+        vessel.name: vessel.since
+        for vessel in closing.site.vessels
+        if period.opening <= vessel.since < period.closing and substances.get(vessel.name, "") != vessel.body.substance
+    }
+    later = {vessel.name: str(vessel.body.substance) for vessel in closing.site.vessels}
+    known = set(closing.masses) - set(closing.site.junctions)
+    edges = [period.opening, *sorted(set(turns.values()) - {period.opening}), period.closing]
+    pieces: list[Piece] = []
+    for first, last in zip(edges, edges[1:], strict=False):
+        held = {
+            name: later[name] if turns.get(name, period.opening) <= first else substances.get(name) for name in later
+        }
+        for one in moving.between(first, last):
+            if not one.water and (one.mass is None or one.mass.value != 0.0):
+                ends = end_of(one.source, known), end_of(one.target, known)
+                pieces.append(
+                    Piece(Movement(one.name, *ends, one.mass), held.get(ends[0] or ""), held.get(ends[1] or ""))
+                )
+    heels = [
+        Regrade(name, substances[name], later[name], _heel(moving, opening.get(name), name, period.opening, at))
+        for name, at in turns.items()
+        if name in substances
+    ]
+    return pieces, heels
+
+
+def _heel(moving: Moving, opening: Estimate | None, vessel: str, first: int, at: int) -> Estimate | None:
+    """Book mass of a vessel when it took another substance; None where something was not measured."""
+    if opening is None:
+        return None
+    terms = [(1.0, opening)]
+    for one in moving.between(first, at) if at > first else ():
+        if one.water or vessel not in (one.source, one.target):
+            continue
+        if one.mass is None:
+            return None
+        terms.append((1.0 if one.target == vessel else -1.0, one.mass))
+    return combine(terms)
