@@ -69,6 +69,6 @@ def _place(
         target.before_at[row, column] = target.before_taken[row, column] = result.at[row]
         target.before_quality[row, column] = quality_of(reading, quantity)
         if isinstance(value, int | float) and not isinstance(value, bool):
-            target.before[row, column] = convert[reading.source](float(value))
+            target.before[row, column] = convert[reading.source](float(value), int(result.at[row]))
         else:
             texts[row, column] = text_of(value)
