@@ -1,10 +1,21 @@
 """Local days of a site: 23, 24 and 25 hours, and edges that fall into or onto a change of clocks."""
 
-from datetime import date
+from datetime import UTC, date, datetime, timedelta
+from zoneinfo import ZoneInfo
 
 import pytest
 
-from app.services.instants import basic, day_bounds, day_edge
+from app.services.instants import (
+    Period,
+    basic,
+    check_zone,
+    day_bounds,
+    day_edge,
+    micros,
+    parse_basic,
+    parse_label,
+)
+from models.errors import DefinitionError
 
 HOUR = 3_600_000_000
 
@@ -45,3 +56,42 @@ def test_a_zone_of_half_hours():
 
 def test_the_ids_of_periods_are_basic_utc():
     assert basic((20540 * 24 + 6) * HOUR) == "20260328T060000Z"
+
+
+def test_an_instant_of_an_id_is_read_back():
+    assert parse_basic("20260328T060000Z") == (20540 * 24 + 6) * HOUR
+    with pytest.raises(ValueError, match="does not match"):
+        parse_basic("20260328T250000Z")
+
+
+def test_a_label_is_a_day_or_two_instants():
+    assert parse_label("2026-03-28") == date(2026, 3, 28)
+    period = Period((20540 * 24 + 6) * HOUR, (20541 * 24 + 5) * HOUR)
+    assert period.label == "20260328T060000Z--20260329T050000Z"
+    assert parse_label(period.label) == period
+    assert Period(0, 1, day="1970-01-01").label == "1970-01-01"
+
+
+def test_a_moment_is_counted_exactly():
+    # A float of seconds would lose the last digit here.
+    moment = datetime(2026, 3, 28, 6, 0, 0, 123457, tzinfo=UTC)
+    assert micros(moment) == (20540 * 24 + 6) * HOUR + 123457
+
+
+def test_zones_are_those_of_the_tz_database():
+    check_zone("Europe/Oslo")
+    for name in ("Europe/Atlantis", "", "../etc/passwd"):
+        with pytest.raises(DefinitionError):
+            check_zone(name)
+
+
+@pytest.mark.parametrize("zone", ["Europe/Lisbon", "Australia/Lord_Howe", "America/St_Johns", "Asia/Kathmandu"])
+@pytest.mark.parametrize("starts_at", ["00:00", "01:30", "02:15", "06:00", "23:59"])
+def test_days_follow_on_each_other_and_begin_on_their_local_date(zone, starts_at):
+    edges = [day_edge(date(2026, 1, 1) + timedelta(days=i), starts_at, zone) for i in range(366)]
+    hours = {(after - before) / HOUR for before, after in zip(edges, edges[1:], strict=False)}
+    assert hours <= {23.0, 23.25, 23.5, 23.75, 24.0, 24.25, 24.5, 24.75, 25.0}
+    for i, edge in enumerate(edges):
+        local = (datetime(1970, 1, 1, tzinfo=UTC) + timedelta(microseconds=edge)).astimezone(ZoneInfo(zone))
+        assert local.date() == date(2026, 1, 1) + timedelta(days=i)
+        assert f"{local:%H:%M}" >= starts_at  # later only where that hour does not exist
