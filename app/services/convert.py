@@ -172,6 +172,8 @@ def conversion(field: str, unit: str) -> Conversion:
     if wanted == "°C" and _FACTOR.fullmatch(unit) is None:
         _other_dimension(field, wanted)  # in a product a degree is a difference of temperatures
     try:
+        if parsed.dimensionality != target.dimensionality:
+            _other_dimension(field, wanted)
         zero, one = (_registry().Quantity(Fraction(value), parsed).to(target).magnitude for value in (0, 1))
     except pint.PintError:
         _other_dimension(field, wanted)
