@@ -183,10 +183,13 @@ def _geometry(step: _Step) -> None:
         step.mark(outside & (v.is_table > 0.0), Mark.OUTSIDE_TABLE)
         step.mark(outside & (v.is_table == 0.0), Mark.OUTSIDE_VESSEL)
         level = np.where(outside, np.nan, level)
+    wet = s.water_level > v.bottom
+    drowned = wet & (s.water_level > s.level)
+    if drowned.any():
+        step.mark(drowned, Mark.OUTSIDE_VESSEL)
+        level = np.where(drowned, np.nan, level)
     row = v.curve_row if len(v.curve_row) > 1 else int(v.curve_row[0])
     volume, area = v.curves.volume_and_area(level, row)
-    wet = s.water_level > v.bottom
-    step.mark(wet & (s.water_level > s.level), Mark.OUTSIDE_VESSEL)
     if wet.any():
         water_level = np.where(wet & (s.water_level <= v.top), s.water_level, v.bottom)
         water, water_area = v.curves.volume_and_area(water_level, row)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 import pytest
@@ -35,7 +36,7 @@ def spread(case: Case, rows: int) -> State:
     """Readings around the case's own, each column moving."""
     draw = np.random.default_rng(1)
     one = state([case])
-    moved = {
+    moved: dict[str, Any] = {
         "level": one.level * draw.uniform(0.6, 1.2, rows),
         "liquid_temperature": one.liquid_temperature + draw.uniform(-2.0, 2.0, rows),
         "ambient_temperature": one.ambient_temperature + draw.uniform(-8.0, 8.0, rows),
@@ -148,7 +149,8 @@ def bare_liquid(
         "mass": liquid - v.roof_mass * dry, "volume": volume, "area": area, "water": factor * water, "factor": factor,
         "gross": gross, "gross_standard": gross * ratio, "net_standard": gross * ratio * (1.0 - s.sediment_water),
         "density": density, "standard": dry * standard, "fraction": volume / v.capacity, "shell": shell,
-        "by level": net * factor * area, "by density": (density * bulk - v.roof_mass * (1.0 - dry)) / s.density, "by water": -net * factor,
+        "by level": net * factor * area, "by water": -net * factor,
+        "by density": (density * bulk - v.roof_mass * (1.0 - dry)) / s.density,
         "by liquid_temperature": -beta * liquid + 7.0 / 8.0 * below * hot, "by ambient": below * hot / 8.0,
         "by density_temperature": liquid * v.expansivity[0], "by sediment_water": -density * gross,
         "by pressure": v.compressibility * liquid + below * stretch, "by capacity": liquid,
@@ -222,13 +224,13 @@ def scalar_mass(tank: fluids.TANK, case: Case, level: float, t: float, ambient: 
     b0, b1 = v["expansivity"]
     drift = b0 * (here - there) + b1 * (here**2 - there**2) / 2.0
     density = s["density"] * math.exp(-drift + v["compressibility"] * (p - s["density_pressure"]))
-    critical = {"Tc": 369.89, "Pc": 4_251_200.0, "omega": 0.1521}
+    critical: dict[str, Any] = {"Tc": 369.89, "Pc": 4_251_200.0, "omega": 0.1521}
     second = BVirial_Tsonopoulos(t_v, **critical)
-    third = CVirial_Orbey_Vera(t_v, **critical)[0]
+    third = CVirial_Orbey_Vera(t_v, **critical)[0]  # type: ignore[no-untyped-call]
     ideal = p / (GAS_CONSTANT * t_v)
     roots = np.roots([third, second, 1.0, -ideal])
     molar = min(root.real for root in roots if abs(root.imag) < 1e-9 * abs(root) and root.real > 0.0)
-    return factor * volume * density + molar * 0.0440956 * (full * tank.V_total - factor * volume)
+    return float(factor * volume * density + molar * 0.0440956 * (full * tank.V_total - factor * volume))
 
 
 def scalar(tank: fluids.TANK, case: Case, read: State) -> list[tuple[float, float]]:

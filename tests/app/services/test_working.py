@@ -113,7 +113,7 @@ def test_the_steps_of_a_tank_multiply_back_to_its_mass(
     roof: bool,
     shell: dict[str, Any],
 ) -> None:
-    extra = {"floating_roof": ROOF} if roof else {}
+    extra: dict[str, Any] = {"floating_roof": ROOF} if roof else {}
     vessel = compiled(TANK, site={"base_temperature_c": base, "elevation_m": 0.0}, shell=shell, **extra)
     row = OIL_READ | {
         "level_m": fill * 15.0, "free_water_level_m": water * fill * 15.0, "liquid_temperature_c": celsius,
