@@ -15,6 +15,7 @@ from models.balance.network import OBSERVABLE, Network, Structure, classify, cro
 from models.errors import DefinitionError
 
 DENSE_ROWS = 500  # balances of a group up to which the whole matrix is the quickest
+ROUNDING_TOLERANCE = 1e-13  # of a variance from which nearly as much is taken
 COMPUTED_BLOCK = 128  # unmeasured streams whose uncertainty is found in one solution
 
 
@@ -265,7 +266,7 @@ class _Part:
         whole = self.variance + (self.shared**2).sum(axis=1) if self.shared.shape[1] else self.variance
         found.reconciled[self.streams] = self.value - adjustment
         found.adjustment[self.streams] = adjustment
-        found.uncertainty[self.streams] = np.sqrt(np.maximum(whole - explained, 0.0))
+        found.uncertainty[self.streams] = _root(whole - explained, whole)
         found.score[self.streams[checked]] = along[checked] / np.sqrt(weight[checked])
         self._score_nodes(found, pull)
         statistic = float(residual @ pull)  # eq. 4
@@ -280,12 +281,12 @@ class _Part:
             spread = self.variance[:, None] * sums
             if self.shared.shape[1]:
                 spread = spread + self.shared @ (self.shared.T @ sums)
-            variance = np.sum(sums * spread, axis=0)
+            whole = variance = np.sum(sums * spread, axis=0)
             if self.factor is not None:
                 seen = self.incidence @ spread
                 variance = variance - np.sum(seen * self.factor.solve(seen), axis=0)
             found.reconciled[streams] = found.reconciled[self.streams] @ sums
-            found.uncertainty[streams] = np.sqrt(np.maximum(variance, 0.0))
+            found.uncertainty[streams] = _root(variance, whole)
 
     def _factored(self) -> Factor:
         latent = self.latent if self.shared.shape[1] else None
@@ -331,6 +332,11 @@ class _Part:
         judged = self.members[self.structure.row[self.members] >= 0]
         row = self.structure.row[judged] - self.first
         found.node_score[judged] = pull[row] / np.sqrt(self.factor.inverse(row, row))
+
+
+def _root(variance: FloatArray, whole: FloatArray) -> FloatArray:
+    """Of what is left of a variance; of a stream that the others fix exactly, only rounding is."""
+    return np.sqrt(np.where(variance > ROUNDING_TOLERANCE * whole, variance, 0.0))
 
 
 _SHARES_NOTHING = csr_array((0, 0))
