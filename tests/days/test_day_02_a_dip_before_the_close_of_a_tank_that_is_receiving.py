@@ -149,3 +149,43 @@ def test_the_late_dip_makes_the_next_revision_and_the_first_stays_readable(recei
     assert second["id"] == "2026-03-13.2" and second["complete"]
     assert second.of("tk-2")["closing_mass_kg"] == pytest.approx(8.0 * KG_PER_M, abs=0.5)
     assert receiving.book("2026-03-13.1").of("tk-2")["status"] == "unmeasured"
+
+
+def test_a_tank_that_delivers_is_moved_down(receiving):
+    """800 t go out between 05:00 and 07:00; the dip at 05:30 says 3.750 m: 3,000 t. Half of 400 t are to go.
+
+    05:30 to 06:00 is a quarter of the ticket: 200,000 kg. At 06:00 there are 2,800,000 kg: 4.000 m less 400 t.
+    """
+    receiving.delivers("tk-2", "pipe-0314", "2026-03-14 05:00", "2026-03-14 07:00", mass_kg=800_000.0)
+    receiving.reads("tk-2", "2026-03-14 05:30", source="hand", level_m=3.75)
+    book = receiving.closes("2026-03-13").of("tk-2")
+    assert book["moved_kg"] == pytest.approx(-200_000.0, abs=0.5)
+    assert book["closing_mass_kg"] == pytest.approx(2_800_000.0, abs=0.5)
+    assert book["delivered_kg"] == pytest.approx(400_000.0, abs=0.5)
+    assert book["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+
+
+def test_a_receipt_that_nobody_measured_cannot_be_moved_and_is_said(receiving):
+    """The line has no meter: what came between 05:40 and 06:00 is unknown. The dip stands, and is uncertain."""
+    receiving.receives("tk-2", "line-0314", "2026-03-14 02:00", "2026-03-14 08:00", unmetered=True)
+    receiving.reads("tk-2", "2026-03-14 05:40", source="hand", level_m=level_at(3 + 2 / 3))
+    inventory = receiving.inventory(CLOSE)
+    assert inventory.of("tk-2")["mass_kg"] == pytest.approx(level_at(3 + 2 / 3) * KG_PER_M, abs=0.5)
+    assert inventory.of("tk-2")["status"] == "uncertain"
+    assert "input_uncertain" in inventory.warnings("tk-2")
+
+
+def test_a_ticket_that_comes_late_moves_the_dip_as_well(receiving):
+    """Without the ticket the dip is taken for six o'clock's stock, and 2,933 t are unexplained: flagged.
+
+    The ticket of the next morning explains 3,200 t of receipt and moves the dip by 266,667 kg, both at once.
+    """
+    receiving.reads("tk-2", "2026-03-14 05:40", source="hand", level_m=level_at(3 + 2 / 3))
+    first = receiving.closes("2026-03-13")
+    assert first.of("tk-2")["imbalance_kg"] == pytest.approx(level_at(3 + 2 / 3) * KG_PER_M - 3_200_000.0, abs=0.5)
+    assert first.flagged == {"tk-2"}
+    line(receiving)
+    second = receiving.closes("2026-03-13")
+    assert second["id"] == "2026-03-13.2" and not second.flagged
+    assert second.of("tk-2")["moved_kg"] == pytest.approx(KG_PER_H / 3, abs=0.5)
+    assert second.of("tk-2")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
