@@ -6,7 +6,9 @@ from typing import Any
 
 import numpy as np
 
+from app.errors import FieldError, Unprocessable
 from app.schemas.calculation import CalculationReading, InventoryCalculation
+from app.services import define
 from app.services.choose import Candidates
 from app.services.collect import INPUTS, Collected, conversion, names_of
 from app.services.compile import CompiledVessel, compile_bodies
@@ -14,10 +16,14 @@ from app.services.explain import answers
 from app.services.ingest import quality_of, text_of
 from app.services.measure import measure
 from app.services.parts import Origin
+from models.components import COMPONENTS
 
 
 def calculate(request: InventoryCalculation, *, working: bool, budget: bool) -> list[dict[str, Any]]:
     """One inventory for each reading, in order; nothing is carried from one to the next."""
+    define.check_computed(request.vessel, "/vessel")
+    define.check_components(request.substance, "/substance")
+    _check_analyses(request)
     vessel = compile_bodies("vessel", request.site, request.vessel, request.substance)
     if not request.readings:
         return []
@@ -28,6 +34,20 @@ def calculate(request: InventoryCalculation, *, working: bool, budget: bool) -> 
         if reading.taken_at is None:
             result.pop("at")
     return results
+
+
+def _check_analyses(request: InventoryCalculation) -> None:
+    """Refuse an analysis that names a component which is neither in the table nor given in full."""
+    vapour = request.substance.vapour
+    known = set(COMPONENTS).union(() if vapour is None else (one.id for one in vapour.components))
+    detail = "An analysis names components that are in the table or that the substance gives in full"
+    unknown = [
+        FieldError(f"/readings/{place}/vapour_composition", "unknown_component", detail, place)
+        for place, reading in enumerate(request.readings)
+        if not known.issuperset(reading.vapour_composition or ())
+    ]
+    if unknown:
+        raise Unprocessable(detail, code="unknown_component", errors=unknown)
 
 
 def collected(vessel: CompiledVessel, readings: tuple[CalculationReading, ...]) -> Collected:

@@ -21,6 +21,7 @@ from app.store import books, definitions, sites
 from app.store.definitions import Definition, EffectiveFromNeeded
 from app.store.engine import Store, Writing
 from app.store.tables import ALWAYS
+from models.components import COMPONENTS
 from models.errors import ModelError
 
 B = TypeVar("B", bound=BaseModel)
@@ -95,13 +96,31 @@ def _zone_is_free(writing: Writing, name: str, body: Site) -> None:
     changed = (former.time_zone, former.day_starts_at) != (body.time_zone, body.day_starts_at)
     if changed and begins < newest:
         raise Conflict(
-            "Days are closed by this time_zone and day_starts_at; they change only from the end of the last closed day on",
+            "Days are closed by this time_zone and day_starts_at; "
+            "they change only from the end of the last closed day on",
             code="zone_in_use",
         )
 
 
+def check_components(body: Substance, within: str = "") -> None:
+    """Refuse a component that is neither in the table nor given in full, with its place and not its name."""
+    found = () if body.vapour is None else body.vapour.components
+    detail = (
+        "That component is not in the table: give critical_temperature_k, critical_pressure_kpa_abs, "
+        f"acentric_factor and molar_mass_g_mol with it, or take one of {', '.join(sorted(COMPONENTS))}"
+    )
+    unknown = [
+        FieldError(f"{within}/vapour/components/{place}/id", "unknown_component", detail, place)
+        for place, one in enumerate(found)
+        if one.id not in COMPONENTS and one.critical_temperature_k is None
+    ]
+    if unknown:
+        raise Unprocessable(detail, code="unknown_component", errors=unknown)
+
+
 def _substance_can_be(body: Substance) -> None:
-    """Compile the substance in a vessel of its own kind: unknown components and impossible values show."""
+    """Compile the substance in a vessel of its own kind: impossible values show."""
+    check_components(body)
     shape: dict[str, Any] = {"kind": "fixed_volume", "volume_m3": 1.0}
     if body.liquid is not None:
         shape = {"kind": "sphere", "diameter_m": 1.0}
@@ -114,7 +133,7 @@ PLAIN_SITE = Site.model_validate({"name": "any", "time_zone": "UTC"})
 
 def _vessel_fits(writing: Writing, site: str, name: str, body: Vessel) -> None:
     """The vessel's substance exists when the vessel begins, and the two go together."""
-    _computed(body)
+    check_computed(body)
     if body.substance is None:
         return
     begins = ALWAYS if body.effective_from is None else body.effective_from
@@ -137,25 +156,20 @@ def _vessel_fits(writing: Writing, site: str, name: str, body: Vessel) -> None:
     _check(lambda: compile_bodies(name, Site.model_validate_json(own[0].body), body, substance), "")
 
 
-def _computed(body: Vessel) -> None:
+def check_computed(body: Vessel, within: str = "") -> None:
     """What the body may say but this version does not compute is refused, not left aside."""
     refused: list[FieldError] = []
     if body.vapour_space is not None and body.vapour_space.kind == "blanketed":
         detail = "This version computes the vapour spaces product, open and none"
-        refused.append(FieldError("/vapour_space/kind", "not_computed", detail))
+        refused.append(FieldError(f"{within}/vapour_space/kind", "not_computed", detail))
     if body.shell.courses:
         detail = "This version does not compute the head of the liquid by courses"
-        refused.append(FieldError("/shell/courses", "not_computed", detail))
+        refused.append(FieldError(f"{within}/shell/courses", "not_computed", detail))
     if body.floating_roof is not None and body.floating_roof.gauge_sees == "roof":
         detail = "This version computes roofs under which the gauge sees the liquid"
-        refused.append(FieldError("/floating_roof/gauge_sees", "not_computed", detail))
+        refused.append(FieldError(f"{within}/floating_roof/gauge_sees", "not_computed", detail))
     if refused:
         raise Unprocessable(refused[0].detail, code="not_computed", errors=refused)
-
-
-def check_computed(body: Vessel) -> None:
-    """The same refusals for a vessel that is only calculated with."""
-    _computed(body)
 
 
 def newest(store: Store, site: str, kind: str, name: str, at: int | None, as_of: int | None) -> dict[str, Any]:

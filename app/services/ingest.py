@@ -7,15 +7,19 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from sqlalchemy import Connection
+
 from app.clock import Clock
 from app.schemas.batch import ERRORS_LISTED, RowError
 from app.schemas.reading import Reading, Values
+from app.schemas.substance import Substance
 from app.services import mark
 from app.services.find import ALL_TIME, site_number
 from app.store import definitions, readings
 from app.store.engine import Store, Writing
 from app.store.readings import Value
 from app.store.sites import watermark
+from models.components import COMPONENTS
 
 QUALITY = {"good": 0, "uncertain": 1, "bad": 2}
 FUTURE_US = 300_000_000  # µs; clocks of historians run ahead by less
@@ -85,12 +89,10 @@ def ingest(
     outcome = Outcome()
     with store.reading() as connection:
         site_id = site_number(connection, site)
-        known_vessels = {
-            one.name
-            for one in definitions.in_force(connection, site_id, "vessel", ALL_TIME, watermark(connection, site_id))
-        }
-        outcome.known_at = watermark(connection, site_id)
-    good = list(_acceptable(rows, errors, known_vessels, clock.now() + FUTURE_US))
+        known = outcome.known_at = watermark(connection, site_id)
+        vessels = {one.name for one in definitions.in_force(connection, site_id, "vessel", ALL_TIME, known)}
+        components = _components(connection, site_id, known, rows)
+    good = list(_acceptable(rows, errors, vessels, components, clock.now() + FUTURE_US))
     size = BLOCK if len(good) > WHOLE else max(len(good), 1)
     for start in range(0, len(good), size):
         with store.writing(site, deed="readings", request=request) as writing:
@@ -100,9 +102,27 @@ def ingest(
     return outcome
 
 
+def _components(
+    connection: Connection, site_id: int, known: int, rows: Sequence[tuple[int, Reading]]
+) -> frozenset[str]:  # fmt: skip
+    """Components that an analysis may name: those of the table, and those that a substance gives in full."""
+    if not any(_analysed(reading) for _, reading in rows):
+        return frozenset()
+    found = definitions.timeline(connection, site_id, "substance", -ALL_TIME, ALL_TIME, known)
+    vapours = [Substance.model_validate_json(one.body).vapour for one in found]
+    return frozenset(COMPONENTS).union(one.id for vapour in vapours if vapour is not None for one in vapour.components)
+
+
+def _analysed(reading: Reading) -> dict[str, set[str]]:
+    """The components that each analysis of a reading names."""
+    given = {"liquid_composition": reading.liquid_composition, "vapour_composition": reading.vapour_composition}
+    return {name: set(composition) for name, composition in given.items() if composition is not None}
+
+
 def _acceptable(
-    rows: Iterable[tuple[int, Reading]], errors: list[RowError], vessels: set[str], latest: int
-) -> Iterable[tuple[int, Reading]]:
+    rows: Iterable[tuple[int, Reading]], errors: list[RowError], vessels: set[str], components: frozenset[str],
+    latest: int,
+) -> Iterable[tuple[int, Reading]]:  # fmt: skip
     for index, reading in rows:
         if reading.vessel is not None and reading.vessel not in vessels:
             errors.append(_error(index, "vessel", "unknown_vessel", "This site has no vessel of that id"))
@@ -112,6 +132,9 @@ def _acceptable(
             errors.append(
                 _error(index, "taken_at", "future", "taken_at lies more than 300 s ahead of this server's clock")
             )
+        elif unknown := [name for name, found in _analysed(reading).items() if not found <= components]:
+            detail = f"{unknown[0]} names a component that is neither in the table nor given in full by a substance"
+            errors.append(_error(index, unknown[0], "unknown_component", detail))
         else:
             yield index, reading
 

@@ -16,7 +16,10 @@ SITE = {"name": "a place", "time_zone": "UTC"}
     [
         ({"base_temperature_c": -99}, "base_temperature_c is at least -50 °C."),
         ({"base_temperature_c": "warm"}, "base_temperature_c is a number, in °C."),
-        ({"day_starts_at": "6"}, "day_starts_at is an hour and a minute of the day, from 00:00 to 23:59, such as 06:00."),
+        (
+            {"day_starts_at": "6"},
+            "day_starts_at is an hour and a minute of the day, from 00:00 to 23:59, such as 06:00.",
+        ),
         ({"time_zone": "!"}, "time_zone is a name of the IANA data base, such as Europe/Oslo."),
         ({"time_zone": "X/Y"}, "time_zone is a name of the IANA data base, such as Europe/Oslo."),
         ({"window_nights": 2.5}, "window_nights is a whole number."),

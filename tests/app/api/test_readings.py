@@ -140,7 +140,9 @@ def test_an_earlier_value_is_restored_by_saying_what_it_corrects(site):
     assert levels(site) == [(2.0, "good", 3)]
     late = post(site, row(2.5, corrects=wrong))
     assert counts(late) == [0, 0, 0, 1]
-    assert [(one["index"], one["field"], one["code"]) for one in late["errors"]] == [(0, "corrects", "stale_correction")]
+    assert [(one["index"], one["field"], one["code"]) for one in late["errors"]] == [
+        (0, "corrects", "stale_correction")
+    ]
     assert levels(site) == [(2.0, "good", 3)]
 
 
@@ -243,6 +245,17 @@ def test_a_level_above_the_vessel_is_stored_and_answered_as_unmeasured(site):
     assert found["totals"][0]["missing"] == ["tk-1"] and not found["totals"][0]["complete"]
 
 
+def test_an_analysis_names_components_that_are_known(site):
+    """One that no calculation could use would otherwise leave the whole site without an inventory."""
+    good, bad = {"propane": 0.5, "n-butane": 0.5}, {"propane": 0.5, "unobtainium": 0.5}
+    answer = post(site, row(vapour_composition=good), row(source="lab", liquid_composition=bad))
+    assert counts(answer) == [1, 0, 0, 1]
+    (error,) = answer["errors"]
+    assert (error["index"], error["field"], error["code"]) == (1, "liquid_composition", "unknown_component")
+    assert "unobtainium" not in str(answer)
+    assert site.get("/inventory", at=AT)["vessels"]
+
+
 def test_a_batch_is_one_object_with_one_list(site):
     for body in ([], {"readings": {}}, {"rows": []}, {"readings": [], "more": 1}, 3, "x"):
         answer = site.post("/readings", body, status=422)
@@ -291,7 +304,11 @@ def test_pages_agree_while_writes_go_on(site):
         cursor = page["next"]
         if cursor is None:
             break
-        post(site, row(3.0 + turn / 100, taken_at="2026-05-01T08:00:00Z", source="b"), row(taken_at="2026-05-01T08:30:00Z"))
+        post(
+            site,
+            row(3.0 + turn / 100, taken_at="2026-05-01T08:00:00Z", source="b"),
+            row(taken_at="2026-05-01T08:30:00Z"),
+        )
     assert pages == whole
     assert len(known) == 1 and turn > 4
 
