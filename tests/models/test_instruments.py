@@ -72,6 +72,7 @@ def test_a_capacity_is_as_good_as_legal_metrology_allows(kind: str, limit: float
         (instruments.OPEN_SPACE_KPA, 0.2),  # common practice: pressure and vacuum valves
         (instruments.STALE_TEMPERATURE * 24 * 3600.0, 1.2),  # 0.05 K an hour is 1.2 K a day
         (instruments.STALE_PRESSURE_KPA * 24 * 3600.0, 48.0),  # 2 kPa an hour is 48 kPa a day
+        (instruments.BLEND_DENSITY, 3.0),  # kg/m³ of a receipt that no sample confirms; a setting
         (instruments.METER_RANDOM_PCT, 0.05),  # common practice
         (instruments.METER_SYSTEMATIC_PCT, 0.3 / SQUARE_ROOT_OF_3),  # Directive 2014/32/EU, annex VII, class 0.5
     ],

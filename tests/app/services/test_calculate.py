@@ -48,8 +48,14 @@ def test_a_box_of_oil_weighs_its_volume_times_its_density() -> None:
 
 
 def test_a_bad_reading_leaves_its_neighbours_alone() -> None:
-    good = {"level_m": 8.0, "liquid_temperature_c": 17.4}
-    rows = [good, good | {"level_m": 16.0}, {"level_m": 8.0}, good | {"quality": "bad"}, good | {"level_m": 8.0}]
+    good: Body = {"level_m": 8.0, "liquid_temperature_c": 17.4}
+    rows: list[Body] = [
+        good,
+        good | {"level_m": 16.0},
+        {"level_m": 8.0},
+        good | {"quality": "bad"},
+        good | {"level_m": 8.0},
+    ]
     found = results(rows)
     assert [one["status"] for one in found] == ["measured", "unmeasured", "unmeasured", "unmeasured", "measured"]
     alone = results([good])[0]
@@ -59,7 +65,10 @@ def test_a_bad_reading_leaves_its_neighbours_alone() -> None:
 
 
 def test_nothing_is_carried_from_one_reading_to_the_next() -> None:
-    rows = [OIL_READ | {"taken_at": "2026-03-14T06:00:00Z"}, {"level_m": 8.0, "taken_at": "2026-03-14T06:10:00Z"}]
+    rows: list[Body] = [
+        OIL_READ | {"taken_at": "2026-03-14T06:00:00Z"},
+        {"level_m": 8.0, "taken_at": "2026-03-14T06:10:00Z"},
+    ]
     first, second = results(rows)
     assert first["status"] == "measured"
     assert second["reason"]["code"] == "input_missing"
@@ -105,8 +114,8 @@ def test_a_readings_source_chooses_its_offset_and_its_errors() -> None:
 
 def test_analyses_give_each_row_its_own_gas() -> None:
     """Hydrogen with 1 % nitrogen weighs 12.9 % more a mole: 0.99 · 2.01588 + 0.01 · 28.0134 = 2.27586 g/mol."""
-    row = {"vapour_temperature_c": 25.0, "pressure_kpa_abs": 101.325}
-    rows = [
+    row: Body = {"vapour_temperature_c": 25.0, "pressure_kpa_abs": 101.325}
+    rows: list[Body] = [
         row, row | {"vapour_composition": {"hydrogen": 0.99, "nitrogen": 0.01}},
         row | {"vapour_composition": {"hydrogen": 1.0}}, row,
     ]  # fmt: skip
