@@ -10,6 +10,7 @@ from models.constants import (
     ATMOSPHERE_SEA_LEVEL_TEMPERATURE,
     STANDARD_ATMOSPHERE,
     STANDARD_GRAVITY,
+    WATER_DENSITY_60F,
     ZERO_CELSIUS,
 )
 
@@ -115,3 +116,31 @@ def atmospheric_pressure(elevation: ArrayLike) -> FloatArray:
     exponent = STANDARD_GRAVITY / (ATMOSPHERE_GAS_CONSTANT * ATMOSPHERE_LAPSE_RATE)
     ratio = 1.0 - ATMOSPHERE_LAPSE_RATE * geopotential / ATMOSPHERE_SEA_LEVEL_TEMPERATURE
     return STANDARD_ATMOSPHERE * ratio**exponent  # eq. 1
+
+
+def density_of_api_gravity(degrees: ArrayLike) -> FloatArray:
+    """Density of a liquid whose gravity is given in degrees API, at the temperature at which they were observed.
+
+    Parameters
+    ----------
+    degrees : array_like, shape (...)
+        API gravity, above −131.5. [°API]
+
+    Returns
+    -------
+    FloatArray, shape (...)
+        Density. [kg/m³]
+
+    Notes
+    -----
+    With the relative density RD = ρ / ρ_w and ρ_w of water at 60 °F::
+
+        API = 141.5 / RD − 131.5        (1)
+
+    References
+    ----------
+    .. [1] API MPMS 11.1-2004, "Temperature and Pressure Volume Correction Factors for Generalized Crude
+       Oils, Refined Products, and Lubricating Oils".
+    """
+    (value,) = as_floats(degrees)
+    return 141.5 / (value + 131.5) * WATER_DENSITY_60F  # eq. 1

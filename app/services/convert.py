@@ -19,6 +19,7 @@ import pint
 from app.schemas.errors import unit_of
 from app.schemas.types import MEASURED
 from models.constants import WATER_DENSITY_60F
+from models.units import density_of_api_gravity
 
 # Unit that a field's name ends in, as the registry spells it. Gauge or absolute is the field's own matter.
 TARGETS = {
@@ -117,14 +118,11 @@ def eighths(text: str) -> float:
 
 
 def api_gravity(text: str) -> float:
-    """Density of degrees API, at the temperature at which they were observed.
-
-    API = 141.5 / RD − 131.5, where RD is relative to water of 60 °F: API MPMS 11.1-2004.
-    """
+    """Density of degrees API, at the temperature at which they were observed."""
     degrees = number_of(text)
     if degrees <= -131.5:
         raise ValueError("no density")
-    return 141.5 / (degrees + 131.5) * WATER_DENSITY_60F
+    return float(density_of_api_gravity(degrees))
 
 
 RULES: dict[str, Callable[[str], float]] = {"ft-in-16": sixteenths, "ft-in-8": eighths, "degAPI": api_gravity}

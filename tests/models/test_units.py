@@ -41,3 +41,10 @@ def test_exact_factors():
     assert units.CUBIC_METRE_PER_CUBIC_CENTIMETRE * 1e6 == 1.0
     assert units.KILOGRAM_PER_GRAM * 1000.0 == 1.0
     assert units.SECONDS_PER_DAY == 24 * 60 * 60
+
+
+def test_degrees_api_are_densities_relative_to_water_of_60_f() -> None:
+    # API MPMS 11.1-2004: 10 °API is water of 999.016 kg/m³; 141.5 / 166.5 and 141.5 / 126 by hand.
+    assert units.density_of_api_gravity([10.0, 35.0, -5.5]) == pytest.approx(
+        [999.016, 0.849849849849849849 * 999.016, 1.123015873015873016 * 999.016], rel=1e-15
+    )
