@@ -78,6 +78,7 @@ def measure_at(
     ahead = np.full(len(vessels), ALWAYS) if closing else None
     instants, empties = _read_at(first, choices(first, ahead), asked)
     collected = first if (instants == asked).all() else collect(connection, site_id, vessels, instants, known)
+    _spend(collected, asked - instants)
     within = np.full(len(vessels), ALWAYS) if closing else np.maximum(asked - instants, 0)
     measured = measure(collected, ahead=within, asked=asked)
     carried = {row: Carried(empty=row in empties) for row in range(len(vessels))}
@@ -98,7 +99,7 @@ def _read_at(collected: Collected, chosen: Mapping[str, Chosen], asked: Instants
     instants = asked.copy()
     empties: set[int] = set()
     for row, vessel in enumerate(collected.vessels):
-        key = chosen["level" if vessel.has_liquid and vessel.curve is not None else "pressure"]
+        key = chosen[_key(vessel)]
         if key.usable[row] and key.share[row] == 0.0:
             instants[row] = key.taken_at[row]
         empty = chosen["empty"]
@@ -106,6 +107,18 @@ def _read_at(collected: Collected, chosen: Mapping[str, Chosen], asked: Instants
             instants[row] = empty.taken_at[row]
             empties.add(row)
     return instants, empties
+
+
+def _key(vessel: CompiledVessel) -> str:
+    """The input whose instant is the reading's."""
+    return "level" if vessel.has_liquid and vessel.curve is not None else "pressure"
+
+
+def _spend(collected: Collected, elapsed: Instants) -> None:
+    """What is too old at the instant that was asked for does not win again at the reading of another source."""
+    for row, vessel in enumerate(collected.vessels):
+        age = collected.candidates[_key(vessel)].max_age[row]
+        age[age < ALWAYS] -= max(int(elapsed[row]), 0)
 
 
 def _moves(
