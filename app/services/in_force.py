@@ -127,11 +127,7 @@ def meters_in_force(connection: Connection, site_id: int, at: int, known: int) -
 
 def period_of(connection: Connection, site_id: int, name: str, label: str, known: int) -> Period:
     """A period by its id: two instants, or a local day of the site by the zone in force on it."""
-    try:
-        parsed = parse_label(label)
-    except ValueError:  # 2026-02-30 looks like a day and is none
-        detail = "There is no such day or instant, so no period of that id"
-        raise NotFound(detail, code="unknown_reconciliation") from None
+    parsed = parse_label(label)
     if isinstance(parsed, Period):
         return parsed
     noon = micros(datetime.combine(parsed, time(12), tzinfo=UTC))

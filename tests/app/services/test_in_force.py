@@ -7,7 +7,7 @@ from typing import Any, TypeVar
 
 import pytest
 
-from app.errors import Conflict, NotFound
+from app.errors import Conflict, NotFound, Unprocessable
 from app.services import in_force
 from app.services.instants import Period
 from app.store.sites import number
@@ -108,10 +108,9 @@ def test_a_period_that_is_no_day_is_named_by_its_instants(plant: Plant) -> None:
 @pytest.mark.parametrize(
     "label", ["2026-02-30", "20261301T000000Z--20270101T000000Z", "20260101T250000Z--20270101T000000Z"]
 )
-def test_a_date_that_does_not_exist_is_not_found(plant: Plant, label: str) -> None:
-    with pytest.raises(NotFound) as missing:
+def test_a_date_that_does_not_exist_is_refused(plant: Plant, label: str) -> None:
+    with pytest.raises(Unprocessable):
         ask(plant, in_force.period_of, plant.site, label, ALL)
-    assert missing.value.code == "unknown_reconciliation"
 
 
 def test_a_site_that_begins_later_is_not_defined_before(plant: Plant) -> None:

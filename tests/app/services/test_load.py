@@ -35,7 +35,7 @@ def folder(tmp_path: Path, site_id: str) -> Path:
     write(place / "vessels" / "tk-1.json", BOX)
     write(place / "meters" / "m-1.json", {"name": "m"})
     write(place / "readings" / "a.csv", f"{HEADER}\ntk-1,2026-03-14T06:00:00Z,radar,,5.0,,,\n"
-                                        "tk-1,2026-03-14T06:30:00+00:00,laboratory,,,810,15,\n")  # fmt: skip
+                                        "tk-1,2026-03-14T06:30:00+01:00,laboratory,,,810,15,\n")  # fmt: skip
     write(place / "transfers.json", {"transfers": [TICKET]})
     return place
 
