@@ -17,6 +17,7 @@ from sqlalchemy import Connection
 from app.schemas.meter import Meter
 from app.schemas.transfer import Transfer
 from app.services import move
+from app.services.check import check
 from app.services.choose import ALWAYS, Chosen
 from app.services.collect import Collected, collect
 from app.services.compile import CompiledVessel
@@ -91,6 +92,7 @@ def measure_at(
     measured.carried = carried
     measured.tickets = [(ticket.name, ticket.body) for ticket, _ in moves.tickets]
     _standing_still(connection, site_id, measured, moves, instants, known)
+    check(connection, site_id, first, measured, known)
     return measured
 
 

@@ -80,6 +80,7 @@ class Collected:
     origins: dict[str, Origin] = field(default_factory=dict)
     texts: dict[str, Text] = field(default_factory=dict)
     companions: dict[tuple[str, str], tuple[Candidates, Text]] = field(default_factory=dict)
+    slots: Sequence[Slot] = ()
 
     @property
     def rows(self) -> int:
@@ -192,17 +193,26 @@ def conversion(vessel: CompiledVessel, quantity: str, source: str) -> Convert:
     def offset(at: int) -> float:
         return vessel.instrument(quantity, source, at if history else None).offset
 
+    def innage(level: float) -> float:
+        return float("nan") if on_roof and level < lowest else level
+
+    roof = vessel.body.floating_roof
+    # The automatic gauge, which comes first, may ride on the roof; a roof on its legs says nothing of the liquid.
+    on_roof = roof is not None and roof.gauge_sees == "roof" and vessel.rank(source) == 0
+    lowest = roof.floats_at_m if roof is not None else 0.0
+    if quantity == "level_m" and on_roof:
+        return lambda value, at: innage(value + offset(at))
     if quantity == "ullage_m":
         height = vessel.body.gauging.reference_height_m
         if height is None:
             return lambda value, at: float("nan")
-        return lambda value, at: height - (value + offset(at))
+        return lambda value, at: innage(height - (value + offset(at)))
     return lambda value, at: value + offset(at)
 
 
 def _frame(slots: Sequence[Slot], at: Instants, vessels: tuple[CompiledVessel, ...]) -> Collected:
     """Empty candidates of the right width, with the origin of each column."""
-    collected = Collected(at, vessels)
+    collected = Collected(at, vessels, slots=slots)
     per_row = len(vessels) > 1
     for spec in INPUTS:
         own = [slot for slot in slots if slot.spec is spec]
@@ -256,12 +266,13 @@ def _place(collected: Collected, slot: Slot, before: Found | None, after: Found 
     picked = list(slot.rows)
     target.rank[picked, slot.column] = slot.rank
     target.max_age[picked, slot.column] = slot.max_age
-    if before is not None:
+    said = None if before is None or before.value is None else slot.convert(before.value, before.taken_at)
+    if before is not None and not (said is not None and np.isnan(said)):
         target.before_at[picked, slot.column] = before.taken_at
         target.before_taken[picked, slot.column] = before.taken_at
         target.before_quality[picked, slot.column] = before.quality
-        if before.value is not None:
-            target.before[picked, slot.column] = slot.convert(before.value, before.taken_at)
+        if said is not None:
+            target.before[picked, slot.column] = said
         texts[picked, slot.column] = before.cited
     if after is not None and after.value is not None:
         target.after_at[picked, slot.column] = after.taken_at
@@ -306,8 +317,13 @@ def _fill(collected: Collected, slot: Slot, taken: Instants, values: NDArray[np.
     if not len(taken):
         return
     vessel = collected.vessels[min(slot.rows[0], len(collected.vessels) - 1)]
-    if vessel.history:
+    one_by_one = vessel.history or vessel.body.floating_roof is not None
+    if one_by_one:
         converted = np.array([slot.convert(value, int(at)) for value, at in zip(values, taken, strict=True)])
+        kept = np.isfinite(converted)
+        taken, converted, quality = taken[kept], converted[kept], quality[kept]
+        if not len(taken):
+            return
     else:
         converted = np.asarray(slot.convert(values, 0))  # type: ignore[arg-type]
     position = np.searchsorted(taken, collected.at, side="right") - 1

@@ -165,9 +165,6 @@ def check_computed(body: Vessel, within: str = "") -> None:
     if body.shell.courses:
         detail = "This version does not compute the head of the liquid by courses"
         refused.append(FieldError(f"{within}/shell/courses", "not_computed", detail))
-    if body.floating_roof is not None and body.floating_roof.gauge_sees == "roof":
-        detail = "This version computes roofs under which the gauge sees the liquid"
-        refused.append(FieldError(f"{within}/floating_roof/gauge_sees", "not_computed", detail))
     if refused:
         raise Unprocessable(refused[0].detail, code="not_computed", errors=refused)
 

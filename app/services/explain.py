@@ -148,6 +148,7 @@ def _answer(measured: Measured, row: int, spread: float, *, working: bool, budge
     if unmeasured:
         answer["reason"] = reason(measured, row)
     answer["inputs"] = inputs(measured, row)
+    answer["checks"] = measured.checks.get(row, [])
     answer["warnings"] = warnings(measured, row)
     answer["definitions"] = [one._asdict() for one in vessel.definitions]
     if working and not unmeasured:

@@ -6,7 +6,7 @@ import json
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -53,6 +53,7 @@ class Measured:
     asked: NDArray[np.int64] | None = None
     carried: dict[int, Carried] = field(default_factory=dict)
     tickets: list[tuple[str, str]] = field(default_factory=list)
+    checks: dict[int, list[dict[str, Any]]] = field(default_factory=dict)
 
     def instant(self, row: int) -> int:
         """The instant that a row was asked for; it may have been read at another."""

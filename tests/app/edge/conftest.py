@@ -22,12 +22,16 @@ from app.store.engine import DiskFull, StoreUnavailable
 class Ball(BaseModel):
     """A ball."""
 
+    model_config = ConfigDict(strict=True)
+
     kind: Literal["ball"]
     diameter_m: float
 
 
 class Brick(BaseModel):
     """A brick."""
+
+    model_config = ConfigDict(strict=True)
 
     kind: Literal["brick"]
     rows: list[list[float]]
@@ -36,7 +40,7 @@ class Brick(BaseModel):
 class Row(BaseModel):
     """One row."""
 
-    model_config = ConfigDict(extra="forbid", allow_inf_nan=False)
+    model_config = ConfigDict(strict=True, extra="forbid", allow_inf_nan=False)
 
     vessel: str = Field(pattern=r"^[a-z0-9-]{1,20}$", examples=["tk-12"])
     taken_at: AwareDatetime
@@ -49,7 +53,7 @@ class Row(BaseModel):
 class Rows(BaseModel):
     """A batch."""
 
-    model_config = ConfigDict(extra="forbid")
+    model_config = ConfigDict(strict=True, extra="forbid")
 
     rows: list[Row]
 

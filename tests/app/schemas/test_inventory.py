@@ -40,7 +40,7 @@ PROMISED = [
 
 
 def test_words_are_those_of_the_contract() -> None:
-    assert set(Inventory.model_fields) == {*PROMISED, "substance", "reason"}
+    assert set(Inventory.model_fields) == {*PROMISED, "substance", "reason", "moved_kg"}
     assert set(Step.model_fields) == {"step", "symbol", "value", "unit", "method", "reference"}
     assert set(Contribution.model_fields) == {
         "input", "instrument", "standard_uncertainty", "sensitivity", "contribution_kg", "kind", "declared",

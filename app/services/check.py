@@ -1,0 +1,129 @@
+"""Lower sources check the one that counts: what they differ by at their own instant, and how well that is known."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from sqlalchemy import Connection
+
+from app.services.choose import ALWAYS
+from app.services.collect import Collected, Slot
+from app.services.compile import CompiledVessel
+from app.services.measure import Measured
+from app.store import readings
+from app.store.readings import Found
+
+COVERAGE = 2.0  # standard uncertainties of a difference before the sources are said to disagree
+
+
+@dataclass(frozen=True)
+class _Asked:
+    """One value of a lower source, and the series that counts."""
+
+    row: int
+    lower: Slot
+    winner: Slot
+    taken_at: int
+    value: float
+
+
+def check(connection: Connection, site_id: int, collected: Collected, measured: Measured, known: int) -> None:
+    """Every usable value of a lower source into its row's checks, with a warning where the two disagree.
+
+    ``collected`` are the candidates at the instant that was asked for: a check that came after the reading
+    that counts is one all the same.
+    """
+    found: dict[int, list[dict[str, Any]]] = {}
+    for asked, winner in _answered(connection, site_id, list(_asked(collected, measured)), collected, known):
+        vessel = collected.vessels[asked.row]
+        spread = math.hypot(
+            *_errors(vessel, asked.lower, asked.taken_at), *_errors(vessel, asked.winner, asked.taken_at)
+        )
+        difference = asked.value - winner
+        quantity = asked.winner.spec.quantities[0]
+        found.setdefault(asked.row, []).append(
+            {"quantity": quantity, "source": asked.lower.source, "at": asked.taken_at, "value": asked.value,
+             "difference": difference, "standard_uncertainty": spread}
+        )  # fmt: skip
+        carried = measured.carried.get(asked.row)
+        if carried is not None and abs(difference) > COVERAGE * spread:
+            carried.warn(
+                "sources_disagree",
+                f"{quantity} from source '{asked.lower.source}' differs by {difference:.4g} from the one that counts, "
+                f"more than {COVERAGE:g} times its standard uncertainty of {spread:.2g}",
+            )
+    measured.checks = found
+
+
+def _asked(collected: Collected, measured: Measured) -> Iterator[_Asked]:
+    """Usable values of sources that come after the one that counts in the vessel's order."""
+    by_input: dict[tuple[str, int], list[Slot]] = {}
+    for slot in collected.slots:
+        if slot.spec.interpolates and not slot.spec.of_site and not slot.companion:
+            by_input.setdefault((slot.spec.name, slot.rows[0]), []).append(slot)
+    for (name, row), slots in by_input.items():
+        if len(slots) < 2 or not collected.vessels[row].body.sources:
+            continue
+        chosen = measured.chosen[name]
+        winner = next((slot for slot in slots if slot.column == chosen.source[row]), None)
+        if winner is None:
+            continue
+        columns, at = collected.candidates[name], int(collected.at[row])
+        for slot in slots:
+            taken = int(columns.before_at[row, slot.column])
+            if slot.rank > winner.rank and taken > -ALWAYS and at - taken <= slot.max_age:
+                yield _Asked(row, slot, winner, taken, float(columns.before[row, slot.column]))
+
+
+def _answered(
+    connection: Connection, site_id: int, asked: Sequence[_Asked], collected: Collected, known: int
+) -> Iterator[tuple[_Asked, float]]:
+    """The value of the source that counts at the instant of each check; a series is asked once a round."""
+    rest = list(asked)
+    while rest:
+        first: dict[int, _Asked] = {}
+        later: list[_Asked] = []
+        for one in rest:
+            if one.winner.series in first:
+                later.append(one)
+            else:
+                first[one.winner.series] = one
+        rest = later
+        before = [
+            (series, max(one.taken_at - one.winner.max_age, _since(collected, one)), one.taken_at)
+            for series, one in first.items()
+        ]
+        after = [(series, one.taken_at + 1, one.taken_at + one.winner.max_age) for series, one in first.items()]
+        earlier = {found.series_id: found for found in readings.newest_each(connection, site_id, before, known)}
+        following = {found.series_id: found for found in readings.following_each(connection, site_id, after, known)}
+        for series, one in first.items():
+            value = _between(one, earlier.get(series), following.get(series))
+            if math.isfinite(value):
+                yield one, value
+
+
+def _since(collected: Collected, one: _Asked) -> int:
+    return min(collected.vessels[one.row].since, one.taken_at)
+
+
+def _between(one: _Asked, before: Found | None, after: Found | None) -> float:
+    """The winner at the instant of the check: between two of its values, or the one before."""
+    if before is None or before.value is None:
+        return math.nan
+    start = one.winner.convert(before.value, before.taken_at)
+    if after is None or after.value is None or before.taken_at == one.taken_at:
+        return start
+    if after.taken_at - before.taken_at > one.winner.max_age:
+        return start
+    share = (one.taken_at - before.taken_at) / (after.taken_at - before.taken_at)
+    return (1.0 - share) * start + share * one.winner.convert(after.value, after.taken_at)
+
+
+def _errors(vessel: CompiledVessel, slot: Slot, at: int) -> tuple[float, float]:
+    own = vessel.instrument(slot.quantity, slot.source, at if vessel.history else None)
+    if not own.declared and slot.quantity != slot.spec.quantities[0]:
+        own = vessel.instrument(slot.spec.quantities[0], slot.source, at if vessel.history else None)
+    return own.random, own.systematic
