@@ -88,11 +88,11 @@ class Site:
         """Define the site; UTC, days from midnight, at sea level."""
         self.put("", {"name": "a place", "time_zone": "UTC", "day_starts_at": "00:00", "elevation_m": 0.0} | changes)
 
-    def substance(self, name: str = "liquid", **changes: Any) -> None:
+    def substance(self, name: str = "liquid", /, **changes: Any) -> None:
         """Define the liquid of 1000 kg/m³."""
         self.put(f"/substances/{name}", {"name": name, "liquid": LIQUID} | changes)
 
-    def vessel(self, name: str = "tk-1", **changes: Any) -> dict[str, Any]:
+    def vessel(self, name: str = "tk-1", /, **changes: Any) -> dict[str, Any]:
         """Define a box that holds 50 000 kg for every metre of level."""
         return self.put(f"/vessels/{name}", VESSEL | changes)
 
@@ -103,7 +103,7 @@ class Site:
         assert answer["rejected"] == 0, answer
         return answer
 
-    def move(self, name: str, source: str, target: str, **more: Any) -> dict[str, Any]:
+    def move(self, name: str, source: str, target: str, /, **more: Any) -> dict[str, Any]:
         """Put a ticket; by statement, with a standard uncertainty of 10 kg unless said otherwise."""
         body: dict[str, Any] = {"from": source, "to": target, "by": "statement"} | more
         if body["by"] == "statement" and not body.get("unmetered"):
