@@ -10,7 +10,7 @@ from scipy.sparse.linalg import splu
 from models.arrays import FloatArray, IntArray
 from models.errors import DefinitionError
 
-PIVOT_TOLERANCE = 1e-13  # of a balance's own variance: below, it is known from the others without an error
+PIVOT_TOLERANCE = 1e-12  # of a balance's own variance: below, it is known from the others without an error
 
 
 def singular() -> DefinitionError:
@@ -196,7 +196,7 @@ class SparseFactor:
                 front[0, 0] = 1.0 / self.pivots[column]
             if waiting[column]:
                 fronts[column] = front
-            parts[column] = front[0]
+            parts[column] = front[0].copy()  # not a view, which would keep the whole front
         keys = np.concatenate([column * count + rows for column, rows in enumerate(held)])
         return np.concatenate(parts), keys
 

@@ -15,8 +15,8 @@ from models.balance.network import OBSERVABLE, Network, Structure, classify, cro
 from models.errors import DefinitionError
 
 DENSE_ROWS = 500  # balances of a group up to which the whole matrix is the quickest
-ROUNDING_TOLERANCE = 1e-13  # of a variance from which nearly as much is taken
-COMPUTED_BLOCK = 128  # unmeasured streams whose uncertainty is found in one solution
+POOR_SHARE = 1e-4  # of a reading's variance that is left: below, the difference would lose its digits
+COMPUTED_BLOCK = 128  # sums of streams whose uncertainty is found in one solution
 
 
 @dataclass(frozen=True)
@@ -154,12 +154,17 @@ def reconcile(network: Network, measured: Measurements) -> Reconciliation:
         x̂ = y − S A' H⁻¹ r,  cov x̂ = S − S A' H⁻¹ A S                         (2)
         d = A' H⁻¹ r,  score_j = d_j / √(A' H⁻¹ A)_jj                         (3)
         statistic = r' H⁻¹ r, of chi-squared law with as many degrees as rows  (4)
+        var g'x̂ = (g − A'u)' S (g − A'u),  u = H⁻¹ A S g                      (5)
+
+    The last is the variance of a sum g of streams without a difference of large numbers.
 
     References
     ----------
     .. [1] D. R. Kuehn, H. Davidson, Chem. Eng. Prog. 57 (1961) 44–47.
     .. [2] R. S. H. Mah, A. C. Tamhane, AIChE J. 28 (1982) 828–830.
-    .. [3] R. S. H. Mah, "Chemical Process Structures and Information Flows", Butterworths, 1990, ch. 8–9.
+    .. [3] R. S. Bucy, P. D. Joseph, "Filtering for Stochastic Processes with Applications to Guidance",
+       Interscience, 1968: eq. 5.
+    .. [4] R. S. H. Mah, "Chemical Process Structures and Information Flows", Butterworths, 1990, ch. 8–9.
     """
     structure = classify(network)
     streams, nodes = len(network.streams), len(network.nodes)
@@ -255,18 +260,25 @@ class _Part:
         self.factor = factor = self._factored()
         residual = self.incidence @ self.value  # eq. 1
         pull = factor.solve(residual)
+        pull = pull + factor.solve(
+            self.incidence @ (self.value - self._adjustment(pull))
+        )  # digits lost to rough readings
         along = self.incidence.T @ pull  # eq. 3
         weight = self._weight(self.tail, self.head)
         checked = self.tail != self.head
-        adjustment = self.variance * along
+        adjustment = self._adjustment(pull)
         explained = self.variance**2 * weight
         if self.shared.shape[1]:
-            adjustment = adjustment + self.shared @ (self.latent.T @ pull)  # eq. 2
             explained = self._explained(weight)
         whole = self.variance + (self.shared**2).sum(axis=1) if self.shared.shape[1] else self.variance
         found.reconciled[self.streams] = self.value - adjustment
         found.adjustment[self.streams] = adjustment
-        found.uncertainty[self.streams] = _root(whole - explained, whole)
+        found.uncertainty[self.streams] = np.sqrt(np.maximum(whole - explained, 0.0))
+        poor = np.flatnonzero(whole - explained < POOR_SHARE * whole)
+        for block in blocks(len(poor), COMPUTED_BLOCK):
+            alone = np.zeros((len(self.streams), len(poor[block])))
+            alone[poor[block], range(len(poor[block]))] = 1.0
+            found.uncertainty[self.streams[poor[block]]] = self._uncertainty(alone)
         found.score[self.streams[checked]] = along[checked] / np.sqrt(weight[checked])
         self._score_nodes(found, pull)
         statistic = float(residual @ pull)  # eq. 4
@@ -278,15 +290,27 @@ class _Part:
         for block in blocks(len(observed), COMPUTED_BLOCK):
             streams = observed[block]
             sums = crossing(self.network, self.structure, streams, self.streams).T
-            spread = self.variance[:, None] * sums
-            if self.shared.shape[1]:
-                spread = spread + self.shared @ (self.shared.T @ sums)
-            whole = variance = np.sum(sums * spread, axis=0)
-            if self.factor is not None:
-                seen = self.incidence @ spread
-                variance = variance - np.sum(seen * self.factor.solve(seen), axis=0)
             found.reconciled[streams] = found.reconciled[self.streams] @ sums
-            found.uncertainty[streams] = _root(variance, whole)
+            found.uncertainty[streams] = self._uncertainty(sums)
+
+    def _adjustment(self, pull: FloatArray) -> FloatArray:
+        adjustment = self.variance * (self.incidence.T @ pull)
+        if self.shared.shape[1]:
+            adjustment = adjustment + self.shared @ (self.latent.T @ pull)
+        return np.asarray(adjustment)  # eq. 2
+
+    def _uncertainty(self, sums: FloatArray) -> FloatArray:
+        """Of sums of reconciled streams, a column each, as a sum of squares: nothing is taken from anything."""
+        if self.factor is not None:
+            sums = sums - self.incidence.T @ self.factor.solve(self.incidence @ self._spread(sums))  # eq. 5
+        return np.asarray(np.sqrt(np.sum(sums * self._spread(sums), axis=0)))
+
+    def _spread(self, columns: FloatArray) -> FloatArray:
+        """S times columns."""
+        spread = self.variance[:, None] * columns
+        if self.shared.shape[1]:
+            spread = spread + self.shared @ (self.shared.T @ columns)
+        return np.asarray(spread)
 
     def _factored(self) -> Factor:
         latent = self.latent if self.shared.shape[1] else None
@@ -332,11 +356,6 @@ class _Part:
         judged = self.members[self.structure.row[self.members] >= 0]
         row = self.structure.row[judged] - self.first
         found.node_score[judged] = pull[row] / np.sqrt(self.factor.inverse(row, row))
-
-
-def _root(variance: FloatArray, whole: FloatArray) -> FloatArray:
-    """Of what is left of a variance; of a stream that the others fix exactly, only rounding is."""
-    return np.sqrt(np.where(variance > ROUNDING_TOLERANCE * whole, variance, 0.0))
 
 
 _SHARES_NOTHING = csr_array((0, 0))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -165,6 +166,48 @@ def test_errors_of_instruments_alone_are_enough_for_a_large_group(monkeypatch: p
     columns = np.zeros((count + 1, 2))
     columns[:3] = [[1.0, 0.0], [0.0, 1.0], [0.5, 0.2]]
     agree(Drawn(network, measured, np.diag(np.square(random)) + columns @ columns.T), reconcile(network, measured))
+
+
+@pytest.mark.parametrize("rows", [500, 1])
+@pytest.mark.parametrize(("spread", "digits"), [(1e2, 1e-12), (1e4, 1e-7), (1e6, 3e-4)])
+def test_a_rough_reading_between_sharp_ones(
+    monkeypatch: pytest.MonkeyPatch, rows: int, spread: float, digits: float
+) -> None:
+    # Three readings of one flow in a row: their mean by weight, in fractions; the rough one hardly counts.
+    monkeypatch.setattr(module, "DENSE_ROWS", rows)
+    network = Network(["a", "b"], ["1", "2", "3"], np.array([-1, 0, 1]), np.array([0, 1, -1]), np.ones(3, dtype=bool))
+    found = reconcile(network, Measurements.of([100.0, spread / 4, 103.0], [1.0, spread, 1.0]))
+    weight = Fraction(1) / Fraction(spread) ** 2
+    mean = (100 + Fraction(spread / 4) * weight + 103) / (2 + weight)
+    assert found.reconciled == pytest.approx([float(mean)] * 3, abs=digits)
+    assert found.uncertainty == pytest.approx([math.sqrt(1 / (2 + weight))] * 3, rel=digits)
+    assert found.score[0] == pytest.approx(float(100 - mean) / math.sqrt(1 - 1 / (2 + weight)), rel=digits)
+
+
+@pytest.mark.parametrize("rows", [500, 1])
+def test_a_reading_too_rough_to_count_is_refused_and_not_answered_wrongly(
+    monkeypatch: pytest.MonkeyPatch, rows: int
+) -> None:
+    monkeypatch.setattr(module, "DENSE_ROWS", rows)
+    network = Network(["a", "b"], ["1", "2", "3"], np.array([-1, 0, 1]), np.array([0, 1, -1]), np.ones(3, dtype=bool))
+    with pytest.raises(DefinitionError, match="or no value"):
+        reconcile(network, Measurements.of([100.0, 0.0, 103.0], [1.0, 1e8, 1.0]))
+
+
+def test_a_long_line_of_readings_is_their_mean() -> None:
+    count = 700  # more than are solved as one whole matrix
+    network = Network(
+        [str(node) for node in range(count)], [str(stream) for stream in range(count + 1)],
+        np.arange(-1, count), np.append(np.arange(count), -1), np.ones(count + 1, dtype=bool),
+    )  # fmt: skip
+    value = np.random.default_rng(7).normal(50.0, 3.0, count + 1)
+    found = reconcile(network, Measurements.of(value.tolist(), [3.0] * (count + 1)))
+    assert isinstance(found.groups[0].factor, SparseFactor)
+    np.testing.assert_allclose(found.reconciled, value.mean(), rtol=1e-11)
+    np.testing.assert_allclose(found.uncertainty, 3.0 / math.sqrt(count + 1), rtol=1e-9)
+    # Sum of squares about the mean over the variance: the textbook statistic of equal means.
+    assert found.groups[0].statistic == pytest.approx(float(np.sum((value - value.mean()) ** 2)) / 9.0, rel=1e-10)
+    assert found.groups[0].rows == count
 
 
 def test_what_is_certain_and_does_not_balance_is_refused() -> None:
