@@ -26,6 +26,7 @@ class Method(IntFlag):
     VAPOUR = 2
     ROOF = 4
     SATURATION = 8
+    FULL = 16
 
 
 class Mark(IntFlag):

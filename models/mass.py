@@ -143,7 +143,10 @@ def _compute(method: Method, vessels: Vessels, state: State, made: _Made, where:
         if method & Method.VAPOUR:
             step.conditions = _vapour_conditions(step, method)
         if method & Method.LIQUID:
-            _geometry(step)
+            if method & Method.FULL:
+                _filled(step)
+            else:
+                _geometry(step)
             _liquid(step, method)
         else:
             _whole_vessel(step)
@@ -205,6 +208,17 @@ def _geometry(step: _Step) -> None:
     )  # fmt: skip
     step.sens["_water_area"] = np.asarray(factor * water_area)
     step.sens["_reach"] = reach
+
+
+def _filled(step: _Step) -> None:
+    """A line that is kept full: no level, the whole capacity and the strain of a full vessel."""
+    total, _ = _strain(step, step.state.liquid_temperature)
+    full = step.vessels.capacity + np.zeros(len(step.marks))
+    step.out.update(
+        tank_volume=full, surface_area=np.zeros(1), free_water_volume=np.zeros(1), shell_factor=1.0 + total,
+        full_factor=1.0 + total, level_fraction=np.ones(1),
+    )  # fmt: skip
+    step.sens["_water_area"] = step.sens["_reach"] = np.zeros(1)
 
 
 def _liquid(step: _Step, method: Method) -> None:

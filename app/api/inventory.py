@@ -7,9 +7,9 @@ from typing import Annotated
 from fastapi import APIRouter, Query, Request
 
 from app.api.parameters import AsOf, At, PathId, QueryInstant
-from app.schemas.inventory import Inventory, SiteInventory
+from app.schemas.inventory import Change, Inventory, SiteInventory
 from app.schemas.listing import Page
-from app.services import take_stock
+from app.services import change, take_stock
 
 router = APIRouter(prefix="/v1/sites/{site}", tags=["inventory"])
 Every = Annotated[float, Query(ge=1, le=31 * 86400, description="Seconds from one point to the next [s]")]
@@ -33,6 +33,16 @@ def get_course(
     """A vessel's inventory over time, at most 10,000 points."""
     found = take_stock.course(request.app.state.store, site, vessel, first, last, int(every * 1e6), as_of)
     return Page[Inventory].model_validate(found)
+
+
+@router.get("/vessels/{vessel}/change")
+def get_change(
+    request: Request, site: PathId, vessel: PathId,
+    first: Annotated[QueryInstant, Query(alias="from", description="The first instant")],
+    last: Annotated[QueryInstant, Query(alias="to", description="The second instant")], as_of: AsOf = None,
+) -> Change:  # fmt: skip
+    """Why the mass differs between two instants: by input, and what tickets moved."""
+    return Change.model_validate(change.change(request.app.state.store, site, vessel, first, last, as_of))
 
 
 @router.get("/vessels/{vessel}/working")

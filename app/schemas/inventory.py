@@ -244,3 +244,57 @@ class SiteInventory(Answer):
     known_at: AnsweredInstant | None = Field(description="The latest record that the answer includes")
     vessels: Items[Inventory] = Field(description="One for each vessel")
     totals: Items[SubstanceTotal] = Field(description="One for each substance")
+
+
+class ChangeStep(Answer):
+    """What one input changed, the others as far as they were replaced before it."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {"input": "level_m", "unit": "m", "before": 8.231, "after": 8.226, "contribution_kg": -2963.0}
+            ]
+        }
+    )
+
+    input: str = Field(description="The input; its name ends in its unit")
+    unit: str = Field(description="Unit of before and after")
+    before: Known = Field(default=None, description="Its value at the first instant, in unit")
+    after: Known = Field(default=None, description="Its value at the second instant, in unit")
+    contribution_kg: Known = Field(description="What it changed of the mass [kg]")
+
+
+class ChangeTransfer(Answer):
+    """What one ticket moved into the vessel; negative out of it."""
+
+    model_config = ConfigDict(json_schema_extra={"examples": [{"transfer": "road-77", "mass_kg": -21840.0}]})
+
+    transfer: str = Field(description="The transfer")
+    mass_kg: Known = Field(description="Its part between the instants; null where nobody measured it [kg]")
+
+
+class Change(Answer):
+    """Why the mass in a vessel differs between two instants."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "vessel": "tk-12", "from": "2026-03-14T23:00:00Z", "to": "2026-03-15T05:00:00Z",
+                    "mass_before_kg": 4778927.1, "mass_after_kg": 4775964.1, "difference_kg": -2963.0,
+                    "steps": [], "transfers": [], "unexplained_kg": -2963.0,
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    vessel: str = Field(description="The vessel")
+    from_: AnsweredInstant = Field(alias="from", description="The first instant")
+    to: AnsweredInstant = Field(description="The second instant")
+    known_at: AnsweredInstant | None = Field(default=None, description="The latest record that it includes")
+    mass_before_kg: Known = Field(description="Mass at the first instant [kg]")
+    mass_after_kg: Known = Field(description="Mass at the second instant [kg]")
+    difference_kg: Known = Field(description="After less before; the steps add up to it [kg]")
+    steps: Items[ChangeStep] = Field(description="By input, in the order of the chain")
+    transfers: Items[ChangeTransfer] = Field(description="What tickets moved in between")
+    unexplained_kg: Known = Field(description="The difference less what tickets moved [kg]")

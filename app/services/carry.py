@@ -59,6 +59,7 @@ class Moves:
     tickets: Sequence[tuple[Ticket, Transfer]]
     vessels: Mapping[str, CompiledVessel]
     meters: Mapping[str, Meter]
+    spaces: Mapping[str, float]
 
     def of(self, vessel: str) -> list[tuple[Ticket, Transfer]]:
         """Those with an end at a vessel."""
@@ -66,33 +67,38 @@ class Moves:
 
     def part(self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate]) -> move.Moved:
         """What a ticket moved between two instants."""
-        return move.moved(ticket, first, last, self.vessels, self.meters, standard)
+        return move.moved(ticket, first, last, self.vessels, self.meters, standard, self.spaces)
 
 
 def measure_at(
-    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], at: int, known: int,
-    meters: Mapping[str, Meter], *, closing: bool,
+    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], asked: Instants, known: int,
+    meters: Mapping[str, Meter], *, closing: bool = False,
 ) -> Measured:  # fmt: skip
-    """Masses of many vessels at one instant, each read where it was read and carried to the instant."""
-    asked = np.full(len(vessels), at, dtype=np.int64)
+    """Masses of many vessels at one instant, or of one vessel at many, each read where it was read.
+
+    A row whose level (or pressure) was read at another instant is measured there, temperature and all, and
+    carried to the instant that was asked for by what moved in between.
+    """
+    rows = len(asked)
     first = collect(connection, site_id, vessels, asked, known)
-    ahead = np.full(len(vessels), ALWAYS) if closing else None
+    ahead = np.full(rows, ALWAYS) if closing else None
     instants, empties = _read_at(first, choices(first, ahead), asked)
     collected = first if (instants == asked).all() else collect(connection, site_id, vessels, instants, known)
     _spend(collected, asked - instants)
-    within = np.full(len(vessels), ALWAYS) if closing else np.maximum(asked - instants, 0)
+    within = np.full(rows, ALWAYS) if closing else np.maximum(asked - instants, 0)
     measured = measure(collected, ahead=within, asked=asked)
-    carried = {row: Carried(empty=row in empties) for row in range(len(vessels))}
-    moves = _moves(connection, site_id, measured, instants, at, known, meters)
-    corrections = _corrections(measured, moves, instants, carried)
+    carried = {row: Carried(empty=row in empties) for row in range(rows)}
+    moves = _moves(connection, site_id, measured, known, meters)
+    corrections = _corrections(measured, moves, carried)
     if corrections is not None:
         measured = measure(collected, ahead=within, asked=asked, corrections=corrections)
-    for row, vessel in enumerate(vessels):
-        _move(measured, moves, row, vessel.name, int(instants[row]), at, carried[row])
+    for row in range(rows):
+        _move(measured, moves, row, carried[row])
     measured.carried = carried
     measured.tickets = [(ticket.name, ticket.body) for ticket, _ in moves.tickets]
-    _standing_still(connection, site_id, measured, moves, instants, known)
-    check(connection, site_id, first, measured, known)
+    _standing_still(connection, site_id, measured, moves, known)
+    if len(vessels) == rows:
+        check(connection, site_id, first, measured, known)
     return measured
 
 
@@ -100,61 +106,67 @@ def _read_at(collected: Collected, chosen: Mapping[str, Chosen], asked: Instants
     """The instant at which each row is measured, and the rows that were found empty then."""
     instants = asked.copy()
     empties: set[int] = set()
-    for row, vessel in enumerate(collected.vessels):
-        key = chosen[_key(vessel)]
+    empty = chosen["empty"]
+    for row in range(len(asked)):
+        key = chosen[collected.vessel(row).key_input]
         if key.usable[row] and key.share[row] == 0.0:
             instants[row] = key.taken_at[row]
-        empty = chosen["empty"]
         if empty.usable[row] and not (key.usable[row] and key.taken_at[row] >= empty.taken_at[row]):
             instants[row] = empty.taken_at[row]
             empties.add(row)
     return instants, empties
 
 
-def _key(vessel: CompiledVessel) -> str:
-    """The input whose instant is the reading's."""
-    return "level" if vessel.has_liquid and vessel.curve is not None else "pressure"
-
-
 def _spend(collected: Collected, elapsed: Instants) -> None:
     """What is too old at the instant that was asked for does not win again at the reading of another source."""
-    for row, vessel in enumerate(collected.vessels):
-        age = collected.candidates[_key(vessel)].max_age[row]
+    for row in range(collected.rows):
+        age = collected.candidates[collected.vessel(row).key_input].max_age[row]
         age[age < ALWAYS] -= max(int(elapsed[row]), 0)
 
 
-def _moves(
-    connection: Connection, site_id: int, measured: Measured, instants: Instants, at: int, known: int,
-    meters: Mapping[str, Meter],
-) -> Moves:  # fmt: skip
+def _moves(connection: Connection, site_id: int, measured: Measured, known: int, meters: Mapping[str, Meter]) -> Moves:
     """Tickets since the oldest of what counts in each vessel: its reading, its sample, its water dip."""
-    vessels = measured.collected.vessels
     since: dict[str, int] = {}
-    for row, vessel in enumerate(vessels):
+    instants = measured.collected.at
+    latest = int(instants.max())
+    for row in range(measured.collected.rows):
+        at = measured.instant(row)
+        latest = max(latest, at)
         oldest = min(int(instants[row]), at - DAY_US)
-        for name, instant in (
-            ("density", measured.chosen["density"].begins),
-            ("free_water", measured.chosen["free_water"].begins),
-        ):
-            if measured.chosen[name].usable[row]:
-                oldest = min(oldest, int(instant[row]))
-        since[vessel.name] = max(oldest, at - LOOK_BACK_US)
-    latest = max(at, int(instants.max()))
+        for name in ("density", "free_water"):
+            chosen = measured.chosen[name]
+            if chosen.usable[row]:
+                oldest = min(oldest, int(chosen.begins[row]))
+        vessel = measured.vessel(row).name
+        since[vessel] = min(since.get(vessel, at), max(oldest, at - LOOK_BACK_US))
     found = transfers.touching(connection, site_id, since, latest, known)
-    return Moves([(one, move.body_of(one)) for one in found], {vessel.name: vessel for vessel in vessels}, meters)
+    held = {vessel.name: vessel for vessel in measured.collected.vessels}
+    return Moves([(one, move.body_of(one)) for one in found], held, meters, vapours(measured))
 
 
-def _move(measured: Measured, moves: Moves, row: int, vessel: str, read: int, at: int, carried: Carried) -> None:
+def vapours(measured: Measured) -> dict[str, float]:
+    """Density of the vapour in each vessel that has one. [kg/m³]"""
+    densities = measured.result["vapour_density"]
+    return {
+        measured.vessel(row).name: float(densities[row])
+        for row in range(measured.collected.rows)
+        if math.isfinite(densities[row])
+    }
+
+
+def _move(measured: Measured, moves: Moves, row: int, carried: Carried) -> None:
     """Receipts less deliveries between the reading and the instant, backwards where it was read after it."""
+    read, at = int(measured.collected.at[row]), measured.instant(row)
     if read == at:
         return
-    standard = {name: standard_density(measured, i) for i, name in enumerate(moves.vessels) if i == row}
+    vessel = measured.vessel(row).name
     sign = 1.0 if read < at else -1.0
+    first, last = min(read, at), max(read, at)
     terms: list[tuple[float, Estimate]] = []
     for ticket, body in moves.of(vessel):
-        if body.of == "water" or ticket.started_at >= max(read, at) or ticket.ended_at <= min(read, at):
+        if body.of == "water" or ticket.started_at >= last or ticket.ended_at <= first:
             continue
-        part = moves.part(ticket, min(read, at), max(read, at), standard)
+        part = moves.part(ticket, first, last, {vessel: standard_density(measured, row)})
         if part.mass is None:
             carried.warn(
                 "input_uncertain", "an unmetered transfer ran between the reading and the instant: its part is not known",
@@ -166,20 +178,20 @@ def _move(measured: Measured, moves: Moves, row: int, vessel: str, read: int, at
         carried.moved = combine(terms)
 
 
-def _corrections(
-    measured: Measured, moves: Moves, instants: Instants, carried: Mapping[int, Carried]
-) -> Corrections | None:
+def _corrections(measured: Measured, moves: Moves, carried: Mapping[int, Carried]) -> Corrections | None:
     """What samples and water dips no longer say, row by row."""
     blends: dict[int, Blend] = {}
     dry: set[int] = set()
-    for row, vessel in enumerate(measured.collected.vessels):
-        if not vessel.has_liquid:
+    for row in range(measured.collected.rows):
+        vessel = measured.vessel(row)
+        own = moves.of(vessel.name) if vessel.has_liquid else []
+        if not own:
             continue
-        own = moves.of(vessel.name)
-        blend = _sample(measured, moves, own, row, int(instants[row]), carried[row])
+        read = int(measured.collected.at[row])
+        blend = _sample(measured, moves, own, row, read, carried[row])
         if blend is not None:
             blends[row] = blend
-        if _water(measured, own, row, int(instants[row]), carried[row]):
+        if _water(measured, own, row, read, carried[row]):
             dry.add(row)
     return Corrections(blends, frozenset(dry)) if blends or dry else None
 
@@ -264,27 +276,22 @@ def _water(measured: Measured, own: Sequence[tuple[Ticket, Transfer]], row: int,
     return True
 
 
-def _standing_still(
-    connection: Connection, site_id: int, measured: Measured, moves: Moves, instants: Instants, known: int
-) -> None:
+def _standing_still(connection: Connection, site_id: int, measured: Measured, moves: Moves, known: int) -> None:
     """A level that did not move while tickets did is doubted, before any night is closed."""
     suspects: dict[int, int] = {}
-    for row, vessel in enumerate(measured.collected.vessels):
-        read = int(instants[row])
-        begun = [
-            t.started_at
-            for t, b in moves.of(vessel.name)
-            if t.started_at < read and t.ended_at > read - DAY_US and b.of is None
-        ]
-        if begun and vessel.has_liquid and measured.chosen["level"].usable[row]:
-            began = max(min(begun), read - DAY_US)
-            if began < read and _certain(measured, moves, row, began, read):
-                suspects[row] = began
+    for row in range(measured.collected.rows):
+        vessel, read = measured.vessel(row), int(measured.collected.at[row])
+        if vessel.key_input != "level" or not measured.chosen["level"].usable[row]:
+            continue
+        began = _began(moves, vessel.name, read)
+        if began is not None and _certain(measured, moves, row, began, read):
+            suspects[row] = began
     if not suspects:
         return
     rows = sorted(suspects)
-    vessels = tuple(measured.collected.vessels[row] for row in rows)
-    then = collect(connection, site_id, vessels, np.array([suspects[row] for row in rows], dtype=np.int64), known)
+    vessels = measured.collected.vessels
+    several = tuple(vessels[row] for row in rows) if len(vessels) > 1 else vessels
+    then = collect(connection, site_id, several, np.array([suspects[row] for row in rows], dtype=np.int64), known)
     former = choices(then, np.full(len(rows), ALWAYS))["level"]
     for place, row in enumerate(rows):
         change = at_row(measured.state.level, row) - float(former.value[place])
@@ -294,6 +301,16 @@ def _standing_still(
                 f"the level moved {change * 1000.0:.1f} mm while tickets moved more than the gauge could miss: it may stand still",
                 uncertain=True,
             )  # fmt: skip
+
+
+def _began(moves: Moves, vessel: str, read: int) -> int | None:
+    """When the earliest ticket of the last day began that moved something before a reading."""
+    begun = [
+        ticket.started_at
+        for ticket, body in moves.of(vessel)
+        if ticket.started_at < read and ticket.ended_at > read - DAY_US and body.of is None
+    ]
+    return max(min(begun), read - DAY_US) if begun else None
 
 
 def _certain(measured: Measured, moves: Moves, row: int, first: int, last: int) -> bool:

@@ -87,6 +87,10 @@ class Collected:
         """Number of rows."""
         return len(self.at)
 
+    def vessel(self, row: int) -> CompiledVessel:
+        """The vessel of a row."""
+        return self.vessels[row if len(self.vessels) > 1 else 0]
+
 
 @dataclass(frozen=True)
 class Slot:

@@ -90,6 +90,18 @@ class CompiledVessel:
         return bool(self.method & Method.LIQUID)
 
     @property
+    def is_full(self) -> bool:
+        """Whether it is a line kept full: a liquid without a level."""
+        return bool(self.method & Method.FULL)
+
+    @property
+    def key_input(self) -> str:
+        """The input without which there is no mass, and whose instant is the reading's."""
+        if self.is_full:
+            return "liquid_temperature"
+        return "level" if self.has_liquid else "pressure"
+
+    @property
     def has_vapour(self) -> bool:
         """Whether the substance's vapour counts in this vessel."""
         return bool(self.method & Method.VAPOUR)
@@ -227,6 +239,8 @@ def compile_bodies(
     method = Method.NOTHING
     if liquid is not None and kind not in ("fixed_volume", "junction"):
         method |= Method.LIQUID
+    elif liquid is not None and kind == "fixed_volume" and not (space == "product" and vapour is not None):
+        method |= Method.LIQUID | Method.FULL
     if space == "product" and vapour is not None and kind != "junction":
         method |= Method.VAPOUR
     if body.floating_roof is not None:
@@ -433,6 +447,19 @@ def _gas_standard_density(c: CompiledVessel) -> float:
     pressure = base_state(c.site)[1]
     molar_mass = float(virial_columns((c.mixture,)).molar_mass[0])
     return molar_mass * pressure / (constants.GAS_CONSTANT * temperature)
+
+
+def vapour_density(c: CompiledVessel, pressure: float, temperature: float) -> tuple[float, float]:
+    """Density of the vessel's vapour and its relative standard uncertainty; of an ideal gas where refused. [kg/m³]"""
+    assert c.mixture is not None
+    columns = virial_columns((c.mixture,))
+    state = columns.state(pressure, temperature, 0)
+    if np.isfinite(state.density):
+        return float(state.density), float(state.model_uncertainty)
+    return float(columns.molar_mass[0]) * pressure / (constants.GAS_CONSTANT * temperature), IDEAL_GAS_SHARE
+
+
+IDEAL_GAS_SHARE = 0.2  # of a vapour so dense that the virial equation refuses it
 
 
 def density_at(c: CompiledVessel, temperature: float, pressure: float) -> float:

@@ -211,6 +211,8 @@ def _counts(measured: Measured, row: int, name: str) -> bool:
         return bool(carried and carried.empty) and name == "empty"
     if name == "roof_load":
         return vessel.body.floating_roof is not None
+    if vessel.is_full and name in ("level", "free_water"):
+        return False
     if name in ("level", "liquid_temperature", "free_water", "density", "sediment_water"):
         return vessel.has_liquid
     if name == "vapour_temperature":  # beside a liquid it counts with a pressure only
@@ -257,7 +259,8 @@ def _water_unread(measured: Measured, row: int) -> bool:
     """Free water that was never read counts as none, and is said to."""
     assumed = measured.assumed.get("free_water_level_m")
     known = measured.chosen["free_water"].usable[row] or (assumed is not None and assumed[row])
-    return measured.vessel(row).has_liquid and not known
+    vessel = measured.vessel(row)
+    return vessel.has_liquid and not vessel.is_full and not known
 
 
 def _assumed(quantity: str, value: float) -> dict[str, Any]:
@@ -330,6 +333,7 @@ def reason(measured: Measured, row: int) -> dict[str, str]:
     needed = ["pressure", "vapour_temperature"]
     if vessel.has_liquid:  # a space that can be saturated needs nothing read
         needed = ["level", "liquid_temperature"] + ([] if vessel.has_vapour else ["pressure"])
+        needed = needed[1:] if vessel.is_full else needed
     marks = Mark(int(measured.result.marks[row]))
     for mark, (code, detail) in WARNINGS.items():
         if marks & mark & UNMEASURED:
@@ -413,5 +417,5 @@ def read_at(measured: Measured, row: int) -> int | None:
     carried = measured.carried.get(row)
     if carried is not None and carried.empty:
         return int(measured.collected.at[row])
-    chosen = measured.chosen["level" if measured.vessel(row).has_liquid else "pressure"]
+    chosen = measured.chosen[measured.vessel(row).key_input]
     return int(chosen.taken_at[row]) if chosen.usable[row] else None

@@ -73,8 +73,7 @@ class Measured:
 
     def vessel(self, row: int) -> CompiledVessel:
         """The vessel of a row."""
-        vessels = self.collected.vessels
-        return vessels[row if len(vessels) > 1 else 0]
+        return self.collected.vessel(row)
 
 
 @dataclass(frozen=True)
@@ -436,6 +435,17 @@ def _sample(builder: _States, errors: Errors) -> None:
     )  # fmt: skip
     errors.measured("sediment_water_pct", "sediment-water", "sediment_water", builder.chosen["sediment_water"],
                     builder.collected.origins["sediment_water"], scale=0.01)  # fmt: skip
+
+
+def _blends(builder: _States, errors: Errors) -> None:
+    """Contents that received something since their sample: what their density may be off by."""
+    blends = builder.blends
+    if not blends:
+        return
+    sigma = np.array([blends[row].sigma if row in blends else 0.0 for row in range(builder.collected.rows)])
+    errors.add(
+        "observed_density_kg_m3", "density", sigma, "model", lambda row: blends[row].name, declared=lambda row: False
+    )
 
 
 def _vapour(builder: _States, errors: Errors, pressure: FloatColumns) -> None:

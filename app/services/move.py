@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -11,7 +12,7 @@ from app.schemas.meter import Meter
 from app.schemas.transfer import MovedQuantity, NamedTransfer, Transfer
 from app.schemas.types import canonical
 from app.services import mark
-from app.services.compile import CompiledVessel, density_at
+from app.services.compile import CompiledVessel, boiling_pressure, density_at, mean_atmosphere, vapour_density
 from app.services.find import ALL_TIME, site_number
 from app.store import definitions, transfers
 from app.store.engine import Store, Writing
@@ -20,6 +21,7 @@ from models import constants, instruments, units
 from models.estimate import Estimate, combine
 
 BOUNDARY = "boundary:"
+SAME_VOLUME_SHARE = 0.2  # of a vapour return that nobody measured
 SPLIT_SHARE = 0.05  # of the whole, of a ticket divided by time; at most half of its smaller part
 
 
@@ -70,7 +72,9 @@ def _keep(writing: Writing, name: str, body: Transfer, text: str) -> str:
     """Keep one ticket; the closed nights that it or its former text touches become due."""
     former = transfers.current(writing.connection, writing.site_id, name, writing.recorded_at)
     ends = tuple("" if end.startswith(BOUNDARY) else end for end in (body.from_, body.to))
-    outcome = transfers.put(writing, name, body.started_at, body.ended_at, text, ends=(ends[0], ends[1]), void=body.void)
+    outcome = transfers.put(
+        writing, name, body.started_at, body.ended_at, text, ends=(ends[0], ends[1]), void=body.void
+    )
     if outcome != "unchanged":
         last = writing.recorded_at if body.ended_at is None else body.ended_at
         mark.period(writing, body.started_at, last, "late or corrected transfer")
@@ -88,9 +92,6 @@ def _refusals(writing: Writing, body: Transfer) -> list[FieldError]:
             found.append(FieldError(pointer, "unknown_vessel", detail))
     if body.meter is not None and not _known(writing, "meter", body.meter):
         found.append(FieldError("/meter", "unknown_meter", "This site has no meter of that id"))
-    if body.vapour_return is not None and (isinstance(body.vapour_return, str) or body.vapour_return.mass_kg is None):
-        detail = "This version takes a vapour return by its mass_kg"
-        found.append(FieldError("/vapour_return", "not_computed", detail))
     return found
 
 
@@ -115,12 +116,12 @@ def current(store: Store, site: str, name: str, as_of: int | None) -> tuple[Tick
 
 def moved(
     ticket: Ticket, opening: int, closing: int, vessels: Mapping[str, CompiledVessel], meters: Mapping[str, Meter],
-    standard: Mapping[str, Estimate],
+    standard: Mapping[str, Estimate], spaces: Mapping[str, float] | None = None,
 ) -> Moved:  # fmt: skip
     """What a ticket moved within a period, with its errors named.
 
     ``standard`` is the standard density of each vessel at the period's close with its parts, for tickets
-    in volume that bring no density of their own.
+    in volume that bring no density of their own; ``spaces`` the density of its vapour, for what came back.
     """
     body = body_of(ticket)
     source = None if body.from_.startswith(BOUNDARY) else body.from_
@@ -138,18 +139,47 @@ def moved(
     if factor is None:
         return Moved(ticket.name, source, target, None, water=False)
     net = 1.0 - body.sediment_water_pct / 100.0
-    returned = _returned(body) * (share / whole if whole else 0.0)
-    mass = Estimate(
-        share * factor.value * net - returned, {name: share * net * part for name, part in factor.parts.items()}
+    part = share / whole if whole else 0.0
+    mass = Estimate(share * factor.value * net, {name: share * net * one for name, one in factor.parts.items()})
+    errors = _ticket_errors(ticket.name, body, meters, mass.value, part)
+    errors.update({name: one * factor.value * net for name, one in split.items()})
+    returned = _returned(ticket.name, body, vessel, whole * factor.value * net, standard, spaces or {})
+    return Moved(
+        ticket.name,
+        source,
+        target,
+        combine([(1.0, mass), (1.0, Estimate(0.0, errors)), (-part, returned)]),
+        water=False,
     )
-    errors = _ticket_errors(ticket.name, body, meters, mass.value, share / whole if whole else 0.0)
-    errors.update({name: part * factor.value * net for name, part in split.items()})
-    return Moved(ticket.name, source, target, combine([(1.0, mass), (1.0, Estimate(0.0, errors))]), water=False)
 
 
-def _returned(body: Transfer) -> float:
+def _returned(
+    name: str, body: Transfer, vessel: CompiledVessel | None, mass: float, standard: Mapping[str, Estimate],
+    spaces: Mapping[str, float],
+) -> Estimate:  # fmt: skip
+    """Vapour that came back with the whole of a transfer: weighed, by its volume, or the liquid's volume of it."""
     given = body.vapour_return
-    return 0.0 if given is None or isinstance(given, str) else given.mass_kg or 0.0
+    if given is None:
+        return Estimate(0.0)
+    if not isinstance(given, str) and given.mass_kg is not None:
+        return Estimate(given.mass_kg)
+    if vessel is None or vessel.mixture is None:
+        return Estimate(0.0)
+    if isinstance(given, str):
+        dense = standard.get(vessel.name)
+        liquid = dense.value if dense is not None else vessel.density[0]
+        density = spaces.get(vessel.name, math.nan)
+        if not math.isfinite(density):  # never measured: saturated at the site's base temperature
+            base = vessel.parameters["standard_temperature"]
+            density, _ = vapour_density(vessel, boiling_pressure(vessel.boiling, base), base)
+        returned = mass / liquid * density
+        return Estimate(returned, {f"vapour-return:{name}": SAME_VOLUME_SHARE * returned})
+    assert given.volume_m3 is not None and given.temperature_c is not None and given.pressure_kpa is not None
+    atmosphere, _ = mean_atmosphere(vessel.site)
+    pressure = given.pressure_kpa * units.PASCAL_PER_KPA + atmosphere
+    density, spread = vapour_density(vessel, pressure, float(units.kelvin(given.temperature_c)))
+    returned = given.volume_m3 * density
+    return Estimate(returned, {f"vapour:{vessel.body.substance}": spread * returned})
 
 
 def _kilograms_per_unit(

@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from app.schemas.meter import Meter
 from app.services import move
+from app.services.carry import vapours
 from app.services.instants import Period
 from app.services.judge import Piece, Regrade, end_of
 from app.services.measure import standard_density
@@ -24,13 +25,15 @@ class Moving:
         self.meters = meters
         self.vessels = {vessel.name: vessel for vessel in closing.site.vessels}
         self.standard: dict[str, Estimate] = {}
+        self.spaces: dict[str, float] = {}
         if closing.measured is not None:
+            self.spaces = vapours(closing.measured)
             for row, vessel in enumerate(closing.site.vessels):
                 self.standard[vessel.name] = standard_density(closing.measured, row)
 
     def between(self, first: int, last: int) -> list[Moved]:
         """What every ticket moved between two instants."""
-        return [move.moved(one, first, last, self.vessels, self.meters, self.standard) for one in self.tickets]
+        return [move.moved(one, first, last, self.vessels, self.meters, self.standard, self.spaces) for one in self.tickets]
 
 
 def regraded(

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
+import numpy as np
 from sqlalchemy import Connection
 
 from app.schemas.meter import Meter
@@ -45,7 +46,7 @@ def restated(
     for old, new in pairs:
         two = []
         for one in (old, new):
-            measured = measure_at(connection, before.site_id, (one,), opening, known, meters, closing=True)
+            measured = measure_at(connection, before.site_id, (one,), np.array([opening]), known, meters, closing=True)
             two.append(mass_estimate(measured, 0))
         was, now = two
         stands = closed[old.name]

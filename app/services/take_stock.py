@@ -11,12 +11,11 @@ from sqlalchemy import Connection
 
 from app.errors import Unprocessable
 from app.services.carry import measure_at
-from app.services.collect import collect
 from app.services.explain import answers, mass_estimate, reason
 from app.services.find import site_number, watermark
 from app.services.in_force import SiteInForce, meters_in_force, named, site_in_force
 from app.services.instants import in_order
-from app.services.measure import Measured, measure
+from app.services.measure import Measured
 from app.store import definitions
 from app.store.engine import Store
 from models.estimate import Estimate, combine
@@ -52,7 +51,8 @@ def stock_at(
     measured = None
     if held.vessels:
         meters = meters_in_force(connection, site_id, when, known)
-        measured = measure_at(connection, site_id, held.vessels, at, known, meters, closing=closing)
+        asked = np.full(len(held.vessels), at, dtype=np.int64)
+        measured = measure_at(connection, site_id, held.vessels, asked, known, meters, closing=closing)
         found = answers(measured, working=working, budget=budget)
         masses = {vessel.name: mass_estimate(measured, row) for row, vessel in enumerate(held.vessels)}
     for one in held.out:
@@ -141,7 +141,8 @@ def course(
                 cited = [named("vessel", held.out[0])._asdict()]
                 found.extend(out_of_service(vessel, int(at), cited) for at in part)
             elif held.vessels:
-                found.extend(answers(measure(collect(connection, site_id, held.vessels[:1], part, known))))
+                meters = meters_in_force(connection, site_id, int(part[0]), known)
+                found.extend(answers(measure_at(connection, site_id, held.vessels[:1], part, known, meters)))
     return {"items": found, "next": None, "known_at": known}
 
 

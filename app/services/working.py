@@ -39,6 +39,11 @@ def _step(step: str, symbol: str, value: float, unit: str, method: str, referenc
 
 def _geometry(measured: Measured, row: int) -> Iterator[Step]:
     vessel, result, state = measured.vessel(row), measured.result, measured.state
+    if vessel.is_full:
+        yield _step("volume", "V", result["tank_volume"][row], "m³", "kept full: the whole capacity", "definition")
+        yield _step("shell factor", "K", result["shell_factor"][row], "1", "1 + ε_x + ε_y + ε_z: of a full vessel", STRAIN)
+        yield _step("gross observed volume", "GOV", result["gross_observed_volume"][row], "m³", "K V", ORDER)
+        return
     assert vessel.curve is not None
     parameters = vessel.parameters
     yield _step(
