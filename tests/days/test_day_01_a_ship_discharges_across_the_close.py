@@ -135,3 +135,18 @@ def test_a_totaliser_near_the_close_leaves_little_to_divide(harbour):
     # 5 % of 800 t are 40 t, beside the meter's 8.4 t and the gauge's 2.1 t.
     expected = math.sqrt(40_000.0**2 + 8_400.0**2 + 2 * KG_PER_MM**2)
     assert book["imbalance_uncertainty_kg"] == pytest.approx(expected, abs=1.0)
+
+
+def test_asked_why_it_is_heavier_the_tank_names_its_level_and_the_ship(harbour):
+    """From six to six: 5.600 m more of the same liquid, 8,400 t; the ship's ticket says 8,400 t; nothing is left."""
+    ship(harbour, ENDED, 14_994, [AT_CLOSE])
+    why = harbour.change("tk-1", "2026-03-13 06:00", "2026-03-14 06:00")
+    assert why["difference_kg"] == pytest.approx(8_400 * T, abs=0.5)
+    level = [one for one in why["steps"] if one["input"] == "level_m"]
+    assert [(one["before"], one["after"]) for one in level] == [(2.0, 7.6)]
+    assert level[0]["contribution_kg"] == pytest.approx(8_400 * T, abs=0.5)
+    others = [one["contribution_kg"] for one in why["steps"] if one["input"] != "level_m"]
+    assert others == pytest.approx([0.0] * len(others), abs=0.01)
+    assert [one["transfer"] for one in why["transfers"]] == ["ship-0313"]
+    assert why["transfers"][0]["mass_kg"] == pytest.approx(8_400 * T, abs=0.5)
+    assert why["unexplained_kg"] == pytest.approx(0.0, abs=0.5)
