@@ -15,7 +15,7 @@ from models.balance.network import OBSERVABLE, Network, Structure, classify, cro
 from models.errors import DefinitionError
 
 DENSE_ROWS = 500  # balances of a group up to which the whole matrix is the quickest
-POOR_SHARE = 1e-4  # of a reading's variance that is left: below, the difference would lose its digits
+POOR_TOLERANCE = 1e-4  # of a reading's variance that is left: below, the difference would lose its digits
 COMPUTED_BLOCK = 128  # sums of streams whose uncertainty is found in one solution
 
 
@@ -274,7 +274,7 @@ class _Part:
         found.reconciled[self.streams] = self.value - adjustment
         found.adjustment[self.streams] = adjustment
         found.uncertainty[self.streams] = np.sqrt(np.maximum(whole - explained, 0.0))
-        poor = np.flatnonzero(whole - explained < POOR_SHARE * whole)
+        poor = np.flatnonzero(whole - explained < POOR_TOLERANCE * whole)
         for block in blocks(len(poor), COMPUTED_BLOCK):
             alone = np.zeros((len(self.streams), len(poor[block])))
             alone[poor[block], range(len(poor[block]))] = 1.0

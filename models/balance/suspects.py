@@ -290,8 +290,10 @@ def _alternatives(
     """Faults that could stand in one place, until their shares are enough."""
     weight = np.where(statistic > 0.0, np.exp(0.5 * (statistic - statistic.max())), 0.0)
     share = weight / weight.sum()  # eq. 1
-    rank: IntArray = np.lexsort((np.arange(len(share)), -_rounded(statistic)))
-    count = int(np.searchsorted(np.cumsum(share[rank]), LISTED_SHARE)) + 1
+    rounded = _rounded(statistic)
+    rank: IntArray = np.lexsort((np.arange(len(share)), -rounded))
+    last = rank[min(int(np.searchsorted(np.cumsum(share[rank]), LISTED_SHARE)), len(rank) - 1)]
+    count = int(np.sum(rounded >= rounded[last]))  # with all that are as good as the last
     reach = float(ndtri(0.975))
     listed = []
     for index in rank[:count].tolist():

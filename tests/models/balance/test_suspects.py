@@ -124,6 +124,23 @@ def test_shares_are_of_one_and_fall() -> None:
     assert second.share / first.share == pytest.approx(math.exp((second.statistic - first.statistic) / 2), rel=1e-12)
 
 
+@pytest.mark.parametrize(("share", "listed"), [(0.955, 1), (0.951, 1), (0.949, 3)])
+def test_alternatives_are_listed_until_19_of_20_parts_of_the_evidence(share: float, listed: int) -> None:
+    # Three readings in a line, H = [2 -1; -1 2]: s missing at the first node gives T = 2 s²/3 for its loss and
+    # s²/6 for each of the two other faults, so the share of the first is 1 / (1 + 2 exp(-s²/4)).
+    missing = math.sqrt(-4.0 * math.log((1.0 / share - 1.0) / 2.0))
+    network = Network(["a", "b"], ["1", "2", "3"], np.array([-1, 0, 1]), np.array([0, 1, -1]), np.ones(3, dtype=bool))
+    measured = Measurements.of([100.0, 100.0 - missing, 100.0 - missing], [1.0, 1.0, 1.0])
+    (found,) = suspects(network, reconcile(network, measured), 0.05)
+    assert len(found) == listed
+    assert found[0].share == pytest.approx(share, rel=1e-9)
+    assert found[0].statistic == pytest.approx(2.0 * missing**2 / 3.0, rel=1e-12)
+    assert {one.fault.subject for one in found[1:]} == ({"2", "3"} if listed == 3 else set())
+    assert [one.statistic for one in found[1:]] == pytest.approx([missing**2 / 6.0] * (listed - 1), rel=1e-12)
+    # Of 1.96 standard uncertainties on either side, sqrt(3/2) each.
+    assert found[0].high - found[0].low == pytest.approx(2 * 1.959963985 * math.sqrt(1.5), rel=1e-9)
+
+
 @given(st.integers(0, 10**9))
 @settings(max_examples=50, derandomize=True, deadline=None)
 def test_statistics_beside_others_equal_least_squares(seed: int) -> None:
