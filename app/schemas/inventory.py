@@ -259,8 +259,8 @@ class ChangeStep(Answer):
 
     input: str = Field(description="The input; its name ends in its unit")
     unit: str = Field(description="Unit of before and after")
-    before: Known = Field(default=None, description="Its value at the first instant, in unit")
-    after: Known = Field(default=None, description="Its value at the second instant, in unit")
+    before: Known = Field(default=None, description="Its value at the first instant [unit]")
+    after: Known = Field(default=None, description="Its value at the second instant [unit]")
     contribution_kg: Known = Field(description="What it changed of the mass [kg]")
 
 

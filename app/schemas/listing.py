@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Generic, Literal, TypeVar
+from typing import Any, Generic, Literal, TypeVar
 
 from pydantic import ConfigDict, Field
 
@@ -14,7 +14,16 @@ LIMIT, LARGEST_LIMIT = 1_000, 10_000
 """Items of a page, if not said, and at most."""
 
 
-class Page(Answer, Generic[T]):
+class _Described(Answer):
+    """An envelope whose forms for each content keep its description."""
+
+    @classmethod
+    def __pydantic_init_subclass__(cls, **kwargs: Any) -> None:
+        super().__pydantic_init_subclass__(**kwargs)
+        cls.__doc__ = cls.__doc__ or next(one.__doc__ for one in cls.__mro__[1:] if one.__doc__)
+
+
+class Page(_Described, Generic[T]):
     """Part of a listing, oldest first; its pages share what was known."""
 
     model_config = ConfigDict(
@@ -28,7 +37,7 @@ class Page(Answer, Generic[T]):
     )
 
 
-class Defined(Answer, Generic[T]):
+class Defined(_Described, Generic[T]):
     """A definition as stored: its body as it was sent, and since when it holds."""
 
     model_config = ConfigDict(
