@@ -65,9 +65,11 @@ class Moves:
         """Those with an end at a vessel."""
         return [(ticket, body) for ticket, body in self.tickets if vessel in (body.from_, body.to)]
 
-    def part(self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate]) -> move.Moved:
-        """What a ticket moved between two instants."""
-        return move.moved(ticket, first, last, self.vessels, self.meters, standard, self.spaces)
+    def part(
+        self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate], asked: int | None = None
+    ) -> move.Moved:
+        """What a ticket moved between two instants, of which ``asked`` stands fast."""
+        return move.moved(ticket, first, last, self.vessels, self.meters, standard, self.spaces, asked)
 
 
 def measure_at(
@@ -166,7 +168,7 @@ def _move(measured: Measured, moves: Moves, row: int, carried: Carried) -> None:
     for ticket, body in moves.of(vessel):
         if body.of == "water" or ticket.started_at >= last or ticket.ended_at <= first:
             continue
-        part = moves.part(ticket, first, last, {vessel: standard_density(measured, row)})
+        part = moves.part(ticket, first, last, {vessel: standard_density(measured, row)}, at)
         if part.mass is None:
             carried.warn(
                 "input_uncertain", "an unmetered transfer ran between the reading and the instant: its part is not known",

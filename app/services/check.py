@@ -37,11 +37,10 @@ def check(connection: Connection, site_id: int, collected: Collected, measured: 
     that counts is one all the same.
     """
     found: dict[int, list[dict[str, Any]]] = {}
-    for asked, winner in _answered(connection, site_id, list(_asked(collected, measured)), collected, known):
+    for asked, winner, scatter in _answered(connection, site_id, list(_asked(collected, measured)), collected, known):
         vessel = collected.vessels[asked.row]
-        spread = math.hypot(
-            *_errors(vessel, asked.lower, asked.taken_at), *_errors(vessel, asked.winner, asked.taken_at)
-        )
+        random, systematic = _errors(vessel, asked.winner, asked.taken_at)
+        spread = math.hypot(*_errors(vessel, asked.lower, asked.taken_at), scatter * random, systematic)
         difference = asked.value - winner
         quantity = asked.winner.spec.quantities[0]
         found.setdefault(asked.row, []).append(
@@ -80,8 +79,9 @@ def _asked(collected: Collected, measured: Measured) -> Iterator[_Asked]:
 
 def _answered(
     connection: Connection, site_id: int, asked: Sequence[_Asked], collected: Collected, known: int
-) -> Iterator[tuple[_Asked, float]]:
-    """The value of the source that counts at the instant of each check; a series is asked once a round."""
+) -> Iterator[tuple[_Asked, float, float]]:
+    """The value of the source that counts at the instant of each check, and how much of one reading's scatter
+    it has; a series is asked once a round."""
     rest = list(asked)
     while rest:
         first: dict[int, _Asked] = {}
@@ -100,26 +100,28 @@ def _answered(
         earlier = {found.series_id: found for found in readings.newest_each(connection, site_id, before, known)}
         following = {found.series_id: found for found in readings.following_each(connection, site_id, after, known)}
         for series, one in first.items():
-            value = _between(one, earlier.get(series), following.get(series))
+            value, scatter = _between(one, earlier.get(series), following.get(series))
             if math.isfinite(value):
-                yield one, value
+                yield one, value, scatter
 
 
 def _since(collected: Collected, one: _Asked) -> int:
     return min(collected.vessels[one.row].since, one.taken_at)
 
 
-def _between(one: _Asked, before: Found | None, after: Found | None) -> float:
-    """The winner at the instant of the check: between two of its values, or the one before."""
+def _between(one: _Asked, before: Found | None, after: Found | None) -> tuple[float, float]:
+    """The winner at the instant of the check: between two of its values, which halves their scatter, or the one
+    before."""
     if before is None or before.value is None:
-        return math.nan
+        return math.nan, math.nan
     start = one.winner.convert(before.value, before.taken_at)
     if after is None or after.value is None or before.taken_at == one.taken_at:
-        return start
+        return start, 1.0
     if after.taken_at - before.taken_at > one.winner.max_age:
-        return start
+        return start, 1.0
     share = (one.taken_at - before.taken_at) / (after.taken_at - before.taken_at)
-    return (1.0 - share) * start + share * one.winner.convert(after.value, after.taken_at)
+    value = (1.0 - share) * start + share * one.winner.convert(after.value, after.taken_at)
+    return value, math.hypot(1.0 - share, share)
 
 
 def _errors(vessel: CompiledVessel, slot: Slot, at: int) -> tuple[float, float]:

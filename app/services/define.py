@@ -67,7 +67,8 @@ def _put(writing: Writing, kind: str, name: str, body: Any) -> Put:
             errors=[FieldError("/effective_from", "missing", "effective_from is an RFC 3339 instant with an offset")],
         ) from None
     if outcome != "unchanged":
-        begins = ALWAYS if body.effective_from is None else body.effective_from
+        # A meter's proving measures the interval before it, which began with the proving before.
+        begins = ALWAYS if body.effective_from is None or kind == "meter" else body.effective_from
         mark.period(writing, begins, ALL_TIME, f"{kind} defined anew")
     return Put(outcome, writing.recorded_at)
 

@@ -120,9 +120,16 @@ def _run(history: Sequence[Definition], place: int) -> tuple[int, int]:
 
 
 def meters_in_force(connection: Connection, site_id: int, at: int, known: int) -> dict[str, Meter]:
-    """The meters of a site at an instant, by id."""
+    """The meters of a site at an instant, by id; provings are dated themselves, so the last text's count."""
     found = definitions.in_force(connection, site_id, "meter", at, known)
-    return {one.name: Meter.model_validate_json(one.body) for one in found}
+    last = {one.name: one.body for one in definitions.in_force(connection, site_id, "meter", ALL_TIME, known)}
+    meters = {}
+    for one in found:
+        meter = Meter.model_validate_json(one.body)
+        if last[one.name] != one.body:
+            meter = meter.model_copy(update={"provings": Meter.model_validate_json(last[one.name]).provings})
+        meters[one.name] = meter
+    return meters
 
 
 def period_of(connection: Connection, site_id: int, name: str, label: str, known: int) -> Period:

@@ -343,6 +343,7 @@ def _parts(builder: _States, state: State) -> list[Part]:
     _surroundings(builder, errors)
     _sample(builder, errors)
     _vapour(builder, errors, state.pressure)
+    _blends(builder, errors)
     for quantity, name in ASSUMABLE.items():
         if quantity in builder.assumed:
             errors.assumed(quantity, name, builder.assumed[quantity], scale=SCALES.get(quantity, 1.0))

@@ -116,12 +116,13 @@ def current(store: Store, site: str, name: str, as_of: int | None) -> tuple[Tick
 
 def moved(
     ticket: Ticket, opening: int, closing: int, vessels: Mapping[str, CompiledVessel], meters: Mapping[str, Meter],
-    standard: Mapping[str, Estimate], spaces: Mapping[str, float] | None = None,
+    standard: Mapping[str, Estimate], spaces: Mapping[str, float] | None = None, asked: int | None = None,
 ) -> Moved:  # fmt: skip
     """What a ticket moved within a period, with its errors named.
 
     ``standard`` is the standard density of each vessel at the period's close with its parts, for tickets
-    in volume that bring no density of their own; ``spaces`` the density of its vapour, for what came back.
+    in volume that bring no density of their own; ``spaces`` the density of its vapour, for what came back;
+    ``asked`` the edge that stands fast where a mass is carried to it from its reading.
     """
     body = body_of(ticket)
     source = None if body.from_.startswith(BOUNDARY) else body.from_
@@ -135,11 +136,13 @@ def moved(
         ticket.name, body, kind, vessel, standard.get(source or "") or standard.get(target or "")
     )
     whole = float(getattr(body, kind))
-    share, split = _part(ticket.name, body, kind, whole, ticket.ended_at, opening, closing)
+    share, split = _part(ticket.name, body, kind, whole, ticket.ended_at, opening, closing, asked)
     if factor is None:
         return Moved(ticket.name, source, target, None, water=False)
     net = 1.0 - body.sediment_water_pct / 100.0
     part = share / whole if whole else 0.0
+    if body.meter is not None:
+        net /= 1.0 + _factor(meters.get(body.meter), body.started_at)[0] / 100.0
     mass = Estimate(share * factor.value * net, {name: share * net * one for name, one in factor.parts.items()})
     errors = _ticket_errors(ticket.name, body, meters, mass.value, part)
     errors.update({name: one * factor.value * net for name, one in split.items()})
@@ -232,12 +235,15 @@ def _ticket_errors(
         return {f"t:{name}": spread * share} if spread else {}
     meter = meters.get(body.meter)
     random = instruments.METER_RANDOM_PCT if meter is None or meter.random_pct is None else meter.random_pct
-    systematic, proved = _factor(meter, body.started_at)
+    _, systematic, proved = _factor(meter, body.started_at)
     return {f"t:{name}": mass * random / 100.0, f"meter:{body.meter}:{proved}": mass * systematic / 100.0}
 
 
-def _factor(meter: Meter | None, started_at: int) -> tuple[float, str]:
-    """Shared error of a meter between two provings, in percent, and which interval it is."""
+def _factor(meter: Meter | None, started_at: int) -> tuple[float, float, str]:
+    """What a meter reads high between two provings, its standard uncertainty (both in %), and which interval.
+
+    The proving at the interval's end measures its error: weighed with the declared one, whose mean is none.
+    """
     own = instruments.METER_SYSTEMATIC_PCT
     if meter is not None and meter.systematic_pct is not None:
         own = meter.systematic_pct
@@ -246,25 +252,55 @@ def _factor(meter: Meter | None, started_at: int) -> tuple[float, str]:
         if proving.at <= started_at:
             proved = str(proving.at)
             systematic = own if proving.systematic_pct is None else proving.systematic_pct
-    return systematic, proved
+        elif proving.as_found_pct is not None and proving.as_found_uncertainty_pct is not None:
+            total = systematic**2 + proving.as_found_uncertainty_pct**2
+            weight = systematic**2 / total if total > 0.0 else 1.0
+            known = math.sqrt(weight) * proving.as_found_uncertainty_pct
+            return weight * proving.as_found_pct, known, proved
+        else:
+            break
+    return 0.0, systematic, proved
 
 
 def _part(
-    name: str, body: Transfer, kind: str, whole: float, ended_at: int, opening: int, closing: int
+    name: str, body: Transfer, kind: str, whole: float, ended_at: int, opening: int, closing: int, asked: int | None
 ) -> tuple[float, dict[str, float]]:
     """How much of the quantity falls into the period, and the errors of dividing it, in its own unit.
 
     The parts of all periods always add up to the ticket; an error of the division is + before, − after.
+    Two divisions of one piece of a ticket err alike the nearer they are: at ``asked``, which a book also
+    divides it at, the error is its own; at the other edge it follows that one as a bridge over the piece does.
     """
     points = _running(body, kind, whole, ended_at)
-    before, early = _at(points, opening)
-    after, late = _at(points, closing)
+    first, last = _at(points, opening), _at(points, closing)
     errors: dict[str, float] = {}
-    if early:
-        errors[f"split:{name}:{opening}"] = -early
-    if late:
-        errors[f"split:{name}:{closing}"] = late
-    return after - before, errors
+    for sign, edge, other in ((-1.0, first, last), (1.0, last, first)):
+        if not edge.spread:
+            continue
+        tied = _tied(edge, other) if asked is not None and edge.at != asked and other.at == asked else 0.0
+        for at, size in ((edge.at, math.sqrt(1.0 - tied * tied)), (other.at, tied)):
+            if size:
+                errors[f"split:{name}:{at}"] = errors.get(f"split:{name}:{at}", 0.0) + sign * size * edge.spread
+    return last.quantity - first.quantity, errors
+
+
+@dataclass(frozen=True)
+class _Edge:
+    """Running quantity at an instant and its standard uncertainty; the piece of the ticket and the share of it."""
+
+    at: int
+    quantity: float
+    spread: float
+    piece: int
+    share: float
+
+
+def _tied(one: _Edge, other: _Edge) -> float:
+    """Correlation of the running quantity at two instants of one piece, both of whose ends are known."""
+    if one.piece != other.piece or not other.spread:
+        return 0.0
+    low, high = sorted((one.share, other.share))
+    return math.sqrt(low * (1.0 - high) / (high * (1.0 - low)))
 
 
 def _running(body: Transfer, kind: str, whole: float, ended_at: int) -> list[tuple[int, float]]:
@@ -282,15 +318,15 @@ def _quantity(one: MovedQuantity, kind: str) -> float:
     return float(getattr(one, kind))
 
 
-def _at(points: list[tuple[int, float]], instant: int) -> tuple[float, float]:
-    """Running quantity at an instant, by the points or by time between them, and its standard uncertainty."""
+def _at(points: list[tuple[int, float]], instant: int) -> _Edge:
+    """Running quantity at an instant, by the points or by time between them."""
     if instant <= points[0][0]:
-        return 0.0, 0.0
-    for (start, low), (end, high) in zip(points, points[1:], strict=False):
+        return _Edge(instant, 0.0, 0.0, -1, 0.0)
+    for piece, ((start, low), (end, high)) in enumerate(zip(points, points[1:], strict=False)):
         if instant == end:
-            return high, 0.0
+            return _Edge(instant, high, 0.0, piece, 1.0)
         if start < instant < end:
-            whole = high - low
-            first = whole * (instant - start) / (end - start)
-            return low + first, min(SPLIT_SHARE * whole, 0.5 * min(first, whole - first))
-    return points[-1][1], 0.0
+            whole, share = high - low, (instant - start) / (end - start)
+            spread = min(SPLIT_SHARE * whole, 0.5 * whole * min(share, 1.0 - share))
+            return _Edge(instant, low + whole * share, spread, piece, share)
+    return _Edge(instant, points[-1][1], 0.0, len(points), 1.0)

@@ -235,8 +235,6 @@ def test_ends_and_meters_that_nobody_defined_are_named(plant: Plant) -> None:
     assert [(one.pointer, one.code) for one in refused.value.errors] == [
         ("/from", "unknown_vessel"), ("/to", "unknown_vessel"), ("/meter", "unknown_meter"),
     ]  # fmt: skip
-    with pytest.raises(Unprocessable, match="vapour return"):
-        plant.ticket("t-1", "tk-1", JETTY, "2026-03-14T02:00", None, mass_kg=1.0, vapour_return="same_volume")
     with pytest.raises(NotFound):
         move.put(plant.store, "no-such-site", "t-1", received(mass_kg=1.0))
 
