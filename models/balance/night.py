@@ -7,14 +7,19 @@ from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.sparse import block_array, csc_array, csr_array, diags_array, eye_array
+from scipy.sparse.linalg import splu
 from scipy.special import erfc, ndtri
 from scipy.stats import chi2
 
 from models.arrays import FloatArray
+from models.balance.network import OUTSIDE as BEYOND
+from models.balance.network import Network, classify
 from models.estimate import Estimate, combine
 
 POWER = 0.95  # chance that a detectable imbalance is flagged
 RANK_TOLERANCE = 1e-9  # of the largest eigenvalue of the rows' correlation
+DENSE_ROWS = 400  # balances of a group up to which its correlation is formed
 
 
 @dataclass(frozen=True)
@@ -216,9 +221,7 @@ def night(
             if end is not None and (root := merged.find(end)) in terms:
                 terms[root].append((sign, movement.mass))
     rows = {root: _row(tuple(members[root]), combine(terms[root]), critical) for root in members}
-    observability = {
-        movement.name: _observability(movement, movements, opening, closing, merged) for movement in movements
-    }
+    observability = _observability(names, opening, closing, movements)
     return Night(tuple(rows.values()), without, _groups(rows, movements, merged), observability, critical)
 
 
@@ -281,42 +284,64 @@ def _tested(rows: Sequence[Row]) -> Group:
     """One group's statistic r' H^-1 r, with H from the named errors that its rows share."""
     members = tuple(name for row in rows for name in row.members)
     residual = np.array([row.imbalance.value for row in rows])
-    covariance = _covariance([row.imbalance for row in rows])
-    scale = np.sqrt(np.diag(covariance))
-    if not np.all(scale > 0.0):
+    parts = _parts([row.imbalance for row in rows])
+    scale = np.sqrt(np.asarray(parts.power(2).sum(axis=1)))
+    certain = scale == 0.0
+    if np.any(residual[certain] != 0.0) or np.all(certain):
         return Group(members, math.nan, 0, math.nan)
-    values, vectors = np.linalg.eigh(covariance / np.outer(scale, scale))
-    kept = values > RANK_TOLERANCE * values[-1]
-    along = vectors[:, kept].T @ (residual / scale)
-    statistic = float(np.sum(along**2 / values[kept]))
-    freedom = int(kept.sum())
+    parts, residual = csr_array(parts[~certain]), residual[~certain] / scale[~certain]  # 0 ± 0 says nothing
+    parts = csr_array(diags_array(1.0 / scale[~certain]) @ parts)
+    statistic, freedom = (_ranked if len(residual) <= DENSE_ROWS else _sparse)(parts, residual)
     return Group(members, statistic, freedom, float(chi2.sf(statistic, freedom)))
 
 
-def _covariance(estimates: Sequence[Estimate]) -> FloatArray:
-    """Covariance of estimates from the errors that they name."""
-    names = sorted({name for estimate in estimates for name in estimate.parts})
-    place = {name: column for column, name in enumerate(names)}
-    parts = np.zeros((len(estimates), len(names)))
-    for row, estimate in enumerate(estimates):
-        for name, part in estimate.parts.items():
-            parts[row, place[name]] = part
-    return np.asarray(parts @ parts.T)
+def _ranked(parts: csr_array, residual: FloatArray) -> tuple[float, int]:
+    """Statistic and rank of few rows."""
+    values, vectors = np.linalg.eigh((parts @ parts.T).toarray())
+    kept = values > RANK_TOLERANCE * values[-1]
+    along = vectors[:, kept].T @ residual
+    return float(np.sum(along**2 / values[kept])), int(kept.sum())
+
+
+def _sparse(parts: csr_array, residual: FloatArray) -> tuple[float, int]:
+    """Statistic of many rows, the errors that they share as unknowns; a trace of variance keeps H regular."""
+    often = np.bincount(parts.indices, minlength=parts.shape[1])
+    own = np.asarray(parts[:, often == 1].power(2).sum(axis=1)) + RANK_TOLERANCE
+    shared = csr_array(parts[:, often > 1])
+    matrix = csc_array(block_array([[diags_array(own), shared], [shared.T, -eye_array(shared.shape[1])]]))
+    lu = splu(matrix, permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True})
+    right = np.concatenate([residual, np.zeros(shared.shape[1])])
+    found = lu.solve(right)
+    found += lu.solve(right - matrix @ found)
+    return float(residual @ found[: len(residual)]), len(residual)
+
+
+def _parts(estimates: Sequence[Estimate]) -> csr_array:
+    """Signed parts of the errors that estimates name: a row for each, a column for each error."""
+    place: dict[str, int] = {}
+    entries = [
+        (row, place.setdefault(name, len(place)), part)
+        for row, estimate in enumerate(estimates)
+        for name, part in estimate.parts.items()
+    ]
+    table = np.array(entries, dtype=np.float64).reshape(-1, 3)
+    at = table[:, 0].astype(np.intp), table[:, 1].astype(np.intp)
+    return csr_array((table[:, 2], at), shape=(len(estimates), len(place)))
 
 
 def _observability(
-    movement: Movement, movements: Sequence[Movement], opening: Mapping[str, Estimate | None],
-    closing: Mapping[str, Estimate | None], merged: _Merged,
-) -> str:  # fmt: skip
-    """A measured movement is redundant if its ends are not merged; an unmeasured one observable if a bridge."""
-    source, target = movement.source or OUTSIDE, movement.target or OUTSIDE
-    if movement.mass is not None:
-        return "redundant" if merged.find(source) != merged.find(target) else "nonredundant"
-    others = _Merged(closing)
-    for name, mass in closing.items():
-        if mass is None or opening.get(name) is None:
-            others.join(name, OUTSIDE)
-    for other in movements:
-        if other.mass is None and other is not movement:
-            others.join(other.source or OUTSIDE, other.target or OUTSIDE)
-    return "observable" if others.find(source) != others.find(target) else "unobservable"
+    names: Sequence[str], opening: Mapping[str, Estimate | None], closing: Mapping[str, Estimate | None],
+    movements: Sequence[Movement],
+) -> dict[str, str]:  # fmt: skip
+    """Of each movement; an inventory that was not measured is an unmeasured way to the outside."""
+    place = {name: index for index, name in enumerate(names)}
+    place[OUTSIDE] = BEYOND
+    lost = [place[name] for name in names if closing[name] is None or opening.get(name) is None]
+    source = [place[one.source or OUTSIDE] for one in movements] + lost
+    target = [place[one.target or OUTSIDE] for one in movements] + [BEYOND] * len(lost)
+    measured = [one.mass is not None for one in movements] + [False] * len(lost)
+    streams = [one.name for one in movements] + [""] * len(lost)
+    network = Network(
+        names, streams, np.array(source, dtype=np.intp), np.array(target, dtype=np.intp), np.array(measured, dtype=bool)
+    )
+    return dict(zip(streams, classify(network).observability[: len(movements)], strict=False))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import importlib
 import itertools
 import math
 
@@ -273,3 +274,44 @@ def test_observability_by_graph_agrees_with_the_null_space_on_random_networks() 
         assert len(result.rows) == balances
         classes |= set(expected.values())
     assert classes == {"redundant", "nonredundant", "observable", "unobservable"}
+
+
+@pytest.mark.parametrize("seed", range(3))
+def test_many_rows_are_tested_sparsely_as_few_are_with_their_whole_covariance(
+    seed: int, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    rng = np.random.default_rng(seed)
+    names = [f"v{number:02}" for number in range(30)]
+
+    def held(number: int, when: str) -> Estimate:
+        parts = {f"r:{number}:{when}": 3.0, f"level:{number}": 2.0, f"density:{number % 4}": float(rng.normal(4, 1))}
+        return Estimate(1000.0 + float(rng.normal(0, 8)), parts)
+
+    opening: dict[str, Estimate | None] = {name: held(number, "o") for number, name in enumerate(names)}
+    closing: dict[str, Estimate | None] = {name: held(number, "c") for number, name in enumerate(names)}
+    movements = [
+        Movement(f"m{at}", names[at % 30], names[(at + 1 + at % 7) % 30], moved)
+        for at in range(60)
+        for moved in (Estimate(5.0, {f"t:{at}": 1.0, f"meter:{at % 9}": 2.0}),)
+    ]
+    result = night(opening, closing, movements, ALARM)
+    rows = [one.imbalance for one in result.rows]
+    errors = sorted({name for one in rows for name in one.parts})
+    parts = np.array([[one.parts.get(name, 0.0) for name in errors] for one in rows])
+    residual = np.array([one.value for one in rows])
+    expected = float(residual @ np.linalg.solve(parts @ parts.T, residual))
+    monkeypatch.setattr(importlib.import_module("models.balance.night"), "DENSE_ROWS", 1)
+    sparse = night(opening, closing, movements, ALARM)
+    for group in (*result.groups, *sparse.groups):
+        assert group.degrees_of_freedom == 30
+        assert group.statistic == pytest.approx(expected, rel=1e-6)
+
+
+def test_a_vessel_whose_one_reading_stands_at_both_ends_does_not_silence_its_group() -> None:
+    carried = Estimate(10.0, {"r:1:level": 2.0})
+    opening: dict[str, Estimate | None] = {"a": carried, "b": Estimate(10.0, {"r:2": 3.0})}
+    closing: dict[str, Estimate | None] = {"a": carried, "b": Estimate(4.0, {"r:3": 4.0})}
+    result = night(opening, closing, [Movement("m", "a", "b", Estimate(0.0))], ALARM)
+    (group,) = result.groups
+    assert (group.members, group.degrees_of_freedom) == (("a", "b"), 1)
+    assert group.statistic == pytest.approx((6.0 / 5.0) ** 2)
