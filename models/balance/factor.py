@@ -10,6 +10,7 @@ from scipy.sparse.linalg import splu
 from models.arrays import FloatArray, IntArray
 from models.errors import DefinitionError
 
+SCALE_TOLERANCE = 1e-100  # [unit of the values]: below, squares would leave the range of a float
 PIVOT_TOLERANCE = 1e-12  # of a balance's own variance: below, it is known from the others without an error
 
 
@@ -32,7 +33,7 @@ class DenseFactor:
 
     def __init__(self, covariance: FloatArray) -> None:
         scale = np.sqrt(np.diagonal(covariance))
-        if not np.all(scale > 0.0):
+        if not np.all(scale > SCALE_TOLERANCE):
             raise singular()
         self.scale = scale
         try:
@@ -100,7 +101,7 @@ class SparseFactor:
     def __init__(self, incidence: csr_array, variance: FloatArray, latent: FloatArray) -> None:
         sparse = csc_array(incidence @ coo_array((variance, (range(len(variance)),) * 2)).tocsr() @ incidence.T)
         scale = np.sqrt(sparse.diagonal())
-        if not np.all(scale > 0.0):
+        if not np.all(scale > SCALE_TOLERANCE):
             raise singular()
         self.scale = scale
         sparse.sort_indices()

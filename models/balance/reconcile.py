@@ -267,7 +267,7 @@ class _Part:
         weight = self._weight(self.tail, self.head)
         checked = self.tail != self.head
         adjustment = self._adjustment(pull)
-        explained = self.variance**2 * weight
+        explained = self.variance * (self.variance * weight)
         if self.shared.shape[1]:
             explained = self._explained(weight)
         whole = self.variance + (self.shared**2).sum(axis=1) if self.shared.shape[1] else self.variance
@@ -303,7 +303,10 @@ class _Part:
         """Of sums of reconciled streams, a column each, as a sum of squares: nothing is taken from anything."""
         if self.factor is not None:
             sums = sums - self.incidence.T @ self.factor.solve(self.incidence @ self._spread(sums))  # eq. 5
-        return np.asarray(np.sqrt(np.sum(sums * self._spread(sums), axis=0)))
+        variance = self.variance @ sums**2
+        if self.shared.shape[1]:
+            variance = variance + ((self.shared.T @ sums) ** 2).sum(axis=0)
+        return np.asarray(np.sqrt(variance))
 
     def _spread(self, columns: FloatArray) -> FloatArray:
         """S times columns."""
@@ -345,7 +348,7 @@ class _Part:
             solved = self.factor.solve(latent)
             mixed = (self.shared * (self.incidence.T @ solved)).sum(axis=1)
             inner = (self.shared * (self.shared @ (latent.T @ solved))).sum(axis=1)
-            return np.asarray(self.variance**2 * weight + 2.0 * self.variance * mixed + inner)
+            return np.asarray(self.variance * (self.variance * weight) + 2.0 * self.variance * mixed + inner)
         seen = (self.incidence @ diags_array(self.variance) + self.latent @ self.shared.T).toarray()
         return np.asarray(np.sum(seen * self.factor.solve(seen), axis=0))
 

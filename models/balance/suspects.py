@@ -133,7 +133,8 @@ class Candidates:
         free = weight > DEPENDENT_TOLERANCE * self.weight
         weight = np.where(free, weight, np.inf)
         along = np.where(free, self._along(pull), 0.0)
-        return along**2 / weight, along / weight, 1.0 / weight  # eq. 1
+        size = along / weight
+        return along * size, size, 1.0 / weight  # eq. 1
 
     def best(self, statistic: FloatArray) -> int:
         """The class of largest statistic; of equal ones the first by name.
@@ -305,6 +306,6 @@ def _alternatives(
 
 
 def _rounded(statistic: FloatArray) -> FloatArray:
-    """To nine digits, so that rounding in the last place does not decide a rank."""
-    digits = np.where(statistic > 0.0, 9.0 - np.ceil(np.log10(np.maximum(statistic, 1e-300))), 0.0)
-    return np.asarray(np.round(statistic * 10.0**digits) / 10.0**digits)
+    """To thirty bits, so that rounding in the last place does not decide a rank."""
+    fraction, exponent = np.frexp(statistic)
+    return np.asarray(np.ldexp(np.round(fraction * 2.0**30), exponent - 30))

@@ -10,11 +10,15 @@ from typing import Any
 import numpy as np
 import pytest
 from fastapi.testclient import TestClient
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from pydantic import ValidationError
 
 from app.main import create_app
 from app.schemas.calculation import NODES, STREAMS, Balance, BalanceCalculation
 from app.services.balance import network_of, solve_network
 from app.settings import Settings
+from models.errors import DefinitionError
 
 PATH = "/v1/calculations/balance"
 # The exchanger with a bypass of S. Narasimhan, C. Jordache, "Data Reconciliation and Gross Error Detection",
@@ -126,6 +130,43 @@ def test_what_is_certain_and_does_not_balance_is_refused(client: TestClient) -> 
     problem = answer.json()
     assert "random error" in problem["detail"]
     assert problem["errors"][0]["code"] == "impossible_definition"
+
+
+EXTREMES = [5e-324, 1e-300, 1e-160, 1e-101, 1e-99, 1e-20, 1e6, 1e15]
+SIZES = st.sampled_from([0.0, 1e-3, 1.0, 100.0]) | st.sampled_from(EXTREMES)
+ENDS_OF_ANY = st.sampled_from(["a", "b", "c", "boundary:x", "boundary:y"])
+
+
+@given(
+    st.lists(
+        st.tuples(ENDS_OF_ANY, ENDS_OF_ANY, st.none() | st.tuples(st.sampled_from([-1, 1]), SIZES), SIZES, SIZES),
+        min_size=1,
+        max_size=9,
+    )
+)
+@settings(max_examples=400, derandomize=True, deadline=None)
+def test_any_body_that_is_taken_is_answered_in_numbers_or_refused(streams: list[Any]) -> None:
+    document = {
+        "nodes": ["a", "b", "c"],
+        "streams": [
+            {"id": str(at), "from": source, "to": target, "value": value and value[0] * value[1], "random": random,
+             "systematic": [{"instrument": f"m{at % 2}", "value": shared}]}
+            for at, (source, target, value, random, shared) in enumerate(streams) if source != target
+        ],
+    }  # fmt: skip
+    try:
+        body = BalanceCalculation.model_validate_json(json.dumps(document))
+    except ValidationError:
+        return
+    try:
+        found = solve_network(body)
+    except DefinitionError:
+        return
+    answer = Balance.model_validate(found)  # refuses what is infinite
+    for stream, one in zip(body.streams, answer.streams, strict=True):
+        assert (one.reconciled is None) == (one.observability == "unobservable")
+        assert (one.score is not None) == (one.observability == "redundant")
+        assert (one.adjustment is None) == (stream.value is None)
 
 
 def test_all_boundaries_are_one_outside() -> None:
