@@ -177,6 +177,7 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
 def _capacity(vessel: CompiledVessel) -> tuple[float, float, float, bool]:
     """Whole and local percent, the span of the local error, and whether the site declared them."""
     kind = vessel.body.shape.kind
+    varies = vessel.has_liquid and vessel.curve is not None  # a stamped volume has no level to vary along
     if kind == "capacity_table":
         kind = getattr(vessel.body.shape, "of", None) or kind
     whole, local, span = (
@@ -186,10 +187,10 @@ def _capacity(vessel: CompiledVessel) -> tuple[float, float, float, bool]:
     )
     given = vessel.body.instruments.get("capacity_pct")
     if given is None:
-        return whole, local if vessel.has_liquid else 0.0, span, False
+        return whole, local if varies else 0.0, span, False
     return (
         whole if given.systematic is None else given.systematic,
-        (local if given.local is None else given.local) if vessel.has_liquid else 0.0,
+        (local if given.local is None else given.local) if varies else 0.0,
         given.local_span_m or span,
         given.systematic is not None,
     )

@@ -32,8 +32,12 @@ class Moving:
                 self.standard[vessel.name] = standard_density(closing.measured, row)
 
     def between(self, first: int, last: int) -> list[Moved]:
-        """What every ticket moved between two instants."""
-        return [move.moved(one, first, last, self.vessels, self.meters, self.standard, self.spaces) for one in self.tickets]
+        """What the tickets that ran between two instants moved then; one of no duration where it stands."""
+        return [
+            move.moved(one, first, last, self.vessels, self.meters, self.standard, self.spaces)
+            for one in self.tickets
+            if one.started_at < last and (one.ended_at > first or one.started_at >= first)
+        ]
 
 
 def regraded(
