@@ -12,10 +12,12 @@ from scipy.stats import chi2
 from models.arrays import FloatArray, IntArray, blocks
 from models.balance.factor import DenseFactor, Factor, SparseFactor
 from models.balance.network import OBSERVABLE, Network, Structure, classify, crossing
+from models.balance.shared_factor import SharedFactor
 from models.errors import DefinitionError
 
 DENSE_ROWS = 500  # balances of a group up to which the whole matrix is the quickest
 POOR_TOLERANCE = 1e-4  # of a reading's variance that is left: below, the difference would lose its digits
+FEW_ERRORS = 32  # shared in a large group: with more, they are unknowns of one sparse matrix
 COMPUTED_BLOCK = 128  # sums of streams whose uncertainty is found in one solution
 
 
@@ -92,7 +94,7 @@ class Group:
     rows: int
     statistic: float
     p_value: float
-    factor: Factor | None
+    factor: Factor | SharedFactor | None
     pull: FloatArray
 
 
@@ -246,7 +248,7 @@ class _Part:
             often = np.bincount(shared.indices, minlength=shared.shape[1])
             self.variance += (shared[:, often == 1] ** 2).sum(axis=1)
             self.shared = shared[:, often > 1]
-        self.factor: Factor | None = None
+        self.factor: Factor | SharedFactor | None = None
 
     @property
     def latent(self) -> csr_array:
@@ -315,11 +317,13 @@ class _Part:
             spread = spread + self.shared @ (self.shared.T @ columns)
         return np.asarray(spread)
 
-    def _factored(self) -> Factor:
+    def _factored(self) -> Factor | SharedFactor:
         latent = self.latent if self.shared.shape[1] else None
-        if self.rows > DENSE_ROWS and self.shared.shape[1] <= self.rows // 4:
-            wide = np.zeros((self.rows, 0)) if latent is None else latent.toarray()
+        if self.rows > DENSE_ROWS:
             try:
+                if self.shared.shape[1] > FEW_ERRORS:
+                    return SharedFactor(self.incidence, self.variance, self.shared)
+                wide = np.zeros((self.rows, 0)) if latent is None else latent.toarray()
                 return SparseFactor(self.incidence, self.variance, wide)
             except DefinitionError:  # errors of instruments alone may still be enough
                 if latent is None:
@@ -343,6 +347,8 @@ class _Part:
     def _explained(self, weight: FloatArray) -> FloatArray:
         """diag(S A' H⁻¹ A S) where streams share errors."""
         assert self.factor is not None
+        if isinstance(self.factor, SharedFactor):
+            return self.factor.explained()
         if isinstance(self.factor, SparseFactor):
             latent = self.latent.toarray()
             solved = self.factor.solve(latent)
