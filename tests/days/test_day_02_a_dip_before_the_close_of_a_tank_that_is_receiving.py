@@ -71,6 +71,28 @@ def test_the_dip_is_moved_on_by_twenty_minutes_of_receipt(receiving):
     assert not night.flagged
 
 
+def test_what_is_not_known_about_the_move_is_less_than_the_move(receiving):
+    """A line of which only the whole is known may have run faster or slower: 5 % of 4,800 t, 240 t, at 05:40.
+
+    At 06:00 it is 240 t again, but nearly the same 240 t. Between the fixed start and end of a ticket the error
+    of its running total goes like a bridge: after 11/18 and 12/18 of the time the two are correlated by
+    ρ = √(11 × 6 / (12 × 7)) = 0.886. The move of 267 t is known to 240 × √(2 − 2ρ) = 114 t.
+
+    The night's imbalance is another matter. The receipt after 05:40 stands in the closing mass and in the book
+    alike and drops out; what came before 05:40 remains: 240 t, and √2 × 0.8 t of the two dips.
+    """
+    line(receiving)
+    receiving.reads("tk-2", "2026-03-14 05:40", source="hand", level_m=level_at(3 + 2 / 3))
+    correlation = math.sqrt(11.0 * 6.0 / (12.0 * 7.0))
+    move = 240_000.0 * math.sqrt(2.0 - 2.0 * correlation)
+    stock = receiving.inventory(CLOSE).of("tk-2")
+    assert stock["mass_uncertainty_kg"] == pytest.approx(math.hypot(move, KG_PER_MM), abs=5.0)
+    book = receiving.closes("2026-03-13").of("tk-2")
+    assert book["imbalance_uncertainty_kg"] == pytest.approx(
+        math.hypot(240_000.0, math.sqrt(2) * KG_PER_MM), abs=5.0
+    )
+
+
 def test_the_two_nights_add_up_to_the_ticket(receiving):
     """The night after receives the other 1,600 t (06:00 to 08:00) and closes at 10.000 m, idle since 08:00."""
     line(receiving)
