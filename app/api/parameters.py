@@ -10,7 +10,7 @@ from pydantic import BeforeValidator, WithJsonSchema
 
 from app.errors import FieldError, Unprocessable
 from app.schemas.listing import LARGEST_LIMIT, LIMIT
-from app.schemas.types import ID_PATTERN, parse_instant
+from app.schemas.types import ID_PATTERN, parse_instant, worded
 
 _SCHEMA = {"type": "string", "format": "date-time", "examples": ["2026-03-14T06:00:00+01:00"]}
 
@@ -27,7 +27,7 @@ AsOf = Annotated[
 At = Annotated[QueryInstant | None, Query(description="The instant; now if left out")]
 Limit = Annotated[int, Query(ge=1, le=LARGEST_LIMIT, description=f"Items of a page; {LIMIT} if left out")]
 Cursor = Annotated[str | None, Query(max_length=200, description="The `next` of the page before")]
-PathId = Annotated[str, Path(pattern=ID_PATTERN, description="Chosen by the client")]
+PathId = Annotated[str, *worded(ID_PATTERN), Path(description="Chosen by the client")]
 
 
 _NUMBER = re.compile(r"-?[0-9]{1,18}|-?[1-8][0-9]{18}", re.ASCII)  # what 64 bits hold

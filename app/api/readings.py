@@ -9,6 +9,7 @@ from fastapi import APIRouter, Depends, Query, Request
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_cursor
 from app.edge.rows import RowsText, rows_body
 from app.schemas.batch import BatchAnswer
+from app.schemas.errors import sentence
 from app.schemas.lines import validate_lines
 from app.schemas.listing import LIMIT, Page
 from app.schemas.reading import Reading, ReadingBatch, StoredValue, validate_batch
@@ -19,6 +20,7 @@ router = APIRouter(prefix="/v1/sites/{site}", tags=["readings"])
 READINGS = rows_body(
     ReadingBatch,
     validate_batch,
+    say=sentence,
     ndjson=RowsText(
         lambda text: validate_lines(Reading, text),
         "One reading a line, each a JSON object with the fields of a row of the JSON batch.",

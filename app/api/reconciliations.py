@@ -9,14 +9,17 @@ from fastapi import APIRouter, Depends, Path, Query, Request, Response
 from app.api.bodies import json_body
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_numbers
 from app.schemas.listing import LIMIT, Page
-from app.schemas.reconciliation import RECONCILIATION_PATTERN, Imbalance, Reconciliation, ReconciliationRequest
+from app.schemas.reconciliation import Imbalance, Reconciliation, ReconciliationRequest
+from app.schemas.types import RECONCILIATION_PATTERN, worded
 from app.services import close
 
 router = APIRouter(prefix="/v1/sites/{site}", tags=["reconciliations"])
 First = Annotated[QueryInstant, Query(alias="from", description="Periods that close after this instant")]
 Last = Annotated[QueryInstant, Query(alias="to", description="Periods that close not after this instant")]
 Detail = Annotated[bool, Query(description="With the statistics")]
-Name = Annotated[str, Path(pattern=RECONCILIATION_PATTERN, description="2026-03-14, or with its revision 2026-03-14.2")]
+Name = Annotated[
+    str, *worded(RECONCILIATION_PATTERN), Path(description="2026-03-14, or with its revision 2026-03-14.2")
+]
 
 
 @router.post("/reconciliations", responses={201: {"description": "A new revision"}})

@@ -10,6 +10,7 @@ from app.api.bodies import json_body
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_cursor
 from app.edge.body import batch_body
 from app.schemas.batch import BatchAnswer
+from app.schemas.errors import sentence
 from app.schemas.listing import LIMIT, Page, Written
 from app.schemas.transfer import StoredTransfer, Transfer, TransferBatch, validate_transfers
 from app.services import move, read_back
@@ -30,8 +31,9 @@ def put_transfer(
 
 @router.post("")
 def post_transfers(
-    request: Request, site: PathId, body: Annotated[Any, Depends(batch_body(TransferBatch, validate_transfers))]
-) -> BatchAnswer:
+    request: Request, site: PathId,
+    body: Annotated[Any, Depends(batch_body(TransferBatch, validate_transfers, sentence))],
+) -> BatchAnswer:  # fmt: skip
     """Keep a batch of tickets: good ones are kept, bad ones named, all counted."""
     counts, errors, known = move.put_many(request.app.state.store, site, *body, request.state.request_id)
     return BatchAnswer(

@@ -74,8 +74,8 @@ def json_body(model: type[M], say: Sentence | None = None) -> JsonBody[M]:
 class BatchBody(JsonBody[M]):
     """Dependency: a JSON body of many rows, each judged on its own by ``read``, which names the bad ones."""
 
-    def __init__(self, model: type[M], read: Callable[[bytes], Any]) -> None:
-        super().__init__(model)
+    def __init__(self, model: type[M], read: Callable[[bytes], Any], say: Sentence | None = None) -> None:
+        super().__init__(model, say)
         self.read = read
 
     def __call__(self, request: Request, received: Annotated[bytes, Depends(ReceivedBytes(JSON))]) -> Any:
@@ -84,7 +84,7 @@ class BatchBody(JsonBody[M]):
         try:
             rows = self.read(text)
         except ValidationError as refused:
-            raise _refusal(refused, text) from None
+            raise _refusal(refused, text, self.say) from None
         try:
             json_text.check(text, rows_judged_alone=True)
         except (ValueError, RecursionError):
@@ -92,9 +92,9 @@ class BatchBody(JsonBody[M]):
         return rows
 
 
-def batch_body(model: type[M], read: Callable[[bytes], Any]) -> BatchBody[M]:
+def batch_body(model: type[M], read: Callable[[bytes], Any], say: Sentence | None = None) -> BatchBody[M]:
     """Dependency that reads a JSON batch; OpenAPI shows ``model`` as its body."""
-    return BatchBody(model, read)
+    return BatchBody(model, read, say)
 
 
 def decoded(request: Request, received: bytes) -> bytes:

@@ -9,6 +9,7 @@ from fastapi import Depends, Request
 from pydantic import BaseModel
 
 from app.edge.body import JSON, BatchBody, ReceivedBytes, decoded
+from app.errors import Sentence
 
 NDJSON = "application/x-ndjson"
 CSV = "text/csv"
@@ -28,8 +29,10 @@ class RowsText:
 class RowsBody(BatchBody[M]):
     """Dependency: a batch as JSON, or as one of the texts, told apart by the content type."""
 
-    def __init__(self, model: type[M], read: Callable[[bytes], Any], texts: Mapping[str, RowsText]) -> None:
-        super().__init__(model, read)
+    def __init__(
+        self, model: type[M], read: Callable[[bytes], Any], texts: Mapping[str, RowsText], say: Sentence | None = None
+    ) -> None:
+        super().__init__(model, read, say)
         self.texts = texts
 
     def __call__(
@@ -43,7 +46,7 @@ class RowsBody(BatchBody[M]):
 
 
 def rows_body(
-    model: type[M], read: Callable[[bytes], Any], *, ndjson: RowsText, csv: RowsText
+    model: type[M], read: Callable[[bytes], Any], *, ndjson: RowsText, csv: RowsText, say: Sentence | None = None
 ) -> RowsBody[M]:  # fmt: skip
     """Dependency that reads a batch of any of three media types; OpenAPI shows all of them.
 
@@ -55,5 +58,7 @@ def rows_body(
         Makes rows of that body.
     ndjson, csv : RowsText
         The other two.
+    say : callable, optional
+        Makes the sentences of a body that is no batch.
     """
-    return RowsBody(model, read, {NDJSON: ndjson, CSV: csv})
+    return RowsBody(model, read, {NDJSON: ndjson, CSV: csv}, say)

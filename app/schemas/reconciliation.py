@@ -9,9 +9,19 @@ from pydantic import AfterValidator, ConfigDict, Field, StringConstraints, model
 from pydantic_core import PydanticCustomError
 
 from app.schemas.inventory import Status
-from app.schemas.types import DAY_PATTERN, Answer, AnsweredInstant, Body, Instant, Items, Known, is_none, refusal
+from app.schemas.types import (
+    DAY_PATTERN,
+    RECONCILIATION_PATTERN,
+    Answer,
+    AnsweredInstant,
+    Body,
+    Instant,
+    Items,
+    Known,
+    is_none,
+    refusal,
+)
 
-RECONCILIATION_PATTERN = r"^([0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8}T[0-9]{6}Z--[0-9]{8}T[0-9]{6}Z)(\.[1-9][0-9]{0,8})?$"
 ReconciliationId = Annotated[str, StringConstraints(pattern=RECONCILIATION_PATTERN)]
 """A day or two instants in basic UTC, and the revision; without one, the newest."""
 Observability = Literal["redundant", "nonredundant", "observable", "unobservable"]

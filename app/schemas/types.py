@@ -130,6 +130,7 @@ Text = Annotated[str, StringConstraints(min_length=1, max_length=200, pattern=PL
 LOCAL_TIME_PATTERN = r"^([01][0-9]|2[0-3]):[0-5][0-9]$"
 ZONE_PATTERN = r"^[A-Za-z][A-Za-z0-9_+-]*(/[A-Za-z0-9_+-]+)*$"
 DAY_PATTERN = r"^(19[7-9][0-9]|2[01][0-9]{2})-[0-9]{2}-[0-9]{2}$"
+RECONCILIATION_PATTERN = r"^([0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8}T[0-9]{6}Z--[0-9]{8}T[0-9]{6}Z)(\.[1-9][0-9]{0,8})?$"
 FORMS: dict[str, str] = {
     ID_PATTERN: "1 to 63 of a-z, 0-9, dot, underscore and hyphen, a letter or digit first",
     END_PATTERN: "the id of a vessel, or boundary: and a name of the same form",
@@ -137,9 +138,24 @@ FORMS: dict[str, str] = {
     PLAIN_PATTERN: "one line of plain text, without control characters",
     LOCAL_TIME_PATTERN: "an hour and a minute of the day, from 00:00 to 23:59, such as 06:00",
     ZONE_PATTERN: "a name of the IANA data base, such as Europe/Oslo",
+    RECONCILIATION_PATTERN: "a local date or two instants in basic UTC, with a revision or without: 2026-03-14, "
+    "2026-03-14.2, 20260301T050000Z--20260401T050000Z",
     DAY_PATTERN: "a local date such as 2026-03-14, in the years 1970 to 2199",
 }
 """What each pattern asks for, in words."""
+
+
+def worded(pattern: str) -> tuple[AfterValidator, WithJsonSchema]:
+    """The form of a parameter, which its refusal tells in words where the framework would show the pattern."""
+
+    def check(text: str) -> str:
+        if re.fullmatch(pattern, text) is None:
+            raise PydanticCustomError("wrong_form", "It is {form}", {"form": FORMS[pattern]})
+        return text
+
+    return AfterValidator(check), WithJsonSchema({"type": "string", "pattern": pattern})
+
+
 # Where a value comes from may be left out, and is then the empty text.
 Source = Annotated[str, StringConstraints(max_length=63, pattern=PLAIN_PATTERN)]
 

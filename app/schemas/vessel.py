@@ -52,11 +52,11 @@ class Shell(Body):
     )
     thickness_m: float | None = Field(
         default=None,
-        gt=0,
+        ge=1e-4,
         le=2,
         description="Thickness of the wall; left out, pressure does not strain it [m]",
     )
-    elastic_modulus_gpa: float = Field(default=207.0, gt=0, le=2000, description="Young's modulus of the wall [GPa]")
+    elastic_modulus_gpa: float = Field(default=207.0, ge=1e-3, le=2000, description="Young's modulus of the wall [GPa]")
     poisson_ratio: float = Field(default=0.3, ge=0, lt=0.5, description="Poisson's ratio of the wall [1]")
     courses: Items[Course] = Field(
         default=(), max_length=100,

@@ -73,12 +73,16 @@ def _put(writing: Writing, kind: str, name: str, body: Any) -> Put:
     return Put(outcome, writing.recorded_at)
 
 
+PLACES = {"datum_m": "gauging/datum_m"}
+"""Where a field that the models name stands in a body, if not at its top."""
+
+
 def _check(act: Any, pointer: str) -> None:
     """What the models refuse of a definition, as a refusal of the body."""
     try:
         act()
     except ModelError as refused:
-        place = f"{pointer}/{refused.field}" if refused.field else pointer
+        place = f"{pointer}/{PLACES.get(refused.field, refused.field)}" if refused.field else pointer
         raise Unprocessable(
             refused.detail, code=refused.code, errors=[FieldError(place, refused.code, refused.detail, refused.index)]
         ) from None

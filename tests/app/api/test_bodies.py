@@ -44,3 +44,10 @@ def test_the_sentences_are_those_of_the_schemas():
     (error,) = refused.value.errors(include_url=False, include_input=False)
     say = json_body(Site).say
     assert say is not None and say(error, ["elevation_m"]) == "elevation_m is at most 6000 m."
+
+
+def test_a_batch_that_is_none_is_told_so(site):
+    for path, name in (("/readings", "readings"), ("/transfers", "transfers")):
+        answer = site.post(path, {}, status=422)
+        assert [(one["pointer"], one["detail"]) for one in answer["errors"]] == [(f"/{name}", f"{name} is missing.")]
+        assert [one["detail"] for one in site.post(path, [], status=422)["errors"]] == ["The body is an object."]

@@ -74,3 +74,10 @@ def test_a_period_ends_after_it_begins(site):
 def test_what_a_query_must_say_is_named(site):
     for path in ("/vessels/tk-1/readings", "/transfers", "/vessels/tk-1/inventory", "/reconciliations", "/imbalances"):
         assert mistakes(site.get(path, status=422)) == [("/query/from", "missing"), ("/query/to", "missing")]
+
+
+def test_a_form_is_told_in_words(site):
+    (one,) = site.get("/vessels/TK", status=422)["errors"]
+    assert one["detail"] == "It is 1 to 63 of a-z, 0-9, dot, underscore and hyphen, a letter or digit first"
+    (one,) = site.get("/reconciliations/today", status=422)["errors"]
+    assert "2026-03-14.2" in one["detail"]

@@ -133,6 +133,7 @@ def test_vessels_are_listed_by_id_and_pages_agree_while_writes_go_on(bare):
         ({"assumed": {"pressure_kpa": {"value": -200}}}, ("/assumed/pressure_kpa/value", "out_of_range")),
         ({"instruments": {"level_m": {"random": -0.1}}}, ("/instruments/level_m/random", "out_of_range")),
         ({"sources": [{"source": "a"}, {"source": "a"}]}, ("/sources/1/source", "twice")),
+        ({"gauging": {"datum_m": 50.0}}, ("/gauging/datum_m", "impossible_definition")),
         ({"deadwood": [[2.0, 1.0, 0.5]]}, ("/deadwood/0", "impossible")),
         ({"vapour_space": {"kind": "blanketed"}}, ("/vapour_space/blanket", "missing")),
         ({"floating_roof": {"mass_kg": 9e4, "lands_at_m": 1.0, "floats_at_m": 1.2}}, ("/floating_roof", "conflicting")),

@@ -143,7 +143,7 @@ def mutated(data: st.DataObject, example: Any) -> Any:
     body = copy.deepcopy(example)
     for _ in range(data.draw(st.sampled_from([1, 1, 1, 3]))):
         place = data.draw(st.sampled_from(list(places(body))))
-        value = data.draw(HOSTILE)
+        value = copy.deepcopy(data.draw(HOSTILE))
         if not place:
             if data.draw(st.integers(0, 9)) == 0:
                 return value
@@ -177,7 +177,7 @@ def check(answer: Any, sent: Any) -> None:
 def path_of(data: st.DataObject, path: str) -> str:
     """The path with its parameters filled in: usually with what is there."""
     path = path.replace("{site}", "fuzzed", 1).replace("{reconciliation}", "2026-05-28", 1)
-    odd = ["x1", "x1", "x1", "x1", "x2", "x3", "x1", "x1", MARK, "TK", "..", "%00", "%ff", "2026-02-30", "1.1", "x" * 70, "a%2Fb", "2026-05-28.99"]
+    odd = [MARK, "TK", "..", "%00", "%ff", "2026-02-30", "1.1", "x" * 70, "a%2Fb", "2026-05-28.99", "x2", *["x1"] * 8]
     return re.sub(r"\{\w+\}", lambda _: data.draw(st.sampled_from(odd)), path)
 
 
@@ -207,8 +207,9 @@ def test_no_bytes_are_a_fault(world: Any, name: str, content: bytes) -> None:
 
 
 TEXTS = st.text(max_size=8).map(lambda text: MARK + text) | st.sampled_from([
-    "", "NaN", "inf", "-1", "0", "1", "10000", "1e400", "true", "x1", "2026-05-28T00:00:00Z", "2026-06-01T00:00:00+02:00",
-    "1970-01-01T00:00:00Z", "2200-12-31T23:59:59Z", "2026-05-28T00:00:00", "0~x~0", "x1~0", "1~2~3", "9" * 40, "٣",
+    "", "NaN", "inf", "-1", "0", "1", "10000", "1e400", "true", "x1", "0~x~0", "x1~0", "1~2~3", "9" * 40,
+    "2026-05-28T00:00:00Z", "2026-06-01T00:00:00+02:00", "1970-01-01T00:00:00Z", "2200-12-31T23:59:59Z",
+    "2026-05-28T00:00:00",
 ])  # fmt: skip
 
 

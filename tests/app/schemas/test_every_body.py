@@ -43,7 +43,7 @@ WITHOUT_UNIT = {
     "random", "systematic", "offset", "local",
     "value", "standard_uncertainty", "difference", "sensitivity",
     "reconciled", "uncertainty", "adjustment", "imbalance", "magnitude", "interval", "share",
-    "liquid_composition", "vapour_composition", "composition", "quality",
+    "liquid_composition", "vapour_composition", "composition", "quality", "before", "after",
 }  # fmt: skip
 # Lists of numbers, and maps of bodies or of numbers by quantity, whose description has the units.
 LISTS = {"rows", "courses", "deadwood"}
