@@ -263,13 +263,21 @@ def _found(own: Candidates, least: float) -> tuple[Suspect, ...]:
         chosen.append(index)
     if len(chosen) > 1:
         _exchange(own, chosen)
-    beside = {index: own.given([other for other in chosen if other != index]) for index in chosen}
+    beside = _beside(own, chosen)
+    while chosen and min(beside[index][0][index] for index in chosen) < least:  # the others explain it by now
+        chosen.remove(min(chosen, key=lambda index: (beside[index][0][index], -index)))
+        beside = _beside(own, chosen)
     chosen.sort(key=lambda index: (-beside[index][0][index], index))
     return tuple(
         suspect
         for number, index in enumerate(chosen, start=1)
         for suspect in _alternatives(own, number, *beside[index])
     )
+
+
+def _beside(own: Candidates, chosen: list[int]) -> dict[int, tuple[FloatArray, FloatArray, FloatArray]]:
+    """For each chosen fault, what every class is worth beside the others."""
+    return {index: own.given([other for other in chosen if other != index]) for index in chosen}
 
 
 def _exchange(own: Candidates, chosen: list[int]) -> None:
