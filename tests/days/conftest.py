@@ -1,7 +1,7 @@
 """A site of its own for each day, spoken to over HTTP only, in sentences that read like a log book.
 
 A day takes ``site`` (it then runs on SQLite and on PostgreSQL) or, where it needs several, ``new_site``.
-Instants are texts such as ``"2026-03-14 05:40"`` in UTC, or complete RFC 3339 texts. What a helper posts
+Instants are texts such as ``"2026-03-14 05:40"`` in UTC, or complete RFC 3339 texts. What a method posts
 beyond what a day tells it stands in its docstring: everything else is left out, so that a day's arithmetic
 can be followed on paper. A plain tank is a box with upright sides, its liquid at 15 °C, its shell stiff:
 ``mass = area × level × density``, and 1 mm of level is the only error that anything has.

@@ -88,9 +88,7 @@ def test_what_is_not_known_about_the_move_is_less_than_the_move(receiving):
     stock = receiving.inventory(CLOSE).of("tk-2")
     assert stock["mass_uncertainty_kg"] == pytest.approx(math.hypot(move, KG_PER_MM), abs=5.0)
     book = receiving.closes("2026-03-13").of("tk-2")
-    assert book["imbalance_uncertainty_kg"] == pytest.approx(
-        math.hypot(240_000.0, math.sqrt(2) * KG_PER_MM), abs=5.0
-    )
+    assert book["imbalance_uncertainty_kg"] == pytest.approx(math.hypot(240_000.0, math.sqrt(2) * KG_PER_MM), abs=5.0)
 
 
 def test_the_two_nights_add_up_to_the_ticket(receiving):
