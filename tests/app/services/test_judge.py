@@ -82,9 +82,10 @@ def test_a_volume_received_shares_the_sample_of_the_tank(plant: Plant) -> None:
     moved(plant, "in", JETTY, "tk-1", standard_volume_m3=400.0)
     books = row(night(plant), "tk-1")
     # 100 m³ and 400 m³ make 500 m³ whatever they weigh: the density is gone. Left are 0.1 % of capacity over
-    # 400 m³, two readings of 0.1 m³, at 810 kg/m³, and the ticket's 10 kg.
+    # 400 m³, two readings of 0.1 m³, at 810 kg/m³, and the ticket's 10 kg; and, as no sample was drawn since,
+    # 3 kg/m³ × 4/5 of the content received, over the 100 m³ that the ticket did not bring.
     assert books["imbalance_kg"] == pytest.approx(0.0, abs=1e-6)
-    u = math.sqrt((810.0 * 0.4) ** 2 + 2.0 * 81.0**2 + 10.0**2)
+    u = math.sqrt((810.0 * 0.4) ** 2 + 2.0 * 81.0**2 + 10.0**2 + (3.0 * 0.8 * 100.0) ** 2)
     assert books["imbalance_uncertainty_kg"] == pytest.approx(u, rel=1e-9)
 
 
