@@ -51,7 +51,7 @@ def post_readings(
     done = ingest.ingest(state.store, state.clock, site, rows, errors, request=request.state.request_id)
     return BatchAnswer(
         stored=done.stored, revised=done.revised, unchanged=done.unchanged, rejected=done.rejected,
-        errors=ingest.listed(errors), known_at=done.known_at,
+        errors=tuple(ingest.listed(errors)), known_at=done.known_at,
     )  # fmt: skip
 
 
@@ -68,4 +68,4 @@ def list_readings(
     store = request.app.state.store
     values, following, known = read_back.values(store, site, vessel, (first, last), source, place, limit, as_of)
     after = None if following is None else cursor_of(*following, known)
-    return Page(items=values, next=after, known_at=known)
+    return Page[StoredValue].model_validate({"items": values, "next": after, "known_at": known})

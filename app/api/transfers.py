@@ -9,7 +9,7 @@ from fastapi import APIRouter, Depends, Query, Request, Response
 from app.api.bodies import json_body
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_cursor
 from app.edge.body import batch_body
-from app.schemas.batch import BatchAnswer
+from app.schemas.batch import ERRORS_LISTED, BatchAnswer
 from app.schemas.errors import sentence
 from app.schemas.listing import LIMIT, Page, Written
 from app.schemas.transfer import StoredTransfer, Transfer, TransferBatch, validate_transfers
@@ -35,10 +35,12 @@ def post_transfers(
     body: Annotated[Any, Depends(batch_body(TransferBatch, validate_transfers, sentence))],
 ) -> BatchAnswer:  # fmt: skip
     """Keep a batch of tickets: good ones are kept, bad ones named, all counted."""
-    counts, errors, known = move.put_many(request.app.state.store, site, *body, request.state.request_id)
+    rows, refused = body
+    counts, errors, known = move.put_many(request.app.state.store, site, rows, refused, request.state.request_id)
     return BatchAnswer(
         stored=counts["created"], revised=counts["revised"], unchanged=counts["unchanged"],
-        rejected=len({error.index for error in errors}), errors=errors, known_at=known,
+        rejected=len({error.index for error in errors}), errors=tuple(errors[:ERRORS_LISTED]),
+        known_at=known,
     )  # fmt: skip
 
 
@@ -60,7 +62,7 @@ def list_transfers(
     place = open_cursor(cursor)
     found, following, known = read_back.tickets(request.app.state.store, site, (first, last), place, limit, as_of)
     after = None if following is None else cursor_of(*following, known)
-    return Page(items=[_stored(*one) for one in found], next=after, known_at=known)
+    return Page(items=tuple(_stored(*one) for one in found), next=after, known_at=known)
 
 
 def _stored(ticket: Any, body: Transfer) -> StoredTransfer:

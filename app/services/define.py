@@ -18,7 +18,7 @@ from app.services.compile import compile_bodies
 from app.services.find import ALL_TIME, site_number, watermark
 from app.services.instants import check_zone
 from app.store import books, definitions, sites
-from app.store.definitions import Definition, EffectiveFromNeeded
+from app.store.definitions import Definition, EffectiveFromNeeded, Outcome
 from app.store.engine import Store, Writing
 from app.store.tables import ALWAYS
 from models.components import COMPONENTS
@@ -32,7 +32,7 @@ KINDS: dict[str, type[BaseModel]] = {"site": Site, "substance": Substance, "vess
 class Put:
     """What became of a definition."""
 
-    outcome: str
+    outcome: Outcome
     known_at: int
 
 

@@ -16,6 +16,7 @@ from app.services.compile import CompiledVessel, boiling_pressure, density_at, m
 from app.services.find import ALL_TIME, site_number
 from app.store import definitions, transfers
 from app.store.engine import Store, Writing
+from app.store.transfers import Outcome
 from app.store.transfers import Transfer as Ticket
 from models import constants, instruments, units
 from models.estimate import Estimate, combine
@@ -36,7 +37,7 @@ class Moved:
     water: bool
 
 
-def put(store: Store, site: str, name: str, body: Transfer, request: str = "") -> tuple[str, int]:
+def put(store: Store, site: str, name: str, body: Transfer, request: str = "") -> tuple[Outcome, int]:
     """Keep a ticket; its ends and its meter must be defined. The outcome and the ``recorded_at``."""
     with store.reading() as connection:
         site_number(connection, site)
@@ -68,7 +69,7 @@ def put_many(
         return counts, sorted(errors, key=lambda error: error.index), writing.recorded_at
 
 
-def _keep(writing: Writing, name: str, body: Transfer, text: str) -> str:
+def _keep(writing: Writing, name: str, body: Transfer, text: str) -> Outcome:
     """Keep one ticket; the closed nights that it or its former text touches become due."""
     former = transfers.current(writing.connection, writing.site_id, name, writing.recorded_at)
     ends = tuple("" if end.startswith(BOUNDARY) else end for end in (body.from_, body.to))

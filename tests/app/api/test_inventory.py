@@ -242,6 +242,47 @@ def test_a_step_is_a_number_of_seconds(site, every):
     assert [one["pointer"] for one in answer["errors"]] == ["/query/every"]
 
 
+# --- why it changed, and what else was measured -------------------------------------------------
+
+
+def test_a_change_is_told_by_input_and_adds_up(site):
+    """0.4 m of 50 000 kg/m, of which a ticket brought 19 000 kg."""
+    site.read(HOUR.format(0, 0), 2.0)
+    site.read(HOUR.format(6, 0), 2.4)
+    site.move("t", "boundary:a", "tk-1", mass_kg=19_000.0, started_at=HOUR.format(1, 0), ended_at=HOUR.format(2, 0))
+    found = site.get("/vessels/tk-1/change", from_=HOUR.format(0, 0), to=HOUR.format(6, 0))
+    assert (found["mass_before_kg"], found["mass_after_kg"]) == (pytest.approx(100_000.0), pytest.approx(120_000.0))
+    assert found["difference_kg"] == pytest.approx(20_000.0)
+    assert sum(one["contribution_kg"] for one in found["steps"]) == pytest.approx(found["difference_kg"])
+    level = next(one for one in found["steps"] if one["input"] == "level_m")
+    assert (level["before"], level["after"], level["unit"]) == (2.0, 2.4, "m")
+    assert level["contribution_kg"] == pytest.approx(20_000.0)
+    assert found["transfers"] == [{"transfer": "t", "mass_kg": pytest.approx(19_000.0)}]
+    assert found["unexplained_kg"] == pytest.approx(1_000.0)
+
+
+def test_a_mass_is_moved_from_its_reading_to_the_instant_by_the_tickets_in_between(site):
+    """Read at six, 100 000 kg; 5 000 kg left by half past; at a quarter to seven 95 000 kg are there."""
+    site.read(HOUR.format(6, 0), 2.0)
+    site.move("t", "tk-1", "boundary:a", mass_kg=5_000.0, started_at=HOUR.format(6, 10), ended_at=HOUR.format(6, 30))
+    found = stock(site, HOUR.format(6, 45))
+    assert (found["mass_kg"], found["moved_kg"]) == (pytest.approx(95_000.0), pytest.approx(-5_000.0))
+    course = site.get("/vessels/tk-1/inventory", from_=HOUR.format(6, 0), to=HOUR.format(7, 0), every=2700)["items"]
+    assert [one["mass_kg"] for one in course] == [pytest.approx(100_000.0), pytest.approx(95_000.0)]
+
+
+def test_a_lower_source_is_a_check_of_the_one_that_counts(site):
+    site.vessel("tk-2", sources=[{"source": "radar"}, {"source": "hand"}])
+    site.read(AT, 2.0, vessel="tk-2", source="radar")
+    site.read(AT, 1.99, vessel="tk-2", source="hand")
+    found = stock(site, AT, "tk-2")
+    assert found["mass_kg"] == pytest.approx(100_000.0)
+    (check,) = [one for one in found["checks"] if one["quantity"] == "level_m"]
+    assert (check["source"], check["at"], check["value"]) == ("hand", AT, 1.99)
+    assert check["difference"] == pytest.approx(-0.01)
+    assert check["standard_uncertainty"] > 0.0
+
+
 # --- what is not there ---------------------------------------------------------------------------
 
 

@@ -218,6 +218,12 @@ def test_every_bad_row_has_a_sentence_with_the_limit_and_its_unit(site):
     assert "1e6" not in json.dumps(answer) and "no-such-vessel" not in json.dumps(answer)
 
 
+def test_of_many_bad_rows_the_first_thousand_are_listed_and_all_are_counted(site):
+    answer = post(site, *[row(taken_at="now")] * 1_500, row(vessel="none"), row())
+    assert counts(answer) == [1, 0, 0, 1_501]
+    assert [one["index"] for one in answer["errors"]] == list(range(1_000))
+
+
 @pytest.mark.parametrize("text", ["NaN", "Infinity", "-Infinity", "1e999"])
 def test_what_is_no_number_is_no_value(site, text):
     body = f'{{"readings": [{{"vessel": "tk-1", "taken_at": "{AT}", "level_m": {text}}}, {json.dumps(row())}]}}'

@@ -73,6 +73,12 @@ def test_a_batch_keeps_good_tickets_and_names_the_others(site):
     assert [one["id"] for one in site.get("/transfers", **MAY)["items"]] == ["a", "e"]
 
 
+def test_of_many_bad_tickets_the_first_thousand_are_listed_and_all_are_counted(site):
+    answer = site.post("/transfers", {"transfers": [TICKET | {"id": "A"}, *[{"id": "t"}] * 1_500]})
+    assert answer["rejected"] == 1_501 and len(answer["errors"]) == 1_000
+    assert answer["errors"][0]["index"] == 0
+
+
 @pytest.mark.parametrize(
     ("body", "expected"),
     [
