@@ -43,7 +43,6 @@ def test_what_has_to_be_computed_follows_from_shape_space_and_substance(vessel, 
 @pytest.mark.parametrize(
     ("shape", "substance", "extra"),
     [
-        (RECEIVER, GAS_OIL, {}),
         (TANK, HYDROGEN, {"floating_roof": ROOF}),
         (TANK, HYDROGEN, {"vapour_space": {"kind": "open"}}),
     ],
