@@ -8,11 +8,13 @@ import re
 import shlex
 from decimal import Decimal
 from pathlib import Path
+from typing import get_args
 
 import pytest
 from fastapi.testclient import TestClient
 
 from app.main import create_app
+from app.schemas.types import Warned
 from app.settings import Settings
 from models import instruments
 
@@ -93,3 +95,15 @@ def test_each_command_of_the_top_is_one_line_that_sets_itself_up():
     lines = [line.strip() for line in README.splitlines() if line.strip().startswith("python3 -m venv")]
     assert len(lines) == 2
     assert all("&&" in line and ".venv/bin/pip install" in line for line in lines)
+
+
+def test_every_warning_has_its_line_in_the_glossary():
+    section = README.split("## Warnings, and what to do about each")[1].split("\n## ")[0]
+    said = set(re.findall(r"`([a-z_]+)`", "".join(line.split("|")[1] for line in section.splitlines() if line.startswith("| `"))))
+    assert said >= set(get_args(Warned))
+    assert all(len(line.split("|")) == 5 and line.split("|")[3].strip() for line in section.splitlines() if line.startswith("| `"))
+
+
+def test_every_day_is_linked():
+    days = sorted(path.name for path in (Path(__file__).parent / "days").glob("test_day_*.py"))
+    assert re.findall(r"\(tests/days/(test_day_\w+\.py)\)", README) == days
