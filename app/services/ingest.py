@@ -165,10 +165,12 @@ def _write(writing: Writing, rows: Sequence[tuple[int, Reading]], errors: list[R
         else:
             outcome.unchanged += 1
     changed = ("stored", "revised")
-    mark.readings(
-        writing,
-        [(one.taken_at, one.named()) for (_, one), fate in zip(rows, fates, strict=True) if fate & set(changed)],
-    )
+    kept = [
+        (mark.begins(one.taken_at, one.named(), one.sample_holds_from, revised="revised" in fate), one.named())
+        for (_, one), fate in zip(rows, fates, strict=True)
+        if fate & set(changed)
+    ]
+    mark.readings(writing, kept)
     outcome.known_at = writing.recorded_at
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 
 from app.services.find import ALL_TIME
+from app.services.samples import LATEST_US
 from app.store import books, due
 from app.store.engine import Writing
 from app.store.tables import LABORATORY
@@ -13,8 +14,18 @@ LONGEST_AGE_US = 35 * 86_400_000_000  # µs; no level, pressure or temperature c
 INTERPOLATED_US = LONGEST_AGE_US  # µs; a value after a close is joined to the one before it within the age
 
 
+def begins(taken_at: int, quantities: Iterable[str], holds_from: int | None, *, revised: bool) -> int:
+    """From when a reading may count: a sample's may stand from before it was drawn.
+
+    Where one is corrected, it may have stood from any instant that a sample may stand from.
+    """
+    if revised and not LABORATORY.isdisjoint(quantities):
+        return taken_at - LATEST_US
+    return taken_at if holds_from is None else min(taken_at, holds_from)
+
+
 def readings(writing: Writing, kept: Iterable[tuple[int, Iterable[str]]]) -> None:
-    """Nights that kept readings could change: instants, and the quantities that each brought.
+    """Nights that kept readings could change: instants from when they count, and the quantities of each.
 
     It is generous: a night that is closed anew from the same inputs stands as it is.
     """

@@ -12,7 +12,7 @@ from app.store import readings
 from app.store.readings import Found
 
 HOLDS = "sample_holds_from"
-LATEST_US = 35 * 86_400_000_000  # µs; a sample is drawn at most so long after it begins to stand
+LATEST_US = 35 * 86_400_000_000  # µs; a sample is drawn at most so long before or after it begins to stand
 STEPS_BACK = 20  # samples that stand only from later on, one after the other
 
 Key = tuple[str, str, str]  # owner, source, main quantity
@@ -35,46 +35,48 @@ def samples_at(
     wanted = {(owner, source, main): at[owner] for owner, source, main, _ in kinds}
     series = {(owner, source, main): own for owner, source, main, own in kinds}
     drawn: dict[Key, set[int]] = {key: set() for key in series}
-    _drawn_later(connection, site_id, series, wanted, drawn, known)
+    _dated_otherwise(connection, site_id, series, wanted, drawn, known)
     result: dict[Key, list[Sample]] = {key: [] for key in series}
-    asked = dict(wanted)
+    asked = {key: (int(NEVER), instant) for key, instant in wanted.items()}
     for _ in range(STEPS_BACK):
         before = readings.newest_each(
-            connection, site_id, [(series[key][key[2]], int(NEVER), instant) for key, instant in asked.items()], known
+            connection, site_id, [(series[key][key[2]], *within) for key, within in asked.items()], known
         )
         found = {one.series_id: one.taken_at for one in before}
+        asked = {key: within for key, within in asked.items() if series[key][key[2]] in found}
         for key in asked:
-            if series[key][key[2]] in found:
-                drawn[key].add(found[series[key][key[2]]])
+            drawn[key].add(found[series[key][key[2]]])
         result = _read(connection, site_id, series, drawn, known)
-        # A sample that was drawn before the instant but stands only from later on makes room for its elder.
-        asked = {
-            key: found[series[key][key[2]]] - 1
-            for key in asked
-            if series[key][key[2]] in found and not any(one.begins <= wanted[key] for one in result[key])
-        }
+        # A sample that stands only from later on makes room for its elder, one that stands from long before it was
+        # drawn for every other that was drawn in between.
+        asked = {key: (_stands(result[key], wanted[key]) + 1, found[series[key][key[2]]] - 1) for key in asked}
+        asked = {key: (first, last) for key, (first, last) in asked.items() if first <= last}
         if not asked:
             break
     return result
 
 
-def _drawn_later(
+def _stands(samples: Sequence[Sample], at: int) -> int:
+    """When the newest sample that begins at or before an instant began."""
+    return max((one.begins for one in samples if one.begins <= at), default=int(NEVER))
+
+
+def _dated_otherwise(
     connection: Connection, site_id: int, series: Mapping[Key, Mapping[str, int]], at: Mapping[Key, int],
     drawn: dict[Key, set[int]], known: int,
 ) -> None:  # fmt: skip
-    """Samples drawn after the instant that stand from before it."""
-    holding = {own[HOLDS]: key for key, own in series.items() if HOLDS in own}
-    if not holding:
-        return
-    first, last = min(at.values()), max(at.values())
-    course = readings.course(connection, site_id, sorted(set(holding)), first + 1, last + LATEST_US, known)
+    """Samples that stand at the instant and were drawn after it, or before they began to stand."""
     keys: dict[int, list[Key]] = {}
     for key, own in series.items():
         if HOLDS in own:
             keys.setdefault(own[HOLDS], []).append(key)
+    if not keys:
+        return
+    first, last = min(at.values()) - LATEST_US, max(at.values()) + LATEST_US
+    course = readings.course(connection, site_id, sorted(keys), first, last, known)
     for number, taken_at, begins in zip(course.series_id, course.taken_at, course.value, strict=True):
         for key in keys[number]:
-            if taken_at > at[key] and begins is not None and begins <= at[key]:
+            if begins is not None and begins <= at[key] and (taken_at > at[key] or taken_at < begins):
                 drawn[key].add(taken_at)
 
 

@@ -42,6 +42,18 @@ def test_a_late_sample_touches_every_night_from_then_on_and_none_before(closed: 
     assert closed.due() == [NIGHT[11], NIGHT[12]]
 
 
+def test_a_sample_touches_the_nights_since_when_it_stands_and_a_corrected_one_those_since_when_it_could(
+    closed: Plant,
+) -> None:
+    sample = {"observed_density_kg_m3": 810.0, "observed_density_temperature_c": 15.0}
+    closed.read("tk-1", "2026-03-12T07:00", sample_holds_from="2026-03-11T20:00:00Z", **sample)
+    assert closed.due() == [NIGHT[11], NIGHT[12]]
+    for day in (11, 12):
+        closed.close(f"2026-03-{day}")
+    closed.read("tk-1", "2026-03-12T07:00", sample_holds_from="2026-03-12T05:00:00Z", **sample)
+    assert closed.due() == list(NIGHT.values())
+
+
 def test_readings_long_after_the_last_close_touch_nothing(closed: Plant) -> None:
     closed.read("tk-1", "2026-04-18T06:00", level_m=5.0)  # 36 days
     assert closed.due() == []
