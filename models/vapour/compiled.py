@@ -202,14 +202,14 @@ def _measured(mixture: VapourMixture, correlated: Compiled) -> Compiled:
     second = _through(mixture.measured_second, t)
     if mixture.measured_third is not None:
         third = _through(mixture.measured_third, t)
-        third_note = Note("third virial coefficient", "C", "measured", "given with the substance")
+        third_notes = (Note("third virial coefficient", "C", "measured", "given with the substance"),)
     else:
         third = correlated_coefficients(
             mixture.substances, mixture.fractions, t, mixture.second_virial, mixture.third_virial
         )[1]
-        third_note = correlated.notes[1]
+        third_notes = tuple(note for note in correlated.notes if note.symbol == "C")  # none of two terms
     method = f"measured, {lowest:.0f} to {highest:.0f} K"
-    notes = (Note("second virial coefficient", "B", method, "given with the substance"), third_note)
+    notes = (Note("second virial coefficient", "B", method, "given with the substance"), *third_notes)
     return _built(mixture, lowest, highest, x, second, third, MEASURED, notes)
 
 

@@ -75,6 +75,13 @@ def test_c_is_the_correlations_where_only_b_was_measured() -> None:
     assert c == pytest.approx(correlated_coefficients([component("propane")], [1.0], t)[1], rel=1e-10)
 
 
+def test_a_b_that_was_measured_may_stand_alone_with_two_terms() -> None:
+    mixture = VapourMixture(("propane",), terms=2, measured_second=-3.9e-4)
+    b, c = coefficients(mixture, np.array([300.0]))
+    assert (b[0], c[0]) == pytest.approx((-3.9e-4, 0.0), rel=1e-12)
+    assert [note.symbol for note in compile_mixture(mixture)[0].notes] == ["B"]
+
+
 def test_two_terms_have_no_c() -> None:
     _, c = coefficients(VapourMixture(("propane",), terms=2), np.array([250.0, 300.0]))
     assert c.tolist() == [0.0, 0.0]
