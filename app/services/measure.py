@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from app.services.choose import Chosen, choose
 from app.services.collect import INPUTS, Collected
 from app.services.compile import (
+    DAY_US,
     CompiledVessel,
     analysed_mixture,
     boiling_pressure,
@@ -178,7 +179,7 @@ class _States:
             density_pressure=density[2],
             sediment_water=np.nan_to_num(self.value("sediment_water", "sediment_water_pct")) / 100.0,
             density_is_dry=self._is_dry(),
-            pressure_uncertainty=self._spread("pressure_kpa", PASCAL),
+            pressure_uncertainty=np.hypot(self._spread("pressure_kpa", PASCAL), self.weather()),
             temperature_uncertainty=self._spread("liquid_temperature_c", KELVIN),
             vapour_row=vapour_row,
             roof_load=np.nan_to_num(self.chosen["roof_load"].value),
@@ -213,6 +214,11 @@ class _States:
         column = np.where(self.at_rest, 0.0, column)
         self.gauge = ~is_absolute
         return np.where(is_absolute, units.pascal(column), units.pascal(column) + atmosphere)
+
+    def weather(self) -> FloatColumns:
+        """Standard uncertainty of the atmosphere's pressure where it makes a gauge's reading absolute. [Pa]"""
+        spread = self.of_vessels([vessel.site.barometer_uncertainty_kpa for vessel in self.vessels])
+        return np.where(self.gauge, spread * PASCAL, 0.0)
 
     def _ambient(self, liquid: FloatColumns) -> FloatColumns:
         own = self.value("ambient", "ambient_temperature_c")
@@ -385,11 +391,11 @@ def _surroundings(builder: _States, errors: Errors) -> None:
         "pressure_kpa", "pressure", np.where(builder.at_rest, instruments.OPEN_SPACE_KPA, 0.0), "systematic",
         lambda row: f"pressure-open:{errors.vessel(row).name}", declared=lambda row: False, scale=PASCAL,
     )  # fmt: skip
-    spread = builder.of_vessels([vessel.site.barometer_uncertainty_kpa for vessel in builder.vessels])
-    read = chosen["barometer"]
+    read, at = chosen["barometer"], builder.collected.at
+    # Shared by the vessels of the site, not by two days: where nobody reads it, the weather is another by then.
     errors.add(
-        "barometric_pressure_kpa_abs", "pressure", np.where(builder.gauge, spread, 0.0), "systematic",
-        lambda row: "barometer:site" if read.source[row] < 0 else f"barometer:site:{read.taken_at[row]}",
+        "barometric_pressure_kpa_abs", "pressure", builder.weather() / PASCAL, "systematic",
+        lambda row: f"barometer:site:{at[row] // DAY_US if read.source[row] < 0 else read.taken_at[row]}",
         scale=PASCAL,
     )  # fmt: skip
 
