@@ -64,7 +64,7 @@ def test_the_arithmetic_of_the_buoyancy():
     """What the docstring says, on paper: 28,040.665 kg each, 2,523,659.9 kg in all, 11.635120 m."""
     assert pytest.approx(28_040.665, abs=0.001) == MASS
     assert pytest.approx(2_523_659.9, abs=0.1) == TANKERS * MASS
-    assert 15.0 - TANKERS * MASS / KG_PER_M == pytest.approx(11.635120, abs=1e-6)
+    assert pytest.approx(11.635120, abs=1e-6) == 15.0 - TANKERS * MASS / KG_PER_M
 
 
 @pytest.mark.parametrize("density", [750.0, None])
