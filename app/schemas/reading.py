@@ -96,7 +96,7 @@ class Values(Body):
         default=None, ge=40, le=120, description="Station pressure of the air [kPa absolute]"
     )
     observed_density_kg_m3: float | None = Field(
-        default=None, gt=0, le=25000, description="Density of a sample, mass over volume in vacuo [kg/m³]"
+        default=None, ge=1e-3, le=25000, description="Density of a sample, mass over volume in vacuo [kg/m³]"
     )
     observed_density_temperature_c: float | None = Field(
         default=None,

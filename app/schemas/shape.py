@@ -34,7 +34,7 @@ class EllipsoidalHead(Body):
     model_config = ConfigDict(json_schema_extra={"examples": [{"kind": "ellipsoidal", "depth_m": 0.6}]})
 
     kind: Literal["ellipsoidal"] = Field(description="Half an ellipsoid of revolution")
-    depth_m: float = Field(gt=0, le=100, description="Inside depth [m]")
+    depth_m: float = Field(ge=1e-3, le=100, description="Inside depth [m]")
 
 
 class TorisphericalHead(Body):
@@ -45,7 +45,7 @@ class TorisphericalHead(Body):
     )
 
     kind: Literal["torispherical"] = Field(description="Crown and knuckle")
-    crown_radius_m: float = Field(gt=0, le=500, description="Inside radius of the crown [m]")
+    crown_radius_m: float = Field(ge=1e-3, le=500, description="Inside radius of the crown [m]")
     knuckle_radius_m: float = Field(ge=0, le=100, description="Inside radius of the knuckle [m]")
 
 
@@ -55,7 +55,7 @@ class ConicalHead(Body):
     model_config = ConfigDict(json_schema_extra={"examples": [{"kind": "cone", "depth_m": 0.35}]})
 
     kind: Literal["cone"] = Field(description="A cone")
-    depth_m: float = Field(gt=0, le=100, description="Inside depth [m]")
+    depth_m: float = Field(ge=1e-3, le=100, description="Inside depth [m]")
 
 
 class ConicalBottom(ConicalHead):
@@ -113,8 +113,8 @@ class VerticalCylinder(Body):
     )
 
     kind: Literal["vertical_cylinder"] = Field(description="An upright cylinder")
-    diameter_m: float = Field(gt=0, le=200, description="Inside diameter [m]")
-    height_m: float = Field(gt=0, le=200, description="Height of the cylindrical part [m]")
+    diameter_m: float = Field(ge=1e-3, le=200, description="Inside diameter [m]")
+    height_m: float = Field(ge=1e-3, le=200, description="Height of the cylindrical part [m]")
     bottom: Bottom = Field(default=FLAT, description="The bottom; flat if left out")
     top: Head = Field(default=FLAT, description="The top; flat if left out")
 
@@ -148,8 +148,8 @@ class HorizontalCylinder(Body):
     )
 
     kind: Literal["horizontal_cylinder"] = Field(description="A lying cylinder")
-    diameter_m: float = Field(gt=0, le=50, description="Inside diameter [m]")
-    length_m: float = Field(gt=0, le=1000, description="Length between the tangent lines [m]")
+    diameter_m: float = Field(ge=1e-3, le=50, description="Inside diameter [m]")
+    length_m: float = Field(ge=1e-3, le=1000, description="Length between the tangent lines [m]")
     left_head: Head = Field(default=FLAT, description="The left head; flat if left out")
     right_head: Head = Field(default=FLAT, description="The right head; flat if left out")
     tilt_deg: float = Field(default=0.0, ge=-45, le=45, description="Tilt; positive raises the right end [°]")
@@ -176,7 +176,7 @@ class Sphere(Body):
     model_config = ConfigDict(json_schema_extra={"examples": [{"kind": "sphere", "diameter_m": 15.8}]})
 
     kind: Literal["sphere"] = Field(description="A sphere")
-    diameter_m: float = Field(gt=0, le=100, description="Inside diameter [m]")
+    diameter_m: float = Field(ge=1e-3, le=100, description="Inside diameter [m]")
 
 
 class Box(Body):
@@ -187,9 +187,9 @@ class Box(Body):
     )
 
     kind: Literal["box"] = Field(description="A box")
-    length_m: float = Field(gt=0, le=500, description="Inside length [m]")
-    width_m: float = Field(gt=0, le=500, description="Inside width [m]")
-    height_m: float = Field(gt=0, le=200, description="Inside height [m]")
+    length_m: float = Field(ge=1e-3, le=500, description="Inside length [m]")
+    width_m: float = Field(ge=1e-3, le=500, description="Inside width [m]")
+    height_m: float = Field(ge=1e-3, le=200, description="Inside height [m]")
 
 
 Level = Annotated[float, Field(ge=-10, le=200)]
@@ -229,21 +229,21 @@ class CapacityTable(Body):
         AfterValidator(_rises),
     ] = Field(description="Rows of [level_m, volume_m3]; levels rise, volumes never fall [m, m³]")
     total_volume_m3: float | None = Field(
-        default=None, gt=0, le=1e7, description="Volume of the whole vessel; the last row's if left out [m³]"
+        default=None, ge=1e-6, le=1e7, description="Volume of the whole vessel; the last row's if left out [m³]"
     )
     of: Literal["vertical_cylinder", "horizontal_cylinder", "sphere", "box"] | None = Field(
         default=None, description="The shape that the table is of"
     )
-    diameter_m: float | None = Field(default=None, gt=0, le=200, description="Inside diameter of that shape [m]")
+    diameter_m: float | None = Field(default=None, ge=1e-3, le=200, description="Inside diameter of that shape [m]")
     interpolation: Literal["linear", "monotone_cubic"] = Field(
         default="linear", description="Between rows; beyond them there is nothing"
     )
     roof_deducted_at_kg_m3: float | None = Field(
-        default=None, gt=0, le=25000,
+        default=None, ge=1e-3, le=25000,
         description="Density at which the table deducts the floating roof; none: it does not [kg/m³]",
     )  # fmt: skip
     head_included_at_kg_m3: float | None = Field(
-        default=None, gt=0, le=25000,
+        default=None, ge=1e-3, le=25000,
         description="Density at which the table already holds the strain by the liquid's head; "
         "left out, it does not [kg/m³]",
     )  # fmt: skip
@@ -262,7 +262,7 @@ class FixedVolume(Body):
     model_config = ConfigDict(json_schema_extra={"examples": [{"kind": "fixed_volume", "volume_m3": 5.0}]})
 
     kind: Literal["fixed_volume"] = Field(description="One volume, no level")
-    volume_m3: float = Field(gt=0, le=1e7, description="Stamped or measured volume [m³]")
+    volume_m3: float = Field(ge=1e-6, le=1e7, description="Stamped or measured volume [m³]")
 
 
 class Junction(Body):

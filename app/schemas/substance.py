@@ -93,7 +93,7 @@ class ExpansivityLiquid(Body):
     )
 
     model: Literal["expansivity"] = Field(description="β constant or a polynomial of temperature, κ constant")
-    density_kg_m3: float = Field(gt=0, le=25000, description="Density at the state below, in vacuo [kg/m³]")
+    density_kg_m3: float = Field(ge=1e-3, le=25000, description="Density at the state below, in vacuo [kg/m³]")
     density_uncertainty_kg_m3: float | None = Field(
         default=None, ge=0, le=5000,
         description="Standard uncertainty of the density; 1 % of it if left out [kg/m³]",
@@ -129,13 +129,13 @@ class Component(Body):
     model_config = ConfigDict(json_schema_extra={"examples": [{"id": "propane", "mole_fraction": 1.0}]})
 
     id: ComponentId = Field(description="Name of the component, such as propane or carbon-dioxide")
-    mole_fraction: float = Field(gt=0, le=1, description="Mole fraction [1]")
-    critical_temperature_k: float | None = Field(default=None, gt=0, le=5000, description="Critical temperature [K]")
+    mole_fraction: float = Field(ge=1e-12, le=1, description="Mole fraction [1]")
+    critical_temperature_k: float | None = Field(default=None, ge=1, le=5000, description="Critical temperature [K]")
     critical_pressure_kpa_abs: float | None = Field(
-        default=None, gt=0, le=1e6, description="Critical pressure [kPa absolute]"
+        default=None, ge=1, le=1e6, description="Critical pressure [kPa absolute]"
     )
     acentric_factor: float | None = Field(default=None, ge=-1, le=3, description="Acentric factor [1]")
-    molar_mass_g_mol: float | None = Field(default=None, gt=0, le=2000, description="Molar mass [g/mol]")
+    molar_mass_g_mol: float | None = Field(default=None, ge=1, le=2000, description="Molar mass [g/mol]")
 
     @model_validator(mode="after")
     def _all_constants_or_none(self) -> Self:

@@ -124,7 +124,7 @@ class Transfer(MovedQuantity):
     )
     density_kg_m3: float | None = Field(
         default=None,
-        gt=0,
+        ge=1e-3,
         le=25000,
         description="Density in vacuo; the vessel's at that time if left out [kg/m³]",
     )

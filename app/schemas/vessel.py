@@ -111,7 +111,7 @@ class Gauging(Body):
 
     reference_height_m: float | None = Field(
         default=None,
-        gt=0,
+        ge=1e-3,
         le=200,
         description="Height of the reference point above the zero; ullage needs it [m]",
     )

@@ -121,6 +121,8 @@ def test_vessels_are_listed_by_id_and_pages_agree_while_writes_go_on(bare):
         ({"shape": {}}, ("/shape/kind", "missing")),
         ({"shape": {"kind": "box", "length_m": 10.0, "width_m": 5.0}}, ("/shape/height_m", "missing")),
         ({"shape": BOX | {"height_m": -1}}, ("/shape/height_m", "out_of_range")),
+        ({"shape": BOX | {"height_m": 1e-300}}, ("/shape/height_m", "out_of_range")),
+        ({"shell": {"thickness_m": 1e-9}}, ("/shell/thickness_m", "out_of_range")),
         ({"shape": BOX | {"height_m": "4"}}, ("/shape/height_m", "wrong_type")),
         ({"shape": BOX | {"diameter_m": 4.0}}, ("/shape/diameter_m", "unknown_field")),
         ({"substance": "nothing-of-this-name"}, ("/substance", "unknown_substance")),

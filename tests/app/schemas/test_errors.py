@@ -32,7 +32,7 @@ def test_limit_is_named_with_its_unit() -> None:
         ("/liquid_temperature_c", "out_of_range", "liquid_temperature_c is at least -273.15 °C.")
     ]
     assert told({**READING, "observed_density_kg_m3": 0}) == [
-        ("/observed_density_kg_m3", "out_of_range", "observed_density_kg_m3 is more than 0 kg/m³.")
+        ("/observed_density_kg_m3", "out_of_range", "observed_density_kg_m3 is at least 0.001 kg/m³.")
     ]
 
 
