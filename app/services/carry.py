@@ -17,15 +17,15 @@ from sqlalchemy import Connection
 from app.schemas.meter import Meter
 from app.schemas.transfer import Transfer
 from app.services import move
+from app.services.blend import Blend, Corrections, stale
 from app.services.check import check
 from app.services.choose import ALWAYS, Chosen
 from app.services.collect import Collected, collect
 from app.services.compile import CompiledVessel
-from app.services.measure import Blend, Corrections, Measured, choices, measure, standard_density
+from app.services.measure import Measured, choices, measure, standard_density
 from app.services.parts import at_row
 from app.store import transfers
 from app.store.transfers import Transfer as Ticket
-from models import instruments
 from models.estimate import Estimate, combine
 
 DAY_US = 86_400_000_000
@@ -135,7 +135,7 @@ def _moves(connection: Connection, site_id: int, measured: Measured, known: int,
         at = measured.instant(row)
         latest = max(latest, at)
         oldest = min(int(instants[row]), at - DAY_US)
-        for name in ("density", "free_water"):
+        for name in ("density", "sediment_water", "vapour_composition", "free_water"):
             chosen = measured.chosen[name]
             if chosen.usable[row]:
                 oldest = min(oldest, int(chosen.begins[row]))
@@ -186,72 +186,16 @@ def _corrections(measured: Measured, moves: Moves, carried: Mapping[int, Carried
     dry: set[int] = set()
     for row in range(measured.collected.rows):
         vessel = measured.vessel(row)
-        own = moves.of(vessel.name) if vessel.has_liquid else []
+        own = moves.of(vessel.name)
         if not own:
             continue
-        read = int(measured.collected.at[row])
-        blend = _sample(measured, moves, own, row, read, carried[row])
+        blend = stale(measured, moves, own, row, carried[row])
         if blend is not None:
             blends[row] = blend
-        if _water(measured, own, row, read, carried[row]):
+        read = int(measured.collected.at[row])
+        if vessel.has_liquid and _water(measured, own, row, read, carried[row]):
             dry.add(row)
     return Corrections(blends, frozenset(dry)) if blends or dry else None
-
-
-def _sample(
-    measured: Measured, moves: Moves, own: Sequence[tuple[Ticket, Transfer]], row: int, read: int, carried: Carried
-) -> Blend | None:
-    """The blend of a sample with what was received after it, or the old value with a wider error."""
-    chosen = measured.chosen["density"]
-    vessel = measured.vessel(row)
-    if not chosen.usable[row]:
-        return None
-    begins = int(chosen.begins[row])
-    standard = {vessel.name: standard_density(measured, row)}
-    held = standard[vessel.name].value
-    volume = float(measured.result["gross_standard_volume"][row])
-    if not (math.isfinite(volume) and volume > 0.0 and math.isfinite(held)):
-        return None
-    received: list[tuple[Ticket, Transfer, float]] = []
-    delivered = 0.0
-    for ticket, body in own:
-        if body.of == "water" or ticket.started_at >= read or ticket.ended_at <= begins:
-            continue
-        part = moves.part(ticket, begins, read, standard)
-        mass = None if part.mass is None else part.mass.value
-        if part.target == vessel.name:
-            received.append((ticket, body, math.nan if mass is None else mass))
-        elif mass is not None:
-            delivered += mass / held
-    if not any(not mass == 0.0 for _, _, mass in received):
-        return None
-    carried.warn(
-        "sample_predates_receipt", "a receipt came after the sample that stands for the content", uncertain=True
-    )
-    return _blended(vessel, received, volume, delivered, held)
-
-
-def _blended(
-    vessel: CompiledVessel,
-    received: Sequence[tuple[Ticket, Transfer, float]],
-    volume: float,
-    delivered: float,
-    held: float,
-) -> Blend:
-    """Mass and standard volume of the heel and of each receipt, deliveries at the end."""
-    name = f"mix:{vessel.name}:{received[-1][0].name}"
-    densities = [move.own_density(ticket.name, body, vessel) for ticket, body, _ in received]
-    known = all(density is not None for density in densities) and all(math.isfinite(mass) for *_, mass in received)
-    if known:
-        parts = [
-            (mass, mass / density.value) for (*_, mass), density in zip(received, densities, strict=True) if density
-        ]
-        heel = max(0.0, volume + delivered - math.fsum(v for _, v in parts))
-        mass = heel * held + math.fsum(m for m, _ in parts)
-        blend = mass / (heel + math.fsum(v for _, v in parts))
-        return Blend(blend, abs(blend - held) / math.sqrt(3.0), name)
-    share = math.fsum(mass / held if math.isfinite(mass) else volume for *_, mass in received) / (volume + delivered)
-    return Blend(None, instruments.BLEND_DENSITY * min(1.0, share), name)
 
 
 def _water(measured: Measured, own: Sequence[tuple[Ticket, Transfer]], row: int, read: int, carried: Carried) -> bool:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
@@ -31,6 +31,7 @@ from models.mass import inventory
 from models.vapour.series import VapourMixture
 
 if TYPE_CHECKING:
+    from app.services.blend import Corrections
     from app.services.carry import Carried
 
 FloatColumns = NDArray[np.float64]
@@ -75,23 +76,6 @@ class Measured:
     def vessel(self, row: int) -> CompiledVessel:
         """The vessel of a row."""
         return self.collected.vessel(row)
-
-
-@dataclass(frozen=True)
-class Blend:
-    """Density of a content that received something since its sample, None for the sample's, and its error."""
-
-    density: float | None
-    sigma: float
-    name: str
-
-
-@dataclass(frozen=True)
-class Corrections:
-    """What samples and water dips no longer say, by row."""
-
-    blends: Mapping[int, Blend]
-    dry: frozenset[int]
 
 
 def choices(collected: Collected, ahead: NDArray[np.int64] | None = None) -> dict[str, Chosen]:
@@ -177,7 +161,7 @@ class _States:
             density=density[0],
             density_temperature=density[1],
             density_pressure=density[2],
-            sediment_water=np.nan_to_num(self.value("sediment_water", "sediment_water_pct")) / 100.0,
+            sediment_water=self._sediment_water(),
             density_is_dry=self._is_dry(),
             pressure_uncertainty=np.hypot(self._spread("pressure_kpa", PASCAL), self.weather()),
             temperature_uncertainty=self._spread("liquid_temperature_c", KELVIN),
@@ -252,6 +236,14 @@ class _States:
                 density[0][row] = blend.density
                 density[1][row], density[2][row] = held["standard_temperature"], held["standard_pressure"]
         return density[0], density[1], density[2]
+
+    def _sediment_water(self) -> FloatColumns:
+        """The sample's share of sediment and water, or a blend's."""
+        share = np.nan_to_num(self.value("sediment_water", "sediment_water_pct")) / 100.0
+        for row, blend in self.blends.items():
+            if blend.water is not None:
+                share[row] = blend.water
+        return share
 
     def _boiling(self, temperature: FloatColumns, where: BoolColumns) -> FloatColumns:
         """Vapour pressure at each sample's temperature, where the substance has one."""
@@ -453,6 +445,11 @@ def _blends(builder: _States, errors: Errors) -> None:
     errors.add(
         "observed_density_kg_m3", "density", sigma, "model", lambda row: blends[row].name, declared=lambda row: False
     )
+    wet = np.array([blends[row].water_sigma if row in blends else 0.0 for row in range(builder.collected.rows)])
+    errors.add(
+        "sediment_water_pct", "sediment_water", wet * 100.0, "model", lambda row: blends[row].water_name,
+        declared=lambda row: False, scale=0.01,
+    )  # fmt: skip
 
 
 def _vapour(builder: _States, errors: Errors, pressure: FloatColumns) -> None:

@@ -1,0 +1,188 @@
+"""Samples that a receipt made stale: contents are blended by mass and standard volume, or known less well.
+
+The density of a blend is that of the dry liquid, as a ticket's is that of the net substance; the water's share
+is blended beside it, each since its own sample.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from app.schemas.transfer import Transfer
+from app.services import move
+from app.services.compile import WATER_DENSITY
+from app.services.measure import Measured, standard_density
+from app.services.parts import at_row
+from app.store.transfers import Transfer as Ticket
+from models import instruments
+from models.estimate import Estimate
+
+if TYPE_CHECKING:
+    from app.services.carry import Carried, Moves
+
+Own = Sequence[tuple[Ticket, Transfer]]
+
+
+@dataclass(frozen=True)
+class Blend:
+    """Density of a content that received something since its sample, None for the sample's, and its error.
+
+    ``water`` is its share of sediment and water, None for the sample's; beside it the density is the dry one.
+    """
+
+    density: float | None
+    sigma: float
+    name: str
+    water: float | None = None
+    water_sigma: float = 0.0
+    water_name: str = ""
+
+
+@dataclass(frozen=True)
+class Corrections:
+    """What samples and water dips no longer say, by row."""
+
+    blends: Mapping[int, Blend]
+    dry: frozenset[int]
+
+
+@dataclass(frozen=True)
+class _Receipt:
+    """What came in since a sample: net mass, standard density of its own if known, water and net volume."""
+
+    ticket: str
+    mass: float
+    density: float | None
+    net: float
+    water: float
+
+
+@dataclass(frozen=True)
+class _Content:
+    """A content as its samples describe it: standard volume with its water, the water's share, density without."""
+
+    volume: float
+    share: float
+    density: float
+    wet: bool  # whether the water's share was sampled
+
+
+def stale(measured: Measured, moves: Moves, own: Own, row: int, carried: Carried) -> Blend | None:
+    """What a receipt after a sample does to a row; each such sample is said to predate it."""
+    read = int(measured.collected.at[row])
+    vessel = measured.vessel(row)
+    if vessel.has_vapour:
+        _analysis(measured, own, row, read, carried)
+    content = _content(measured, row) if vessel.has_liquid else None
+    if content is None:
+        return None
+    standard = {vessel.name: standard_density(measured, row)}
+    found: list[Blend] = []
+    for name, blended in (("density", _density), ("sediment_water", _water)):
+        chosen = measured.chosen[name]
+        if chosen.usable[row]:
+            received, delivered = _since(measured, moves, own, row, int(chosen.begins[row]), content, standard)
+            if any(one.mass != 0.0 for one in received):
+                found.append(blended(vessel.name, content, received, delivered))
+    if not found:
+        return None
+    carried.warn(
+        "sample_predates_receipt", "a receipt came after the sample that stands for the content", uncertain=True
+    )
+    return _together(found, content)
+
+
+def _analysis(measured: Measured, own: Own, row: int, read: int, carried: Carried) -> None:
+    """A gas that received something since its analysis: what came in has a composition that nobody told."""
+    chosen, name = measured.chosen["vapour_composition"], measured.vessel(row).name
+    if not chosen.usable[row]:
+        return
+    begins = int(chosen.begins[row])
+    if any(b.of is None and b.to == name and t.started_at < read and t.ended_at > begins for t, b in own):
+        carried.warn(
+            "sample_predates_receipt", "a receipt came after the analysis that stands for the gas", uncertain=True
+        )
+
+
+def _content(measured: Measured, row: int) -> _Content | None:
+    """The content by its samples as they are."""
+    volume = float(measured.result["gross_standard_volume"][row])
+    held = float(measured.result["standard_density"][row])
+    share = at_row(measured.state.sediment_water, row)
+    if not (math.isfinite(volume) and volume > 0.0 and math.isfinite(held) and share < 1.0):
+        return None
+    return _Content(volume, share, held, bool(measured.chosen["sediment_water"].usable[row]))
+
+
+def _since(
+    measured: Measured, moves: Moves, own: Own, row: int, begins: int, content: _Content, standard: dict[str, Estimate]
+) -> tuple[list[_Receipt], float]:
+    """Receipts since a sample began to stand, and the standard volume of what was delivered since."""
+    vessel, read = measured.vessel(row), int(measured.collected.at[row])
+    received: list[_Receipt] = []
+    delivered = 0.0
+    for ticket, body in own:
+        if body.of == "water" or ticket.started_at >= read or ticket.ended_at <= begins:
+            continue
+        part = moves.part(ticket, begins, read, standard)
+        mass = math.nan if part.mass is None else part.mass.value
+        if part.target == vessel.name:
+            density = move.own_density(ticket.name, body, vessel)
+            net = mass / (content.density if density is None else density.value)
+            water = _water_of(body, mass, net) if content.wet else 0.0
+            received.append(_Receipt(ticket.name, mass, None if density is None else density.value, net, water))
+        elif part.mass is not None:
+            delivered += mass / content.density / (1.0 - content.share)
+    return received, delivered
+
+
+def _water_of(body: Transfer, mass: float, net: float) -> float:
+    """Standard volume of a ticket's water; its share is one of the quantity that the ticket is in."""
+    share = body.sediment_water_pct / 100.0
+    if share >= 1.0:
+        return 0.0
+    by_mass = body.quantities()[:1] in (["mass_kg"], ["weight_in_air_kg"])
+    return share / (1.0 - share) * (mass / WATER_DENSITY if by_mass else net)
+
+
+def _density(vessel: str, content: _Content, received: Sequence[_Receipt], delivered: float) -> Blend:
+    """Mass and net volume of the heel and of each receipt, deliveries at the end; or the sample's, less well known."""
+    name = f"mix:{vessel}:{received[-1].ticket}"
+    if all(one.density is not None and math.isfinite(one.mass) for one in received):
+        net = _heel(content, received, delivered) * (1.0 - content.share)
+        mass = net * content.density + math.fsum(one.mass for one in received)
+        blend = mass / (net + math.fsum(one.net for one in received))
+        return Blend(blend, abs(blend - content.density) / math.sqrt(3.0), name)
+    share = math.fsum(one.net if math.isfinite(one.net) else content.volume for one in received)
+    return Blend(None, instruments.BLEND_DENSITY * min(1.0, share / (content.volume + delivered)), name)
+
+
+def _water(vessel: str, content: _Content, received: Sequence[_Receipt], delivered: float) -> Blend:
+    """The water's share of the heel and of each receipt, where their volumes are known."""
+    name = f"wet:{vessel}:{received[-1].ticket}"
+    if not all(math.isfinite(one.mass) for one in received):
+        return Blend(None, 0.0, name)
+    heel = _heel(content, received, delivered)
+    whole = heel + math.fsum(one.net + one.water for one in received)
+    share = (heel * content.share + math.fsum(one.water for one in received)) / whole
+    return Blend(None, 0.0, name, share, abs(share - content.share) / math.sqrt(3.0), name)
+
+
+def _heel(content: _Content, received: Sequence[_Receipt], delivered: float) -> float:
+    """Standard volume of what was there before the receipts."""
+    return max(0.0, content.volume + delivered - math.fsum(one.net + one.water for one in received))
+
+
+def _together(found: Sequence[Blend], content: _Content) -> Blend:
+    """The blends of both samples as one; beside another share of water the density is told dry."""
+    water = next((one for one in found if one.water is not None), None)
+    mixed = next((one for one in found if one.water is None), None)
+    if water is None:
+        assert mixed is not None
+        return mixed
+    density = content.density if mixed is None or mixed.density is None else mixed.density
+    sigma, name = (0.0, water.name) if mixed is None else (mixed.sigma, mixed.name)
+    return Blend(density, sigma, name, water.water, water.water_sigma, water.name)
