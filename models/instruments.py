@@ -37,6 +37,12 @@ DEFAULTS: dict[str, DefaultUncertainty] = {
         0.001, math.hypot(0.003, 0.003) * _RECTANGULAR,
         "API MPMS 3.1B-2001, 4.3: ±3 mm from the factory and ±3 mm installed; random 1 mm, common practice",
     ),
+    "liquid_volume_pct": DefaultUncertainty(
+        0.2, 2.0 * _RECTANGULAR, "the dial of a float gauge, ±2 % of the capacity, common practice"
+    ),
+    "differential_pressure_kpa": DefaultUncertainty(
+        0.02, 0.1 * _RECTANGULAR, "0.1 % of a span of 100 kPa, common practice (from memory)"
+    ),
     "free_water_level_m": DefaultUncertainty(
         0.005 * _RECTANGULAR, 0.0, "water cut by paste ±3 to 6 mm, common practice (from memory)"
     ),
@@ -95,3 +101,5 @@ METER_RANDOM_PCT = 0.05  # percent, repeatability; common practice
 METER_SYSTEMATIC_PCT = 0.3 * _RECTANGULAR  # percent
 
 BLEND_DENSITY = 3.0  # kg/m3, of a content that received an unknown density since its sample; common practice
+
+WEIGHED_SHARE = 0.001  # of a mass by load cells, with pipes attached; common practice

@@ -23,7 +23,7 @@ from app.services.choose import ALWAYS, Chosen
 from app.services.collect import Collected, collect
 from app.services.compile import CompiledVessel
 from app.services.measure import Measured, choices, measure, standard_density
-from app.services.parts import at_row
+from app.services.parts import at_row, stamp
 from app.store import transfers
 from app.store.transfers import Transfer as Ticket
 from models.estimate import Estimate, combine
@@ -42,9 +42,15 @@ class Carried:
 
     moved: Estimate = field(default_factory=lambda: Estimate(0.0))
     empty: bool = False
+    weighed: Estimate | None = None
     extras: dict[str, float] = field(default_factory=dict)  # kg of each further named error
     warnings: list[dict[str, str]] = field(default_factory=list)
     uncertain: bool = False
+
+    @property
+    def stated(self) -> Estimate | None:
+        """The mass of a stock-take that counts as it stands: found empty, or weighed."""
+        return Estimate(0.0) if self.empty else self.weighed
 
     def warn(self, code: str, detail: str, *, uncertain: bool = False) -> None:
         """Say what is doubtful."""
@@ -84,12 +90,14 @@ def measure_at(
     rows = len(asked)
     first = collect(connection, site_id, vessels, asked, known)
     ahead = np.full(rows, ALWAYS) if closing else None
-    instants, empties = _read_at(first, choices(first, ahead), asked)
+    instants, empties, scales = _read_at(first, choices(first, ahead), asked)
     collected = first if (instants == asked).all() else collect(connection, site_id, vessels, instants, known)
     _spend(collected, asked - instants)
     within = np.full(rows, ALWAYS) if closing else np.maximum(asked - instants, 0)
     measured = measure(collected, ahead=within, asked=asked)
     carried = {row: Carried(empty=row in empties) for row in range(rows)}
+    for row in scales:
+        carried[row].weighed = _weighed(measured, row)
     moves = _moves(connection, site_id, measured, known, meters)
     corrections = _corrections(measured, moves, carried)
     if corrections is not None:
@@ -104,19 +112,41 @@ def measure_at(
     return measured
 
 
-def _read_at(collected: Collected, chosen: Mapping[str, Chosen], asked: Instants) -> tuple[Instants, set[int]]:
-    """The instant at which each row is measured, and the rows that were found empty then."""
+def _read_at(
+    collected: Collected, chosen: Mapping[str, Chosen], asked: Instants
+) -> tuple[Instants, set[int], set[int]]:
+    """The instant at which each row is measured, and the rows that were found empty, or weighed, then."""
     instants = asked.copy()
-    empties: set[int] = set()
-    empty = chosen["empty"]
+    found: dict[str, set[int]] = {"empty": set(), "weighed": set()}
     for row in range(len(asked)):
         key = chosen[collected.vessel(row).key_input]
-        if key.usable[row] and key.share[row] == 0.0:
-            instants[row] = key.taken_at[row]
-        if empty.usable[row] and not (key.usable[row] and key.taken_at[row] >= empty.taken_at[row]):
-            instants[row] = empty.taken_at[row]
-            empties.add(row)
-    return instants, empties
+        newest = None
+        if key.usable[row]:
+            newest = int(key.taken_at[row])
+            if key.share[row] == 0.0:
+                instants[row] = newest
+        for name in ("weighed", "empty"):
+            stated = chosen[name]
+            if stated.usable[row] and (newest is None or newest < stated.taken_at[row]):
+                newest = int(stated.taken_at[row])
+                instants[row] = newest if stated.share[row] == 0.0 else asked[row]
+                for rows in found.values():
+                    rows.discard(row)
+                found[name].add(row)
+    return instants, found["empty"], found["weighed"]
+
+
+def _weighed(measured: Measured, row: int) -> Estimate | None:
+    """A mass by load cells as it stands, with the errors of the cells. [kg]"""
+    chosen, vessel = measured.chosen["weighed"], measured.vessel(row)
+    if not chosen.usable[row]:
+        return None
+    value, source = float(chosen.value[row]), measured.source("weighed", row)
+    own = vessel.instrument("weighed_mass_kg", source, int(chosen.taken_at[row]))
+    systematic = own.systematic if own.declared else instruments.WEIGHED_SHARE * abs(value)
+    reading = f"{vessel.name}/{source}" if source else vessel.name
+    parts = {f"weighed:{own.name}": systematic, f"r:{reading}:weighed_mass_kg:{stamp(chosen.taken_at[row])}": own.random}
+    return Estimate(value, {name: part for name, part in parts.items() if part})
 
 
 def _spend(collected: Collected, elapsed: Instants) -> None:

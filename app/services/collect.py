@@ -11,6 +11,7 @@ from sqlalchemy import Connection
 
 from app.services.choose import ALWAYS, NEVER, Candidates
 from app.services.compile import CompiledVessel
+from app.services.gauged import volume_level
 from app.services.parts import Origin
 from app.services.samples import Sample, samples_at, samples_of
 from app.store import readings
@@ -40,7 +41,12 @@ class InputSpec:
 
 
 INPUTS: tuple[InputSpec, ...] = (
-    InputSpec("level", ("level_m", "ullage_m"), interpolates=True),
+    InputSpec(
+        "level",
+        ("level_m", "ullage_m", "liquid_volume_m3", "liquid_volume_pct", "differential_pressure_kpa"),
+        interpolates=True,
+    ),
+    InputSpec("weighed", ("weighed_mass_kg",), interpolates=True),
     InputSpec("empty", ("empty",)),
     InputSpec("free_water", ("free_water_level_m",)),
     InputSpec("liquid_temperature", ("liquid_temperature_c",), interpolates=True),
@@ -204,6 +210,9 @@ def conversion(vessel: CompiledVessel, quantity: str, source: str) -> Convert:
     # The automatic gauge, which comes first, may ride on the roof; a roof on its legs says nothing of the liquid.
     on_roof = roof is not None and roof.gauge_sees == "roof" and vessel.rank(source) == 0
     lowest = roof.floats_at_m if roof is not None else 0.0
+    by_volume = volume_level(vessel, quantity)
+    if by_volume is not None:
+        return lambda value, at: by_volume(value + offset(at))
     if quantity == "level_m" and on_roof:
         return lambda value, at: innage(value + offset(at))
     if quantity == "ullage_m":
@@ -321,7 +330,7 @@ def _fill(collected: Collected, slot: Slot, taken: Instants, values: NDArray[np.
     if not len(taken):
         return
     vessel = collected.vessels[min(slot.rows[0], len(collected.vessels) - 1)]
-    one_by_one = vessel.history or vessel.body.floating_roof is not None
+    one_by_one = vessel.history or vessel.body.floating_roof is not None or slot.quantity.startswith("liquid_volume")
     if one_by_one:
         converted = np.array([slot.convert(value, int(at)) for value, at in zip(values, taken, strict=True)])
         kept = np.isfinite(converted)

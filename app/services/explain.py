@@ -19,6 +19,7 @@ from models.estimate import Estimate, combine
 from models.mass import standard_uncertainty
 
 QUALITY = ("good", "uncertain", "bad")
+SHOWN_AS_LEVEL = ("ullage_m", "liquid_volume_m3", "liquid_volume_pct")  # what counts of them is the level
 NEEDED = {
     "level": ("level_m", "a level or an ullage"),
     "liquid_temperature": ("liquid_temperature_c", "the liquid's temperature"),
@@ -84,12 +85,14 @@ def status(measured: Measured, row: int) -> str:
         c.usable[row] and c.quality[row] == 1 for name, c in measured.chosen.items() if _counts(measured, row, name)
     )
     carried = measured.carried.get(row)
+    if carried and carried.stated is not None:
+        marks = Mark.NONE  # of a level that no longer counts
     return "uncertain" if marks & doubtful or uncertain or (carried and carried.uncertain) else "measured"
 
 
 def _has_mass(measured: Measured, row: int) -> bool:
     carried = measured.carried.get(row)
-    return bool(carried and carried.empty) or math.isfinite(measured.result["mass"][row])
+    return bool(carried and carried.stated is not None) or math.isfinite(measured.result["mass"][row])
 
 
 def mass_estimate(measured: Measured, row: int) -> Estimate | None:
@@ -99,7 +102,7 @@ def mass_estimate(measured: Measured, row: int) -> Estimate | None:
     carried = measured.carried.get(row)
     if carried is None:
         return estimate(measured.result, measured.parts, row)
-    read = Estimate(0.0) if carried.empty else estimate(measured.result, measured.parts, row)
+    read = carried.stated or estimate(measured.result, measured.parts, row)
     return combine([(1.0, read), (1.0, carried.moved), (1.0, Estimate(0.0, carried.extras))])
 
 
@@ -124,6 +127,9 @@ FIELDS = (
     ("compressibility_factor", "compressibility_factor"), ("vapour_mass_kg", "vapour_mass"),
     ("gas_standard_volume_m3", "gas_standard_volume"), ("mass_kg", "mass"),
 )  # fmt: skip
+
+
+DENSITIES = ("liquid_density_kg_m3", "standard_density_kg_m3", "compressibility_factor")
 
 
 def _answer(measured: Measured, row: int, spread: float, *, working: bool, budget: bool) -> dict[str, Any]:
@@ -164,25 +170,46 @@ def _carry(measured: Measured, row: int, answer: dict[str, Any]) -> None:
     whole = mass_estimate(measured, row)
     assert whole is not None
     if carried.empty:
-        answer |= {name: 0.0 for name, _ in FIELDS if answer[name] is not None} | {"liquid_mass_kg": 0.0, "fill_pct": 0.0}
-    if carried.extras or carried.empty or carried.moved.parts:
+        # A density that nobody read makes no volume of what came since.
+        nothing = 0.0 if carried.moved.value == 0.0 else None
+        answer |= {name: nothing for name, _ in FIELDS if answer[name] is not None} | dict.fromkeys(DENSITIES)
+        answer |= {"liquid_mass_kg": 0.0, "vapour_mass_kg": 0.0, "fill_pct": nothing}
+    elif carried.weighed is not None:
+        answer |= {name: None for name, _ in FIELDS} | {"fill_pct": None}
+    if carried.extras or carried.stated is not None or carried.moved.parts:
         answer["mass_uncertainty_kg"] = whole.uncertainty
     answer["mass_kg"] = whole.value
     if measured.instant(row) == int(measured.collected.at[row]) and not carried.empty:
         return
     moved = carried.moved.value
     answer["moved_kg"] = moved
+    if carried.weighed is not None:
+        return
     vessel = measured.vessel(row)
     if not vessel.has_liquid:
         answer["vapour_mass_kg"] = whole.value
+        read = float(measured.result["mass"][row])
+        if answer["gas_standard_volume_m3"] is not None and read > 0.0:
+            answer["gas_standard_volume_m3"] *= whole.value / read
         return
     answer["liquid_mass_kg"] += moved
-    standard, here = (float(measured.result[name][row]) for name in ("standard_density", "liquid_density"))
-    if not carried.empty and math.isfinite(standard) and math.isfinite(here):
-        answer["gross_standard_volume_m3"] += moved / standard
-        answer["net_standard_volume_m3"] += moved / standard
-        answer["gross_observed_volume_m3"] += moved / here
-        answer["fill_pct"] += 100.0 * moved / here / vessel.capacity
+    if not carried.empty:
+        _swell(measured, row, answer, moved)
+
+
+def _swell(measured: Measured, row: int, answer: dict[str, Any], moved: float) -> None:
+    """The liquid's volumes with what moved: of the content's density, and as wet as it."""
+    result = measured.result
+    standard, wet = float(result["standard_density"][row]), at_row(measured.state.sediment_water, row)
+    gross, here = float(result["gross_standard_volume"][row]), float(result["gross_observed_volume"][row])
+    if not math.isfinite(standard) or not gross > 0.0:
+        return
+    net = moved / standard
+    observed = net / (1.0 - wet) * here / gross
+    answer["net_standard_volume_m3"] += net
+    answer["gross_standard_volume_m3"] += net / (1.0 - wet)
+    answer["gross_observed_volume_m3"] += observed
+    answer["fill_pct"] += 100.0 * observed / measured.vessel(row).capacity
 
 
 def _available(measured: Measured, row: int, mass: float) -> float | None:
@@ -194,10 +221,10 @@ def _available(measured: Measured, row: int, mass: float) -> float | None:
     return max(0.0, mass - dead * density)
 
 
-def _weight_in_air(measured: Measured, row: int, mass: float) -> float | None:
+def _weight_in_air(measured: Measured, row: int, mass: float | None) -> float | None:
     """The liquid's weight in air by the conventional densities of OIML D 28."""
     density = float(measured.result["liquid_density"][row])
-    if not math.isfinite(density) or density <= 0.0:
+    if mass is None or not math.isfinite(density) or density <= 0.0:
         return None
     air, weights = constants.CONVENTIONAL_AIR_DENSITY, constants.CONVENTIONAL_WEIGHT_DENSITY
     return mass * (1.0 - air / density) / (1.0 - air / weights)
@@ -207,8 +234,9 @@ def _counts(measured: Measured, row: int, name: str) -> bool:
     """Whether an input enters this vessel's mass at all."""
     vessel = measured.vessel(row)
     carried = measured.carried.get(row)
-    if name == "empty" or (carried and carried.empty):
-        return bool(carried and carried.empty) and name == "empty"
+    if name in ("empty", "weighed") or (carried and carried.stated is not None):
+        stated = "" if carried is None or carried.stated is None else "empty" if carried.empty else "weighed"
+        return name == stated
     if name == "roof_load":
         return vessel.body.floating_roof is not None
     if vessel.is_full and name in ("level", "free_water"):
@@ -237,7 +265,7 @@ def inputs(measured: Measured, row: int) -> list[dict[str, Any]]:
         column = int(chosen.source[row])
         quantity, source = measured.collected.origins[spec.name].of(row, column)
         entry: dict[str, Any] = {
-            "quantity": "level_m" if quantity == "ullage_m" else quantity,
+            "quantity": "level_m" if quantity in SHOWN_AS_LEVEL else quantity,
             "value": _number(float(chosen.value[row])),
             "age_s": (int(chosen.age_us[row]) + measured.instant(row) - int(measured.collected.at[row])) * 1e-6,
             "source": source,
@@ -415,7 +443,7 @@ def _companion(measured: Measured, row: int, name: str, quantity: str, column: i
 def read_at(measured: Measured, row: int) -> int | None:
     """When the level of a row was read, or the pressure of a vessel that has none."""
     carried = measured.carried.get(row)
-    if carried is not None and carried.empty:
+    if carried is not None and carried.stated is not None:
         return int(measured.collected.at[row])
     chosen = measured.chosen[measured.vessel(row).key_input]
     return int(chosen.taken_at[row]) if chosen.usable[row] else None

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
@@ -22,7 +22,8 @@ from app.services.compile import (
     mixture_rows,
     stack,
 )
-from app.services.parts import KELVIN, PASCAL, Errors, Part, at_row, capacity_parts, model_parts
+from app.services.gauged import HEAD, by_head, head_sensitivities, levels_per_unit
+from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Errors, Part, at_row, capacity_parts, model_parts
 from models import instruments, units
 from models.columns import Inventory, Method, State
 from models.estimate import Estimate
@@ -102,8 +103,12 @@ def measure(
     state, extra = builder.build()
     vessels = stack(collected.vessels, extra)
     rows = None if len(collected.vessels) == 1 else np.arange(collected.rows, dtype=np.intp)
+    heads = builder.by_head
+    state = by_head(collected.vessels, state, heads)
     result = inventory(vessels, rows, state)
-    parts = _parts(builder, state)
+    gravity = head_sensitivities(collected.vessels, state, result, heads)
+    per_unit = levels_per_unit(collected.vessels, state, result) if builder.other_means else None
+    parts = _parts(builder, state, per_unit, gravity)
     mixtures = tuple(mixture_rows(collected.vessels, extra))
     return Measured(
         collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures, asked
@@ -126,6 +131,10 @@ class _States:
         self.vented = self.of_vessels([float(vessel.space in ("open", "none")) for vessel in self.vessels]) > 0
         self.at_rest = np.zeros(collected.rows, dtype=bool)
         self.gauge = np.zeros(collected.rows, dtype=bool)
+        level, origin = chosen["level"].source, collected.origins["level"]
+        means = [origin.of(row, int(level[row]))[0] if level[row] >= 0 else "" for row in range(collected.rows)]
+        self.other_means = any(one in OTHER_MEANS for one in means)
+        self.by_head = np.array([one == HEAD for one in means], dtype=bool)
 
     def of_vessels(self, values: Sequence[float]) -> FloatColumns:
         """A column of one value a row from one value a vessel."""
@@ -319,11 +328,15 @@ class _States:
         return np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp), extra
 
 
-def _parts(builder: _States, state: State) -> list[Part]:
+def _parts(
+    builder: _States, state: State, per_unit: Mapping[str, FloatColumns] | None, gravity: FloatColumns
+) -> list[Part]:
     """Every error of every input, named."""
     errors = Errors(builder.vessels, builder.collected.rows)
     chosen, origins = builder.chosen, builder.collected.origins
-    errors.measured("level_m", "level", "level", chosen["level"], origins["level"])
+    errors.measured("level_m", "level", "level", chosen["level"], origins["level"], per_unit=per_unit)
+    if builder.by_head.any():
+        errors.add(HEAD, "level", gravity, "model", lambda row: "gravity:site", declared=lambda row: False)
     errors.measured("free_water_level_m", "water", "water_level", chosen["free_water"], origins["free_water"])
     errors.measured(
         "liquid_temperature_c", "temperature", "liquid_temperature", chosen["liquid_temperature"],

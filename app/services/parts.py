@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
@@ -17,7 +17,7 @@ from models.estimate import Estimate
 
 FloatColumns = NDArray[np.float64]
 Kind = Literal["random", "systematic", "model"]
-DATE = "datetime64[us]"
+OTHER_MEANS = ("liquid_volume_m3", "liquid_volume_pct", "differential_pressure_kpa")  # of a level
 
 
 @dataclass(frozen=True)
@@ -84,10 +84,13 @@ class Errors:
 
     def measured(
         self, quantity: str, prefix: str, sensitivity: str, chosen: Chosen, origin: Origin,
-        *, scale: float = 1.0, stale: float = 0.0,
+        *, scale: float = 1.0, stale: float = 0.0, per_unit: Mapping[str, FloatColumns] | None = None,
     ) -> None:  # fmt: skip
-        """Systematic, random and stale parts of what an instrument of the vessel reads."""
-        known = [self._instrument(quantity, chosen, origin, row) for row in range(self.distinct(chosen, origin))]
+        """Systematic, random and stale parts of what an instrument of the vessel reads.
+
+        ``per_unit`` takes other quantities that stand for this one to its unit, row by row.
+        """
+        known = [self._instrument(quantity, chosen, origin, row, per_unit) for row in range(self.distinct(chosen, origin))]
 
         def of(row: int) -> Instrument:
             return known[row if len(known) > 1 else 0]
@@ -119,19 +122,27 @@ class Errors:
     def distinct(self, chosen: Chosen, origin: Origin) -> int:
         """One instrument for all rows where one source won everywhere, else one a row."""
         one = len(self.vessels) == 1 and len(origin.columns) == 1 and len(np.unique(chosen.source)) == 1
-        return 1 if one else self.rows
+        plain = one and not self.vessels[0].history and origin.of(0, int(chosen.source[0]))[0] not in OTHER_MEANS
+        return 1 if plain else self.rows
 
     def _reading(self, chosen: Chosen, origin: Origin, row: int) -> str:
         """Whose reading it is: vessels that share an instrument share its offset, not its scatter."""
         source = origin.of(row, int(chosen.source[row]))[1]
         return f"{self.vessel(row).name}/{source}" if source else self.vessel(row).name
 
-    def _instrument(self, quantity: str, chosen: Chosen, origin: Origin, row: int) -> Instrument:
+    def _instrument(
+        self, quantity: str, chosen: Chosen, origin: Origin, row: int, per_unit: Mapping[str, FloatColumns] | None
+    ) -> Instrument:
+        """The errors of what was read in a row, by the text in force when it was, in this quantity's unit."""
         named, source = origin.of(row, int(chosen.source[row]))
         vessel = self.vessel(row)
-        own = vessel.instrument(named or quantity, source)
-        if not own.declared and named and named != quantity:
-            own = vessel.instrument(quantity, source)
+        at = int(chosen.taken_at[row]) if vessel.history else None
+        own = vessel.instrument(named or quantity, source, at)
+        if not own.declared and named and named != quantity and named not in instruments.DEFAULTS:
+            return vessel.instrument(quantity, source, at)
+        if per_unit is not None and named in per_unit:
+            unit = at_row(per_unit[named], row)
+            return replace(own, random=own.random * unit, systematic=own.systematic * unit)
         return own
 
     def assumed(self, quantity: str, sensitivity: str, where: NDArray[np.bool_], *, scale: float = 1.0) -> None:
