@@ -54,25 +54,43 @@ def regraded(
         if period.opening <= vessel.since < period.closing and substances.get(vessel.name, "") != vessel.body.substance
     }
     later = {vessel.name: str(vessel.body.substance) for vessel in closing.site.vessels}
-    known = set(closing.masses) - set(closing.site.junctions)
+    known = set(closing.masses)
     edges = [period.opening, *sorted(set(turns.values()) - {period.opening}), period.closing]
     pieces: list[Piece] = []
     for first, last in zip(edges, edges[1:], strict=False):
-        held = {
-            name: later[name] if turns.get(name, period.opening) <= first else substances.get(name) for name in later
+        moves = [one for one in moving.between(first, last) if not one.water and (one.mass is None or one.mass.value)]
+        # A vessel that opened out of service holds what it holds later, one that closes so what it held.
+        held = dict(substances) | {
+            name: substance
+            for name, substance in later.items()
+            if name not in substances or turns.get(name, period.opening) <= first
         }
-        for one in moving.between(first, last):
-            if not one.water and (one.mass is None or one.mass.value != 0.0):
-                ends = end_of(one.source, known), end_of(one.target, known)
-                pieces.append(
-                    Piece(Movement(one.name, *ends, one.mass), held.get(ends[0] or ""), held.get(ends[1] or ""))
-                )
+        _through(held, closing.site.junctions, moves)
+        for one in moves:
+            source, target = end_of(one.source, known), end_of(one.target, known)
+            pieces.append(
+                Piece(Movement(one.name, source, target, one.mass), held.get(source or ""), held.get(target or ""))
+            )
     heels = [
         Regrade(name, substances[name], later[name], _heel(moving, opening.get(name), name, period.opening, at))
         for name, at in turns.items()
         if name in substances
     ]
     return pieces, heels
+
+
+def _through(held: dict[str, str], junctions: Sequence[str], moves: Sequence[Moved]) -> None:
+    """A junction passes on what the vessels beside it hold, where that is one substance."""
+    for _ in junctions:  # junctions may stand one behind the other
+        for name in junctions:
+            beside = {
+                held[there]
+                for one in moves
+                for here, there in ((one.source, one.target), (one.target, one.source))
+                if here == name and there in held
+            }
+            if name not in held and len(beside) == 1:
+                held[name] = beside.pop()
 
 
 def _heel(moving: Moving, opening: Estimate | None, vessel: str, first: int, at: int) -> Estimate | None:

@@ -165,3 +165,21 @@ def test_the_sample_of_february_does_not_come_back(site):
     site.reads("tk-12", "2026-03-24 06:00", level_m=5.0)
     assert site.inventory("2026-03-01 06:00").of("tk-12")["mass_kg"] == pytest.approx(402_500.0, abs=0.5)
     assert site.inventory("2026-03-24 06:00").of("tk-12")["mass_kg"] == pytest.approx(400_000.0, abs=0.5)
+
+
+def test_what_went_out_or_came_in_on_the_day_of_the_change_is_in_the_totals(site):
+    """Taken out at 16:00 on the 1st, after its 160,000 kg had left; back at 08:00 on the 23rd, filled at ten."""
+    site.liquid("gas-oil", 800.0)
+    site.tank("tk-12", "gas-oil")
+    site.reads("tk-12", "2026-03-01 06:00", level_m=2.0)
+    site.delivers("tk-12", "road-0301", "2026-03-01 08:00", "2026-03-01 12:00", mass_kg=160_000.0)
+    site.tank("tk-12", "gas-oil", service="out", effective_from="2026-03-01 16:00")
+    site.tank("tk-12", "gas-oil", effective_from="2026-03-23 08:00")
+    site.receives("tk-12", "line-0323", "2026-03-23 10:00", "2026-03-23 14:00", mass_kg=400_000.0)
+    site.reads("tk-12", "2026-03-24 06:00", level_m=5.0)
+    out, back = site.closes("2026-03-01"), site.closes("2026-03-23")
+    expected = {"opening_mass_kg": (160_000.0, 0.0), "delivered_kg": (160_000.0, 0.0), "received_kg": (0.0, 400_000.0),
+                "closing_mass_kg": (0.0, 400_000.0), "imbalance_kg": (0.0, 0.0)}  # fmt: skip
+    for name, told in expected.items():
+        assert (out.of("tk-12")[name], back.of("tk-12")[name]) == pytest.approx(told, abs=0.5)
+        assert (out.total("gas-oil")[name], back.total("gas-oil")[name]) == pytest.approx(told, abs=0.5)

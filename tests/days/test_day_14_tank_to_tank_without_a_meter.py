@@ -166,3 +166,54 @@ def test_a_dip_while_the_pump_ran_says_that_it_cannot_be_moved(tanks):
     assert inventory.of("tk-1")["mass_kg"] == pytest.approx(400_000.0, abs=0.5)
     assert inventory.of("tk-1")["status"] == "uncertain"
     assert "input_uncertain" in inventory.warnings("tk-1")
+
+
+def test_one_meter_feeds_two_tanks_through_a_manifold(tanks):
+    """A barge's 240,000 kg pass one meter (0.1 %) and then a manifold: two thirds go to tank 1, a third to tank 2.
+
+    The manifold holds nothing and is a node all the same: what came in must have gone out. The two branches have
+    no meter, so the three are judged together: 560,000 + 240,000 = 640,000 + 160,000 kg.
+    """
+    tanks.vessel("manifold", None, shape={"kind": "junction"})
+    tanks.meter("m-b", systematic_pct=0.1)
+    tanks.receives("manifold", "barge-0313", STARTED, ENDED, meter="m-b", mass_kg=240_000.0)
+    for tank in ("tk-1", "tk-2"):
+        tanks.moves(f"branch-{tank}", "manifold", tank, STARTED, ENDED, unmetered=True, by="gauging")
+    morning(tanks, first=8.0, second=2.0)
+    night = tanks.closes("2026-03-13")
+    assert night["complete"] and not night.flagged
+    for name in ("tk-1", "tk-2"):
+        book = night.of(name)
+        assert set(book["judged_with"]) == {"tk-1", "tk-2", "manifold"} - {name}
+        assert book["received_kg"] == pytest.approx(240_000.0, abs=0.5)
+        assert book["book_mass_kg"] == pytest.approx(800_000.0, abs=0.5)
+        assert book["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+        expected = math.hypot(FOUR_READINGS, 240.0)
+        assert book["imbalance_uncertainty_kg"] == pytest.approx(expected, abs=0.5)
+    assert night.total("gas-oil")["received_kg"] == pytest.approx(240_000.0, abs=0.5)
+    assert "manifold" not in [one["vessel"] for one in tanks.inventory(CLOSED)["vessels"]]
+
+
+def test_a_manifold_whose_branches_are_metered_has_a_balance_of_its_own(tanks):
+    """240,000 kg in by the barge's meter, 160,000 and 79,000 out by two others: 1,000 kg went another way."""
+    tanks.vessel("manifold", None, shape={"kind": "junction"})
+    for meter in ("m-b", "m-1", "m-2"):
+        tanks.meter(meter, systematic_pct=0.1)
+    tanks.receives("manifold", "barge-0313", STARTED, ENDED, meter="m-b", mass_kg=240_000.0)
+    tanks.moves("branch-1", "manifold", "tk-1", STARTED, ENDED, meter="m-1", mass_kg=160_000.0)
+    tanks.moves("branch-2", "manifold", "tk-2", STARTED, ENDED, meter="m-2", mass_kg=79_000.0)
+    morning(tanks, first=8.0, second=1.9875)
+    night = tanks.closes("2026-03-13")
+    book = night.of("manifold")
+    assert (book["opening_mass_kg"], book["closing_mass_kg"]) == (0.0, 0.0)
+    assert (book["received_kg"], book["delivered_kg"]) == (240_000.0, 239_000.0)
+    # Nothing was found in it where 1,000 kg should be: that much left by a way that nobody wrote down.
+    assert book["imbalance_kg"] == pytest.approx(-1_000.0, abs=0.5)
+    expected = math.sqrt(240.0**2 + 160.0**2 + 79.0**2)
+    assert book["imbalance_uncertainty_kg"] == pytest.approx(expected, abs=0.5)
+    assert night.flagged == {"manifold"}
+    assert night.of("tk-1")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    assert night.of("tk-2")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    # The site received 240,000 kg and holds 239,000 of them: the total sees the loss that no tank sees.
+    assert night.total("gas-oil")["received_kg"] == pytest.approx(240_000.0, abs=0.5)
+    assert night.total("gas-oil")["imbalance_kg"] == pytest.approx(-1_000.0, abs=0.5)
