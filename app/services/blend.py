@@ -122,12 +122,14 @@ def _since(
 ) -> tuple[list[_Receipt], float]:
     """Receipts since a sample began to stand, and the standard volume of what was delivered since."""
     vessel, read = measured.vessel(row), int(measured.collected.at[row])
+    dense = float(measured.result["vapour_density"][row])
+    space = {vessel.name: dense} if math.isfinite(dense) else {}
     received: list[_Receipt] = []
     delivered = 0.0
     for ticket, body in own:
         if body.of == "water" or ticket.started_at >= read or ticket.ended_at <= begins:
             continue
-        part = moves.part(ticket, begins, read, standard)
+        part = moves.part(ticket, begins, read, standard, spaces=space)
         mass = math.nan if part.mass is None else part.mass.value
         if part.target == vessel.name:
             density = move.own_density(ticket.name, body, vessel)

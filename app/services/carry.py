@@ -7,7 +7,7 @@ blended or widened, such water dips are not carried.
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -72,10 +72,17 @@ class Moves:
         return [(ticket, body) for ticket, body in self.tickets if vessel in (body.from_, body.to)]
 
     def part(
-        self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate], asked: int | None = None
-    ) -> move.Moved:
-        """What a ticket moved between two instants, of which ``asked`` stands fast."""
-        return move.moved(ticket, first, last, self.vessels, self.meters, standard, self.spaces, asked)
+        self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate], asked: int | None = None,
+        spaces: Mapping[str, float] | None = None,
+    ) -> move.Moved:  # fmt: skip
+        """What a ticket moved between two instants, of which ``asked`` stands fast.
+
+        The vessel whose standard density is given is asked and the ticket's other end is not, so that an answer
+        is the same alone and among others; ``spaces`` is the density of its vapour in one row of a course.
+        """
+        own = {name: self.vessels[name] for name in standard}
+        spaces = self.spaces if spaces is None else spaces
+        return move.moved(ticket, first, last, own, self.meters, standard, spaces, asked)
 
 
 def measure_at(
@@ -107,8 +114,7 @@ def measure_at(
     measured.carried = carried
     measured.tickets = [(ticket.name, ticket.body) for ticket, _ in moves.tickets]
     _standing_still(connection, site_id, measured, moves, known)
-    if len(vessels) == rows:
-        check(connection, site_id, first, measured, known)
+    check(connection, site_id, first, measured, known)
     return measured
 
 
@@ -150,10 +156,10 @@ def _weighed(measured: Measured, row: int) -> Estimate | None:
 
 
 def _spend(collected: Collected, elapsed: Instants) -> None:
-    """What is too old at the instant that was asked for does not win again at the reading of another source."""
+    """What is too far from the instant that was asked for does not win at the reading of another source."""
     for row in range(collected.rows):
         age = collected.candidates[collected.vessel(row).key_input].max_age[row]
-        age[age < ALWAYS] -= max(int(elapsed[row]), 0)
+        age[age < ALWAYS] -= abs(int(elapsed[row]))
 
 
 def _moves(connection: Connection, site_id: int, measured: Measured, known: int, meters: Mapping[str, Meter]) -> Moves:
@@ -176,12 +182,12 @@ def _moves(connection: Connection, site_id: int, measured: Measured, known: int,
     return Moves([(one, move.body_of(one)) for one in found], held, meters, vapours(measured))
 
 
-def vapours(measured: Measured) -> dict[str, float]:
-    """Density of the vapour in each vessel that has one. [kg/m³]"""
+def vapours(measured: Measured, rows: Iterable[int] | None = None) -> dict[str, float]:
+    """Density of the vapour in each vessel that has one, in all rows or some. [kg/m³]"""
     densities = measured.result["vapour_density"]
     return {
         measured.vessel(row).name: float(densities[row])
-        for row in range(measured.collected.rows)
+        for row in (range(measured.collected.rows) if rows is None else rows)
         if math.isfinite(densities[row])
     }
 
@@ -192,13 +198,14 @@ def _move(measured: Measured, moves: Moves, row: int, carried: Carried) -> None:
     if read == at:
         return
     vessel = measured.vessel(row).name
+    standard, spaces = {vessel: standard_density(measured, row)}, vapours(measured, [row])
     sign = 1.0 if read < at else -1.0
     first, last = min(read, at), max(read, at)
     terms: list[tuple[float, Estimate]] = []
     for ticket, body in moves.of(vessel):
         if body.of == "water" or ticket.started_at >= last or ticket.ended_at <= first:
             continue
-        part = moves.part(ticket, first, last, {vessel: standard_density(measured, row)}, at)
+        part = moves.part(ticket, first, last, standard, at, spaces)
         if part.mass is None:
             carried.warn(
                 "input_uncertain", "an unmetered transfer ran between the reading and the instant: its part is not known",
@@ -217,7 +224,7 @@ def _corrections(measured: Measured, moves: Moves, carried: Mapping[int, Carried
     for row in range(measured.collected.rows):
         vessel = measured.vessel(row)
         own = moves.of(vessel.name)
-        if not own:
+        if not own or carried[row].stated is not None:
             continue
         blend = stale(measured, moves, own, row, carried[row])
         if blend is not None:
@@ -257,7 +264,7 @@ def _standing_still(connection: Connection, site_id: int, measured: Measured, mo
     suspects: dict[int, int] = {}
     for row in range(measured.collected.rows):
         vessel, read = measured.vessel(row), int(measured.collected.at[row])
-        if vessel.key_input != "level" or not measured.chosen["level"].usable[row]:
+        if vessel.key_input != "level" or not measured.chosen["level"].usable[row] or measured.carried[row].stated:
             continue
         began = _began(moves, vessel.name, read)
         if began is not None and _certain(measured, moves, row, began, read):
@@ -270,6 +277,9 @@ def _standing_still(connection: Connection, site_id: int, measured: Measured, mo
     then = collect(connection, site_id, several, np.array([suspects[row] for row in rows], dtype=np.int64), known)
     former = choices(then, np.full(len(rows), ALWAYS))["level"]
     for place, row in enumerate(rows):
+        since, read = int(former.taken_at[place]), int(measured.collected.at[row])
+        if since >= read or (since > suspects[row] and not _certain(measured, moves, row, since, read)):
+            continue  # no level was read before the tickets began: what moved since one was may be less
         change = at_row(measured.state.level, row) - float(former.value[place])
         if abs(change) <= STILL_M:
             measured.carried[row].warn(
@@ -296,7 +306,7 @@ def _certain(measured: Measured, moves: Moves, row: int, first: int, last: int) 
     terms = []
     for ticket, body in moves.of(vessel.name):
         if body.of is None:
-            part = moves.part(ticket, first, last, standard)
+            part = moves.part(ticket, first, last, standard, spaces=vapours(measured, [row]))
             if part.mass is not None:
                 terms.append((1.0 if part.target == vessel.name else -1.0, part.mass))
     net = combine(terms)

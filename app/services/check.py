@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from bisect import bisect_right
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -16,6 +17,7 @@ from app.services.measure import Measured
 from app.store import readings
 from app.store.readings import Found
 
+ROUNDS = 4  # checks of one series that are asked one after the other; of more it is read as a course
 COVERAGE = 2.0  # standard uncertainties of a difference before the sources are said to disagree
 
 
@@ -29,6 +31,11 @@ class _Asked:
     taken_at: int
     value: float
 
+    @property
+    def key(self) -> tuple[int, int, int]:
+        """The value, and what it is held against."""
+        return self.lower.series, self.winner.series, self.taken_at
+
 
 def check(connection: Connection, site_id: int, collected: Collected, measured: Measured, known: int) -> None:
     """Every usable value of a lower source into its row's checks, with a warning where the two disagree.
@@ -37,8 +44,19 @@ def check(connection: Connection, site_id: int, collected: Collected, measured: 
     that counts is one all the same.
     """
     found: dict[int, list[dict[str, Any]]] = {}
-    for asked, winner, scatter in _answered(connection, site_id, list(_asked(collected, measured)), collected, known):
-        vessel = collected.vessels[asked.row]
+    rows = list(_asked(collected, measured))
+    # In a course one check stands for many instants: it is answered once.
+    answers = {
+        one.key: (winner, scatter)
+        for one, winner, scatter in _answered(
+            connection, site_id, list({one.key: one for one in rows}.values()), collected, known
+        )
+    }
+    for asked in rows:
+        if asked.key not in answers:
+            continue
+        winner, scatter = answers[asked.key]
+        vessel = collected.vessel(asked.row)
         random, systematic = _errors(vessel, asked.winner, asked.taken_at)
         spread = math.hypot(*_errors(vessel, asked.lower, asked.taken_at), scatter * random, systematic)
         difference = asked.value - winner
@@ -63,26 +81,38 @@ def _asked(collected: Collected, measured: Measured) -> Iterator[_Asked]:
     for slot in collected.slots:
         if slot.spec.interpolates and not slot.spec.of_site and not slot.companion:
             by_input.setdefault((slot.spec.name, slot.rows[0]), []).append(slot)
-    for (name, row), slots in by_input.items():
-        if len(slots) < 2 or not collected.vessels[row].body.sources:
+    for (name, owner), slots in by_input.items():
+        if len(slots) < 2 or not collected.vessels[owner].body.sources:
             continue
-        chosen = measured.chosen[name]
-        winner = next((slot for slot in slots if slot.column == chosen.source[row]), None)
-        if winner is None:
-            continue
-        columns, at = collected.candidates[name], int(collected.at[row])
-        for slot in slots:
-            taken = int(columns.before_at[row, slot.column])
-            if slot.rank > winner.rank and taken > -ALWAYS and at - taken <= slot.max_age:
-                yield _Asked(row, slot, winner, taken, float(columns.before[row, slot.column]))
+        for row in [owner] if len(collected.vessels) > 1 else range(collected.rows):
+            yield from _lower(collected, measured, name, slots, row)
+
+
+def _lower(collected: Collected, measured: Measured, name: str, slots: Sequence[Slot], row: int) -> Iterator[_Asked]:
+    """Usable values of one row's lower sources for one input."""
+    chosen = measured.chosen[name]
+    winner = next((slot for slot in slots if slot.column == chosen.source[row]), None)
+    if winner is None:
+        return
+    columns, at = collected.candidates[name], int(collected.at[row])
+    for slot in slots:
+        taken = int(columns.before_at[row, slot.column])
+        if slot.rank > winner.rank and taken > -ALWAYS and at - taken <= slot.max_age:
+            yield _Asked(row, slot, winner, taken, float(columns.before[row, slot.column]))
 
 
 def _answered(
     connection: Connection, site_id: int, asked: Sequence[_Asked], collected: Collected, known: int
 ) -> Iterator[tuple[_Asked, float, float]]:
     """The value of the source that counts at the instant of each check, and how much of one reading's scatter
-    it has; a series is asked once a round."""
-    rest = list(asked)
+    it has; a series is asked once a round, and one of many checks is read once."""
+    groups: dict[int, list[_Asked]] = {}
+    for one in asked:
+        groups.setdefault(one.winner.series, []).append(one)
+    for group in groups.values():
+        if len(group) > ROUNDS:
+            yield from _along(connection, site_id, group, collected, known)
+    rest = [one for group in groups.values() if len(group) <= ROUNDS for one in group]
     while rest:
         first: dict[int, _Asked] = {}
         later: list[_Asked] = []
@@ -105,8 +135,27 @@ def _answered(
                 yield one, value, scatter
 
 
+def _along(
+    connection: Connection, site_id: int, group: Sequence[_Asked], collected: Collected, known: int
+) -> Iterator[tuple[_Asked, float, float]]:
+    """Many checks of one series, which is read once and searched for its neighbours of each."""
+    age, series = group[0].winner.max_age, group[0].winner.series
+    first, last = min(one.taken_at for one in group) - age, max(one.taken_at for one in group) + age
+    course = readings.course(connection, site_id, [series], first, last, known)
+    kept = [Found(*row, 0) for row in zip(*course, strict=True)]
+    times = course.taken_at
+    for one in group:
+        place = bisect_right(times, one.taken_at)
+        oldest = max(one.taken_at - age, _since(collected, one))
+        before = kept[place - 1] if place and times[place - 1] >= oldest else None
+        after = kept[place] if place < len(kept) and times[place] <= one.taken_at + age else None
+        value, scatter = _between(one, before, after)
+        if math.isfinite(value):
+            yield one, value, scatter
+
+
 def _since(collected: Collected, one: _Asked) -> int:
-    return min(collected.vessels[one.row].since, one.taken_at)
+    return min(collected.vessel(one.row).since, one.taken_at)
 
 
 def _between(one: _Asked, before: Found | None, after: Found | None) -> tuple[float, float]:

@@ -4,12 +4,16 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from app.services.compile import virial_columns
 from app.services.measure import Measured
 from app.services.parts import at_row
 from models.columns import Mark, Method
+from models.estimate import Estimate, combine
+
+if TYPE_CHECKING:
+    from app.services.carry import Carried
 
 Step = dict[str, Any]
 
@@ -20,6 +24,10 @@ EXPONENTIAL = "definitions of β and κ, integrated: CRC Handbook of Chemistry a
 
 def working_steps(measured: Measured, row: int) -> list[Step]:
     """Each factor with its symbol, value, unit, method and reference, in the order of the chain."""
+    carried = measured.carried.get(row)
+    if carried is not None and carried.stated is not None:
+        mass, how = carried.stated.value, "the vessel was read empty" if carried.empty else "weighed, as it stands"
+        return [_step("stock-take", "M", mass, "kg", how, "as read"), *_moved(measured, row, carried, mass)]
     vessel = measured.vessel(row)
     steps: list[Step] = []
     if vessel.has_liquid:
@@ -29,7 +37,18 @@ def working_steps(measured: Measured, row: int) -> list[Step]:
         steps.extend(_vapour(measured, row))
     symbols = "M = M_liquid + M_vapour" if vessel.has_vapour else "M = M_liquid"
     steps.append(_step("mass", "M", measured.result["mass"][row], "kg", symbols, ORDER))
+    if carried is not None:
+        steps.extend(_moved(measured, row, carried, float(measured.result["mass"][row])))
     return steps
+
+
+def _moved(measured: Measured, row: int, carried: Carried, read: float) -> Iterator[Step]:
+    """From the reading to the instant that was asked for."""
+    if measured.instant(row) == int(measured.collected.at[row]):
+        return
+    moved = carried.moved.value
+    yield _step("moved", "ΔM", moved, "kg", "receipts less deliveries between the reading and the instant", "as read")
+    yield _step("mass at the instant", "M(t)", read + moved, "kg", "M + ΔM", ORDER)
 
 
 def _step(step: str, symbol: str, value: float, unit: str, method: str, reference: str) -> Step:
@@ -215,8 +234,9 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
 
 def budget_lines(measured: Measured, row: int) -> list[dict[str, Any]]:
     """Every error of this mass: its size, its sensitivity and what it contributes, largest first."""
-    lines = []
-    for part in measured.parts:
+    carried = measured.carried.get(row)
+    lines = [] if carried is None else _carried_lines(carried)
+    for part in measured.parts if carried is None or carried.stated is None else ():
         sigma = at_row(part.sigma, row)
         sensitivity = float(measured.result.sensitivities[part.sensitivity][row])
         contribution = sensitivity * sigma
@@ -235,3 +255,30 @@ def budget_lines(measured: Measured, row: int) -> list[dict[str, Any]]:
             }
         )
     return sorted(lines, key=lambda line: -abs(line["contribution_kg"]))
+
+
+MODELS = ("split", "water", "vapour-return", "vapour", "mix")  # errors of a method, by the first word of their name
+RANDOM = ("t", "sample", "r", "stale")
+
+
+def _carried_lines(carried: Carried) -> list[dict[str, Any]]:
+    """What a weighing is off by, what tickets between the reading and the instant add, and what a water dip no
+    longer says."""
+    lines = []
+    stated = carried.stated or Estimate(0.0)
+    terms = [(1.0, stated), (1.0, carried.moved), (1.0, Estimate(0.0, carried.extras))]
+    for name, kilograms in combine(terms).parts.items():
+        kind = name.partition(":")[0]
+        read = "weighed_mass_kg" if name in stated.parts else "moved_kg"
+        lines.append(
+            {
+                "input": "free_water_level_m" if name in carried.extras else read,
+                "instrument": name,
+                "standard_uncertainty": abs(kilograms),
+                "sensitivity": math.copysign(1.0, kilograms),
+                "contribution_kg": kilograms,
+                "kind": "model" if kind in MODELS else "random" if kind in RANDOM else "systematic",
+                "declared": kind not in MODELS,
+            }
+        )
+    return lines

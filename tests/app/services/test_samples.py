@@ -24,7 +24,9 @@ def at_hour(hours: float) -> str:
     return (datetime(2026, 3, 14) + timedelta(hours=hours)).isoformat(timespec="minutes")
 
 
-def drawn(plant: Plant, hour: float, density: float, holds: float | None = None, vessel: str = "tk-1", **said: str) -> None:
+def drawn(
+    plant: Plant, hour: float, density: float, holds: float | None = None, vessel: str = "tk-1", **said: str
+) -> None:
     """A sample drawn at an hour of the 14th, which stands from another where that is said."""
     since = {} if holds is None else {"sample_holds_from": f"{at_hour(holds)}:00Z"}
     plant.read(vessel, at_hour(hour), "lab", observed_density_kg_m3=density, observed_density_temperature_c=15.0,
@@ -96,7 +98,7 @@ def test_a_sample_stands_from_when_it_was_drawn_until_the_next(plant: Plant, lab
     assert asked(plant, laboratory, 5.99, 6, 11.99, 12, 700) == [None, 800.0, 800.0, 810.0, 810.0]
 
 
-def test_a_sample_that_was_drawn_after_the_instant_stands_from_when_it_says(plant: Plant, laboratory: Laboratory) -> None:
+def test_a_sample_drawn_after_the_instant_stands_from_when_it_says(plant: Plant, laboratory: Laboratory) -> None:
     drawn(plant, 6, 800.0)
     drawn(plant, 32, 810.0, holds=20)
     assert asked(plant, laboratory, 19.99, 20, 31, 33) == [800.0, 810.0, 810.0, 810.0]
@@ -165,7 +167,9 @@ def test_each_vessel_is_asked_at_its_own_instant(plant: Plant, laboratory: Labor
 
 
 @pytest.mark.parametrize("seed", [1, 2, 3])
-def test_the_sample_of_an_instant_is_that_of_the_course_whatever_was_drawn_when(plant: Plant, laboratory: Laboratory, seed: int) -> None:
+def test_the_sample_of_an_instant_is_that_of_the_course_whatever_was_drawn_when(
+    plant: Plant, laboratory: Laboratory, seed: int
+) -> None:
     rng = random.Random(seed)
     rows: list[tuple[float, float, float]] = []
     for place in range(18):
