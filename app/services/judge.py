@@ -129,12 +129,17 @@ def _vessel(
         "imbalance_uncertainty_kg": None if row is None else row.imbalance.uncertainty,
         "score": None if row is None else _number(row.score),
         "p_value": None if row is None else row.p_value,
-        "detectable_imbalance_kg": None if row is None else _number(row.detectable),
+        "detectable_imbalance_kg": None if row is None or _unseen(row) else _number(row.detectable),
         "opening_read_at": opening.read_at.get(name),
         "closing_read_at": read_at(closing, name),
         "judged_with": [one for one in members if one != name],
     }
     return entry | _verdict(name, closing, row, result.critical, max(_sum(received), _sum(delivered)))
+
+
+def _unseen(row: Row) -> bool:
+    """Whether both ends rest on one reading and no ticket moved anything: nothing was measured in between."""
+    return row.imbalance.uncertainty == 0.0
 
 
 def _verdict(name: str, closing: Stock, row: Row | None, critical: float, throughput: float) -> dict[str, Any]:
@@ -154,7 +159,7 @@ def _verdict(name: str, closing: Stock, row: Row | None, critical: float, throug
         return entry | {"verdict": "fail" if row.flagged else "pass"}
     allowed = limit.kg + limit.pct_of_throughput / 100.0 * throughput
     over = abs(row.imbalance.value) > allowed
-    unseen = row.detectable > allowed
+    unseen = vessel is not None and (_unseen(row) or row.detectable > allowed)
     verdict = "fail" if row.flagged else "inconclusive" if over or unseen else "pass"
     return entry | {"verdict": verdict, "over_limit": over}
 
