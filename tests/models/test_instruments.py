@@ -18,6 +18,8 @@ R_TO_SIGMA = 2.77
 PRINTED = [
     # API MPMS ch. 3.1B-2001, 4.3.2 (±3 mm from the factory, inventory) and 4.3.3 (±3 mm installed)
     ("level_m", 0.001, 0.00424264 / SQUARE_ROOT_OF_3),
+    ("liquid_volume_pct", 0.2, 2.0 / SQUARE_ROOT_OF_3),  # the dial of a float gauge, ±2 % of it, common practice
+    ("differential_pressure_kpa", 0.02, 0.001 * 100.0 / SQUARE_ROOT_OF_3),  # 0.1 % of a span of 100 kPa, from memory
     ("free_water_level_m", 0.005 / SQUARE_ROOT_OF_3, 0.0),  # water-finding paste, ±3 to 6 mm, from memory
     ("liquid_temperature_c", 0.1, 0.5 / SQUARE_ROOT_OF_3),  # Directive 2014/32/EU, annex VII: ±0.5 °C
     ("ambient_temperature_c", 0.0, 2.0),  # common practice
@@ -73,6 +75,7 @@ def test_a_capacity_is_as_good_as_legal_metrology_allows(kind: str, limit: float
         (instruments.STALE_TEMPERATURE * 24 * 3600.0, 1.2),  # 0.05 K an hour is 1.2 K a day
         (instruments.STALE_PRESSURE_KPA * 24 * 3600.0, 48.0),  # 2 kPa an hour is 48 kPa a day
         (instruments.BLEND_DENSITY, 3.0),  # kg/m³ of a receipt that no sample confirms; a setting
+        (instruments.WEIGHED_SHARE * 50_000.0, 50.0),  # common practice: 0.1 % by load cells, 50 kg of 50 t
         (instruments.METER_RANDOM_PCT, 0.05),  # common practice
         (instruments.METER_SYSTEMATIC_PCT, 0.3 / SQUARE_ROOT_OF_3),  # Directive 2014/32/EU, annex VII, class 0.5
     ],

@@ -34,3 +34,11 @@ def test_iapws_95_within_its_stated_difference():
 def test_the_equation_is_never_extrapolated():
     with pytest.raises(OutsideRange, match="index 1 is 60 °C; the equation is defined from 0 to 40"):
         water_density(np.array([290.0, 333.15]))
+
+
+def test_the_range_is_that_of_the_published_equation():
+    # Tanaka et al. (2001): 0 to 40 °C; table 1 ends at 992.2152 kg/m³, and 40.1 °C is 0.04 kg/m³ less and refused.
+    assert float(water_density(273.15 + 40.0)) == pytest.approx(992.2152, abs=6e-5)
+    for celsius in (-0.1, 40.1):
+        with pytest.raises(OutsideRange, match="0 to 40"):
+            water_density(273.15 + celsius)
