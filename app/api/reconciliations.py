@@ -9,9 +9,10 @@ from fastapi import APIRouter, Depends, Path, Query, Request, Response
 from app.api.bodies import json_body
 from app.api.parameters import AsOf, Cursor, Limit, PathId, QueryInstant, cursor_of, open_numbers
 from app.schemas.listing import LIMIT, Page
-from app.schemas.reconciliation import Imbalance, Reconciliation, ReconciliationRequest
+from app.schemas.reconciliation import BookChanges, Imbalance, Reconciliation, ReconciliationRequest
 from app.schemas.types import RECONCILIATION_PATTERN, worded
 from app.services import close
+from app.services.changes import changes
 
 router = APIRouter(prefix="/v1/sites/{site}", tags=["reconciliations"])
 First = Annotated[QueryInstant, Query(alias="from", description="Periods that close after this instant")]
@@ -42,6 +43,12 @@ def get_reconciliation(
     """One closed period, at the revision named or the newest."""
     found = close.find(request.app.state.store, site, reconciliation, as_of, detail=detail)
     return Reconciliation.model_validate(found)
+
+
+@router.get("/reconciliations/{reconciliation}/changes")
+def get_changes(request: Request, site: PathId, reconciliation: Name) -> BookChanges:
+    """What a revision changed against the one before, and because of what, also in words."""
+    return BookChanges.model_validate(changes(request.app.state.store, site, reconciliation))
 
 
 @router.get("/reconciliations")

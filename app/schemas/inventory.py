@@ -261,7 +261,9 @@ class ChangeStep(Answer):
     unit: str = Field(description="Unit of before and after")
     before: Known = Field(default=None, description="Its value at the first instant [unit]")
     after: Known = Field(default=None, description="Its value at the second instant [unit]")
-    contribution_kg: Known = Field(description="What it changed of the mass [kg]")
+    contribution_kg: Known = Field(
+        description="What it changed of the mass; null where it is told together with the next [kg]"
+    )
 
 
 class ChangeTransfer(Answer):

@@ -270,3 +270,85 @@ class Reconciliation(Answer):
         default=None, exclude_if=is_none, description="Vessels tied together by transfers, tested as one"
     )
     totals: Items[PeriodTotal] | None = Field(default=None, exclude_if=is_none, description="One for each substance")
+
+
+class Because(Answer):
+    """What was recorded between two revisions and changed a figure."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "kind": "revised_reading", "subject": "tk-12 level_m 2026-03-14T05:57:00Z from radar",
+                    "recorded_at": "2026-03-16T09:12:44.120031Z",
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    kind: Literal["late_reading", "revised_reading", "late_transfer", "definition", "method"] = Field(
+        description="late_reading: a value of which nothing was kept; revised_reading: another value, or a withdrawal, "
+        "of one; late_transfer: a ticket that came, was corrected or struck; definition: the text of a site, "
+        "substance, vessel or meter; method: another version of the calculation"
+    )
+    subject: str = Field(
+        description="Of a reading: vessel (or site), quantity, instant and source; of a transfer: its id; of a "
+        "definition: its kind and id; of a method: both versions"
+    )
+    recorded_at: AnsweredInstant = Field(description="When it was recorded")
+
+
+class BookChange(Answer):
+    """One figure that a revision changed. A vessel or a ticket that only one revision has is null in the other."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "vessel": "tk-12", "field": "closing_mass_kg", "before": 4412415.0, "after": 4412002.0,
+                    "because": [
+                        {
+                            "kind": "revised_reading", "subject": "tk-12 level_m 2026-03-14T05:57:00Z from radar",
+                            "recorded_at": "2026-03-16T09:12:44.120031Z",
+                        }
+                    ],
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    vessel: str | None = Field(default=None, exclude_if=is_none, description="The vessel, or")
+    transfer: str | None = Field(default=None, exclude_if=is_none, description="the transfer")
+    field: Literal[
+        "opening_mass_kg", "closing_mass_kg", "received_kg", "delivered_kg", "restated_kg", "imbalance_kg", "flagged",
+        "verdict", "measured_mass_kg",
+    ] = Field(description="What changed; masses that differ by less than a gram did not")  # fmt: skip
+    before: float | bool | str | None = Field(description="As it stood in the revision before, in the field's unit")
+    after: float | bool | str | None = Field(description="As it stands in this revision, in the field's unit")
+    because: Items[Because] = Field(
+        description="What it comes from. An opening is the close of the night before: its causes are what changed "
+        "that close. A judgement rests on the masses, or on the other vessels that it was made beside"
+    )
+
+
+class BookChanges(Answer):
+    """What a revision changed against the one before; the first changes nothing."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {
+                    "id": "2026-03-14.2", "before": "2026-03-14.1", "changes": [],
+                    "words": [
+                        "tk-12: closing mass 4,412,415 → 4,412,002 kg because the level of tk-12 of "
+                        "2026-03-14T05:57:00Z from radar was revised on 2026-03-16T09:12:44Z"
+                    ],
+                }
+            ]
+        }
+    )  # fmt: skip
+
+    id: str = Field(description="The period and its revision")
+    before: str | None = Field(description="The revision before; null for the first")
+    changes: Items[BookChange] = Field(description="Vessels by name, then transfers by name")
+    words: Items[str] = Field(description="Each change as a sentence, in the same order")

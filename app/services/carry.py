@@ -26,6 +26,7 @@ from app.services.measure import Measured, choices, measure, standard_density
 from app.services.parts import at_row, stamp
 from app.store import transfers
 from app.store.transfers import Transfer as Ticket
+from models import instruments
 from models.estimate import Estimate, combine
 
 DAY_US = 86_400_000_000
@@ -151,7 +152,8 @@ def _weighed(measured: Measured, row: int) -> Estimate | None:
     own = vessel.instrument("weighed_mass_kg", source, int(chosen.taken_at[row]))
     systematic = own.systematic if own.declared else instruments.WEIGHED_SHARE * abs(value)
     reading = f"{vessel.name}/{source}" if source else vessel.name
-    parts = {f"weighed:{own.name}": systematic, f"r:{reading}:weighed_mass_kg:{stamp(chosen.taken_at[row])}": own.random}
+    scatter = f"r:{reading}:weighed_mass_kg:{stamp(chosen.taken_at[row])}"
+    parts = {f"weighed:{own.name}": systematic, scatter: own.random}
     return Estimate(value, {name: part for name, part in parts.items() if part})
 
 
@@ -207,10 +209,8 @@ def _move(measured: Measured, moves: Moves, row: int, carried: Carried) -> None:
             continue
         part = moves.part(ticket, first, last, standard, at, spaces)
         if part.mass is None:
-            carried.warn(
-                "input_uncertain", "an unmetered transfer ran between the reading and the instant: its part is not known",
-                uncertain=True,
-            )  # fmt: skip
+            said = "an unmetered transfer ran between the reading and the instant: its part is not known"
+            carried.warn("input_uncertain", said, uncertain=True)
         else:
             terms.append((sign if part.target == vessel else -sign, part.mass))
     if terms:
@@ -282,11 +282,8 @@ def _standing_still(connection: Connection, site_id: int, measured: Measured, mo
             continue  # no level was read before the tickets began: what moved since one was may be less
         change = at_row(measured.state.level, row) - float(former.value[place])
         if abs(change) <= STILL_M:
-            measured.carried[row].warn(
-                "level_unchanged",
-                f"the level moved {change * 1000.0:.1f} mm while tickets moved more than the gauge could miss: it may stand still",
-                uncertain=True,
-            )  # fmt: skip
+            said = f"the level moved {change * 1000.0:.1f} mm while tickets moved more than the gauge could miss"
+            measured.carried[row].warn("level_unchanged", f"{said}: it may stand still", uncertain=True)
 
 
 def _began(moves: Moves, vessel: str, read: int) -> int | None:

@@ -56,7 +56,7 @@ def change(store: Store, site: str, vessel: str, first: int, last: int, as_of: i
         stocks = [stock_at(connection, site_id, site, at, known, only=vessel) for at in (first, last)]
         before, after = (_measured(stock, vessel) for stock in stocks)
         moved = _moved(connection, site_id, stocks[1], after, vessel, (first, last), known)
-    was, now = _mass(before, vessel), _mass(after, vessel)
+    was, now = _mass(before), _mass(after)
     steps = _steps(before, after)
     difference = now - was
     carried = _carried(after) - _carried(before)
@@ -80,15 +80,21 @@ def change(store: Store, site: str, vessel: str, first: int, last: int, as_of: i
 def _measured(stock: Stock, vessel: str) -> Measured:
     if stock.measured is None:
         raise Conflict("The vessel is out of service, or a junction, at one of the two instants", code="unmeasured")
-    if mass_estimate(stock.measured, 0) is None or stock.measured.carried[0].empty:
+    if mass_estimate(stock.measured, 0) is None:
         raise Conflict("The vessel has no measured mass at one of the two instants", code="unmeasured")
     return stock.measured
 
 
-def _mass(measured: Measured, vessel: str) -> float:
+def _mass(measured: Measured) -> float:
     mass = mass_estimate(measured, 0)
     assert mass is not None
     return mass.value
+
+
+def _read(measured: Measured) -> float:
+    """The mass at the reading, before anything was carried."""
+    stated = measured.carried[0].stated
+    return float(measured.result["mass"][0]) if stated is None else stated.value
 
 
 def _carried(measured: Measured) -> float:
@@ -96,10 +102,16 @@ def _carried(measured: Measured) -> float:
 
 
 def _steps(before: Measured, after: Measured) -> list[dict[str, Any]]:
-    """Masses of the chain with one input after another taken from the later instant."""
-    old, new = before.vessel(0), after.vessel(0)
+    """Masses of the chain with one input after another taken from the later instant.
+
+    Of a vessel that was found empty or was weighed nothing but that is known. Where one input without the next
+    makes a state that cannot be (an old level of water above a new one of the liquid), both are told together.
+    """
+    if before.carried[0].stated is not None or after.carried[0].stated is not None:
+        return [_step("mass_kg", "kg", _read(before), _read(after), _read(after) - _read(before))]
+    old = before.vessel(0)
     state = before.state
-    mass = float(before.result["mass"][0])
+    mass = _read(before)
     steps: list[dict[str, Any]] = []
     for name, fields, unit, scale, shift in STEPS:
         taken = replace(
@@ -107,22 +119,30 @@ def _steps(before: Measured, after: Measured) -> list[dict[str, Any]]:
         )
         now = _compute(old, before, taken)
         seen = (_shown(state, fields[0], scale, shift), _shown(taken, fields[0], scale, shift))
-        if now != mass or seen[0] != seen[1]:
-            steps.append(
-                {"input": name, "unit": unit, "before": seen[0], "after": seen[1], "contribution_kg": now - mass}
-            )
-        state, mass = taken, now
-    if before.state.vapour_row is not None or after.state.vapour_row is not None or old.mixture != new.mixture:
-        now = _compute(old, after, state, composition=True)
-        steps.append(_step("vapour_composition", "g/mol", _molar_mass(before), _molar_mass(after), now - mass))
-        mass = now
-    final = float(after.result["mass"][0])
+        state = taken
+        if not math.isfinite(now):
+            steps.append(_step(name, unit, *seen, None))
+        elif now != mass or seen[0] != seen[1]:
+            steps.append(_step(name, unit, *seen, now - mass))
+            mass = now
+    if _has_vapour(before) and _has_vapour(after) and before.mixture(0) != after.mixture(0):
+        now = _compute(old, after, state)
+        contribution = now - mass if math.isfinite(now) else None
+        steps.append(_step("vapour_composition", "g/mol", _molar_mass(before), _molar_mass(after), contribution))
+        mass = now if math.isfinite(now) else mass
+    final = _read(after)
     if final != mass:
         steps.append(_step("definition", "", None, None, final - mass))
     return steps
 
 
-def _step(name: str, unit: str, before: float | None, after: float | None, contribution: float) -> dict[str, Any]:
+def _has_vapour(measured: Measured) -> bool:
+    return measured.vessel(0).mixture is not None
+
+
+def _step(
+    name: str, unit: str, before: float | None, after: float | None, contribution: float | None
+) -> dict[str, Any]:
     return {"input": name, "unit": unit, "before": before, "after": after, "contribution_kg": contribution}
 
 
@@ -130,7 +150,7 @@ def _molar_mass(measured: Measured) -> float:
     return float(virial_columns((measured.mixture(0),)).molar_mass[0]) * 1e3
 
 
-def _compute(vessel: CompiledVessel, measured: Measured, state: State, *, composition: bool = False) -> float:
+def _compute(vessel: CompiledVessel, measured: Measured, state: State) -> float:
     """The chain's mass of one vessel in a state, with the vapour of a measured row."""
     extra = (measured.mixture(0),) if vessel.mixture is not None else ()
     columns = stack((vessel,), extra)

@@ -80,14 +80,14 @@ def _compute(
     meters = meters_in_force(connection, site_id, period.closing - 1, known)
     opening = _opening(connection, site_id, site, period, known, closing, meters)
     tickets = transfers.overlapping(connection, site_id, period.opening, period.closing, known)
-    moving = Moving(tickets, closing, meters)
+    moving = Moving(connection, tickets, closing, meters)
     moves = [one for one in moving.between(period.opening, period.closing) if not one.water]
     pieces, regrades = regraded(moving, opening.masses, opening.substances, closing, period)
     body, flagged = judge.books_of(closing, opening, moves, pieces, regrades)
     body |= {"site": site, "opening": period.opening, "closing": period.closing, "label": period.label,
              "known_at": known, "method": METHOD}  # fmt: skip
     grounds = [METHOD, period.opening, period.closing, opening.grounds, list(closing.site.texts),
-               inputs_of(closing), [[one.name, one.body] for one in tickets], _meter_texts(meters)]  # fmt: skip
+               inputs_of(closing), [[one.name, one.body] for one in tickets], _meter_texts(meters), moving.grounds]  # fmt: skip
     digest = hashlib.sha256(json.dumps(grounds, sort_keys=True).encode()).hexdigest()
     body["digest"] = digest
     return body, _book_vessels(closing, flagged), digest
@@ -162,18 +162,24 @@ def answer(site: str, book: Book, *, detail: bool = False) -> dict[str, Any]:
 
 def find(store: Store, site: str, name: str, as_of: int | None, *, detail: bool) -> dict[str, Any]:
     """A closed period by its id, at the revision that is named or the newest."""
-    label, _, number = name.partition(".")
     with store.reading() as connection:
         site_id = site_number(connection, site)
         known = sites.watermark(connection, site_id) if as_of is None else as_of
-        period = period_of(connection, site_id, site, label, known)
-        if number:
-            book = books.revision(connection, site_id, period.opening, period.closing, int(number))
-        else:
-            book = books.newest(connection, site_id, period.opening, period.closing, known)
+        _, book = book_of(connection, site_id, site, name, known)
+    return answer(site, book, detail=detail)
+
+
+def book_of(connection: Connection, site_id: int, site: str, name: str, known: int) -> tuple[str, Book]:
+    """A book by its id, at the revision that is named or the newest, and the id without its revision."""
+    label, _, number = name.partition(".")
+    period = period_of(connection, site_id, site, label, known)
+    if number:
+        book = books.revision(connection, site_id, period.opening, period.closing, int(number))
+    else:
+        book = books.newest(connection, site_id, period.opening, period.closing, known)
     if book is None or book.recorded_at > known:
         raise NotFound("That period was not closed, or not at that revision", code="unknown_reconciliation")
-    return answer(site, book, detail=detail)
+    return label, book
 
 
 def listing(

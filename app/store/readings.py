@@ -18,7 +18,7 @@ from app.store.tables import ANALYSIS, BAD, CITED, GOOD, READING, table_of
 
 __all__ = [
     "Course", "Found", "Listed", "Outcome", "Series", "Value",
-    "course", "following", "listing", "newest", "series_of", "write_values",
+    "course", "following", "listing", "newest", "recorded", "series_of", "write_values",
 ]  # fmt: skip
 
 Outcome = Literal["stored", "revised", "unchanged", "stale_correction"]
@@ -232,6 +232,25 @@ def _neighbours(
             found = seek.neighbours(connection, table.name, site_id, own, known, newest=newest)
             rows.extend(Found(*row) for row in found)
     return rows
+
+
+def recorded(
+    connection: Connection, site_id: int, keys: Sequence[_Key], since: int, known: int
+) -> list[tuple[Found, bool]]:
+    """The last revision of each key that was recorded after one instant and up to another, if there is any.
+
+    True beside one of which nothing was kept before.
+    """
+    last: dict[_Key, tuple[Found, bool]] = {}
+    for table in (READING, ANALYSIS):
+        own = sorted(key for key in keys if table_of(key[0]) is table)
+        for series_id, at, number, when, value, _, quality in (
+            seek.revisions(connection, table.name, site_id, own) if own else ()
+        ):
+            if since < when <= known:
+                first = number == 1 or ((series_id, at) in last and last[series_id, at][1])
+                last[series_id, at] = (Found(series_id, at, value, None, quality, number, when), first)
+    return list(last.values())
 
 
 def course(

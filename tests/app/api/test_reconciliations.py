@@ -322,3 +322,35 @@ def test_statistics_come_where_they_are_asked_for(site):
     assert "statistic" not in site.close("2026-05-28")["groups"][0]
     found = site.get("/reconciliations/2026-05-28", detail="true")["groups"][0]
     assert found["members"] == ["tk-1"] and found["statistic"] == pytest.approx(0.0, abs=1e-9)
+
+
+# --- what a revision changed ---------------------------------------------------------------------
+
+
+def test_a_revision_says_what_it_changed_and_why(site):
+    """20 mm more at the close: 1 000 kg; the first revision has nothing before it, and changed nothing."""
+    nights(site, 2.0, 2.0)
+    site.close("2026-05-28")
+    first = site.get("/reconciliations/2026-05-28.1/changes")
+    assert first == {"id": "2026-05-28.1", "before": None, "changes": [], "words": []}
+    site.read("2026-05-29T00:00:00Z", 2.02)
+    site.close("2026-05-28")
+    found = site.get("/reconciliations/2026-05-28/changes")
+    assert (found["id"], found["before"]) == ("2026-05-28.2", "2026-05-28.1")
+    assert [(one["vessel"], one["field"]) for one in found["changes"]] == [
+        ("tk-1", "closing_mass_kg"), ("tk-1", "imbalance_kg"), ("tk-1", "flagged"), ("tk-1", "verdict"),
+    ]  # fmt: skip
+    closing = found["changes"][0]
+    assert (closing["before"], closing["after"]) == (pytest.approx(100_000.0), pytest.approx(101_000.0))
+    (cause,) = closing["because"]
+    assert (cause["kind"], cause["subject"]) == ("revised_reading", "tk-1 level_m 2026-05-29T00:00:00Z")
+    assert cause["recorded_at"].endswith("Z") and "transfer" not in closing
+    assert (found["changes"][2]["before"], found["changes"][2]["after"]) == (False, True)
+    assert len(found["words"]) == 4
+    assert found["words"][0].startswith("tk-1: closing mass 100,000 → 101,000 kg because the level of tk-1 of 2026-05-29T")
+
+
+@pytest.mark.parametrize("name", ["2026-05-29", "2026-05-28.2"])
+def test_what_was_never_closed_changed_nothing(site, name):
+    site.close("2026-05-28")
+    assert site.get(f"/reconciliations/{name}/changes", status=404)["code"] == "unknown_reconciliation"

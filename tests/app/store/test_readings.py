@@ -325,3 +325,37 @@ def test_every_value_belongs_to_a_series_and_a_recording(store: Store, site_id: 
         misplaced = sa.select(sa.func.count()).select_from(READING).where(READING.c.series_id <= 0)
         assert connection.scalar(misplaced) == 0
         assert connection.scalar(sa.select(sa.func.count()).select_from(SERIES).where(SERIES.c.series_id == 0)) == 0
+
+
+def test_what_was_recorded_in_between_is_found_by_its_key(store: Store, site_id: str) -> None:
+    """A key that came and was revised is found once, at its last revision, and as new; one of before is no longer new."""
+    level = ("tk-1", "level_m", "radar")
+    density = ("tk-1", "observed_density_kg_m3", "lab")
+
+    def write(*values: Value) -> int:
+        with store.writing(site_id, deed="test") as writing:
+            readings.write_values(writing, values)
+            return writing.recorded_at
+
+    first = write(Value(*level, T0, 1.0), Value(*density, T0, 800.0))
+    second = write(Value(*level, T0, 2.0), Value(*level, T0 + HOUR, 3.0))
+    third = write(Value(*level, T0 + HOUR, 4.0), Value(*density, T0, 801.0))
+    with store.reading() as connection:
+        here = number(connection, site_id)
+        series = {(one.quantity): one.series_id for one in readings.series_of(connection, here)}
+        keys = [(series["level_m"], T0), (series["level_m"], T0 + HOUR), (series["observed_density_kg_m3"], T0)]
+
+        def between(since: int, known: int) -> set[tuple[int, int, float | None, int, int, bool]]:
+            found = readings.recorded(connection, here, keys, since, known)
+            return {(one.series_id, one.taken_at, one.value, one.revision, one.recorded_at, new) for one, new in found}
+
+        level_id, density_id = keys[0][0], keys[2][0]
+        assert between(first, third) == {
+            (level_id, T0, 2.0, 2, second, False), (level_id, T0 + HOUR, 4.0, 2, third, True),
+            (density_id, T0, 801.0, 2, third, False),
+        }  # fmt: skip
+        assert between(first, second) == {
+            (level_id, T0, 2.0, 2, second, False),
+            (level_id, T0 + HOUR, 3.0, 1, second, True),
+        }
+        assert between(third, third + 1) == set() == between(0, first - 1)
