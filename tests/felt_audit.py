@@ -43,7 +43,12 @@ from pathlib import Path
 
 ROOT = Path(__file__).resolve().parents[1]
 NUDGE = 1.01
-NUMERICAL = re.compile(r"(TOLERANCE|ITERATIONS|EPSILON|TINY|ROWS|KNOTS|STEPS?|DEGREE|POINTS|NODES|BLOCK)$")
+# Numbers of the method: what an iteration, a grid or a comparison of floats needs. Of the last four, the first two
+# are rounding allowed in a comparison, TRUSTED is the departure at which an inverse counts as lost to rounding, and
+# SMALL_ANGLE is where a series takes over from a formula that agrees with it to the last bits on both sides.
+NUMERICAL = re.compile(
+    r"(TOLERANCE|ITERATIONS|EPSILON|TINY|ROWS|KNOTS|STEPS?|DEGREE|POINTS|NODES|BLOCK|ROUNDING|ROOM|TRUSTED|SMALL_ANGLE)$"
+)
 # Tests that feel a module without naming it.
 FURTHER: dict[str, tuple[str, ...]] = {}
 

@@ -164,6 +164,7 @@ def test_a_level_vessel_is_convex_below_its_middle_and_concave_above():
         ({"length": -1.0}, "length_m", "above 0 m"),
         ({"length": math.nan}, "length_m", "above 0 m"),
         ({"tilt": 0.7, "gauge_at": 1.0}, "tilt_deg", "between -30 and 30"),
+        ({"tilt": math.radians(30.1), "gauge_at": 1.0}, "tilt_deg", "tilt_deg is 30.1"),
         ({"tilt": 0.01}, "gauge_at_m", "missing"),
         ({"tilt": 0.01, "gauge_at": 10.5}, "gauge_at_m", "between 0 and 10 m"),
         ({"left_head": Head("cone", depth=0.0)}, "left_head/depth_m", "above 0 m"),
