@@ -27,6 +27,7 @@ class Method(IntFlag):
     ROOF = 4
     SATURATION = 8
     FULL = 16
+    BLANKET = 32
 
 
 class Mark(IntFlag):
@@ -239,3 +240,42 @@ class Inventory:
     def measured(self) -> BoolArray:
         """True where the row has a mass. [1]"""
         return np.asarray((self.marks & int(UNMEASURED)) == 0)
+
+
+@dataclass
+class Step:
+    """What the steps of one block of readings hand on to each other.
+
+    Parameters
+    ----------
+    vessels : Vessels
+        Parameters of each reading's vessel. [SI]
+    state : State
+        What was read. [SI]
+    marks : IntArray, shape (n,)
+        Flags of :class:`Mark`, so far. [1]
+    out, sens : mapping of str to FloatArray
+        Results and sensitivities, so far. [as in :class:`Inventory`]
+    conditions : tuple of FloatArray and BoolArray, or None
+        Pressure and temperature of the vapour, and how they were found: see ``models.space``. [Pa, K, 1, 1]
+    """
+
+    vessels: Vessels
+    state: State
+    marks: IntArray
+    out: dict[str, FloatArray]
+    sens: dict[str, FloatArray]
+    conditions: tuple[FloatArray, FloatArray, BoolArray, BoolArray] | None = None
+
+    def mark(self, where: BoolArray, flag: Mark) -> None:
+        """Mark some rows.
+
+        Parameters
+        ----------
+        where : BoolArray, shape (n,) or (1,)
+            Which. [1]
+        flag : Mark
+            With what. [1]
+        """
+        if where.any():  # hardly ever
+            self.marks |= np.where(where, int(flag), 0)

@@ -8,16 +8,15 @@ virial equation gives the vapour's; the sum is the mass. Every step works on col
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 
 import numpy as np
 
-from models.arrays import BLOCK_ROWS, BoolArray, FloatArray, IntArray, blocks
-from models.columns import Inventory, Mark, Method, State, Vessels
-from models.constants import GAS_CONSTANT
+from models.arrays import BLOCK_ROWS, FloatArray, IntArray, blocks
+from models.columns import Inventory, Mark, Method, State, Step, Vessels
 from models.geometry.roof import afloat_fraction
 from models.liquid.expansivity import expansivity, log_volume_ratio
-from models.vapour.series import VapourState
+from models.space import vapour, vapour_conditions
 
 RESULTS = {
     "level_fraction": "1", "gross_observed_volume": "m³", "free_water_volume": "m³", "shell_factor": "1",
@@ -35,25 +34,6 @@ SENSITIVITIES = {
     "sediment_water": "kg", "capacity": "kg", "capacity_local": "kg", "expansion": "kg", "vapour_model": "kg",
     "molar_mass": "kg", "roof": "kg", "vapour_left_out": "kg",
 }  # fmt: skip
-
-LEFT_OUT_SHARE = 0.01  # of the liquid; a vapour that cannot be computed is left out up to this bound
-SATURATION_COVERAGE = 2.0  # standard uncertainties
-
-
-@dataclass
-class _Step:
-    """What the steps of one block hand on to each other."""
-
-    vessels: Vessels
-    state: State
-    marks: IntArray
-    out: dict[str, FloatArray]
-    sens: dict[str, FloatArray]
-    conditions: tuple[FloatArray, FloatArray, BoolArray, BoolArray] | None = None
-
-    def mark(self, where: BoolArray, flag: Mark) -> None:
-        if where.any():  # hardly ever
-            self.marks |= np.where(where, int(flag), 0)
 
 
 def inventory(vessels: Vessels, rows: IntArray | None, state: State) -> Inventory:
@@ -116,7 +96,7 @@ class _Made:
     columns: dict[str, FloatArray] = field(default_factory=dict)
     sensitivities: dict[str, FloatArray] = field(default_factory=dict)
 
-    def put(self, step: _Step, where: IntArray | slice) -> None:
+    def put(self, step: Step, where: IntArray | slice) -> None:
         """One block's columns into their rows."""
         self.marks[where] = step.marks
         for columns, found, absent in ((self.columns, step.out, np.nan), (self.sensitivities, step.sens, 0.0)):
@@ -138,10 +118,10 @@ class _Made:
 
 def _compute(method: Method, vessels: Vessels, state: State, made: _Made, where: IntArray | slice) -> None:
     """One block of one method: its columns go to their rows of the result."""
-    step = _Step(vessels, state, np.zeros(len(made.marks[where]), dtype=np.intp), {}, {})
+    step = Step(vessels, state, np.zeros(len(made.marks[where]), dtype=np.intp), {}, {})
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
         if method & Method.VAPOUR:
-            step.conditions = _vapour_conditions(step, method)
+            step.conditions = vapour_conditions(step, method)
         if method & Method.LIQUID:
             if method & Method.FULL:
                 _filled(step)
@@ -151,7 +131,7 @@ def _compute(method: Method, vessels: Vessels, state: State, made: _Made, where:
         else:
             _whole_vessel(step)
         if method & Method.VAPOUR:
-            _vapour(step, method)
+            vapour(step, method)
         _sum(step, method)
     lost = ~np.isfinite(step.out["mass"]) & ((step.marks & ~_HARMLESS) == 0)
     step.mark(lost, Mark.MISSING)
@@ -164,7 +144,7 @@ _HARMLESS = int(
 )  # fmt: skip
 
 
-def _strain(step: _Step, wet_temperature: FloatArray) -> tuple[FloatArray, FloatArray]:
+def _strain(step: Step, wet_temperature: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Sum of the shell's three strains and the vertical one, temperature and pressure together."""
     v, s = step.vessels, step.state
     shell = v.liquid_weight * wet_temperature
@@ -176,7 +156,7 @@ def _strain(step: _Step, wet_temperature: FloatArray) -> tuple[FloatArray, Float
     return 3.0 * thermal + v.strain_sum * gauge, thermal + v.strain_vertical * gauge
 
 
-def _geometry(step: _Step) -> None:
+def _geometry(step: Step) -> None:
     """Level to volumes: the curve at the liquid and at the water, and the shell's factor."""
     v, s, out = step.vessels, step.state, step.out
     assert v.curves is not None
@@ -210,7 +190,7 @@ def _geometry(step: _Step) -> None:
     step.sens["_reach"] = reach
 
 
-def _filled(step: _Step) -> None:
+def _filled(step: Step) -> None:
     """A line that is kept full: no level, the whole capacity and the strain of a full vessel."""
     total, _ = _strain(step, step.state.liquid_temperature)
     full = step.vessels.capacity + np.zeros(len(step.marks))
@@ -221,7 +201,7 @@ def _filled(step: _Step) -> None:
     step.sens["_water_area"] = step.sens["_reach"] = np.zeros(1)
 
 
-def _liquid(step: _Step, method: Method) -> None:
+def _liquid(step: Step, method: Method) -> None:
     """Density of the sample to the state and to the standard state; volumes and liquid mass."""
     v, s, out, sens = step.vessels, step.state, step.out, step.sens
     b, liquid = v.expansivity, {"origin": v.expansivity_origin}
@@ -267,7 +247,7 @@ def _liquid(step: _Step, method: Method) -> None:
 
 
 def _liquid_sensitivities(
-    step: _Step, net: FloatArray, before_roof: FloatArray, displaced: FloatArray, share: FloatArray,
+    step: Step, net: FloatArray, before_roof: FloatArray, displaced: FloatArray, share: FloatArray,
     slope: FloatArray, thermal: FloatArray,
 ) -> None:  # fmt: skip
     """Derivatives of the liquid mass; those of the vapour are added by the vapour's own step."""
@@ -298,7 +278,7 @@ def _liquid_sensitivities(
     sens["sediment_water"] = -leaves * out["liquid_density"] * gross
 
 
-def _whole_vessel(step: _Step) -> None:
+def _whole_vessel(step: Step) -> None:
     """A vessel of gas alone: no level, the whole capacity and the shell at the gas's temperature."""
     total, _ = _strain(step, step.state.vapour_temperature)
     rows = len(step.marks)
@@ -309,149 +289,18 @@ def _whole_vessel(step: _Step) -> None:
     )  # fmt: skip
 
 
-def _vapour_conditions(step: _Step, method: Method) -> tuple[FloatArray, FloatArray, BoolArray, BoolArray]:
-    """Pressure and temperature at which the vapour is taken, and where they are saturated ones.
-
-    In this order: as measured; at the measured pressure, saturated; without a pressure, saturated at the
-    liquid's temperature. A vapour above saturation beside its liquid is taken as saturated at its pressure.
-    """
-    v, s = step.vessels, step.state
-    nowhere = np.zeros(step.marks.shape, dtype=bool)
-    pressure = np.broadcast_to(s.pressure, nowhere.shape)
-    temperature = np.broadcast_to(s.vapour_temperature, nowhere.shape)
-    if not method & Method.SATURATION or not method & Method.LIQUID:
-        return pressure, temperature, nowhere, nowhere
-    assert v.saturation is not None
-    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
-    at_liquid, liquid_slope = v.saturation.pressure(s.liquid_temperature, row)
-    by_liquid = np.isnan(pressure)
-    pressure = np.where(by_liquid, at_liquid, pressure)
-    temperature = np.where(by_liquid, s.liquid_temperature, temperature)
-    at_vapour, slope = v.saturation.pressure(temperature, row)
-    above = (pressure > at_vapour) & ~by_liquid
-    by_pressure = np.isnan(temperature) | above
-    if by_pressure.any():
-        boiling = v.saturation.temperature(pressure, row)
-        temperature = np.where(by_pressure, boiling, temperature)
-    tolerance = SATURATION_COVERAGE * np.hypot(
-        s.pressure_uncertainty, np.where(np.isfinite(slope), slope, liquid_slope) * s.temperature_uncertainty
-    )
-    measured = np.isfinite(s.pressure) & ~by_liquid
-    known = np.isfinite(at_vapour)
-    lower = np.where(known, np.minimum(at_liquid, at_vapour), at_liquid)
-    upper = np.where(known, np.maximum(at_liquid, at_vapour), at_liquid)
-    step.mark(measured & (s.pressure < lower - tolerance), Mark.SATURATION_LOW)
-    step.mark(measured & (s.pressure > upper + tolerance), Mark.SATURATION_HIGH)
-    step.mark(above, Mark.VAPOUR_SATURATED)
-    step.mark(by_pressure & ~above, Mark.VAPOUR_AT_PRESSURE)
-    step.mark(by_liquid, Mark.VAPOUR_AT_LIQUID_TEMPERATURE)
-    # The liquid's pressure is that of the space above it, also where that is the vapour pressure.
-    step.state = replace(s, pressure=pressure)
-    return pressure, temperature, by_pressure, by_liquid
-
-
-def _vapour(step: _Step, method: Method) -> None:
-    """Vapour volume, its density by the virial equation, its mass and derivatives."""
-    v, s, out = step.vessels, step.state, step.out
-    assert v.vapour is not None
-    assert step.conditions is not None
-    pressure, temperature, by_pressure, by_liquid = step.conditions
-    rows = v.vapour_row if s.vapour_row is None else s.vapour_row
-    row = rows if len(rows) > 1 else int(rows[0])
-    gas = v.vapour.state(pressure, temperature, row)
-    space = out["full_factor"] * v.capacity - out["shell_factor"] * out["tank_volume"]
-    if method & Method.LIQUID:
-        step.mark(space <= 0.0, Mark.LIQUID_FULL)
-        space = np.where(space > 0.0, space, np.where(np.isnan(space), np.nan, 0.0))
-    mass = gas.density * space
-    out.update(
-        vapour_volume=space, compressibility_factor=gas.compressibility, vapour_density=gas.density,
-        vapour_mass=mass, vapour_temperature=temperature, vapour_pressure=pressure,
-        reduced_density=gas.reduced_density,
-    )  # fmt: skip
-    _guard(step, method, gas, pressure, temperature, space, row)
-    mass = out["vapour_mass"]  # without what was left out
-    by_p = mass * gas.pressure_sensitivity / pressure
-    by_t = mass * gas.temperature_sensitivity / temperature
-    _vapour_sensitivities(step, method, gas, by_p, by_t, (by_pressure, by_liquid))
-
-
-def _guard(
-    step: _Step, method: Method, gas: VapourState, pressure: FloatArray, temperature: FloatArray,
-    space: FloatArray, row: IntArray | int,
-) -> None:  # fmt: skip
-    """What the virial equation says of itself, and a small vapour that it refuses, left out."""
-    v, out = step.vessels, step.out
-    assert v.vapour is not None
-    step.mark((gas.verdict == 1) | (gas.verdict == 2), Mark.GUARD_WIDE)
-    refused = np.asarray(gas.verdict >= 3) & np.isfinite(pressure) & np.isfinite(temperature)
-    if method & Method.LIQUID:
-        nothing = np.isnan(out["vapour_density"])
-        sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
-        known = np.where(np.isfinite(pressure), pressure, step.state.pressure)
-        # Twice the ideal gas bounds the vapour up to Z = 0.5, where the guard has long refused.
-        bound = 2.0 * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
-        small = nothing & (bound <= LEFT_OUT_SHARE * np.abs(out["liquid_mass"]))
-        step.mark(small, Mark.VAPOUR_LEFT_OUT)
-        out["vapour_mass"] = np.where(small, 0.0, out["vapour_mass"])
-        step.sens["vapour_left_out"] = np.where(small, bound, 0.0)
-        refused = refused & ~small
-    step.mark(refused & (gas.verdict == 3), Mark.GUARD_REFUSED)
-    step.mark(refused & (gas.verdict == 4), Mark.NO_VAPOUR_ROOT)
-    step.mark(refused & (gas.verdict == 5), Mark.OUTSIDE_METHOD)
-
-
-def _vapour_sensitivities(
-    step: _Step, method: Method, gas: VapourState, by_p: FloatArray, by_t: FloatArray,
-    saturated: tuple[BoolArray, BoolArray],
-) -> None:  # fmt: skip
-    """Derivatives of the vapour mass, added to those of the liquid."""
-    v, out, sens = step.vessels, step.out, step.sens
-    mass, density = out["vapour_mass"], np.where(np.isfinite(gas.density), gas.density, 0.0)
-    by_p, by_t = np.where(np.isfinite(by_p), by_p, 0.0), np.where(np.isfinite(by_t), by_t, 0.0)
-    reach = sens.get("_reach", np.ones(1))
-    volume = out["tank_volume"]
-    shell = density * v.expansion * (3.0 * v.capacity - (3.0 - reach) * volume)
-    pressed = density * (v.strain_sum * v.capacity - (v.strain_sum - v.strain_vertical * reach) * volume)
-    sens["ambient_temperature"] = sens.get("ambient_temperature", 0.0) + (1.0 - v.liquid_weight) * shell
-    sens["vapour_model"] = mass * np.where(np.isfinite(gas.model_uncertainty), gas.model_uncertainty, 0.0)
-    sens["molar_mass"] = mass
-    sens["capacity"] = sens.get("capacity", 0.0) + mass
-    sens["pressure"] = sens.get("pressure", 0.0) + pressed
-    if not method & Method.LIQUID:
-        sens["pressure"] = sens["pressure"] + by_p
-        sens["vapour_temperature"] = by_t + v.liquid_weight * shell
-        return
-    sens["level"] = sens["level"] - density * out["shell_factor"] * out["surface_area"]
-    sens["capacity_local"] = sens["capacity_local"] - density * out["shell_factor"] * volume
-    sens["liquid_temperature"] = sens["liquid_temperature"] + v.liquid_weight * shell
-    sens["vapour_temperature"] = by_t
-    by_pressure, by_liquid = saturated
-    if not (by_pressure.any() or by_liquid.any()):
-        sens["pressure"] = sens["pressure"] + by_p
-        return
-    assert v.saturation is not None
-    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
-    _, slope = v.saturation.pressure(out["vapour_temperature"], row)
-    along = np.where(by_pressure, by_t / slope, 0.0)
-    by_pressure_alone = sens["pressure"] + by_p
-    sens["pressure"] = np.where(by_liquid, 0.0, by_pressure_alone + along)
-    along_liquid = by_t + by_pressure_alone * slope
-    sens["liquid_temperature"] = sens["liquid_temperature"] + np.where(by_liquid, along_liquid, 0.0)
-
-
-def _sum(step: _Step, method: Method) -> None:
+def _sum(step: Step, method: Method) -> None:
     """Liquid plus vapour, and the gas at its base state."""
     out, sens = step.out, step.sens
     for name in ("_reach", "_water_area"):
         sens.pop(name, None)
-    vapour = out.get("vapour_mass", np.zeros(1))
-    out["mass"] = np.broadcast_to(out["liquid_mass"] + vapour, step.marks.shape)
+    gas = out.get("vapour_mass", np.zeros(1))
+    out["mass"] = np.broadcast_to(out["liquid_mass"] + gas, step.marks.shape)
     if method & Method.VAPOUR:
         v, analysed = step.vessels, step.state.vapour_row
         assert v.vapour is not None
         heavier = 1.0 if analysed is None else v.vapour.molar_mass[analysed] / v.vapour.molar_mass[v.vapour_row]
-        out["gas_standard_volume"] = vapour / (v.gas_standard_density * heavier)
+        out["gas_standard_volume"] = gas / (v.gas_standard_density * heavier)
 
 
 def standard_uncertainty(result: Inventory, sigmas: Mapping[str, tuple[FloatArray, ...]]) -> FloatArray:

@@ -91,6 +91,11 @@ class CompiledVessel:
         return bool(self.method & Method.LIQUID)
 
     @property
+    def is_blanketed(self) -> bool:
+        """Whether the substance's vapour counts beside a blanket, whose pressure has then to be known."""
+        return bool(self.method & Method.BLANKET)
+
+    @property
     def is_full(self) -> bool:
         """Whether it is a line kept full: a liquid without a level."""
         return bool(self.method & Method.FULL)
@@ -244,6 +249,8 @@ def compile_bodies(
         method |= Method.LIQUID | Method.FULL
     if space == "product" and vapour is not None and kind != "junction":
         method |= Method.VAPOUR
+    elif space == "blanketed" and vapour is not None and method & (Method.LIQUID | Method.FULL) == Method.LIQUID:
+        method |= Method.VAPOUR | Method.BLANKET
     if body.floating_roof is not None:
         if not method & Method.LIQUID:
             raise DefinitionError("a floating roof needs a liquid under it", field="floating_roof")

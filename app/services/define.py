@@ -164,9 +164,6 @@ def _vessel_fits(writing: Writing, site: str, name: str, body: Vessel) -> None:
 def check_computed(body: Vessel, within: str = "") -> None:
     """What the body may say but this version does not compute is refused, not left aside."""
     refused: list[FieldError] = []
-    if body.vapour_space is not None and body.vapour_space.kind == "blanketed":
-        detail = "This version computes the vapour spaces product, open and none"
-        refused.append(FieldError(f"{within}/vapour_space/kind", "not_computed", detail))
     if body.shell.courses:
         detail = "This version does not compute the head of the liquid by courses"
         refused.append(FieldError(f"{within}/shell/courses", "not_computed", detail))

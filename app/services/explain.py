@@ -34,7 +34,8 @@ WARNINGS: dict[Mark, tuple[str, str]] = {
     Mark.SATURATION_LOW: (
         "saturation_low",
         "the pressure lies below the vapour pressure at both temperatures by more than twice its uncertainty: "
-        "look for gauge and absolute confused, a warm thermometer, a lighter product withdrawn, or another product",
+        "look for gauge and absolute confused, a warm thermometer, a lighter product withdrawn, another product, or a "
+        "blanket that is lost",
     ),
     Mark.SATURATION_HIGH: (
         "saturation_high",
@@ -246,7 +247,7 @@ def _counts(measured: Measured, row: int, name: str) -> bool:
     if name == "vapour_temperature":  # beside a liquid it counts with a pressure only
         return vessel.has_vapour and (not vessel.has_liquid or math.isfinite(at_row(measured.state.pressure, row)))
     if name == "vapour_composition":
-        return vessel.has_vapour
+        return vessel.has_vapour and not vessel.is_blanketed
     if name in ("ambient", "site_ambient"):
         insulated = vessel.parameters["liquid_weight"] == 1.0 or vessel.parameters["expansion"] == 0.0
         assumed = measured.assumed.get("ambient_temperature_c")
@@ -358,9 +359,10 @@ def reason(measured: Measured, row: int) -> dict[str, str]:
         name: not math.isfinite(at_row(getattr(state, name), row))
         for name in ("level", "liquid_temperature", "pressure", "vapour_temperature")
     }
+    saturates = vessel.has_vapour and not vessel.is_blanketed
     needed = ["pressure", "vapour_temperature"]
     if vessel.has_liquid:  # a space that can be saturated needs nothing read
-        needed = ["level", "liquid_temperature"] + ([] if vessel.has_vapour else ["pressure"])
+        needed = ["level", "liquid_temperature"] + ([] if saturates else ["pressure"])
         needed = needed[1:] if vessel.is_full else needed
     marks = Mark(int(measured.result.marks[row]))
     for mark, (code, detail) in WARNINGS.items():

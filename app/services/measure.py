@@ -316,7 +316,7 @@ class _States:
             which = row if len(self.vessels) > 1 else 0
             text = texts[row, int(chosen.source[row])] if chosen.source[row] >= 0 else None
             mixture = own[which]
-            if text is not None and mixture is not None:
+            if text is not None and mixture is not None and not self.vessels[which].is_blanketed:
                 key = (which, str(text))
                 if key not in seen:
                     seen[key] = analysed_mixture(self.vessels[which], json.loads(text))

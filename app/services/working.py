@@ -176,12 +176,16 @@ VAPOUR_BASIS = {
     Mark.VAPOUR_SATURATED: "computed above saturation beside its liquid: taken as saturated at its pressure",
     Mark.VAPOUR_AT_LIQUID_TEMPERATURE: "no pressure is read: saturated at the liquid's temperature",
 }
+BESIDE_BLANKET = "the product's vapour pressure at T_v, its part of the pressure beside the blanket (Dalton's law)"
+NO_BLANKET = "that of the space: the product's vapour pressure has reached it and no blanket is left"
 
 
 def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     result, vessel = measured.result, measured.vessel(row)
     marks = Mark(int(result.marks[row]))
     basis = next((words for mark, words in VAPOUR_BASIS.items() if marks & mark), "as read")
+    if vessel.is_blanketed:
+        basis = BESIDE_BLANKET if result["vapour_pressure"][row] < at_row(measured.state.pressure, row) else NO_BLANKET
     virial = ("virial equation", "definition")
     yield _step("capacity", "V_total", vessel.capacity, "m³", "whole vessel, unstrained", "definition")
     yield _step("full shell factor", "K_T", result["full_factor"][row], "1", "1 + ε_x + ε_y + ε_z", STRAIN)
@@ -204,6 +208,8 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
         f"absolute; {basis}",
         "as read",
     )
+    if vessel.is_blanketed:
+        basis = "as read" if math.isfinite(at_row(measured.state.vapour_temperature, row)) else "that of the liquid"
     yield _step("vapour temperature", "T_v", result["vapour_temperature"][row] - 273.15, "°C", basis, "as read")
     mixture = measured.mixture(row)
     series = virial_columns((mixture,))

@@ -202,7 +202,7 @@ def _measured(mixture: VapourMixture, correlated: Compiled) -> Compiled:
     second = _through(mixture.measured_second, t)
     if mixture.measured_third is not None:
         third = _through(mixture.measured_third, t)
-        third_notes = (Note("third virial coefficient", "C", "measured", "given with the substance"),)
+        third_notes: tuple[Note, ...] = (Note("third virial coefficient", "C", "measured", "given with the substance"),)
     else:
         third = correlated_coefficients(
             mixture.substances, mixture.fractions, t, mixture.second_virial, mixture.third_virial

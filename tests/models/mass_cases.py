@@ -137,6 +137,13 @@ NITROGEN = Case(
     "gas receiver", Method.VAPOUR, None, strained("horizontal_cylinder", 2.0, 0.02),
     {"vapour_temperature": 297.2, "pressure": 3.1e6}, "nitrogen", capacity=50.0,
 )  # fmt: skip
+PENTANE = {"expansivity": (1.6e-3,), "compressibility": 2.2e-9}
+BLANKETED = Case(
+    "blanketed, all measured", TWO_PHASE | Method.BLANKET, UPRIGHT, PENTANE | strained("vertical_cylinder", 30.0, 0.01),
+    {"level": 6.2, "liquid_temperature": 293.4, "vapour_temperature": 297.1, "pressure": ATMOSPHERE + 5e3,
+     "density": 626.1, "density_temperature": 293.15},
+    "n-pentane", "n-pentane",
+)  # fmt: skip
 FLOATING = replace(OIL, name="floating roof", method=Method.LIQUID | Method.ROOF, vessel=CRUDE | ROOF)
 DEDUCTED = replace(
     FLOATING, name="floating roof that the table deducts", curve=_net_table(),
@@ -157,5 +164,8 @@ CASES = [
     replace(BULLET_CASE, name="bullet, no pressure").reads(vapour_temperature=math.nan, pressure=math.nan),
     SPHERE_CASE,
     replace(SPHERE_CASE, name="sphere, no pressure").reads(vapour_temperature=math.nan, pressure=math.nan),
+    BLANKETED,
+    replace(BLANKETED, name="blanketed, no vapour temperature").reads(vapour_temperature=math.nan),
+    replace(BLANKETED, name="a blanket that is gone").reads(vapour_temperature=312.0),
     NITROGEN,
 ]  # fmt: skip

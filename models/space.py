@@ -1,0 +1,223 @@
+"""What stands above a liquid, or fills a vessel of gas: its conditions, its mass, its sensitivities."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from models.arrays import BoolArray, FloatArray, IntArray
+from models.columns import Mark, Method, Step
+from models.constants import GAS_CONSTANT
+from models.vapour.series import VapourState
+
+LEFT_OUT_SHARE = 0.01  # of the liquid; a vapour that cannot be computed is left out up to this bound
+SATURATION_COVERAGE = 2.0  # standard uncertainties
+# Of a vapour beside a blanket, for each pascal of the blanket: what the two gases do to each other is left out.
+# Enhancement factors at 1 to 2 bar are 1.005 to 1.04: J. M. Prausnitz et al., 3rd ed., 1999, ch. 5 (from memory).
+BLANKET_SHARE = 0.02 / 1e5  # 1/Pa
+
+
+def vapour_conditions(step: Step, method: Method) -> tuple[FloatArray, FloatArray, BoolArray, BoolArray]:
+    """Pressure and temperature at which the vapour is taken, and where they are saturated ones.
+
+    In this order: as measured; at the measured pressure, saturated; without a pressure, saturated at the
+    liquid's temperature. A vapour above saturation beside its liquid is taken as saturated at its pressure.
+
+    Parameters
+    ----------
+    step : Step
+        The block; marked where the pressure and the temperatures do not agree. [SI]
+    method : Method
+        Of its vessels. [1]
+
+    Returns
+    -------
+    tuple of FloatArray and BoolArray
+        Pressure, temperature, and where the vapour is saturated at its pressure, and at its liquid. Of a
+        blanketed space: partial pressure, temperature, where the product's vapour is saturated beside its
+        blanket, and where its temperature is the liquid's. [Pa, K, 1, 1]
+    """
+    v, s = step.vessels, step.state
+    nowhere = np.zeros(step.marks.shape, dtype=bool)
+    pressure = np.broadcast_to(s.pressure, nowhere.shape)
+    temperature = np.broadcast_to(s.vapour_temperature, nowhere.shape)
+    if method & Method.BLANKET:
+        return _beside_blanket(step)
+    if not method & Method.SATURATION or not method & Method.LIQUID:
+        return pressure, temperature, nowhere, nowhere
+    assert v.saturation is not None
+    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    at_liquid, liquid_slope = v.saturation.pressure(s.liquid_temperature, row)
+    by_liquid = np.isnan(pressure)
+    pressure = np.where(by_liquid, at_liquid, pressure)
+    temperature = np.where(by_liquid, s.liquid_temperature, temperature)
+    at_vapour, slope = v.saturation.pressure(temperature, row)
+    above = (pressure > at_vapour) & ~by_liquid
+    by_pressure = np.isnan(temperature) | above
+    if by_pressure.any():
+        boiling = v.saturation.temperature(pressure, row)
+        temperature = np.where(by_pressure, boiling, temperature)
+    tolerance = SATURATION_COVERAGE * np.hypot(
+        s.pressure_uncertainty, np.where(np.isfinite(slope), slope, liquid_slope) * s.temperature_uncertainty
+    )
+    measured = np.isfinite(s.pressure) & ~by_liquid
+    known = np.isfinite(at_vapour)
+    lower = np.where(known, np.minimum(at_liquid, at_vapour), at_liquid)
+    upper = np.where(known, np.maximum(at_liquid, at_vapour), at_liquid)
+    step.mark(measured & (s.pressure < lower - tolerance), Mark.SATURATION_LOW)
+    step.mark(measured & (s.pressure > upper + tolerance), Mark.SATURATION_HIGH)
+    step.mark(above, Mark.VAPOUR_SATURATED)
+    step.mark(by_pressure & ~above, Mark.VAPOUR_AT_PRESSURE)
+    step.mark(by_liquid, Mark.VAPOUR_AT_LIQUID_TEMPERATURE)
+    # The liquid's pressure is that of the space above it, also where that is the vapour pressure.
+    step.state = replace(s, pressure=pressure)
+    return pressure, temperature, by_pressure, by_liquid
+
+
+def _beside_blanket(step: Step) -> tuple[FloatArray, FloatArray, BoolArray, BoolArray]:
+    """The product's own pressure in a space that it shares with a blanket: its vapour pressure, by Dalton.
+
+    A vapour pressure that reaches the pressure of the space has driven the blanket out: all is product.
+    """
+    v, s = step.vessels, step.state
+    assert v.saturation is not None
+    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    unread = np.broadcast_to(np.isnan(s.vapour_temperature), step.marks.shape)
+    temperature = np.where(unread, s.liquid_temperature, s.vapour_temperature)
+    boiling, slope = v.saturation.pressure(temperature, row)
+    alone = np.broadcast_to(boiling >= s.pressure, step.marks.shape)
+    tolerance = SATURATION_COVERAGE * np.hypot(s.pressure_uncertainty, slope * s.temperature_uncertainty)
+    step.mark(alone & (s.pressure < boiling - tolerance), Mark.SATURATION_LOW)
+    return np.where(alone, s.pressure, boiling), temperature, ~alone, unread
+
+
+def vapour(step: Step, method: Method) -> None:
+    """Vapour volume, its density by the virial equation, its mass and derivatives.
+
+    Parameters
+    ----------
+    step : Step
+        The block, with the conditions of its vapour; results and sensitivities are added to it. [SI]
+    method : Method
+        Of its vessels. [1]
+
+    Notes
+    -----
+    With p the vapour's own pressure, which beside a blanket is its vapour pressure at T_v::
+
+        M_v = (K_T V_T − K V(h)) p m / (Z(p, T_v) R T_v)        (1)
+
+    A blanket is taken to neither thin nor enrich the vapour (Dalton's law); what that leaves out stands in
+    the model's uncertainty.
+
+    References
+    ----------
+    .. [1] J. M. Smith, H. C. Van Ness, M. M. Abbott, "Introduction to Chemical Engineering
+       Thermodynamics", 7th ed., 2005, ch. 3 (virial equation) and ch. 10 (Dalton and Raoult).
+    """
+    v, s, out = step.vessels, step.state, step.out
+    assert v.vapour is not None
+    assert step.conditions is not None
+    pressure, temperature, by_pressure, by_liquid = step.conditions
+    rows = v.vapour_row if s.vapour_row is None else s.vapour_row
+    row = rows if len(rows) > 1 else int(rows[0])
+    gas = v.vapour.state(pressure, temperature, row)
+    space = out["full_factor"] * v.capacity - out["shell_factor"] * out["tank_volume"]
+    if method & Method.LIQUID:
+        step.mark(space <= 0.0, Mark.LIQUID_FULL)
+        space = np.where(space > 0.0, space, np.where(np.isnan(space), np.nan, 0.0))
+    mass = gas.density * space  # eq. 1
+    out.update(
+        vapour_volume=space, compressibility_factor=gas.compressibility, vapour_density=gas.density,
+        vapour_mass=mass, vapour_temperature=temperature, vapour_pressure=pressure,
+        reduced_density=gas.reduced_density,
+    )  # fmt: skip
+    _guard(step, method, gas, pressure, temperature, space, row)
+    mass = out["vapour_mass"]  # without what was left out
+    by_p = mass * gas.pressure_sensitivity / pressure
+    by_t = mass * gas.temperature_sensitivity / temperature
+    _vapour_sensitivities(step, method, gas, by_p, by_t, (by_pressure, by_liquid))
+
+
+def _guard(
+    step: Step, method: Method, gas: VapourState, pressure: FloatArray, temperature: FloatArray,
+    space: FloatArray, row: IntArray | int,
+) -> None:  # fmt: skip
+    """What the virial equation says of itself, and a small vapour that it refuses, left out."""
+    v, out = step.vessels, step.out
+    assert v.vapour is not None
+    step.mark((gas.verdict == 1) | (gas.verdict == 2), Mark.GUARD_WIDE)
+    refused = np.asarray(gas.verdict >= 3) & np.isfinite(pressure) & np.isfinite(temperature)
+    if method & Method.LIQUID:
+        nothing = np.isnan(out["vapour_density"])
+        sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
+        known = np.where(np.isfinite(pressure), pressure, step.state.pressure)
+        # Twice the ideal gas bounds the vapour up to Z = 0.5, where the guard has long refused.
+        bound = 2.0 * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
+        small = nothing & (bound <= LEFT_OUT_SHARE * np.abs(out["liquid_mass"]))
+        step.mark(small, Mark.VAPOUR_LEFT_OUT)
+        out["vapour_mass"] = np.where(small, 0.0, out["vapour_mass"])
+        step.sens["vapour_left_out"] = np.where(small, bound, 0.0)
+        refused = refused & ~small
+    step.mark(refused & (gas.verdict == 3), Mark.GUARD_REFUSED)
+    step.mark(refused & (gas.verdict == 4), Mark.NO_VAPOUR_ROOT)
+    step.mark(refused & (gas.verdict == 5), Mark.OUTSIDE_METHOD)
+
+
+def _vapour_sensitivities(
+    step: Step, method: Method, gas: VapourState, by_p: FloatArray, by_t: FloatArray,
+    saturated: tuple[BoolArray, BoolArray],
+) -> None:  # fmt: skip
+    """Derivatives of the vapour mass, added to those of the liquid."""
+    v, out, sens = step.vessels, step.out, step.sens
+    mass, density = out["vapour_mass"], np.where(np.isfinite(gas.density), gas.density, 0.0)
+    by_p, by_t = np.where(np.isfinite(by_p), by_p, 0.0), np.where(np.isfinite(by_t), by_t, 0.0)
+    reach = sens.get("_reach", np.ones(1))
+    volume = out["tank_volume"]
+    shell = density * v.expansion * (3.0 * v.capacity - (3.0 - reach) * volume)
+    pressed = density * (v.strain_sum * v.capacity - (v.strain_sum - v.strain_vertical * reach) * volume)
+    sens["ambient_temperature"] = sens.get("ambient_temperature", 0.0) + (1.0 - v.liquid_weight) * shell
+    sens["vapour_model"] = mass * np.where(np.isfinite(gas.model_uncertainty), gas.model_uncertainty, 0.0)
+    sens["molar_mass"] = mass
+    sens["capacity"] = sens.get("capacity", 0.0) + mass
+    sens["pressure"] = sens.get("pressure", 0.0) + pressed
+    if not method & Method.LIQUID:
+        sens["pressure"] = sens["pressure"] + by_p
+        sens["vapour_temperature"] = by_t + v.liquid_weight * shell
+        return
+    sens["level"] = sens["level"] - density * out["shell_factor"] * out["surface_area"]
+    sens["capacity_local"] = sens["capacity_local"] - density * out["shell_factor"] * volume
+    sens["liquid_temperature"] = sens["liquid_temperature"] + v.liquid_weight * shell
+    sens["vapour_temperature"] = by_t
+    by_pressure, by_liquid = saturated
+    if method & Method.BLANKET:
+        _blanket_sensitivities(step, by_p, by_t, by_pressure, by_liquid)
+        return
+    if not (by_pressure.any() or by_liquid.any()):
+        sens["pressure"] = sens["pressure"] + by_p
+        return
+    assert v.saturation is not None
+    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    _, slope = v.saturation.pressure(out["vapour_temperature"], row)
+    along = np.where(by_pressure, by_t / slope, 0.0)
+    by_pressure_alone = sens["pressure"] + by_p
+    sens["pressure"] = np.where(by_liquid, 0.0, by_pressure_alone + along)
+    along_liquid = by_t + by_pressure_alone * slope
+    sens["liquid_temperature"] = sens["liquid_temperature"] + np.where(by_liquid, along_liquid, 0.0)
+
+
+def _blanket_sensitivities(
+    step: Step, by_p: FloatArray, by_t: FloatArray, beside: BoolArray, unread: BoolArray
+) -> None:
+    """Beside its blanket a vapour follows its temperature alone, once as a gas and once as its vapour pressure."""
+    v, s, out, sens = step.vessels, step.state, step.out, step.sens
+    assert v.saturation is not None
+    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    _, slope = v.saturation.pressure(out["vapour_temperature"], row)
+    whole = np.where(beside, by_t + by_p * np.where(np.isfinite(slope), slope, 0.0), by_t)
+    sens["pressure"] = sens["pressure"] + np.where(beside, 0.0, by_p)
+    sens["vapour_temperature"] = whole
+    sens["liquid_temperature"] = sens["liquid_temperature"] + np.where(unread, whole, 0.0)
+    blanket = np.where(beside & np.isfinite(s.pressure), s.pressure - out["vapour_pressure"], 0.0)
+    sens["vapour_model"] = np.hypot(sens["vapour_model"], out["vapour_mass"] * BLANKET_SHARE * blanket)
