@@ -9,6 +9,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -68,9 +69,17 @@ class Moves:
     meters: Mapping[str, Meter]
     spaces: Mapping[str, float]
 
-    def of(self, vessel: str) -> list[tuple[Ticket, Transfer]]:
+    def of(self, vessel: str) -> Sequence[tuple[Ticket, Transfer]]:
         """Those with an end at a vessel."""
-        return [(ticket, body) for ticket, body in self.tickets if vessel in (body.from_, body.to)]
+        return self._by_end.get(vessel, ())
+
+    @cached_property
+    def _by_end(self) -> dict[str, list[tuple[Ticket, Transfer]]]:
+        found: dict[str, list[tuple[Ticket, Transfer]]] = {}
+        for ticket, body in self.tickets:
+            for end in {body.from_, body.to}:
+                found.setdefault(end, []).append((ticket, body))
+        return found
 
     def part(
         self, ticket: Ticket, first: int, last: int, standard: Mapping[str, Estimate], asked: int | None = None,

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime, time, timedelta
+from functools import cached_property
 from zoneinfo import ZoneInfo
 
 from sqlalchemy import Connection
@@ -37,7 +38,13 @@ class SiteInForce:
 
     def vessel(self, name: str) -> CompiledVessel | None:
         """One vessel in service, by its id."""
-        return next((vessel for vessel in self.vessels if vessel.name == name), None)
+        row = self.rows.get(name)
+        return None if row is None else self.vessels[row]
+
+    @cached_property
+    def rows(self) -> dict[str, int]:
+        """Place of each vessel in service among them, by its id."""
+        return {vessel.name: row for row, vessel in enumerate(self.vessels)}
 
 
 def named(kind: str, one: Definition) -> InForce:
