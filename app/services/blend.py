@@ -61,6 +61,23 @@ class _Receipt:
 
 
 @dataclass(frozen=True)
+class _Since:
+    """What came and what left since a sample, in the order of time; of what left the standard volume."""
+
+    events: tuple[_Receipt | float, ...]
+
+    @property
+    def received(self) -> list[_Receipt]:
+        """What came."""
+        return [one for one in self.events if isinstance(one, _Receipt)]
+
+    @property
+    def delivered(self) -> float:
+        """Standard volume of what left. [m³]"""
+        return math.fsum(one for one in self.events if isinstance(one, float))
+
+
+@dataclass(frozen=True)
 class _Content:
     """A content as its samples describe it: standard volume with its water, the water's share, density without."""
 
@@ -84,9 +101,9 @@ def stale(measured: Measured, moves: Moves, own: Own, row: int, carried: Carried
     for name, blended in (("density", _density), ("sediment_water", _water)):
         chosen = measured.chosen[name]
         if chosen.usable[row]:
-            received, delivered = _since(measured, moves, own, row, int(chosen.begins[row]), content, standard)
-            if any(one.mass != 0.0 for one in received):
-                found.append(blended(vessel.name, content, received, delivered))
+            since = _since(measured, moves, own, row, int(chosen.begins[row]), content, standard)
+            if any(one.mass != 0.0 for one in since.received):
+                found.append(blended(vessel.name, content, since))
     if not found:
         return None
     carried.warn(
@@ -119,26 +136,26 @@ def _content(measured: Measured, row: int) -> _Content | None:
 
 def _since(
     measured: Measured, moves: Moves, own: Own, row: int, begins: int, content: _Content, standard: dict[str, Estimate]
-) -> tuple[list[_Receipt], float]:
-    """Receipts since a sample began to stand, and the standard volume of what was delivered since."""
+) -> _Since:
+    """What moved between the beginning of a sample and the reading, each ticket at the middle of its time."""
     vessel, read = measured.vessel(row), int(measured.collected.at[row])
-    dense = float(measured.result["vapour_density"][row])
-    space = {vessel.name: dense} if math.isfinite(dense) else {}
-    received: list[_Receipt] = []
-    delivered = 0.0
+    events: list[tuple[int, _Receipt | float]] = []
     for ticket, body in own:
         if body.of == "water" or ticket.started_at >= read or ticket.ended_at <= begins:
             continue
-        part = moves.part(ticket, begins, read, standard, spaces=space)
+        middle = max(ticket.started_at, begins) + min(ticket.ended_at, read)
+        part = moves.part(ticket, begins, read, standard)
         mass = math.nan if part.mass is None else part.mass.value
         if part.target == vessel.name:
             density = move.own_density(ticket.name, body, vessel)
             net = mass / (content.density if density is None else density.value)
             water = _water_of(body, mass, net) if content.wet else 0.0
-            received.append(_Receipt(ticket.name, mass, None if density is None else density.value, net, water))
+            known = None if density is None else density.value
+            events.append((middle, _Receipt(ticket.name, mass, known, net, water)))
         elif part.mass is not None:
-            delivered += mass / content.density / (1.0 - content.share)
-    return received, delivered
+            events.append((middle, mass / content.density / (1.0 - content.share)))
+    events.sort(key=lambda one: (one[0], isinstance(one[1], float)))
+    return _Since(tuple(event for _, event in events))
 
 
 def _water_of(body: Transfer, mass: float, net: float) -> float:
@@ -150,32 +167,41 @@ def _water_of(body: Transfer, mass: float, net: float) -> float:
     return share / (1.0 - share) * (mass / WATER_DENSITY if by_mass else net)
 
 
-def _density(vessel: str, content: _Content, received: Sequence[_Receipt], delivered: float) -> Blend:
-    """Mass and net volume of the heel and of each receipt, deliveries at the end; or the sample's, less well known."""
+def _density(vessel: str, content: _Content, since: _Since) -> Blend:
+    """The content's density by mass and net volume; or the sample's, less well known."""
+    received = since.received
     name = f"mix:{vessel}:{received[-1].ticket}"
     if all(one.density is not None and math.isfinite(one.mass) for one in received):
-        net = _heel(content, received, delivered) * (1.0 - content.share)
-        mass = net * content.density + math.fsum(one.mass for one in received)
-        blend = mass / (net + math.fsum(one.net for one in received))
-        return Blend(blend, abs(blend - content.density) / math.sqrt(3.0), name)
+        mass, net, _ = _mixed(content, since)
+        return Blend(mass / net, abs(mass / net - content.density) / math.sqrt(3.0), name)
     share = math.fsum(one.net if math.isfinite(one.net) else content.volume for one in received)
-    return Blend(None, instruments.BLEND_DENSITY * min(1.0, share / (content.volume + delivered)), name)
+    return Blend(None, instruments.BLEND_DENSITY * min(1.0, share / (content.volume + since.delivered)), name)
 
 
-def _water(vessel: str, content: _Content, received: Sequence[_Receipt], delivered: float) -> Blend:
-    """The water's share of the heel and of each receipt, where their volumes are known."""
+def _water(vessel: str, content: _Content, since: _Since) -> Blend:
+    """The water's share of the content, where the volumes of what came are known."""
+    received = since.received
     name = f"wet:{vessel}:{received[-1].ticket}"
     if not all(math.isfinite(one.mass) for one in received):
         return Blend(None, 0.0, name)
-    heel = _heel(content, received, delivered)
-    whole = heel + math.fsum(one.net + one.water for one in received)
-    share = (heel * content.share + math.fsum(one.water for one in received)) / whole
+    _, net, water = _mixed(content, since)
+    share = water / (net + water)
     return Blend(None, 0.0, name, share, abs(share - content.share) / math.sqrt(3.0), name)
 
 
-def _heel(content: _Content, received: Sequence[_Receipt], delivered: float) -> float:
-    """Standard volume of what was there before the receipts."""
-    return max(0.0, content.volume + delivered - math.fsum(one.net + one.water for one in received))
+def _mixed(content: _Content, since: _Since) -> tuple[float, float, float]:
+    """Mass, net volume and water of a heel that was mixed with what came; what left was as the content was then."""
+    came = math.fsum(one.net + one.water for one in since.received)
+    heel = max(0.0, content.volume + since.delivered - came)
+    net, water = heel * (1.0 - content.share), heel * content.share
+    mass = net * content.density
+    for one in since.events:
+        if isinstance(one, _Receipt):
+            mass, net, water = mass + one.mass, net + one.net, water + one.water
+        elif net + water > one:  # else nothing would be left, which the level denies
+            kept = 1.0 - one / (net + water)
+            mass, net, water = mass * kept, net * kept, water * kept
+    return mass, net, water
 
 
 def _together(found: Sequence[Blend], content: _Content) -> Blend:

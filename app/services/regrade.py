@@ -3,10 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from typing import Any
+
+import numpy as np
+from sqlalchemy import Connection
 
 from app.schemas.meter import Meter
 from app.services import move
-from app.services.carry import vapours
+from app.services.carry import measure_at, vapours
+from app.services.compile import CompiledVessel
+from app.services.explain import inputs_read
+from app.services.in_force import SiteInForce, site_in_force
 from app.services.instants import Period
 from app.services.judge import Piece, Regrade, end_of
 from app.services.measure import standard_density
@@ -18,26 +25,74 @@ from models.estimate import Estimate, combine
 
 
 class Moving:
-    """The tickets of a period and what is needed to turn them into mass."""
+    """The tickets of a period and what is needed to turn them into mass.
 
-    def __init__(self, tickets: Sequence[Ticket], closing: Stock, meters: Mapping[str, Meter]) -> None:
+    A ticket by volume that brings no density takes that of the vessel which lost it, as it was when the ticket
+    began: whatever came in later, or whatever the vessel was made to hold.
+    """
+
+    def __init__(
+        self, connection: Connection, tickets: Sequence[Ticket], closing: Stock, meters: Mapping[str, Meter]
+    ) -> None:
         self.tickets = tickets
         self.meters = meters
         self.vessels = {vessel.name: vessel for vessel in closing.site.vessels}
         self.standard: dict[str, Estimate] = {}
         self.spaces: dict[str, float] = {}
+        self.then: dict[str, tuple[CompiledVessel, Estimate]] = {}
+        self.grounds: list[Any] = []
         if closing.measured is not None:
             self.spaces = vapours(closing.measured)
             for row, vessel in enumerate(closing.site.vessels):
                 self.standard[vessel.name] = standard_density(closing.measured, row)
+        for one in tickets:
+            name = _density_of(one, closing)
+            if name is not None:
+                self._measure(connection, closing.site, one, name)
+
+    def _measure(self, connection: Connection, site: SiteInForce, ticket: Ticket, vessel: str) -> None:
+        """A vessel's density when a ticket began, by the definitions and the sample of then."""
+        held = site_in_force(connection, site.site_id, site.name, ticket.started_at, site.known)
+        former = held.vessel(vessel)
+        if former is not None and former.has_liquid:
+            at = np.array([ticket.started_at], dtype=np.int64)
+            measured = measure_at(connection, site.site_id, (former,), at, site.known, self.meters)
+            self.then[ticket.name] = former, standard_density(measured, 0)
+            cited = [list(one) for one in former.definitions]
+            self.grounds.append([ticket.name, cited, inputs_read(measured, 0)])
 
     def between(self, first: int, last: int) -> list[Moved]:
         """What the tickets that ran between two instants moved then; one of no duration where it stands."""
         return [
-            move.moved(one, first, last, self.vessels, self.meters, self.standard, self.spaces)
+            self._moved(one, first, last)
             for one in self.tickets
             if one.started_at < last and (one.ended_at > first or one.started_at >= first)
         ]
+
+    def _moved(self, one: Ticket, first: int, last: int) -> Moved:
+        vessels, standard = self.vessels, self.standard
+        if one.name in self.then:
+            vessel, density = self.then[one.name]
+            vessels, standard = {**vessels, vessel.name: vessel}, {**standard, vessel.name: density}
+        return move.moved(one, first, last, vessels, self.meters, standard, self.spaces)
+
+
+def _density_of(ticket: Ticket, closing: Stock) -> str | None:
+    """The vessel whose density a ticket needs as of its beginning, where that of the close may be another."""
+    body = move.body_of(ticket)
+    if body.of == "water" or body.unmetered or body.by == "gauging" or body.density_kg_m3 is not None:
+        return None
+    name = body.to if body.from_.startswith(move.BOUNDARY) else body.from_
+    if body.mass_kg is not None or name in closing.site.junctions:
+        return None
+    row = next((i for i, one in enumerate(closing.site.vessels) if one.name == name), None)
+    if row is None or closing.measured is None or closing.site.vessels[row].since > ticket.started_at:
+        return name  # out of service, or of another substance
+    measured = closing.measured
+    sample, carried = measured.chosen["density"], measured.carried.get(row)
+    stale = carried is not None and any(one["code"] == "sample_predates_receipt" for one in carried.warnings)
+    newer = bool(sample.usable[row]) and int(sample.begins[row]) > ticket.started_at
+    return name if name == body.from_ and (newer or stale) else None
 
 
 def regraded(

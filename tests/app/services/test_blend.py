@@ -51,13 +51,20 @@ def test_densities_blend_by_volume(plant: Plant) -> None:
     assert (answer["status"], codes(answer)) == ("uncertain", ["sample_predates_receipt"])
 
 
-def test_what_left_since_was_of_the_heel(plant: Plant) -> None:
-    """80,000 kg of the heel left, 100 m³: it was 400 m³ before, and 300 + 100 m³ are there."""
+@pytest.mark.parametrize(
+    ("started", "ended", "density"),
+    [
+        ("2026-03-14T00:10", "2026-03-14T00:50", 810.0),  # before the receipt: of the heel, 300 + 100 m³ remain
+        ("2026-03-14T02:10", "2026-03-14T02:50", 808.0),  # after it: of the blend, 400 + 100 m³ were there
+        (*RECEIVED, 808.0),  # at once: as if after it
+    ],
+)
+def test_what_left_was_as_the_content_was_then(plant: Plant, started: str, ended: str, density: float) -> None:
+    """80,000 kg left, 100 m³ by the sample's 800: 400 m³ of heel and 100 m³ of 840 were there in all."""
     sampled(plant)
     came(plant, 84_000.0, density_kg_m3=840.0, **AT_15)
-    plant.ticket("out", "tk-1", "boundary:rack", *RECEIVED, mass_kg=80_000.0, mass_uncertainty_kg=0.0)
-    # Heel 400 + 100 − 100 = 400 m³ of 800, and 100 m³ of 840: 808.
-    assert holds(plant, 4.0)["standard_density_kg_m3"] == pytest.approx(808.0, rel=1e-12)
+    plant.ticket("out", "tk-1", "boundary:rack", started, ended, mass_kg=80_000.0, mass_uncertainty_kg=0.0)
+    assert holds(plant, 4.0)["standard_density_kg_m3"] == pytest.approx(density, rel=1e-12)
 
 
 def test_a_receipt_of_no_density_leaves_the_samples_and_three_on_its_share(plant: Plant) -> None:
