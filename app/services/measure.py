@@ -4,17 +4,17 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from app.services.attribute import parts_of
 from app.services.choose import Chosen, choose
 from app.services.collect import INPUTS, Collected
 from app.services.compile import (
-    DAY_US,
     CompiledVessel,
     analysed_mixture,
     boiling_pressure,
@@ -23,9 +23,9 @@ from app.services.compile import (
     stack,
 )
 from app.services.gauged import HEAD, by_head, head_sensitivities, levels_per_unit
-from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Errors, Part, at_row, capacity_parts, model_parts
-from models import instruments, units
-from models.columns import Inventory, Method, State
+from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Part, at_row
+from models import units
+from models.columns import Inventory, State
 from models.estimate import Estimate
 from models.liquid.expansivity import expansivity
 from models.mass import inventory
@@ -99,7 +99,7 @@ def measure(
         chosen["free_water"] = replace(
             water, source=np.where(wet, water.source, -1), value=np.where(wet, water.value, np.nan)
         )
-    builder = _States(collected, chosen, corrections)
+    builder = States(collected, chosen, corrections)
     state, extra = builder.build()
     vessels = stack(collected.vessels, extra)
     rows = None if len(collected.vessels) == 1 else np.arange(collected.rows, dtype=np.intp)
@@ -108,14 +108,14 @@ def measure(
     result = inventory(vessels, rows, state)
     gravity = head_sensitivities(collected.vessels, state, result, heads)
     per_unit = levels_per_unit(collected.vessels, state, result) if builder.other_means else None
-    parts = _parts(builder, state, per_unit, gravity)
+    parts = parts_of(builder, state, per_unit, gravity)
     mixtures = tuple(mixture_rows(collected.vessels, extra))
     return Measured(
         collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures, asked
     )
 
 
-class _States:
+class States:
     """Builds the chain's state from what counts in each row."""
 
     def __init__(self, collected: Collected, chosen: dict[str, Chosen], corrections: Corrections | None = None) -> None:
@@ -326,167 +326,6 @@ class _States:
         extra = tuple(dict.fromkeys(mixture for mixture in seen.values() if mixture is not None))
         place = mixture_rows(tuple(self.vessels), extra)
         return np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp), extra
-
-
-def _parts(
-    builder: _States, state: State, per_unit: Mapping[str, FloatColumns] | None, gravity: FloatColumns
-) -> list[Part]:
-    """Every error of every input, named."""
-    errors = Errors(builder.vessels, builder.collected.rows)
-    chosen, origins = builder.chosen, builder.collected.origins
-    errors.measured("level_m", "level", "level", chosen["level"], origins["level"], per_unit=per_unit)
-    if builder.by_head.any():
-        errors.add(HEAD, "level", gravity, "model", lambda row: "gravity:site", declared=lambda row: False)
-    errors.measured("free_water_level_m", "water", "water_level", chosen["free_water"], origins["free_water"])
-    errors.measured(
-        "liquid_temperature_c", "temperature", "liquid_temperature", chosen["liquid_temperature"],
-        origins["liquid_temperature"], stale=instruments.STALE_TEMPERATURE,
-    )  # fmt: skip
-    errors.measured(
-        "vapour_temperature_c", "vapour-temperature", "vapour_temperature", chosen["vapour_temperature"],
-        origins["vapour_temperature"], stale=instruments.STALE_TEMPERATURE,
-    )  # fmt: skip
-    errors.measured(
-        "pressure_kpa", "pressure", "pressure", chosen["pressure"], origins["pressure"], scale=PASCAL,
-        stale=instruments.STALE_PRESSURE_KPA,
-    )  # fmt: skip
-    capacity_parts(errors, state.level)
-    _surroundings(builder, errors)
-    _sample(builder, errors)
-    _vapour(builder, errors, state.pressure)
-    _blends(builder, errors)
-    for quantity, name in ASSUMABLE.items():
-        if quantity in builder.assumed:
-            errors.assumed(quantity, name, builder.assumed[quantity], scale=SCALES.get(quantity, 1.0))
-    errors.add(
-        "floating_roof", "roof", 1.0 / np.sqrt(12.0), "random",
-        lambda row: f"roof:{errors.vessel(row).name}:{builder.collected.at[row]}", declared=lambda row: False,
-    )  # fmt: skip
-    model_parts(errors)
-    return errors.parts
-
-
-ASSUMABLE = {
-    "level_m": "level", "liquid_temperature_c": "liquid_temperature", "pressure_kpa": "pressure",
-    "vapour_temperature_c": "vapour_temperature", "ambient_temperature_c": "ambient_temperature",
-    "free_water_level_m": "water_level", "observed_density_kg_m3": "density",
-    "sediment_water_pct": "sediment_water", "pressure_kpa_abs": "pressure",
-}  # fmt: skip
-SCALES = {"pressure_kpa": PASCAL, "pressure_kpa_abs": PASCAL, "sediment_water_pct": 0.01}
-
-
-def _surroundings(builder: _States, errors: Errors) -> None:
-    """Ambient temperature and atmosphere: the site's, shared by all of its vessels."""
-    chosen = builder.chosen
-    instead = builder.assumed.get("ambient_temperature_c", np.zeros(1, dtype=bool))
-    own, site = chosen["ambient"].usable | instead, chosen["site_ambient"].usable
-    errors.measured("ambient_temperature_c", "ambient", "ambient_temperature", chosen["ambient"],
-                    builder.collected.origins["ambient"])  # fmt: skip
-    default = instruments.DEFAULTS["ambient_temperature_c"].systematic
-    errors.add(
-        "ambient_temperature_c", "ambient_temperature", np.where(~own & site, default, 0.0), "systematic",
-        lambda row: "ambient:site", declared=lambda row: False,
-    )  # fmt: skip
-    unread = builder.ambient_unread & ~instead
-    errors.add(
-        "ambient_temperature_c", "ambient_temperature", np.where(unread, instruments.AMBIENT_UNREAD, 0.0),
-        "systematic", lambda row: f"ambient-unread:{errors.vessel(row).name}", declared=lambda row: False,
-    )  # fmt: skip
-    errors.add(
-        "pressure_kpa", "pressure", np.where(builder.at_rest, instruments.OPEN_SPACE_KPA, 0.0), "systematic",
-        lambda row: f"pressure-open:{errors.vessel(row).name}", declared=lambda row: False, scale=PASCAL,
-    )  # fmt: skip
-    read, at = chosen["barometer"], builder.collected.at
-    # Shared by the vessels of the site, not by two days: where nobody reads it, the weather is another by then.
-    errors.add(
-        "barometric_pressure_kpa_abs", "pressure", builder.weather() / PASCAL, "systematic",
-        lambda row: f"barometer:site:{at[row] // DAY_US if read.source[row] < 0 else read.taken_at[row]}",
-        scale=PASCAL,
-    )  # fmt: skip
-
-
-def _sample(builder: _States, errors: Errors) -> None:
-    """Density: the instrument's error, the sample's own, its thermometer's; or the substance's figure."""
-    chosen, origins = builder.chosen["density"], builder.collected.origins["density"]
-    texts = builder.companion_text
-
-    def sample(row: int) -> str:
-        cited = texts("density", "sample", row)
-        own = f"{errors.vessel(row).name}:{chosen.taken_at[row]}"
-        return f"sample:{cited or own}"
-
-    rows = range(errors.distinct(chosen, origins))
-    sources = [origins.of(row, int(chosen.source[row]))[1] for row in rows]
-    known = [errors.vessel(row).instrument("observed_density_kg_m3", sources[row]) for row in rows]
-    thermometers = [errors.vessel(row).instrument("observed_density_temperature_c", sources[row]) for row in rows]
-
-    def of(row: int):  # type: ignore[no-untyped-def]
-        return known[row if len(known) > 1 else 0]
-
-    sampled = builder.density_is_sample
-    for sigma, kind, name in (
-        ([k.systematic for k in known], "systematic", lambda row: f"density:{of(row).name}"),
-        ([k.random for k in known], "random", sample),
-    ):
-        errors.add(
-            "observed_density_kg_m3", "density", np.where(sampled, np.array(sigma), 0.0), kind, name,  # type: ignore[arg-type]
-            declared=lambda row: of(row).declared, instrument=lambda row: of(row).name,
-        )  # fmt: skip
-    errors.add(
-        "observed_density_temperature_c", "density_temperature",
-        np.where(sampled, np.array([t.systematic for t in thermometers]), 0.0), "systematic",
-        lambda row: f"density-temperature:{of(row).name}",
-        declared=lambda row: thermometers[row if len(thermometers) > 1 else 0].declared,
-    )  # fmt: skip
-    own_figure = ~sampled & ~builder.assumed.get("observed_density_kg_m3", np.zeros(1, dtype=bool))
-    spread = builder.of_vessels([v.density_uncertainty for v in builder.vessels])
-    errors.add(
-        "density_kg_m3", "density", np.where(own_figure & np.isfinite(spread), spread, 0.0), "systematic",
-        lambda row: f"density:substance:{errors.vessel(row).body.substance}",
-        declared=lambda row: errors.vessel(row).density_declared,
-    )  # fmt: skip
-    errors.measured("sediment_water_pct", "sediment-water", "sediment_water", builder.chosen["sediment_water"],
-                    builder.collected.origins["sediment_water"], scale=0.01)  # fmt: skip
-
-
-def _blends(builder: _States, errors: Errors) -> None:
-    """Contents that received something since their sample: what their density may be off by."""
-    blends = builder.blends
-    if not blends:
-        return
-    sigma = np.array([blends[row].sigma if row in blends else 0.0 for row in range(builder.collected.rows)])
-    errors.add(
-        "observed_density_kg_m3", "density", sigma, "model", lambda row: blends[row].name, declared=lambda row: False
-    )
-    wet = np.array([blends[row].water_sigma if row in blends else 0.0 for row in range(builder.collected.rows)])
-    errors.add(
-        "sediment_water_pct", "sediment_water", wet * 100.0, "model", lambda row: blends[row].water_name,
-        declared=lambda row: False, scale=0.01,
-    )  # fmt: skip
-
-
-def _vapour(builder: _States, errors: Errors, pressure: FloatColumns) -> None:
-    """A vapour's temperature taken from its saturation, and an analysis's share of the molar mass."""
-    two_phase = builder.of_vessels([float(bool(v.method & Method.SATURATION)) for v in builder.vessels]) > 0
-    read = builder.chosen["vapour_temperature"].usable | builder.assumed.get(
-        "vapour_temperature_c", np.zeros(1, dtype=bool)
-    )
-    read = read & np.isfinite(pressure)  # without a pressure the vapour is taken at the liquid's temperature
-    errors.add(
-        "vapour_temperature_c", "vapour_temperature",
-        np.where(two_phase & ~read, instruments.SATURATED_VAPOUR_TEMPERATURE, 0.0), "systematic",
-        lambda row: f"vapour-temperature-assumed:{errors.vessel(row).name}", declared=lambda row: False,
-    )  # fmt: skip
-    chosen, origins = builder.chosen["vapour_composition"], builder.collected.origins["vapour_composition"]
-    known = [
-        errors.vessel(row).instrument("vapour_composition", origins.of(row, int(chosen.source[row]))[1])
-        for row in range(errors.distinct(chosen, origins))
-    ]
-    share = np.array([one.systematic / 100.0 for one in known])
-    errors.add(
-        "vapour_composition", "molar_mass", np.where(builder.mixed, share, 0.0), "systematic",
-        lambda row: f"composition:{errors.vessel(row).body.substance}", declared=lambda row: False,
-    )  # fmt: skip
 
 
 def standard_density(measured: Measured, row: int) -> Estimate:
