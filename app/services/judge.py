@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -11,7 +11,7 @@ from app.schemas.site import ImbalanceLimit
 from app.services import explain
 from app.services.move import Moved
 from app.services.take_stock import Stock
-from models.balance.night import Movement, Night, Row, limits, night
+from models.balance.night import Movement, Row, limits, night
 from models.estimate import Estimate, combine
 
 if TYPE_CHECKING:
@@ -53,8 +53,11 @@ def books_of(
     named = {answer["vessel"]: answer["status"] for answer in closing.answers}
     named |= dict.fromkeys(closing.site.junctions, "measured")
     moved = {answer["vessel"]: answer.get("moved_kg") for answer in closing.answers}
+    rows = {name: row for row in result.rows for name in row.members}
+    crossed = _crossed(movements, rows)
     vessels = [
-        _vessel(name, status, closing, opening, movements, result) | {"moved_kg": moved.get(name)}
+        _vessel(name, status, closing, opening, crossed, rows.get(name), result.critical)
+        | {"moved_kg": moved.get(name)}
         for name, status in sorted(named.items())
     ]
     flagged = {one["vessel"] for one in vessels if one["flagged"]}
@@ -92,24 +95,40 @@ def _number(value: float) -> float | None:
 
 def read_at(stock: Stock, vessel: str) -> int | None:
     """When the inventory of a vessel was read."""
-    names = [one.name for one in stock.site.vessels]
-    if stock.measured is None or vessel not in names:
-        return None
-    return explain.read_at(stock.measured, names.index(vessel))
+    row = stock.site.rows.get(vessel)
+    return None if stock.measured is None or row is None else explain.read_at(stock.measured, row)
 
 
 def _sum(masses: Sequence[Estimate]) -> float:
     return math.fsum(mass.value for mass in masses)
 
 
+@dataclass(frozen=True)
+class _Crossed:
+    """What came into each vessel and what went out of it; of merged ones into and out of the whole, by its first."""
+
+    received: Mapping[str | None, Sequence[Estimate]]
+    delivered: Mapping[str | None, Sequence[Estimate]]
+
+
+def _crossed(movements: Sequence[Movement], rows: Mapping[str, Row]) -> _Crossed:
+    first = {name: row.members[0] for name, row in rows.items()}
+    received: dict[str | None, list[Estimate]] = {}
+    delivered: dict[str | None, list[Estimate]] = {}
+    for one in movements:
+        source, target = first.get(one.source or "", one.source), first.get(one.target or "", one.target)
+        if one.mass is not None and source != target:
+            received.setdefault(target, []).append(one.mass)
+            delivered.setdefault(source, []).append(one.mass)
+    return _Crossed(received, delivered)
+
+
 def _vessel(
-    name: str, status: str, closing: Stock, opening: Opening, movements: Sequence[Movement], result: Night
+    name: str, status: str, closing: Stock, opening: Opening, crossed: _Crossed, row: Row | None, critical: float
 ) -> dict[str, Any]:
     """One vessel's books; merged vessels carry the book and the imbalance of the whole."""
-    row = next((one for one in result.rows if name in one.members), None)
     members = (name,) if row is None else row.members
-    received = [one.mass for one in movements if one.target in members and one.source not in members and one.mass]
-    delivered = [one.mass for one in movements if one.source in members and one.target not in members and one.mass]
+    received, delivered = crossed.received.get(members[0], ()), crossed.delivered.get(members[0], ())
     before, after = opening.masses.get(name), closing.masses[name]
     book = None
     if row is not None:
@@ -134,7 +153,7 @@ def _vessel(
         "closing_read_at": read_at(closing, name),
         "judged_with": [one for one in members if one != name],
     }
-    return entry | _verdict(name, closing, row, result.critical, max(_sum(received), _sum(delivered)))
+    return entry | _verdict(name, closing, row, critical, max(_sum(received), _sum(delivered)))
 
 
 def _unseen(row: Row) -> bool:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 from app.errors import FieldError, NotFound, Unprocessable
 from app.schemas.batch import RowError
@@ -102,7 +103,13 @@ def _known(writing: Writing, kind: str, name: str) -> bool:
 
 def body_of(ticket: Ticket) -> Transfer:
     """A stored ticket as its body again."""
-    return Transfer.model_validate_json(ticket.body)
+    return _transfer_of(ticket.body)
+
+
+@lru_cache(maxsize=20_000)
+def _transfer_of(text: str) -> Transfer:
+    """A stored text as a transfer; the same text is read once, though a ticket is asked for its parts many times."""
+    return Transfer.model_validate_json(text)
 
 
 def current(store: Store, site: str, name: str, as_of: int | None) -> tuple[Ticket, Transfer]:
