@@ -66,6 +66,9 @@ class ReconciliationRequest(Body):
             raise refusal("missing", "opening and closing come together", "closing" if self.opening else "opening")
         if self.opening is not None and self.closing is not None and self.closing <= self.opening:
             raise refusal("impossible", "closing is after opening", "closing")
+        for name, end in (("opening", self.opening), ("closing", self.closing)):
+            if end is not None and end % 1_000_000:
+                raise refusal("impossible", f"{name} falls on a whole second", name)
         return self
 
 

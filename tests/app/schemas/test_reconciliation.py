@@ -33,6 +33,7 @@ def test_period_is_taken(refusals: Any, document: dict[str, Any]) -> None:
         ({"closing": MARCH["closing"]}, "/opening", "missing"),
         ({"opening": MARCH["closing"], "closing": MARCH["opening"]}, "/closing", "impossible"),
         ({"opening": MARCH["opening"], "closing": MARCH["opening"]}, "/closing", "impossible"),
+        (MARCH | {"closing": "2026-04-01T06:00:00.5+02:00"}, "/closing", "impossible"),
         ({"day": "2026-02-29"}, "/day", "not_a_date"),
         ({"day": "14.3.2026"}, "/day", "wrong_form"),
         ({"day": "20260314"}, "/day", "wrong_form"),
