@@ -326,8 +326,8 @@ class BookChange(Answer):
         "opening_mass_kg", "closing_mass_kg", "received_kg", "delivered_kg", "restated_kg", "imbalance_kg", "flagged",
         "verdict", "measured_mass_kg",
     ] = Field(description="What changed; masses that differ by less than a gram did not")  # fmt: skip
-    before: float | bool | str | None = Field(description="As it stood in the revision before, in the field's unit")
-    after: float | bool | str | None = Field(description="As it stands in this revision, in the field's unit")
+    before: float | bool | str | None = Field(description="As it stood in the revision before [unit of the field]")
+    after: float | bool | str | None = Field(description="As it stands in this revision [unit of the field]")
     because: Items[Because] = Field(
         description="What it comes from. An opening is the close of the night before: its causes are what changed "
         "that close. A judgement rests on the masses, or on the other vessels that it was made beside"

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Set
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any, Literal, NamedTuple
@@ -122,9 +122,15 @@ class Compared:
             return []
         return inputs_read(stock.measured, names.index(vessel))
 
-    def readings(self, vessel: str) -> list[Cause]:
+    def density(self, vessel: str) -> list[Cause]:
+        """Why the density of what a vessel holds differs."""
+        return [*self.readings(vessel, {"observed_density_kg_m3"}), *self.definitions(vessel)]
+
+    def readings(self, vessel: str, only: Set[str] = frozenset()) -> list[Cause]:
         """Values that counted on one side only and were recorded, or withdrawn, in between."""
-        before, after = (self._inputs(stock, vessel) for stock in self.stocks)
+        before, after = (
+            [one for one in self._inputs(stock, vessel) if not only or one[0] in only] for stock in self.stocks
+        )
         differing = [one for one in before if one not in after] + [one for one in after if one not in before]
         if not differing:
             return []

@@ -212,9 +212,11 @@ class Revised:
         if said.get("meter"):
             found += self.closing.meter(said["meter"])
         if "mass_kg" not in said:
-            held = {vessel.name for vessel in self.closing.stocks[1].site.vessels}
-            for end in sorted(ends(one.body) & held):
-                found += self.closing.definitions(end) if said.get("density_kg_m3") else self.closing.of(end)
+            sides = (Side(side.known, None, side.method) for side in self.sides)
+            then = Compared(self.connection, self.site_id, self.site, one.started_at, *sides, self.book.recorded_at)
+            for end in sorted(ends(one.body) & {vessel.name for vessel in self.closing.stocks[1].site.vessels}):
+                known = said.get("density_kg_m3")
+                found += self.closing.definitions(end) if known else self.closing.density(end) + then.density(end)
         return merged(found)
 
     def _tickets_of(self, vessel: str, sides: tuple[Side, Side]) -> list[Cause]:

@@ -347,7 +347,8 @@ def test_a_revision_says_what_it_changed_and_why(site):
     assert cause["recorded_at"].endswith("Z") and "transfer" not in closing
     assert (found["changes"][2]["before"], found["changes"][2]["after"]) == (False, True)
     assert len(found["words"]) == 4
-    assert found["words"][0].startswith("tk-1: closing mass 100,000 → 101,000 kg because the level of tk-1 of 2026-05-29T")
+    line = "tk-1: closing mass 100,000 → 101,000 kg because the level of tk-1 of 2026-05-29T00:00:00Z was revised on "
+    assert found["words"][0].startswith(line)
 
 
 @pytest.mark.parametrize("name", ["2026-05-29", "2026-05-28.2"])

@@ -153,6 +153,20 @@ def test_a_proving_changes_the_tickets_of_its_meter(nights: Plant) -> None:
     assert "because the definition of meter m-1 was changed on " in found["words"][0]
 
 
+def test_a_density_that_came_changes_a_ticket_by_volume(nights: Plant) -> None:
+    """10 m³ that took the substance's 800 kg/m³, and then a sample of 810 of the night before: 8,100 kg."""
+    nights.ticket("t-1", "tk-1", RACK, "2026-03-14T08:00", "2026-03-14T09:00", standard_volume_m3=10.0)
+    nights.close("2026-03-14")
+    sample = {"observed_density_kg_m3": 810.0, "observed_density_temperature_c": 15.0}
+    nights.read("tk-1", "2026-03-13T08:00", "lab", **sample)
+    nights.close("2026-03-14")
+    found = told(nights, "2026-03-14")
+    assert fields(found, "t-1")["measured_mass_kg"] == pytest.approx((8_000.0, 8_100.0))
+    (ticket,) = (one for one in found["changes"] if one.get("transfer") == "t-1")
+    subjects = {cause["subject"] for cause in ticket["because"]}
+    assert subjects == {f"tk-1 {quantity} 2026-03-13T08:00:00Z from lab" for quantity in sample}
+
+
 def test_a_table_dated_back_is_a_definition_and_no_loss(nights: Plant) -> None:
     """A box 10.1 m long from seven in the morning: the close is 1 % more, and the opening is restated by as much."""
     shape = {"kind": "box", "length_m": 10.1, "width_m": 10.0, "height_m": 10.0}

@@ -328,12 +328,12 @@ def test_every_value_belongs_to_a_series_and_a_recording(store: Store, site_id: 
 
 
 def test_what_was_recorded_in_between_is_found_by_its_key(store: Store, site_id: str) -> None:
-    """A key that came and was revised is found once, at its last revision, and as new; one of before is no longer new."""
+    """A key that came and was revised is found once, at its last revision, as new; one of before is not new."""
     level = ("tk-1", "level_m", "radar")
     density = ("tk-1", "observed_density_kg_m3", "lab")
 
     def write(*values: Value) -> int:
-        with store.writing(site_id, deed="test") as writing:
+        with store.writing(site_id, create=True) as writing:
             readings.write_values(writing, values)
             return writing.recorded_at
 
