@@ -108,7 +108,9 @@ def measure_at(
     first = collect(connection, site_id, vessels, asked, known)
     ahead = np.full(rows, ALWAYS) if closing else None
     instants, empties, scales = _read_at(first, choices(first, ahead), asked)
-    collected = first if (instants == asked).all() else collect(connection, site_id, vessels, instants, known)
+    collected = first
+    if (instants != asked).any():
+        collected = collect(connection, site_id, vessels, instants, known, first.slots)
     _spend(collected, asked - instants)
     within = np.full(rows, ALWAYS) if closing else np.maximum(asked - instants, 0)
     measured = measure(collected, ahead=within, asked=asked)

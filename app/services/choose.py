@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -67,7 +68,7 @@ class Chosen:
     quality: IntColumns
     contenders: IntColumns
 
-    @property
+    @cached_property
     def usable(self) -> NDArray[np.bool_]:
         """True where a value counts."""
         return self.source >= 0

@@ -120,10 +120,14 @@ class Slot:
 
 
 def collect(
-    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], at: Instants, known: int
-) -> Collected:
-    """Candidates of many vessels, each at its own instant, or of one vessel at many."""
-    slots = _slots(connection, site_id, vessels)
+    connection: Connection, site_id: int, vessels: tuple[CompiledVessel, ...], at: Instants, known: int,
+    slots: Sequence[Slot] | None = None,
+) -> Collected:  # fmt: skip
+    """Candidates of many vessels, each at its own instant, or of one vessel at many.
+
+    ``slots`` are those of an earlier collection of the same vessels, at other instants.
+    """
+    slots = _slots(connection, site_id, vessels) if slots is None else slots
     collected = _frame(slots, at, vessels)
     passing = [slot for slot in slots if not slot.spec.sample]
     if len(vessels) == 1 and len(at) > 1:
@@ -166,8 +170,9 @@ def _slots(connection: Connection, site_id: int, vessels: tuple[CompiledVessel, 
     for owner, items in by_owner.items():
         items.sort(key=lambda item: (item.quantity, item.source))
         rows = every if owner == SITE else (index[owner],)
+        read = {item.quantity for item in items}
         for spec in INPUTS:
-            if spec.of_site == (owner == SITE):
+            if spec.of_site == (owner == SITE) and not read.isdisjoint(spec.quantities):
                 slots.extend(_owner_slots(spec, owner, items, rows, vessels[rows[0]]))
     return slots
 

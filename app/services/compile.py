@@ -137,21 +137,16 @@ class CompiledVessel:
 
     def instrument(self, quantity: str, source: str, at: int | None = None) -> Instrument:
         """Errors of a quantity from a source when it was read: the source's own, the vessel's, or the defaults."""
-        default = instruments.DEFAULTS.get(quantity)
-        random = default.random if default else 0.0
-        systematic = default.systematic if default else 0.0
-        own = f"{self.name}/{source}" if source else self.name
-        declared = _declared(self.text_at(at), quantity, source)
-        if declared is None:
-            return Instrument(own, random, systematic, 0.0, declared=False)
-        since = f"@{declared.calibrated_at}" if declared.calibrated_at is not None else ""
-        return Instrument(
-            (declared.instrument or own) + since,
-            random if declared.random is None else declared.random,
-            systematic if declared.systematic is None else declared.systematic,
-            declared.offset or 0.0,
-            declared=declared.random is not None or declared.systematic is not None,
-        )
+        if self.history:
+            return _instrument(self.name, self.text_at(at), quantity, source)
+        known = self._instruments.get((quantity, source))
+        if known is None:
+            known = self._instruments[quantity, source] = _instrument(self.name, self.body, quantity, source)
+        return known
+
+    @cached_property
+    def _instruments(self) -> dict[tuple[str, str], Instrument]:
+        return {}
 
     @property
     def compressibility(self) -> float:
@@ -174,6 +169,24 @@ class CompiledVessel:
         """Which table the capacity comes from: a new table has a new error, another text of the vessel not."""
         said = [self.body.shape.model_dump_json(), [list(row) for row in self.body.deadwood], self.body.gauging.datum_m]
         return hashlib.sha256(json.dumps(said).encode()).hexdigest()[:8]
+
+
+def _instrument(vessel: str, text: Vessel, quantity: str, source: str) -> Instrument:
+    default = instruments.DEFAULTS.get(quantity)
+    random = default.random if default else 0.0
+    systematic = default.systematic if default else 0.0
+    own = f"{vessel}/{source}" if source else vessel
+    declared = _declared(text, quantity, source)
+    if declared is None:
+        return Instrument(own, random, systematic, 0.0, declared=False)
+    since = f"@{declared.calibrated_at}" if declared.calibrated_at is not None else ""
+    return Instrument(
+        (declared.instrument or own) + since,
+        random if declared.random is None else declared.random,
+        systematic if declared.systematic is None else declared.systematic,
+        declared.offset or 0.0,
+        declared=declared.random is not None or declared.systematic is not None,
+    )
 
 
 def _declared(body: Vessel, quantity: str, source: str) -> Declared | None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import ChainMap
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -73,7 +74,7 @@ class Moving:
         vessels, standard = self.vessels, self.standard
         if one.name in self.then:
             vessel, density = self.then[one.name]
-            vessels, standard = {**vessels, vessel.name: vessel}, {**standard, vessel.name: density}
+            vessels, standard = ChainMap({vessel.name: vessel}, vessels), ChainMap({vessel.name: density}, standard)
         return move.moved(one, first, last, vessels, self.meters, standard, self.spaces)
 
 
@@ -85,7 +86,7 @@ def _density_of(ticket: Ticket, closing: Stock) -> str | None:
     name = body.to if body.from_.startswith(move.BOUNDARY) else body.from_
     if body.mass_kg is not None or name in closing.site.junctions:
         return None
-    row = next((i for i, one in enumerate(closing.site.vessels) if one.name == name), None)
+    row = closing.site.rows.get(name)
     if row is None or closing.measured is None or closing.site.vessels[row].since > ticket.started_at:
         return name  # out of service, or of another substance
     measured = closing.measured
