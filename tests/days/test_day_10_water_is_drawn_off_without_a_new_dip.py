@@ -105,6 +105,11 @@ def test_a_dip_that_is_entered_a_day_late_revises_the_night(tank):
     assert book["imbalance_uncertainty_kg"] == pytest.approx(math.sqrt(2.0) * KG_PER_MM, abs=0.5)
     assert tank.inventory(CLOSED).of("tk-10")["free_water_volume_m3"] == pytest.approx(20.0, abs=1e-6)
     assert tank.book("2026-03-13.1").of("tk-10")["imbalance_kg"] == pytest.approx(15 * T, abs=0.5)
+    told = {one["field"]: one for one in tank.changes("2026-03-13.2")}
+    closing = told["closing_mass_kg"]
+    assert (closing["vessel"], closing["before"], closing["after"]) == ("tk-10", 5_865 * T, 5_850 * T)
+    assert [one["kind"] for one in closing["because"]] == ["late_reading"]
+    assert "free_water_level_m 2026-03-14T05:30:00Z from hand" in closing["because"][0]["subject"]
 
 
 def test_a_receipt_after_the_dip_is_said_and_changes_no_number(tank):

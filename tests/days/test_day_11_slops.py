@@ -126,6 +126,11 @@ def test_the_next_monday_settles_it(slops):
     assert friday["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
     assert friday["imbalance_uncertainty_kg"] == pytest.approx(math.sqrt(2.0) * 0.785 * MM, abs=0.5)
     assert not any(night.flagged for night in (*before, *after))
+    # Why it is 850 kg more than it was said to be: the laboratory's two figures, drawn on the 16th.
+    closing = next(one for one in slops.changes(f"{THURSDAY}.2") if one["field"] == "closing_mass_kg")
+    assert closing["after"] - closing["before"] == pytest.approx(850.0, abs=0.5)
+    assert {one["kind"] for one in closing["because"]} == {"late_reading"}
+    assert all("2026-03-16T06:00:00Z from lab" in one["subject"] for one in closing["because"])
 
 
 def test_a_truck_that_does_not_say_its_density_still_says_its_water(slops):

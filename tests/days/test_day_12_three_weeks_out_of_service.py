@@ -73,7 +73,11 @@ def test_a_heel_that_nobody_wrote_down_is_missed_until_its_ticket_is_there(tank)
     assert night.flagged == {"tk-12"}
     assert night.of("tk-12")["imbalance_kg"] == pytest.approx(-8_000.0, abs=0.5)
     vacuum_truck(tank)
-    assert not tank.closes("2026-03-01").flagged
+    night = tank.closes("2026-03-01")
+    assert night["id"] == "2026-03-01.2" and not night.flagged
+    change = next(one for one in tank.changes("2026-03-01.2") if one.get("field") == "delivered_kg")
+    assert (change["vessel"], change["before"], change["after"]) == ("tk-12", 152_000.0, 160_000.0)
+    assert [(one["kind"], one["subject"]) for one in change["because"]] == [("late_transfer", "truck-0301")]
 
 
 def test_no_night_is_incomplete_for_a_tank_that_is_out_of_service(tank):

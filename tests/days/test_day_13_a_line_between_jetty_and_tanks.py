@@ -127,6 +127,10 @@ def test_a_line_that_nobody_renamed_is_eighteen_tonnes_short_until_it_is(jetty):
     night = jetty.closes("2026-03-13")
     assert night["id"] == "2026-03-13.2" and not night.flagged
     assert night.of("l-1")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    told = {(one.get("vessel"), one["field"]): one for one in jetty.changes("2026-03-13.2")}
+    line_closed = told["l-1", "closing_mass_kg"]
+    assert (line_closed["before"], line_closed["after"]) == (pytest.approx(150 * T), pytest.approx(168 * T))
+    assert {one["kind"] for one in line_closed["because"]} == {"definition"}
 
 
 def test_a_line_that_lies_idle_balances_exactly(jetty):

@@ -217,3 +217,18 @@ def test_a_manifold_whose_branches_are_metered_has_a_balance_of_its_own(tanks):
     # The site received 240,000 kg and holds 239,000 of them: the total sees the loss that no tank sees.
     assert night.total("gas-oil")["received_kg"] == pytest.approx(240_000.0, abs=0.5)
     assert night.total("gas-oil")["imbalance_kg"] == pytest.approx(-1_000.0, abs=0.5)
+
+
+def test_the_meters_ticket_comes_late_and_says_what_it_changed(tanks):
+    """Judged together first; the meter's slip of the morning after gives each its own balance, from 560,000 kg."""
+    morning(tanks)
+    unmetered(tanks)
+    tanks.closes("2026-03-13")
+    tanks.meter("m-p", systematic_pct=0.1)
+    assert tanks.moves("pump-0313", "tk-1", "tk-2", STARTED, ENDED, meter="m-p", mass_kg=160_000.0) == "revised"
+    assert tanks.closes("2026-03-13")["id"] == "2026-03-13.2"
+    told = [one for one in tanks.changes("2026-03-13.2") if one.get("transfer") == "pump-0313"]
+    measured = next(one for one in told if one["field"] == "measured_mass_kg")
+    assert (measured["before"], measured["after"]) == (None, pytest.approx(160_000.0, abs=0.5))
+    assert {one["kind"] for one in measured["because"]} <= {"late_transfer", "definition"}
+    assert "pump-0313" in [one["subject"] for one in measured["because"]]

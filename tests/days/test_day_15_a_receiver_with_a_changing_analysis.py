@@ -186,6 +186,10 @@ def test_an_analysis_that_comes_late_revises_the_night(receiver):
     assert second["id"] == "2026-03-13.2"
     assert abs(second.of("r-1")["imbalance_kg"]) < 0.1
     assert second.of("r-1")["status"] == "measured" and not second.flagged
+    change = next(one for one in receiver.changes("2026-03-13.2") if one["field"] == "closing_mass_kg")
+    assert (change["before"], change["after"]) == (pytest.approx(180.10, abs=0.1), pytest.approx(200.67, abs=0.1))
+    assert {one["kind"] for one in change["because"]} == {"late_reading"}
+    assert "r-1 vapour_composition 2026-03-14T05:00:00Z from lab" in [one["subject"] for one in change["because"]]
 
 
 def test_a_nitrogen_receiver_loses_nothing_by_a_cold_night(receiver):

@@ -120,3 +120,17 @@ def test_once_it_is_freed_the_doubt_is_gone(tank):
         shows(tank, at, level)
     assert told(tank, "15:00") == (False, "measured")
     assert told(tank, "12:00") == (True, "uncertain")
+
+
+def test_a_dip_that_is_entered_late_says_why_the_night_changed(tank):
+    """The hand dip of 06:10, 5.400 m, comes at noon and is newer than the radar: 4,320 t, and the night balances."""
+    pumped(tank, until=20, ended=ENDED)
+    tank.reads("tk-16", "2026-03-14 05:40", source="radar", level_m=6.001)
+    assert tank.closes("2026-03-13").flagged == {"tk-16"}
+    tank.reads("tk-16", "2026-03-14 06:00", source="hand", level_m=5.4)
+    night = tank.closes("2026-03-13")
+    assert night["id"] == "2026-03-13.2" and not night.flagged
+    assert night.of("tk-16")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    change = next(one for one in tank.changes("2026-03-13.2") if one["field"] == "closing_mass_kg")
+    assert (change["before"], change["after"]) == (pytest.approx(4_800.8 * T), pytest.approx(4_320 * T))
+    assert [one["kind"] for one in change["because"]] == ["late_reading"]

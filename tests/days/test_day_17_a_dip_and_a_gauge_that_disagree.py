@@ -119,3 +119,18 @@ def test_without_an_order_the_newest_counts_and_says_that_there_are_two(site, di
     inventory = site.inventory(AT)
     assert inventory.input("tk-17", "level_m")["source"] == "radar"
     assert "two_sources" in inventory.warnings("tk-17")
+
+
+def test_a_dip_that_is_entered_late_changes_no_book(site):
+    """The radar counts with and without it: the night stands at its first revision; the live answer has the check."""
+    tank(site, sources=ORDER)
+    site.reads("tk-17", "2026-03-13 06:00", source="radar", level_m=8.231)
+    for at, level in RADAR:
+        site.reads("tk-17", at, source="radar", level_m=level)
+    first = site.closes("2026-03-13")
+    before = site.inventory(AT)
+    site.reads("tk-17", DIPPED, source="hand", level_m=8.239)
+    second = site.closes("2026-03-13")
+    assert (second["id"], second["vessels"]) == ("2026-03-13.1", first["vessels"])
+    assert "sources_disagree" in site.inventory(AT).warnings("tk-17")
+    assert "sources_disagree" not in site.inventory(AT, as_of=before["known_at"]).warnings("tk-17")

@@ -154,3 +154,25 @@ def test_an_inch_that_would_carry_is_refused_and_named(terminal):
     assert answer.status_code == 200
     assert (told["stored"], told["rejected"]) == (1, 2)
     assert [(one["index"], one["field"]) for one in told["errors"]] == [(0, "level_m"), (2, "level_m")]
+
+
+def test_the_laboratorys_sheet_comes_late_and_says_what_it_changed(terminal):
+    """The crude counts at its own 850, then at 35.0 °API: 1,872.75 m³ × (849.0136 − 850) = −1,847 kg."""
+    table(
+        terminal,
+        "vessel,taken_at,source,level [ft-in-16],liquid_temperature [degF]",
+        f"tk-18,{OPENED},hand,23-04-11,68.0",
+        f"tk-18,{CLOSED},hand,23-04-11,66.2",
+    )
+    terminal.closes("2026-03-14")
+    table(
+        terminal,
+        "vessel,taken_at,source,observed_density [degAPI],observed_density_temperature [degF]",
+        "tk-18,2026-03-14T05:30:00-05:00,lab,35.0,60.0",
+    )
+    night = terminal.closes("2026-03-14")
+    assert night["id"] == "2026-03-14.2"
+    assert night.of("tk-18")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    change = next(one for one in terminal.changes("2026-03-14.2") if one["field"] == "closing_mass_kg")
+    assert change["after"] - change["before"] == pytest.approx(-1_847.0, abs=2.0)
+    assert "late_reading" in {one["kind"] for one in change["because"]}
