@@ -200,3 +200,9 @@ def test_the_barometers_log_sheet_is_typed_in_later(new_site):
     assert night["id"] == f"{NIGHT}.2"
     assert night.of("v-19")["imbalance_kg"] == pytest.approx(0.0, abs=0.001)
     assert site.book(f"{NIGHT}.1").of("v-19")["imbalance_kg"] == pytest.approx(GAIN, abs=0.005)
+    told = {one["field"]: one for one in site.changes(f"{NIGHT}.2")}
+    # From 377.07 + 2.0 to 74.8 + 302.0 = 376.8 kPa, and before it from 377.07 to 376.8 kPa.
+    assert told["closing_mass_kg"]["before"] == pytest.approx((ELEVATION_KPA + 302.0) * KG_PER_KPA, abs=0.005)
+    assert told["closing_mass_kg"]["after"] == pytest.approx(376.8 * KG_PER_KPA, abs=0.005)
+    for field in ("opening_mass_kg", "closing_mass_kg"):
+        assert {one["kind"] for one in told[field]["because"]} == {"late_reading"}

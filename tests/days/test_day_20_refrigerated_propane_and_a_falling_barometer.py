@@ -126,6 +126,11 @@ def test_the_barometers_chart_comes_a_day_later(tank):
     assert night["id"] == f"{NIGHT}.2"
     assert night.of("tk-20")["imbalance_kg"] == pytest.approx(0.0, abs=25.0)
     assert tank.book(f"{NIGHT}.1").of("tk-20")["imbalance_kg"] == pytest.approx(THINNER, abs=2.0)
+    told = {one["field"]: one for one in tank.changes(f"{NIGHT}.2")}
+    assert told["imbalance_kg"]["before"] == pytest.approx(THINNER, abs=2.0)
+    assert told["imbalance_kg"]["after"] == pytest.approx(0.0, abs=25.0)
+    assert {one["kind"] for one in told["closing_mass_kg"]["because"]} == {"late_reading"}
+    assert all("barometric" in one["subject"] for one in told["closing_mass_kg"]["because"])
 
 
 def test_a_liquid_too_cold_for_its_pressure_is_said(tank):

@@ -175,3 +175,7 @@ def test_the_thermometer_was_read_late(tank):
     second = tank.closes(NIGHT)
     assert second["id"] == f"{NIGHT}.2" and second["complete"]
     assert second.of("tk-21")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    told = next(one for one in tank.changes(f"{NIGHT}.2") if one["field"] == "closing_mass_kg")
+    assert told["before"] is None and told["after"] == pytest.approx(MASS, abs=0.5)
+    assert [one["kind"] for one in told["because"]] == ["late_reading"]
+    assert "liquid_temperature_c" in told["because"][0]["subject"]

@@ -141,6 +141,12 @@ def test_the_loss_that_was_found_is_a_transfer_to_the_loss_boundary(day):
     assert book["delivered_kg"] == pytest.approx(1_200.0, abs=0.01)
     assert book["imbalance_kg"] == pytest.approx(-(LOST - 1_200.0), abs=0.5)
     assert book["imbalance_uncertainty_kg"] == pytest.approx(math.hypot(150.0, 88.3), rel=0.01)
+    told = {one["field"]: one for one in day.changes(f"{NIGHT}.2") if "vessel" in one}
+    assert (told["delivered_kg"]["before"], told["delivered_kg"]["after"]) == pytest.approx((0.0, 1_200.0))
+    assert (told["flagged"]["before"], told["flagged"]["after"]) == (True, False)
+    assert [(one["kind"], one["subject"]) for one in told["delivered_kg"]["because"]] == [
+        ("late_transfer", "relief-0313")
+    ]
 
 
 def test_a_blanket_without_a_pressure_is_no_known_blanket(new_site):

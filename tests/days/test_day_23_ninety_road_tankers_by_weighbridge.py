@@ -132,3 +132,8 @@ def test_the_last_ten_slips_come_in_the_afternoon(tank):
     assert second["id"] == f"{NIGHT}.2" and not second.flagged
     assert second.of("tk-23")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
     assert tank.book(f"{NIGHT}.1").of("tk-23")["delivered_kg"] == pytest.approx(80 * MASS, abs=0.5)
+    told = next(one for one in tank.changes(f"{NIGHT}.2") if one["field"] == "delivered_kg")
+    assert (told["before"], told["after"]) == pytest.approx((80 * MASS, 90 * MASS), abs=0.5)
+    # The ten slips, and none of the eighty that were there before.
+    late = [(one["kind"], one["subject"]) for one in told["because"]]
+    assert sorted(late) == [("late_transfer", f"road-{number}") for number in range(81, 91)]

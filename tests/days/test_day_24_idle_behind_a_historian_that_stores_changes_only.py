@@ -160,6 +160,9 @@ def test_the_gauge_that_speaks_again_contradicts_a_ticket_that_never_was(site):
     assert second["id"] == "2026-03-11.2"
     assert second.of("tk-24")["imbalance_kg"] == pytest.approx(28_000.0, abs=0.5)
     assert second.flagged == {"tk-24"}
+    told = next(one for one in site.changes("2026-03-11.2") if one["field"] == "closing_mass_kg")
+    assert (told["before"], told["after"]) == pytest.approx((4_772_000.0, FULL), abs=0.5)
+    assert "late_reading" in [one["kind"] for one in told["because"]]
 
 
 def test_a_month_of_silence_is_more_than_any_level_holds(site):

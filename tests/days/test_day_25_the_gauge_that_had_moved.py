@@ -92,6 +92,9 @@ def test_with_the_offset_declared_every_night_is_even(tank):
     assert not any(night.flagged for night in nights)
     assert [night.of("tk-25")["closing_mass_kg"] for night in nights] == pytest.approx([TRUE_KG] * 5, abs=0.5)
     assert not any(night.of("tk-25").get("restated_kg") for night in nights)
+    told = next(one for one in tank.changes(f"{NIGHTS[0]}.2") if one["field"] == "closing_mass_kg")
+    assert (told["before"], told["after"]) == pytest.approx((TRUE_KG + 8_800.0, TRUE_KG), abs=0.5)
+    assert {one["kind"] for one in told["because"]} == {"definition"}
 
 
 def test_the_calibration_is_a_new_unknown_offset_in_its_night_only(tank):

@@ -84,6 +84,10 @@ def test_the_struck_ticket_revises_the_night_and_stays_readable(tank):
     assert [one["transfer"] for one in night["transfers"]] == ["road-4711"]
     # What was booked on the first evening stands as it was booked, and the slip can still be read.
     assert tank.book(f"{NIGHT}.1").of("tk-26")["imbalance_kg"] == pytest.approx(28_000.0, abs=0.5)
+    told = {one["field"]: one for one in tank.changes(f"{NIGHT}.2") if "vessel" in one}
+    assert (told["delivered_kg"]["before"], told["delivered_kg"]["after"]) == pytest.approx((56_000.0, 28_000.0))
+    assert (told["imbalance_kg"]["before"], told["imbalance_kg"]["after"]) == pytest.approx((28_000.0, 0.0), abs=0.5)
+    assert [one["subject"] for one in told["delivered_kg"]["because"]] == ["slip-4711"]
     struck = tank.get("/transfers/slip-4711")["transfer"]
     assert struck["void"] is True and struck["mass_kg"] == 28_000.0
 
