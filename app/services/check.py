@@ -142,7 +142,10 @@ def _along(
     age, series = group[0].winner.max_age, group[0].winner.series
     first, last = min(one.taken_at for one in group) - age, max(one.taken_at for one in group) + age
     course = readings.course(connection, site_id, [series], first, last, known)
-    kept = [Found(*row, 0) for row in zip(*course, strict=True)]
+    kept = [
+        Found(number, at, value, text, quality, revision, 0)
+        for number, at, value, text, quality, revision in zip(*course, strict=True)
+    ]
     times = course.taken_at
     for one in group:
         place = bisect_right(times, one.taken_at)

@@ -8,10 +8,11 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property, lru_cache
-from typing import NamedTuple
+from typing import NamedTuple, cast
 
 import numpy as np
 
+from app.schemas.instruments import Assumed
 from app.schemas.instruments import Instrument as Declared
 from app.schemas.site import Conditions, Site
 from app.schemas.substance import Component as WireComponent
@@ -111,6 +112,10 @@ class CompiledVessel:
     def has_vapour(self) -> bool:
         """Whether the substance's vapour counts in this vessel."""
         return bool(self.method & Method.VAPOUR)
+
+    def assumed(self, quantity: str) -> Assumed | None:
+        """What the definition gives for a quantity that is not read."""
+        return cast("Mapping[str, Assumed]", self.body.assumed).get(quantity)
 
     def rank(self, source: str) -> int:
         """Place of a source in the vessel's order; those not named come last, all equal without an order."""

@@ -277,8 +277,9 @@ def inputs(measured: Measured, row: int) -> list[dict[str, Any]]:
             entry["composition"] = json.loads(text)
         listed.append(entry)
     for quantity, where in measured.assumed.items():
-        if where[row]:
-            listed.append(_assumed(quantity, float(measured.vessel(row).body.assumed[quantity].value)))
+        given = measured.vessel(row).assumed(quantity)
+        if where[row] and given is not None:
+            listed.append(_assumed(quantity, float(given.value)))
     if _water_unread(measured, row):
         listed.append(_assumed("free_water_level_m", 0.0))
     return listed

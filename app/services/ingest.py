@@ -152,8 +152,8 @@ def _write(writing: Writing, rows: Sequence[tuple[int, Reading]], errors: list[R
         values.extend(own)
         owner.extend([position] * len(own))
     fates: list[set[Any]] = [set() for _ in rows]
-    for position, fate in zip(owner, readings.write_values(writing, values), strict=True):
-        fates[position].add(fate)
+    for position, became in zip(owner, readings.write_values(writing, values), strict=True):
+        fates[position].add(became)
     for (index, _), fate in zip(rows, fates, strict=True):
         if "stale_correction" in fate:
             detail = "corrects does not name the newest value of this instant: something newer stands"

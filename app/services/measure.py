@@ -144,7 +144,7 @@ class States:
     def value(self, name: str, quantity: str) -> FloatColumns:
         """What counts for an input, or what the vessel's definition assumes."""
         column = self.chosen[name].value
-        given = [vessel.body.assumed.get(quantity) for vessel in self.vessels]
+        given = [vessel.assumed(quantity) for vessel in self.vessels]
         if any(item is not None for item in given):
             instead = self.of_vessels([np.nan if item is None else item.value for item in given])
             use = ~self.chosen[name].usable & np.isfinite(instead)
@@ -257,7 +257,7 @@ class States:
     def _boiling(self, temperature: FloatColumns, where: BoolColumns) -> FloatColumns:
         """Vapour pressure at each sample's temperature, where the substance has one."""
         boiling = np.zeros(self.collected.rows)
-        for row in np.flatnonzero(where):
+        for row in np.flatnonzero(where).tolist():
             vessel = self.vessels[row if len(self.vessels) > 1 else 0]
             if vessel.boiling is None:
                 continue

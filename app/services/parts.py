@@ -155,7 +155,7 @@ class Errors:
 
 
 def _assumed_uncertainty(vessel: CompiledVessel, quantity: str) -> float:
-    assumed = vessel.body.assumed.get(quantity)
+    assumed = vessel.assumed(quantity)
     return 0.0 if assumed is None else float(assumed.standard_uncertainty)
 
 

@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from sqlalchemy import Connection
 
+from app.schemas.instruments import Instrument
 from app.schemas.meter import Meter
 from app.schemas.vessel import Vessel
 from app.services.carry import measure_at
@@ -64,7 +65,7 @@ def _differs(old: Vessel, new: Vessel) -> bool:
 
 def _with_geometry(old: CompiledVessel, new: CompiledVessel) -> CompiledVessel:
     """The former vessel with its readings, ages and substance, in the geometry of the later one."""
-    instruments = {name: one for name, one in old.body.instruments.items() if name != "capacity_pct"}
+    instruments: dict[str, Instrument] = {name: one for name, one in old.body.instruments.items() if name != "capacity_pct"}
     if "capacity_pct" in new.body.instruments:
         instruments["capacity_pct"] = new.body.instruments["capacity_pct"]
     update = {name: getattr(new.body, name) for name in GEOMETRY} | {"instruments": instruments}

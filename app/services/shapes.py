@@ -14,6 +14,7 @@ from models.errors import DefinitionError
 from models.geometry import shapes, tables
 from models.geometry.curves import Curve
 from models.geometry.heads import Head
+from models.geometry.lying import horizontal_cylinder
 from models.geometry.pieces import with_datum
 from models.geometry.shell import pressure_strain
 
@@ -41,7 +42,7 @@ def _vertical(shape: wire.VerticalCylinder) -> Curve:
 
 
 def _horizontal(shape: wire.HorizontalCylinder) -> Curve:
-    return shapes.horizontal_cylinder(
+    return horizontal_cylinder(
         diameter=shape.diameter_m, length=shape.length_m, left_head=_head(shape.left_head),
         right_head=_head(shape.right_head), tilt=math.radians(shape.tilt_deg), gauge_at=shape.gauge_at_m,
     )  # fmt: skip

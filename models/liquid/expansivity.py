@@ -38,8 +38,8 @@ def expansivity(temperature: ArrayLike, *, coefficients: Sequence[ArrayLike], or
        liquid density": β = (1/V)(∂V/∂T)_P.
     """
     t, zero = as_floats(temperature, origin)
-    result = np.zeros(np.broadcast(t, zero).shape)
-    for coefficient in reversed(coefficients):
+    result: FloatArray = np.zeros(np.broadcast(t, zero).shape)
+    for coefficient in reversed(as_floats(*coefficients)):
         result = result * (t - zero) + coefficient  # eq. 1
     return np.asarray(result)
 
@@ -90,12 +90,13 @@ def log_volume_ratio(
        Thermodynamics", 7th ed., McGraw-Hill, 2005, ch. 3 (from memory).
     """
     t, p, t_ref, p_ref, kappa = as_floats(temperature, pressure, temperature_ref, pressure_ref, compressibility)
-    here, there = t - origin, t_ref - origin
-    if len(coefficients) == 1:  # the common case, without cancellation between two integrals
-        return np.asarray(coefficients[0] * (t - t_ref) - kappa * (p - p_ref))
+    (zero,), series = as_floats(origin), as_floats(*coefficients)
+    here, there = t - zero, t_ref - zero
+    if len(series) == 1:  # the common case, without cancellation between two integrals
+        return np.asarray(series[0] * (t - t_ref) - kappa * (p - p_ref))
     thermal: FloatArray = np.zeros(np.broadcast(here, there).shape)
-    for power, coefficient in reversed(list(enumerate(coefficients, start=1))):
-        thermal = thermal + np.asarray(coefficient) * (here**power - there**power) / power
+    for power, coefficient in reversed(list(enumerate(series, start=1))):
+        thermal = thermal + coefficient * (here**power - there**power) / power
     return np.asarray(thermal - kappa * (p - p_ref))  # eq. 1
 
 
