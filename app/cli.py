@@ -153,7 +153,8 @@ def demo(and_serve: bool, port: int) -> int:
 def _load(store: Store, folder: Path) -> Loaded:
     """Load a folder under a bar with its rate and the time that remains; on a pipe, a line at the end."""
     total = rows_in(folder)
-    with click.progressbar(length=total, label=f"Loading {folder.name}", hidden=not sys.stderr.isatty(), file=sys.stderr,
+    hidden = not sys.stderr.isatty()
+    with click.progressbar(length=total, label=f"Loading {folder.name}", hidden=hidden, file=sys.stderr,
                            show_pos=True, show_eta=True) as bar:  # fmt: skip
         try:
             loaded = load_folder(store, Clock(), folder, lambda _, rows: bar.update(rows))

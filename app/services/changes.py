@@ -212,8 +212,8 @@ class Revised:
         if said.get("meter"):
             found += self.closing.meter(said["meter"])
         if "mass_kg" not in said:
-            sides = (Side(side.known, None, side.method) for side in self.sides)
-            then = Compared(self.connection, self.site_id, self.site, one.started_at, *sides, self.book.recorded_at)
+            old, new = (Side(side.known, None, side.method) for side in self.sides)
+            then = Compared(self.connection, self.site_id, self.site, one.started_at, old, new, self.book.recorded_at)
             for end in sorted(ends(one.body) & {vessel.name for vessel in self.closing.stocks[1].site.vessels}):
                 known = said.get("density_kg_m3")
                 found += self.closing.definitions(end) if known else self.closing.density(end) + then.density(end)

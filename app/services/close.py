@@ -86,8 +86,9 @@ def _compute(
     body, flagged = judge.books_of(closing, opening, moves, pieces, regrades)
     body |= {"site": site, "opening": period.opening, "closing": period.closing, "label": period.label,
              "known_at": known, "method": METHOD}  # fmt: skip
+    said = [[one.name, one.body] for one in tickets]
     grounds = [METHOD, period.opening, period.closing, opening.grounds, list(closing.site.texts),
-               inputs_of(closing), [[one.name, one.body] for one in tickets], _meter_texts(meters), moving.grounds]  # fmt: skip
+               inputs_of(closing), said, _meter_texts(meters), moving.grounds]  # fmt: skip
     digest = hashlib.sha256(json.dumps(grounds, sort_keys=True).encode()).hexdigest()
     body["digest"] = digest
     return body, _book_vessels(closing, flagged), digest

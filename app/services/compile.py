@@ -36,7 +36,8 @@ UNINSULATED_LIQUID_WEIGHT = 7.0 / 8.0  # API MPMS 12.1.1: T_shell = (7 T_liquid 
 HOUR_US, DAY_US = 3_600_000_000, 86_400_000_000
 MAX_AGE_US: dict[str, int | None] = {
     "level_m": HOUR_US, "ullage_m": HOUR_US, "liquid_volume_m3": HOUR_US, "liquid_volume_pct": HOUR_US,
-    "differential_pressure_kpa": HOUR_US, "weighed_mass_kg": HOUR_US, "pressure_kpa": HOUR_US, "pressure_kpa_abs": HOUR_US,
+    "differential_pressure_kpa": HOUR_US, "weighed_mass_kg": HOUR_US,
+    "pressure_kpa": HOUR_US, "pressure_kpa_abs": HOUR_US,
     "liquid_temperature_c": HOUR_US, "vapour_temperature_c": HOUR_US, "ambient_temperature_c": DAY_US,
     "barometric_pressure_kpa_abs": DAY_US, "free_water_level_m": 7 * DAY_US,
 }  # fmt: skip

@@ -340,15 +340,15 @@ def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
                 "atmospheric_pressure_kpa_abs: 101.325 kPa is taken",
             }
         )
-    if _counts(measured, row, "site_ambient") and not measured.chosen["ambient"].usable[row]:
-        if not measured.chosen["site_ambient"].usable[row] and "ambient_temperature_c" not in measured.assumed:
-            found.append(
-                {
-                    "code": "input_assumed",
-                    "detail": "no ambient temperature is read: the shell is taken at the product's temperature, "
-                    f"with a standard uncertainty of {instruments.AMBIENT_UNREAD:g} K on the ambient's",
-                }
-            )
+    read = any(measured.chosen[name].usable[row] for name in ("ambient", "site_ambient"))
+    if _counts(measured, row, "site_ambient") and not read and "ambient_temperature_c" not in measured.assumed:
+        found.append(
+            {
+                "code": "input_assumed",
+                "detail": "no ambient temperature is read: the shell is taken at the product's temperature, "
+                f"with a standard uncertainty of {instruments.AMBIENT_UNREAD:g} K on the ambient's",
+            }
+        )
     return found
 
 
@@ -428,9 +428,10 @@ def inputs_read(measured: Measured, row: int) -> list[list[Any]]:
         quantity, source = measured.collected.origins[spec.name].of(row, column)
         text = measured.collected.texts[spec.name][row, column]
         companions = [[name, _companion(measured, row, spec.name, name, column)] for name in spec.companions]
+        value = float(chosen.value[row]) if text is None else text
         found.append(
-            [quantity, source, int(chosen.taken_at[row]), int(chosen.after_at[row]), float(chosen.value[row]) if text is None else text,
-             int(chosen.quality[row]), companions]
+            [quantity, source, int(chosen.taken_at[row]), int(chosen.after_at[row]), value, int(chosen.quality[row]),
+             companions]
         )  # fmt: skip
     return found
 

@@ -90,7 +90,8 @@ class Errors:
 
         ``per_unit`` takes other quantities that stand for this one to its unit, row by row.
         """
-        known = [self._instrument(quantity, chosen, origin, row, per_unit) for row in range(self.distinct(chosen, origin))]
+        rows = range(self.distinct(chosen, origin))
+        known = [self._instrument(quantity, chosen, origin, row, per_unit) for row in rows]
 
         def of(row: int) -> Instrument:
             return known[row if len(known) > 1 else 0]
@@ -169,9 +170,12 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
     whole = np.array([entry[0] for entry in declared])
     local = np.array([entry[1] for entry in declared])
     span = np.array([entry[2] for entry in declared])
+
+    def table(row: int) -> str:
+        return f"capacity:{errors.vessel(row).name}:{errors.vessel(row).table_id}"
+
     errors.add(
-        "capacity_pct", "capacity", whole / 100.0, "systematic",
-        lambda row: f"capacity:{errors.vessel(row).name}:{errors.vessel(row).table_id}", declared=lambda row: of(row)[3],
+        "capacity_pct", "capacity", whole / 100.0, "systematic", table, declared=lambda row: of(row)[3]
     )  # fmt: skip
     position = np.where(np.isfinite(level), level / span, 0.0)
     lower = np.floor(position)
@@ -180,7 +184,7 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
     for knot, share in ((lower, (1.0 - weight) / norm), (lower + 1.0, weight / norm)):
         errors.add(
             "capacity_pct", "capacity_local", local / 100.0 * share, "systematic",
-            lambda row, knot=knot: f"capacity:{errors.vessel(row).name}:{errors.vessel(row).table_id}:{int(at_row(knot, row))}",  # type: ignore[misc]
+            lambda row, knot=knot: f"{table(row)}:{int(at_row(knot, row))}",  # type: ignore[misc]
             declared=lambda row: of(row)[3],
         )  # fmt: skip
 

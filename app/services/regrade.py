@@ -71,10 +71,12 @@ class Moving:
         ]
 
     def _moved(self, one: Ticket, first: int, last: int) -> Moved:
-        vessels, standard = self.vessels, self.standard
+        vessels: Mapping[str, CompiledVessel] = self.vessels
+        standard: Mapping[str, Estimate] = self.standard
         if one.name in self.then:
             vessel, density = self.then[one.name]
-            vessels, standard = ChainMap({vessel.name: vessel}, vessels), ChainMap({vessel.name: density}, standard)
+            vessels = ChainMap({vessel.name: vessel}, self.vessels)
+            standard = ChainMap({vessel.name: density}, self.standard)
         return move.moved(one, first, last, vessels, self.meters, standard, self.spaces)
 
 

@@ -65,7 +65,8 @@ def _differs(old: Vessel, new: Vessel) -> bool:
 
 def _with_geometry(old: CompiledVessel, new: CompiledVessel) -> CompiledVessel:
     """The former vessel with its readings, ages and substance, in the geometry of the later one."""
-    instruments: dict[str, Instrument] = {name: one for name, one in old.body.instruments.items() if name != "capacity_pct"}
+    instruments: dict[str, Instrument] = dict(old.body.instruments.items())
+    instruments.pop("capacity_pct", None)
     if "capacity_pct" in new.body.instruments:
         instruments["capacity_pct"] = new.body.instruments["capacity_pct"]
     update = {name: getattr(new.body, name) for name in GEOMETRY} | {"instruments": instruments}

@@ -18,7 +18,10 @@ if TYPE_CHECKING:
 Step = dict[str, Any]
 
 ORDER = "API MPMS ch. 12.1.1, order of calculation (from memory)"
-STRAIN = "V(h; ε) = (1+ε)³ V(h/(1+ε)): homogeneous strain at a fixed level; 2ε for upright cylinders, the C_TSh of API MPMS 12.1.1"
+STRAIN = (
+    "V(h; ε) = (1+ε)³ V(h/(1+ε)): homogeneous strain at a fixed level; "
+    "2ε for upright cylinders, the C_TSh of API MPMS 12.1.1"
+)
 EXPONENTIAL = "definitions of β and κ, integrated: CRC Handbook of Chemistry and Physics, 87th ed."
 
 
@@ -60,7 +63,8 @@ def _geometry(measured: Measured, row: int) -> Iterator[Step]:
     vessel, result, state = measured.vessel(row), measured.result, measured.state
     if vessel.is_full:
         yield _step("volume", "V", result["tank_volume"][row], "m³", "kept full: the whole capacity", "definition")
-        yield _step("shell factor", "K", result["shell_factor"][row], "1", "1 + ε_x + ε_y + ε_z: of a full vessel", STRAIN)
+        stretched = "1 + ε_x + ε_y + ε_z: of a full vessel"
+        yield _step("shell factor", "K", result["shell_factor"][row], "1", stretched, STRAIN)
         yield _step("gross observed volume", "GOV", result["gross_observed_volume"][row], "m³", "K V", ORDER)
         return
     assert vessel.curve is not None
@@ -76,8 +80,8 @@ def _geometry(measured: Measured, row: int) -> Iterator[Step]:
     yield _step("volume", "V(h)", result["tank_volume"][row], "m³", vessel.curve.kind, vessel.curve.source)
     yield _step("surface", "A(h)", result["surface_area"][row], "m²", "slope of the same curve", vessel.curve.source)
     yield _step("shell temperature", "T_shell", result["liquid_shell_temperature"][row] - 273.15, "°C",
-                "that of the liquid (insulated)" if parameters["liquid_weight"] == 1.0 else "(7 T_liquid + T_ambient)/8",
-                "API MPMS ch. 12.1.1")  # fmt: skip
+                "that of the liquid (insulated)" if parameters["liquid_weight"] == 1.0
+                else "(7 T_liquid + T_ambient)/8", "API MPMS ch. 12.1.1")  # fmt: skip
     yield _step("shell factor", "K", result["shell_factor"][row], "1",
                 "1 + ε_x + ε_y + ε_z − ε_z h A/V; temperature and pressure strain together", STRAIN)  # fmt: skip
     yield _step(
@@ -90,7 +94,8 @@ def _geometry(measured: Measured, row: int) -> Iterator[Step]:
     )
     if vessel.method & Method.ROOF:
         yield _step("floating roof", "ΔV_roof", result["roof_volume"][row], "m³",
-                    "−W/ρ once afloat; W (1/ρ_table − 1/ρ) where the table deducts the roof; linear between landing and floating",
+                    "−W/ρ once afloat; W (1/ρ_table − 1/ρ) where the table deducts the roof; "
+                    "linear between landing and floating",
                     "API MPMS ch. 12.1.1 (from memory)")  # fmt: skip
     yield _step(
         "gross observed volume",
@@ -106,7 +111,8 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     result, state, vessel = measured.result, measured.state, measured.vessel(row)
     chosen = measured.chosen["density"].usable[row]
     yield _step("sample density", "ρ_s", at_row(state.density, row), "kg/m³",
-                "laboratory sample" if chosen else "the substance's own figure: no sample was ever read", "as read")  # fmt: skip
+                "laboratory sample" if chosen else "the substance's own figure: no sample was ever read",
+                "as read")  # fmt: skip
     yield _step(
         "sample temperature",
         "T_s",
@@ -135,7 +141,8 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "definition",
     )
     yield _step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa",
-                "absolute; the site's base pressure or, where higher, the vapour pressure at T_std", "definition")  # fmt: skip
+                "absolute; the site's base pressure or, where higher, the vapour pressure at T_std",
+                "definition")  # fmt: skip
     yield _step(
         "expansivity",
         "β(t₀)",
@@ -155,10 +162,11 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "volume fraction of the sample",
         "as read",
     )
-    yield _step("water density", "ρ_w", vessel.parameters["water_density"], "kg/m³", "of the water in a wet sample, 15 °C",
-                "M. Tanaka et al., Metrologia 38 (2001) 301-309")  # fmt: skip
+    yield _step("water density", "ρ_w", vessel.parameters["water_density"], "kg/m³",
+                "of the water in a wet sample, 15 °C", "M. Tanaka et al., Metrologia 38 (2001) 301-309")  # fmt: skip
     yield _step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
-                "(ρ_s − f ρ_w)/(1 − f) of a wet sample, ρ_s of a dry one, taken to the standard state", EXPONENTIAL)  # fmt: skip
+                "(ρ_s − f ρ_w)/(1 − f) of a wet sample, ρ_s of a dry one, taken to the standard state",
+                EXPONENTIAL)  # fmt: skip
     yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³",
                 "GOV exp(−∫β dT from T_std to T + κ (P − P_std))", EXPONENTIAL)  # fmt: skip
     yield _step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)

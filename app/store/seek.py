@@ -114,7 +114,8 @@ def tickets(
     A row is (name, revision, recorded_at, started_at, ended_at, running, void, body).
     """
     sqlite = connection.dialect.name == "sqlite"
-    prefix, source = (_ENDS_SQLITE, "w CROSS JOIN transfer t") if sqlite else ("", f"{_ENDS_POSTGRESQL} JOIN transfer t ON true")
+    prefix = _ENDS_SQLITE if sqlite else ""
+    source = "w CROSS JOIN transfer t" if sqlite else f"{_ENDS_POSTGRESQL} JOIN transfer t ON true"
     columns = "t.name, t.revision, t.recorded_at, t.started_at, t.ended_at, t.running, t.void, t.body"
     last = """(SELECT max(n.revision) FROM transfer n
         WHERE n.site_id = t.site_id AND n.name = t.name AND n.recorded_at <= :known)"""

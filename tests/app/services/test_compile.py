@@ -19,7 +19,7 @@ from app.services.compile import (
 )
 from models.columns import Method
 from models.errors import DefinitionError
-from tests.app.services.worked import GAS_OIL, HYDROGEN, PROPANE, RECEIVER, SPHERE, TANK, Body, compiled
+from tests.app.services.worked import HYDROGEN, PROPANE, RECEIVER, SPHERE, TANK, Body, compiled
 
 ROOF = {"mass_kg": 1.2e5, "lands_at_m": 1.8, "floats_at_m": 2.1}
 NET_TABLE: Body = {"kind": "capacity_table", "rows": [[0.0, 3.0], [15.0, 10500.0]], "roof_deducted_at_kg_m3": 850.0}

@@ -56,7 +56,6 @@ def test_another_definition_must_say_from_when_it_holds(plant: Plant) -> None:
 
 def test_what_does_not_fit_is_refused_by_its_field(plant: Plant) -> None:
     assert refusal(plant, BOX | {"substance": "tea"}) == ("unknown_substance", "/substance")
-    roof = {"mass_kg": 1.0, "lands_at_m": 1.0, "floats_at_m": 1.2}
     assert refusal(plant, BOX | {"shell": {"courses": [[2.0, 0.02]]}})[0] == "not_computed"
     plant.put("substance", "n2", GAS)
     code, pointer = refusal(plant, BOX | {"substance": "n2", "vapour_space": {"kind": "open"}})

@@ -3,14 +3,17 @@
 from app.services import report
 
 VESSEL = {
-    "vessel": "tk-12", "status": "measured", "flagged": True, "imbalance_kg": -24852.4, "imbalance_uncertainty_kg": 895.0,
-    "score": -27.77, "judged_with": [], "closing_mass_kg": 5196987.2, "detectable_imbalance_kg": 4584.0, "verdict": "fail",
+    "vessel": "tk-12", "status": "measured", "flagged": True, "imbalance_kg": -24852.4,
+    "imbalance_uncertainty_kg": 895.0, "score": -27.77, "judged_with": [], "closing_mass_kg": 5196987.2,
+    "detectable_imbalance_kg": 4584.0, "verdict": "fail",
+}  # fmt: skip
+UNREAD = VESSEL | {
+    "vessel": "tk-13", "flagged": False, "imbalance_kg": None, "imbalance_uncertainty_kg": None, "score": None,
+    "status": "unmeasured", "verdict": "inconclusive", "closing_mass_kg": None, "detectable_imbalance_kg": None,
 }  # fmt: skip
 NIGHT = {
-    "site": "s", "id": "2026-03-17.1", "status": "imbalanced", "opening": 1773727200000000, "closing": 1773813600000000,
-    "vessels": [VESSEL, VESSEL | {"vessel": "tk-13", "flagged": False, "imbalance_kg": None, "imbalance_uncertainty_kg": None,
-                                  "score": None, "status": "unmeasured", "verdict": "inconclusive",
-                                  "closing_mass_kg": None, "detectable_imbalance_kg": None}],
+    "site": "s", "id": "2026-03-17.1", "status": "imbalanced", "opening": 1773727200000000,
+    "closing": 1773813600000000, "vessels": [VESSEL, UNREAD],
 }  # fmt: skip
 
 

@@ -19,5 +19,6 @@ def test_the_month_is_march_2026():
 
 
 def test_a_planted_fault_is_told_with_its_size_and_unit():
-    said = show.planted({"first_night": "2026-03-09", "kind": "level_bias", "subject": "tk-21", "size": 18.0, "unit": "mm"})
+    fault = {"first_night": "2026-03-09", "kind": "level_bias", "subject": "tk-21", "size": 18.0, "unit": "mm"}
+    said = show.planted(fault)
     assert said == "2026-03-09: level_bias, tk-21, 18 mm"
