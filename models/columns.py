@@ -153,7 +153,7 @@ class State:
     Parameters
     ----------
     level, water_level : FloatArray
-        Innage of liquid and of free water on the curve's datum. [m]
+        Innage of liquid and of free water on the curve's datum; −inf for water where there is none. [m]
     liquid_temperature, ambient_temperature, vapour_temperature : FloatArray
         Temperatures. [K]
     pressure, atmosphere : FloatArray

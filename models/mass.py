@@ -166,6 +166,9 @@ def _geometry(step: Step) -> None:
         step.mark(outside & (v.is_table > 0.0), Mark.OUTSIDE_TABLE)
         step.mark(outside & (v.is_table == 0.0), Mark.OUTSIDE_VESSEL)
         level = np.where(outside, np.nan, level)
+    unknown = np.isnan(s.water_level)
+    if unknown.any():
+        level = np.where(unknown, np.nan, level)
     wet = s.water_level > v.bottom
     drowned = wet & (s.water_level > s.level)
     if drowned.any():

@@ -65,6 +65,7 @@ INPUTS: tuple[InputSpec, ...] = (
     InputSpec("vapour_composition", ("vapour_composition",), sample=True, companions=("sample",)),
     InputSpec("roof_load", ("roof_load_kg",)),
 )
+REMEMBERED = ("free_water_level_m",)  # too old is not the same as never read, which is none
 ALWAYS_KEPT = ("ambient_temperature_c",)  # not about the liquid: carried over a change of substance
 
 
@@ -252,9 +253,14 @@ def blank(rows: int, width: int) -> tuple[Candidates, Text]:
     return Candidates.empty(rows, width), np.full((rows, max(width, 1)), None, dtype=object)
 
 
+def _remembered(slot: Slot) -> bool:
+    """Whether a value of any age tells something: it still counts, or its age is the reason why nothing does."""
+    return slot.max_age >= ALWAYS or slot.quantity in REMEMBERED
+
+
 def _bounds(slot: Slot, vessel: CompiledVessel, at: int) -> tuple[int, int]:
     """Between which instants a value of a series may count at an instant, both included."""
-    oldest = int(NEVER) if slot.max_age >= ALWAYS else at - slot.max_age
+    oldest = int(NEVER) if _remembered(slot) else at - slot.max_age
     latest = at + min(slot.max_age, int(ALWAYS)) if slot.max_age < ALWAYS else at
     if slot.spec.of_site or slot.quantity in ALWAYS_KEPT:
         return oldest, latest
@@ -310,7 +316,7 @@ def _courses(connection: Connection, site_id: int, collected: Collected, slots: 
         return
     low, high = int(collected.at.min()), int(collected.at.max())
     reach = max((slot.max_age for slot in slots if slot.max_age < ALWAYS), default=0)
-    lasting = any(slot.max_age >= ALWAYS for slot in slots)
+    lasting = any(_remembered(slot) for slot in slots)
     series = sorted({slot.series for slot in slots})
     oldest = int(NEVER) if lasting else low - reach
     found = readings.course(connection, site_id, series, oldest, high + reach, known)

@@ -290,7 +290,8 @@ def _water_unread(measured: Measured, row: int) -> bool:
     assumed = measured.assumed.get("free_water_level_m")
     known = measured.chosen["free_water"].usable[row] or (assumed is not None and assumed[row])
     vessel = measured.vessel(row)
-    return vessel.has_liquid and not vessel.is_full and not known
+    outlived = math.isnan(at_row(measured.state.water_level, row))
+    return vessel.has_liquid and not vessel.is_full and not known and not outlived
 
 
 def _assumed(quantity: str, value: float) -> dict[str, Any]:
@@ -373,6 +374,9 @@ def reason(measured: Measured, row: int) -> dict[str, str]:
         if lacking[name]:
             quantity, words = NEEDED[name]
             return {"code": "input_missing", "detail": _missing(measured, row, name, quantity, words)}
+    if vessel.has_liquid and math.isnan(at_row(state.water_level, row)):
+        said = _missing(measured, row, "free_water", "free_water_level_m", "the free water")
+        return {"code": "input_missing", "detail": f"{said}: dip it, or assume a level, or raise its max_age_s"}
     if vessel.has_vapour and not math.isfinite(float(measured.result["vapour_pressure"][row])):
         celsius = at_row(state.liquid_temperature, row) - 273.15
         return {

@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from app.services.attribute import parts_of
-from app.services.choose import Chosen, choose
+from app.services.choose import NEVER, Chosen, choose
 from app.services.collect import INPUTS, Collected
 from app.services.compile import (
     CompiledVessel,
@@ -122,6 +122,7 @@ class States:
         self.collected = collected
         self.chosen = chosen
         self.blends = {} if corrections is None else corrections.blends
+        self.dry = frozenset[int]() if corrections is None else corrections.dry
         self.vessels: Sequence[CompiledVessel] = collected.vessels
         self.assumed: dict[str, BoolColumns] = {}
         self.atmosphere_assumed = np.zeros(collected.rows, dtype=bool)
@@ -161,7 +162,7 @@ class States:
         water = self.value("free_water", "free_water_level_m")
         state = State(
             level=self.value("level", "level_m"),
-            water_level=np.where(np.isfinite(water), water, -np.inf),
+            water_level=np.where(np.isfinite(water), water, np.where(self._outlived(), np.nan, -np.inf)),
             liquid_temperature=liquid,
             ambient_temperature=self._ambient(liquid),
             vapour_temperature=units.kelvin(self.value("vapour_temperature", "vapour_temperature_c")),
@@ -178,6 +179,12 @@ class States:
             roof_load=np.nan_to_num(self.chosen["roof_load"].value),
         )
         return state, extra
+
+    def _outlived(self) -> BoolColumns:
+        """Where free water was read, but too long ago: it is neither what was read nor none."""
+        read = (self.collected.candidates["free_water"].before_at > NEVER).any(axis=1)
+        kept = np.array([row not in self.dry for row in range(self.collected.rows)])
+        return np.asarray(read & kept & ~self.chosen["free_water"].usable)
 
     def _atmosphere(self) -> FloatColumns:
         means = [mean_atmosphere(vessel.site) for vessel in self.vessels]

@@ -126,6 +126,22 @@ def test_a_receipt_after_the_dip_is_said_and_changes_no_number(tank):
     assert inventory.input("tk-10", "free_water_level_m")["value"] == 0.2
 
 
+def test_a_dip_that_nobody_repeated_for_a_week_is_neither_water_nor_none(tank):
+    """It was taken on the 13th at 06:00 and counts for seven days; 06:30 on the 20th is half an hour too late.
+
+    Taken as none, the 0.200 m of water would be 200 × 750 kg = 150 t of gasoline that is not there.
+    """
+    tank.reads("tk-10", "2026-03-20 05:30", source="hand", level_m=8.0)
+    tank.reads("tk-10", "2026-03-20 06:30", source="hand", level_m=8.0)
+    assert tank.inventory("2026-03-20 05:30").of("tk-10")["mass_kg"] == pytest.approx(5_850 * T, abs=0.5)
+    late = tank.inventory("2026-03-20 06:30").of("tk-10")
+    assert (late["status"], late["mass_kg"]) == ("unmeasured", None)
+    assert late["reason"]["code"] == "input_missing"
+    assert "free_water_level_m" in late["reason"]["detail"] and "604800 s" in late["reason"]["detail"]
+    tank.reads("tk-10", "2026-03-20 06:25", source="hand", free_water_level_m=0.2)
+    assert tank.inventory("2026-03-20 06:30").of("tk-10")["mass_kg"] == pytest.approx(5_850 * T, abs=0.5)
+
+
 def test_water_that_was_never_dipped_is_none_and_says_so(tank):
     """Tank 11 beside it, 4.000 m: 4,000 m³ × 750 = 3,000 t, with the water assumed."""
     tank.tank("tk-11", "gasoline", area_m2=1000.0, instruments=EXACT_WATER)

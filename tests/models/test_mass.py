@@ -360,6 +360,13 @@ def test_water_above_the_liquid_has_no_mass() -> None:
     assert math.isnan(own["mass"][0])
 
 
+def test_water_that_is_not_known_is_not_none() -> None:
+    case = OIL.reads(water_level=math.nan)
+    own = inventory(vessels([case]), None, state([case]))
+    assert own.marks[0] & Mark.MISSING
+    assert math.isnan(own["mass"][0])
+
+
 @pytest.mark.parametrize(
     ("reading", "mark"),
     [
