@@ -126,7 +126,7 @@ def measure_at(
     measured.carried = carried
     measured.tickets = [(ticket.name, ticket.body) for ticket, _ in moves.tickets]
     _standing_still(connection, site_id, measured, moves, known)
-    check(connection, site_id, first, measured, known)
+    check(connection, site_id, first, measured, moves, known)
     return measured
 
 

@@ -6,7 +6,7 @@ import math
 from bisect import bisect_right
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from sqlalchemy import Connection
 
@@ -16,6 +16,9 @@ from app.services.compile import CompiledVessel
 from app.services.measure import Measured
 from app.store import readings
 from app.store.readings import Found
+
+if TYPE_CHECKING:
+    from app.services.carry import Moves
 
 ROUNDS = 4  # checks of one series that are asked one after the other; of more it is read as a course
 COVERAGE = 2.0  # standard uncertainties of a difference before the sources are said to disagree
@@ -37,7 +40,19 @@ class _Asked:
         return self.lower.series, self.winner.series, self.taken_at
 
 
-def check(connection: Connection, site_id: int, collected: Collected, measured: Measured, known: int) -> None:
+@dataclass(frozen=True)
+class _Answered:
+    """The source that counts at the instant of a check, how much of one reading's scatter it has, and when it was
+    read: at that instant or around it, or before it."""
+
+    value: float
+    scatter: float
+    read_at: int
+
+
+def check(
+    connection: Connection, site_id: int, collected: Collected, measured: Measured, moves: Moves, known: int
+) -> None:
     """Every usable value of a lower source into its row's checks, with a warning where the two disagree.
 
     ``collected`` are the candidates at the instant that was asked for: a check that came after the reading
@@ -46,20 +61,17 @@ def check(connection: Connection, site_id: int, collected: Collected, measured: 
     found: dict[int, list[dict[str, Any]]] = {}
     rows = list(_asked(collected, measured))
     # In a course one check stands for many instants: it is answered once.
-    answers = {
-        one.key: (winner, scatter)
-        for one, winner, scatter in _answered(
-            connection, site_id, list({one.key: one for one in rows}.values()), collected, known
-        )
-    }
+    once = list({one.key: one for one in rows}.values())
+    answers = {one.key: found for one, found in _answered(connection, site_id, once, collected, known)}
     for asked in rows:
-        if asked.key not in answers:
-            continue
-        winner, scatter = answers[asked.key]
         vessel = collected.vessel(asked.row)
+        answered = answers.get(asked.key)
+        if answered is None or _between_them(moves, vessel.name, answered.read_at, asked.taken_at):
+            continue
+        scatter = answered.scatter
         random, systematic = _errors(vessel, asked.winner, asked.taken_at)
         spread = math.hypot(*_errors(vessel, asked.lower, asked.taken_at), scatter * random, systematic)
-        difference = asked.value - winner
+        difference = asked.value - answered.value
         quantity = asked.winner.spec.quantities[0]
         found.setdefault(asked.row, []).append(
             {"quantity": quantity, "source": asked.lower.source, "at": asked.taken_at, "value": asked.value,
@@ -103,9 +115,9 @@ def _lower(collected: Collected, measured: Measured, name: str, slots: Sequence[
 
 def _answered(
     connection: Connection, site_id: int, asked: Sequence[_Asked], collected: Collected, known: int
-) -> Iterator[tuple[_Asked, float, float]]:
-    """The value of the source that counts at the instant of each check, and how much of one reading's scatter
-    it has; a series is asked once a round, and one of many checks is read once."""
+) -> Iterator[tuple[_Asked, _Answered]]:
+    """The source that counts at the instant of each check; a series is asked once a round, and one of many checks
+    is read once."""
     groups: dict[int, list[_Asked]] = {}
     for one in asked:
         groups.setdefault(one.winner.series, []).append(one)
@@ -130,14 +142,14 @@ def _answered(
         earlier = {found.series_id: found for found in readings.newest_each(connection, site_id, before, known)}
         following = {found.series_id: found for found in readings.following_each(connection, site_id, after, known)}
         for series, one in first.items():
-            value, scatter = _between(one, earlier.get(series), following.get(series))
-            if math.isfinite(value):
-                yield one, value, scatter
+            answered = _between(one, earlier.get(series), following.get(series))
+            if answered is not None:
+                yield one, answered
 
 
 def _along(
     connection: Connection, site_id: int, group: Sequence[_Asked], collected: Collected, known: int
-) -> Iterator[tuple[_Asked, float, float]]:
+) -> Iterator[tuple[_Asked, _Answered]]:
     """Many checks of one series, which is read once and searched for its neighbours of each."""
     age, series = group[0].winner.max_age, group[0].winner.series
     first, last = min(one.taken_at for one in group) - age, max(one.taken_at for one in group) + age
@@ -152,28 +164,35 @@ def _along(
         oldest = max(one.taken_at - age, _since(collected, one))
         before = kept[place - 1] if place and times[place - 1] >= oldest else None
         after = kept[place] if place < len(kept) and times[place] <= one.taken_at + age else None
-        value, scatter = _between(one, before, after)
-        if math.isfinite(value):
-            yield one, value, scatter
+        answered = _between(one, before, after)
+        if answered is not None:
+            yield one, answered
 
 
 def _since(collected: Collected, one: _Asked) -> int:
     return min(collected.vessel(one.row).since, one.taken_at)
 
 
-def _between(one: _Asked, before: Found | None, after: Found | None) -> tuple[float, float]:
+def _between(one: _Asked, before: Found | None, after: Found | None) -> _Answered | None:
     """The winner at the instant of the check: between two of its values, which halves their scatter, or the one
     before."""
     if before is None or before.value is None:
-        return math.nan, math.nan
+        return None
     start = one.winner.convert(before.value, before.taken_at)
-    if after is None or after.value is None or before.taken_at == one.taken_at:
-        return start, 1.0
-    if after.taken_at - before.taken_at > one.winner.max_age:
-        return start, 1.0
-    share = (one.taken_at - before.taken_at) / (after.taken_at - before.taken_at)
-    value = (1.0 - share) * start + share * one.winner.convert(after.value, after.taken_at)
-    return value, math.hypot(1.0 - share, share)
+    found = _Answered(start, 1.0, before.taken_at)
+    if after is not None and after.value is not None and before.taken_at < one.taken_at:
+        gap = after.taken_at - before.taken_at
+        if gap <= one.winner.max_age:
+            share = (one.taken_at - before.taken_at) / gap
+            value = (1.0 - share) * start + share * one.winner.convert(after.value, after.taken_at)
+            found = _Answered(value, math.hypot(1.0 - share, share), one.taken_at)
+    return found if math.isfinite(found.value) else None
+
+
+def _between_them(moves: Moves, vessel: str, first: int, last: int) -> bool:
+    """Whether a ticket ran between two readings: they are of two contents, and neither checks the other."""
+    own = moves.of(vessel) if first < last else ()
+    return any(ticket.started_at < last and ticket.ended_at > first for ticket, _ in own)
 
 
 def _errors(vessel: CompiledVessel, slot: Slot, at: int) -> tuple[float, float]:

@@ -87,6 +87,34 @@ def test_a_dip_after_the_reading_that_counts_is_a_check_too(plant: Plant) -> Non
     assert answer["mass_kg"] == pytest.approx(400_000.0, rel=1e-12)
 
 
+@pytest.mark.parametrize("of", [None, "water"])
+def test_two_readings_with_a_ticket_between_them_do_not_check_each_other(plant: Plant, of: str | None) -> None:
+    plant.tank("tk-1", sources=SOURCES)
+    plant.read("tk-1", f"{DAY}05:00", "radar", level_m=5.0)
+    plant.read("tk-1", f"{DAY}05:40", "hand", level_m=5.667)
+    assert codes(plant.vessel("tk-1", f"{DAY}05:45")) == ["sources_disagree"]
+    said = {"mass_kg": 80_000.0} if of is None else {"mass_kg": 80_000.0, "of": of}
+    plant.ticket("in", "boundary:jetty-1", "tk-1", f"{DAY}05:00", f"{DAY}06:00", **said)
+    answer = plant.vessel("tk-1", f"{DAY}05:45")
+    assert (answer["checks"], "sources_disagree" in codes(answer)) == ([], False)
+    # Between two readings of the gauge the line is what it read then; at one of them, that.
+    plant.read("tk-1", f"{DAY}05:50", "radar", level_m=5.835)
+    (check,) = plant.vessel("tk-1", f"{DAY}05:50")["checks"]
+    assert check["difference"] == pytest.approx(5.667 - (5.0 + 0.835 * 40 / 50), abs=1e-12)
+    plant.read("tk-1", f"{DAY}05:55", "hand", level_m=5.91)
+    plant.read("tk-1", f"{DAY}05:55", "radar", level_m=5.92)
+    assert len(plant.vessel("tk-1", f"{DAY}05:55")["checks"]) == 1
+
+
+def test_a_ticket_before_or_after_both_readings_leaves_the_check(plant: Plant) -> None:
+    plant.tank("tk-1", sources=SOURCES)
+    plant.read("tk-1", f"{DAY}05:00", "radar", level_m=5.0)
+    plant.read("tk-1", f"{DAY}05:40", "hand", level_m=5.001)
+    for name, first, last in (("a", "04:00", "05:00"), ("b", "05:40", "06:00")):
+        plant.ticket(name, "boundary:jetty-1", "tk-1", f"{DAY}{first}", f"{DAY}{last}", mass_kg=80_000.0)
+    assert len(plant.vessel("tk-1", f"{DAY}05:45")["checks"]) == 1
+
+
 def test_an_ullage_and_an_offset_are_made_innages_before_they_are_compared(plant: Plant) -> None:
     hand = {"source": "hand", "instruments": {"ullage_m": {"random": 0.002, "systematic": 0.0, "offset": 0.01}}}
     plant.tank("tk-1", sources=[SOURCES[0], hand], gauging={"reference_height_m": 12.0})
