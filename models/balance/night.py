@@ -9,8 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.sparse import block_array, csc_array, csr_array, diags_array, eye_array
 from scipy.sparse.linalg import splu
-from scipy.special import erfc, ndtri
-from scipy.stats import chi2
+from scipy.special import chdtrc, erfc, ndtri
 
 from models.arrays import FloatArray
 from models.balance.network import OUTSIDE as BEYOND
@@ -292,7 +291,7 @@ def _tested(rows: Sequence[Row]) -> Group:
     parts, residual = csr_array(parts[~certain]), residual[~certain] / scale[~certain]  # 0 ± 0 says nothing
     parts = csr_array(diags_array(1.0 / scale[~certain]) @ parts)
     statistic, freedom = (_ranked if len(residual) <= DENSE_ROWS else _sparse)(parts, residual)
-    return Group(members, statistic, freedom, float(chi2.sf(statistic, freedom)))
+    return Group(members, statistic, freedom, float(chdtrc(freedom, max(statistic, 0.0))))
 
 
 def _ranked(parts: csr_array, residual: FloatArray) -> tuple[float, int]:

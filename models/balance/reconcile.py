@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy.sparse import csr_array, diags_array
-from scipy.stats import chi2
+from scipy.special import chdtrc
 
 from models.arrays import FloatArray, IntArray, blocks
 from models.balance.factor import DenseFactor, Factor, SparseFactor
@@ -284,7 +284,8 @@ class _Part:
         found.score[self.streams[checked]] = along[checked] / np.sqrt(weight[checked])
         self._score_nodes(found, pull)
         statistic = float(residual @ pull)  # eq. 4
-        return Group(self.members, self.first, self.rows, statistic, float(chi2.sf(statistic, self.rows)), factor, pull)
+        chance = float(chdtrc(self.rows, max(statistic, 0.0)))
+        return Group(self.members, self.first, self.rows, statistic, chance, factor, pull)
 
     def compute(self, found: Reconciliation, free: IntArray) -> None:
         """Unmeasured streams that the others determine."""
