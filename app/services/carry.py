@@ -31,6 +31,7 @@ from models import instruments
 from models.estimate import Estimate, combine
 
 DAY_US = 86_400_000_000
+OUTDATED = {"sample_predates_receipt", "water_predates_receipt"}
 LOOK_BACK_US = 400 * DAY_US  # µs; a sample older than this is not asked which receipts came after it
 STILL_M = 0.002  # m; a level that moves no more than this stands still: the step of a gauge, common practice
 CERTAIN = 6.0  # standard uncertainties of what tickets moved, before a level that stands still is doubted
@@ -124,10 +125,26 @@ def measure_at(
     for row in range(rows):
         _move(measured, moves, row, carried[row])
     measured.carried = carried
-    measured.tickets = [(ticket.name, ticket.body) for ticket, _ in moves.tickets]
+    measured.tickets = _counted(measured, moves)
     _standing_still(connection, site_id, measured, moves, known)
     check(connection, site_id, first, measured, moves, known)
     return measured
+
+
+def _counted(measured: Measured, moves: Moves) -> list[tuple[str, str]]:
+    """Tickets that may have had a part in a mass or in a doubt about it.
+
+    Those of the last day and those between a reading and the instant; those since a sample or a water dip only
+    where they outdated it.
+    """
+    found: dict[str, str] = {}
+    for row, carried in measured.carried.items():
+        outdated = not OUTDATED.isdisjoint(one["code"] for one in carried.warnings)
+        since = min(int(measured.collected.at[row]), measured.instant(row)) - DAY_US
+        for ticket, _ in moves.of(measured.vessel(row).name):
+            if outdated or ticket.ended_at > since:
+                found[ticket.name] = ticket.body
+    return sorted(found.items())
 
 
 def _read_at(

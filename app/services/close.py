@@ -86,9 +86,9 @@ def _compute(
     body, flagged = judge.books_of(closing, opening, moves, pieces, regrades)
     body |= {"site": site, "opening": period.opening, "closing": period.closing, "label": period.label,
              "known_at": known, "method": METHOD}  # fmt: skip
-    said = [[one.name, one.body] for one in tickets]
     grounds = [METHOD, period.opening, period.closing, opening.grounds, list(closing.site.texts),
-               inputs_of(closing), said, _meter_texts(meters), moving.grounds]  # fmt: skip
+               inputs_of(closing), [[one.name, one.body] for one in tickets], _meter_texts(meters),
+               moving.grounds]  # fmt: skip
     digest = hashlib.sha256(json.dumps(grounds, sort_keys=True).encode()).hexdigest()
     body["digest"] = digest
     return body, _book_vessels(closing, flagged), digest
@@ -123,7 +123,8 @@ def _opening(
         for one in books.vessels_of(connection, site_id, before):
             masses[one.vessel] = None if one.mass_kg is None else Estimate(one.mass_kg, json.loads(one.parts))
             read_at[one.vessel] = former.get(one.vessel)
-        grounds = [before.opening, before.closing, before.revision, before.digest]
+            # What was handed over, not by which revision: a night that opens as it did stands.
+            grounds.append([one.vessel, one.mass_kg, one.parts, read_at[one.vessel]])
     lacking = set(closing.masses) - set(masses)
     held = site_in_force(connection, site_id, site, period.opening - (before is not None), known)
     if lacking:
@@ -137,6 +138,7 @@ def _opening(
     anew = restated(connection, held, closing.site, period.opening, known, meters, masses)
     grounds.append(sorted([name, one.change] for name, one in anew.items()))
     substances = {vessel.name: str(vessel.body.substance) for vessel in held.vessels if vessel.name in masses}
+    grounds.append(sorted(substances.items()))
     return Opening(
         masses | {name: one.mass for name, one in anew.items()},
         {name: one.change for name, one in anew.items()}, substances, read_at, json.dumps(grounds, sort_keys=True),

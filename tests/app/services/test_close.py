@@ -72,6 +72,20 @@ def test_late_data_make_a_revision_that_the_next_night_opens_with(month: Plant) 
     assert row(find(month, "2026-03-14.1"), "tk-1")["imbalance_kg"] == pytest.approx(0.0, abs=1e-9)
 
 
+def test_a_night_that_opens_as_it_did_stands(month: Plant) -> None:
+    """A late delivery revises its night and closes it at the same mass: the nights after it have nothing new to say."""
+    for day in (14, 15):
+        month.close(f"2026-03-{day}")
+    month.ticket("t-2", "tk-1", RACK, "2026-03-14T10:00", "2026-03-14T11:00", mass_kg=9.0)
+    assert month.close("2026-03-14")["id"] == "2026-03-14.2"
+    assert (instant("2026-03-15T06:00"), instant("2026-03-16T06:00")) in month.due()
+    assert month.close("2026-03-15")["id"] == "2026-03-15.1"
+    # A receipt is another thing: the sample of the 1st says less about every close since then.
+    month.ticket("t-3", JETTY, "tk-1", "2026-03-14T10:00", "2026-03-14T11:00", mass_kg=9.0)
+    assert month.close("2026-03-14")["id"] == "2026-03-14.3"
+    assert month.close("2026-03-15")["id"] == "2026-03-15.2"
+
+
 def test_the_opening_of_a_night_does_not_move_with_readings_about_it(month: Plant) -> None:
     month.close("2026-03-14")
     month.read("tk-1", "2026-03-15T06:00", "radar", level_m=4.5)
