@@ -44,20 +44,24 @@ def _column(vessels: tuple[CompiledVessel, ...], rows: int, value: Callable[[Com
     return column if len(vessels) > 1 else np.full(rows, column[0])
 
 
+def _expansion(vessels: tuple[CompiledVessel, ...], rows: int) -> tuple[list[FloatColumns], FloatColumns]:
+    """Coefficients of each row's β, as many as the longest has, and the temperature from which they count."""
+    coefficients = [
+        _column(vessels, rows, lambda one, j=j: one.expansivity[j] if j < len(one.expansivity) else 0.0)  # type: ignore[misc]
+        for j in range(max(len(vessel.expansivity) for vessel in vessels))
+    ]
+    return coefficients, _column(vessels, rows, lambda one: one.density[1])
+
+
 def state_density(vessels: tuple[CompiledVessel, ...], state: State) -> FloatColumns:
     """Density of the liquid in each row's state; at its standard pressure where none was read. [kg/m³]"""
     rows = state.rows
-    width = max(len(vessel.expansivity) for vessel in vessels)
-    coefficients = [
-        _column(vessels, rows, lambda one, j=j: one.expansivity[j] if j < len(one.expansivity) else 0.0)  # type: ignore[misc]
-        for j in range(width)
-    ]
+    coefficients, origin = _expansion(vessels, rows)
     standard = _column(vessels, rows, lambda one: one.parameters["standard_pressure"])
     pressure = np.where(np.isfinite(state.pressure), state.pressure, standard)
     ratio = log_volume_ratio(
         state.liquid_temperature, pressure, temperature_ref=state.density_temperature,
-        pressure_ref=state.density_pressure, coefficients=coefficients,
-        origin=_column(vessels, rows, lambda one: one.density[1]),
+        pressure_ref=state.density_pressure, coefficients=coefficients, origin=origin,
         compressibility=_column(vessels, rows, lambda one: one.compressibility),
     )  # fmt: skip
     return np.asarray(state.density * np.exp(-ratio))
@@ -95,16 +99,15 @@ def head_sensitivities(
         return np.zeros(1)
     tap = _column(vessels, state.rows, lambda one: one.body.gauging.tap_m)
     by_log_density = np.where(where, -(state.level - tap) * result.sensitivities["level"], 0.0)
-    first = vessels[0]
+    coefficients, origin = _expansion(vessels, state.rows)
     beta, sample = (
-        np.asarray(
-            expansivity(
-                t, coefficients=[_column(vessels, state.rows, lambda one: one.expansivity[0])], origin=first.density[1]
-            )
-        )
+        expansivity(t, coefficients=coefficients, origin=origin)
         for t in (state.liquid_temperature, state.density_temperature)
     )
-    thermal = beta * (state.liquid_temperature - state.density_temperature)
+    thermal = log_volume_ratio(
+        state.liquid_temperature, 0.0, temperature_ref=state.density_temperature, pressure_ref=0.0,
+        coefficients=coefficients, origin=origin, compressibility=0.0,
+    )  # fmt: skip
     for name, change in (
         ("density", by_log_density / state.density), ("liquid_temperature", -beta * by_log_density),
         ("density_temperature", sample * by_log_density), ("expansion", -thermal * by_log_density),
