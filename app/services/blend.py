@@ -140,11 +140,14 @@ def _since(
     """What moved between the beginning of a sample and the reading, each ticket at the middle of its time."""
     vessel, read = measured.vessel(row), int(measured.collected.at[row])
     events: list[tuple[int, _Receipt | float]] = []
-    for ticket, body in own:
-        if body.of == "water" or ticket.started_at >= read or ticket.ended_at <= begins:
-            continue
+    since = [one for one in own if one[1].of is None and one[0].started_at < read and one[0].ended_at > begins]
+    if all(body.to != vessel.name for _, body in since):
+        return _Since(())  # what left, left as it was
+    dense = float(measured.result["vapour_density"][row])
+    space = {vessel.name: dense} if math.isfinite(dense) else {}
+    for ticket, body in since:
         middle = max(ticket.started_at, begins) + min(ticket.ended_at, read)
-        part = moves.part(ticket, begins, read, standard)
+        part = moves.part(ticket, begins, read, standard, spaces=space)
         mass = math.nan if part.mass is None else part.mass.value
         if part.target == vessel.name:
             density = move.own_density(ticket.name, body, vessel)

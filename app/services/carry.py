@@ -327,11 +327,11 @@ def _began(moves: Moves, vessel: str, read: int) -> int | None:
 def _certain(measured: Measured, moves: Moves, row: int, first: int, last: int) -> bool:
     """Whether what tickets moved between two instants is beyond doubt for this vessel's gauge."""
     vessel = measured.vessel(row)
-    standard = {vessel.name: standard_density(measured, row)}
+    standard, spaces = {vessel.name: standard_density(measured, row)}, vapours(measured, [row])
     terms = []
     for ticket, body in moves.of(vessel.name):
-        if body.of is None:
-            part = moves.part(ticket, first, last, standard, spaces=vapours(measured, [row]))
+        if body.of is None and ticket.started_at < last and ticket.ended_at > first:
+            part = moves.part(ticket, first, last, standard, spaces=spaces)
             if part.mass is not None:
                 terms.append((1.0 if part.target == vessel.name else -1.0, part.mass))
     net = combine(terms)
