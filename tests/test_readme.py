@@ -99,9 +99,10 @@ def test_each_command_of_the_top_is_one_line_that_sets_itself_up():
 
 def test_every_warning_has_its_line_in_the_glossary():
     section = README.split("## Warnings, and what to do about each")[1].split("\n## ")[0]
-    said = set(re.findall(r"`([a-z_]+)`", "".join(line.split("|")[1] for line in section.splitlines() if line.startswith("| `"))))
+    rows = [line.split("|") for line in section.splitlines() if line.startswith("| `")]
+    said = set(re.findall(r"`([a-z_]+)`", "".join(row[1] for row in rows)))
     assert said >= set(get_args(Warned))
-    assert all(len(line.split("|")) == 5 and line.split("|")[3].strip() for line in section.splitlines() if line.startswith("| `"))
+    assert all(len(row) == 5 and row[3].strip() for row in rows)
 
 
 def test_every_day_is_linked():

@@ -21,7 +21,8 @@ def cold_box(site, density, spread):
     site.liquid("nitrogen-liquid", density, density_uncertainty_kg_m3=spread)
     site.tank(
         "cold-1", "nitrogen-liquid", shape=BOX, gauging={"tap_m": 0.2}, vapour_space={"kind": "open"},
-        instruments={"differential_pressure_kpa": {"random": 0.0, "systematic": 0.05}, "capacity_pct": {"systematic": 0.0, "local": 0.0}},
+        instruments={"differential_pressure_kpa": {"random": 0.0, "systematic": 0.05},
+                     "capacity_pct": {"systematic": 0.0, "local": 0.0}},
     )  # fmt: skip
     site.reads("cold-1", MORNING, differential_pressure_kpa=15.0)
     return site.inventory(MORNING).of("cold-1")

@@ -12,8 +12,9 @@ from models.geometry import shapes
 from models.mass import inventory
 from tests.models.mass_cases import ATMOSPHERE, BLANKETED, Case, state, vessels
 
-# n-Pentane by its reference equation of state (M. Thol et al., Fluid Phase Equilib., 2019, by CoolProp 8.0.0): saturated at 20 °C at
-# 56.568 kPa with 1.72447 kg/m³; at 38 °C at 108.21 kPa; at 38 °C and 102.325 kPa a gas of 2.98350 kg/m³.
+# n-Pentane by its reference equation of state (M. Thol et al., Fluid Phase Equilib., 2019, by CoolProp 8.0.0):
+# saturated at 20 °C at 56.568 kPa with 1.72447 kg/m³; at 38 °C at 108.21 kPa; at 38 °C and 102.325 kPa a gas of
+# 2.98350 kg/m³.
 BOX = shapes.box(length=10.0, width=10.0, height=10.0)
 
 
