@@ -255,7 +255,7 @@ def blank(rows: int, width: int) -> tuple[Candidates, Text]:
 
 def _remembered(slot: Slot) -> bool:
     """Whether a value of any age tells something: it still counts, or its age is the reason why nothing does."""
-    return slot.max_age >= ALWAYS or slot.quantity in REMEMBERED
+    return bool(slot.max_age >= ALWAYS) or slot.quantity in REMEMBERED
 
 
 def _bounds(slot: Slot, vessel: CompiledVessel, at: int) -> tuple[int, int]:
