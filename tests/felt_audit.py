@@ -43,11 +43,13 @@ from pathlib import Path
 
 ROOT = Path(__file__).resolve().parents[1]
 NUDGE = 1.01
-# Numbers of the method: what an iteration, a grid or a comparison of floats needs. Of the last four, the first two
-# are rounding allowed in a comparison, TRUSTED is the departure at which an inverse counts as lost to rounding, and
-# SMALL_ANGLE is where a series takes over from a formula that agrees with it to the last bits on both sides.
+# Numbers of the method: what an iteration, a grid or a comparison of floats needs. ROUNDING and ROOM are allowed in a
+# comparison; at TRUSTED an inverse counts as lost to rounding; coefficients below NEGLIGIBLE are cut; at SMALL_ANGLE a
+# series takes over from a formula that agrees with it to the last bits; LARGEST_RATIO begins a search above the
+# largest root, 3; Trust.power is the power of a ratio that is zero unless a form gives both.
 NUMERICAL = re.compile(
-    r"(TOLERANCE|ITERATIONS|EPSILON|TINY|ROWS|KNOTS|STEPS?|DEGREE|POINTS|NODES|BLOCK|ROUNDING|ROOM|TRUSTED|SMALL_ANGLE)$"
+    r"(TOLERANCE|ITERATIONS|EPSILON|TINY|ROWS|KNOTS|STEPS?|DEGREE|POINTS|NODES|BLOCK"
+    r"|ROUNDING|ROOM|TRUSTED|NEGLIGIBLE|SMALL_ANGLE|LARGEST_RATIO|Trust\.power)$"
 )
 # Tests that feel a module without naming it.
 FURTHER: dict[str, tuple[str, ...]] = {}
