@@ -31,7 +31,8 @@ def _by_name(models: set[type[BaseModel]]) -> list[type[BaseModel]]:
 
 
 BODIES = _by_name(_below(Body))
-ANSWERS = [one for one in _by_name(_below(Answer)) if not one.__pydantic_generic_metadata__["parameters"]]
+# What a generic answer was made for elsewhere depends on what was imported before: it counts as it is written.
+ANSWERS = [one for one in _by_name(_below(Answer)) if one.__pydantic_generic_metadata__["origin"] is None]
 EVERY = BODIES + ANSWERS
 FIELDS = [(model, name) for model in EVERY for name in model.model_fields]
 
