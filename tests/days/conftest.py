@@ -210,6 +210,14 @@ class Site:
         """What a revision changed against the one before, and because of what."""
         return list(self.get(f"/reconciliations/{name}/changes")["changes"])
 
+    def because(self, name: str) -> set[tuple[str, str]]:
+        """Kind and subject of everything that a revision's changes come from."""
+        return {(cause["kind"], cause["subject"]) for one in self.changes(name) for cause in one["because"]}
+
+    def words(self, name: str) -> list[str]:
+        """A revision's changes as sentences."""
+        return list(self.get(f"/reconciliations/{name}/changes")["words"])
+
     def inventory(self, at: str, **query: object) -> Told:
         """Every vessel's inventory at an instant; ``as_of`` by what was known then."""
         return self.get("/inventory", at=at, **query)

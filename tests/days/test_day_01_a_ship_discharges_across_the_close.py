@@ -72,6 +72,15 @@ def test_the_running_ticket_with_its_totaliser_at_the_close_balances_the_night(h
     expected = math.hypot(8_400.0, math.sqrt(2) * KG_PER_MM)
     assert book["imbalance_uncertainty_kg"] == pytest.approx(expected, abs=1.0)
     assert harbour.book("2026-03-13.1").flagged == {"tk-1"}  # what was said stays readable
+    # And the revision says what it changed: the ship, and whatever she brought into the balance.
+    assert harbour.because("2026-03-13") == {("late_transfer", "ship-0313")}
+    changed = {one["field"]: (one["before"], one["after"]) for one in harbour.changes("2026-03-13")}
+    assert set(changed) == {"received_kg", "imbalance_kg", "flagged", "verdict", "measured_mass_kg"}
+    assert changed["received_kg"] == pytest.approx((0.0, 8_400 * T), abs=0.5)
+    assert (changed["flagged"], changed["verdict"]) == ((True, False), ("fail", "pass"))
+    assert harbour.words("2026-03-13")[0].startswith(
+        "tk-1: receipts 0 → 8,400,000 kg because ticket ship-0313 came on "
+    )
 
 
 def test_as_the_paper_arrives_only_the_first_answer_is_flagged_and_the_nights_add_up(harbour):
@@ -94,6 +103,10 @@ def test_as_the_paper_arrives_only_the_first_answer_is_flagged_and_the_nights_ad
     expected = math.hypot(6_594.0, math.sqrt(2) * KG_PER_MM)
     assert second.of("tk-1")["imbalance_uncertainty_kg"] == pytest.approx(expected, abs=1.0)
     assert second.of("tk-1")["opening_mass_kg"] == first.of("tk-1")["closing_mass_kg"]
+    assert harbour.because("2026-03-14") == {("late_transfer", "ship-0313")}
+    assert harbour.words("2026-03-14")[0].startswith(
+        "tk-1: receipts 6,600,000 → 6,594,000 kg because ticket ship-0313 was corrected on "
+    )
 
 
 def test_the_final_ticket_alone_is_divided_by_time(harbour):

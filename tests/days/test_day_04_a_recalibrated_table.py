@@ -139,6 +139,15 @@ def test_a_table_dated_back_to_the_first_revises_every_night_since(tank):
     assert [one["closing_mass_kg"] for one in books] == pytest.approx([400_000.0, 401_600.0, 321_280.0], abs=0.01)
     assert [one["imbalance_kg"] for one in books] == pytest.approx([0.0, 0.0, 0.0], abs=0.01)
 
+    # Each revision says that the table did it; the night of the 2nd names it for its opening, too.
+    assert tank.because("2026-03-01") == tank.because("2026-03-02") == {("definition", "vessel tk-4")}
+    changed = {one["field"]: (one["before"], one["after"]) for one in tank.changes("2026-03-02")}
+    assert changed["opening_mass_kg"] == pytest.approx((400_000.0, 401_600.0), abs=0.01)
+    assert changed["closing_mass_kg"] == pytest.approx((320_000.0, 321_280.0), abs=0.01)
+    assert tank.words("2026-03-02")[0].startswith(
+        "tk-4: opening mass 400,000 → 401,600 kg because the definition of vessel tk-4 was changed on "
+    )
+
     # What was said before stays readable: the first revision, and the stock as it was known then.
     assert tank.book("2026-03-02.1").of("tk-4")["imbalance_kg"] == pytest.approx(320.0, abs=0.01)
     again = tank.inventory("2026-03-02 06:00", as_of=then["known_at"])

@@ -110,6 +110,20 @@ def test_the_report_stands_from_the_end_of_the_receipt_and_revises_the_nights(ta
     assert first["imbalance_uncertainty_kg"] == pytest.approx(GAUGE, abs=1.0)
     assert not any(one.flagged for one in after)
 
+    # Every one of the three nights names the report, and only that.
+    drawn = "2026-03-14T08:00:00Z from lab"
+    for day in days:
+        causes = tank.because(day)
+        assert {kind for kind, _ in causes} == {"late_reading"}
+        assert ("late_reading", f"tk-5 observed_density_kg_m3 {drawn}") in causes
+        assert all(subject.endswith(drawn) for _, subject in causes)
+    opened = [one for one in tank.changes("2026-03-14") if one["field"] == "opening_mass_kg"]
+    assert (opened[0]["before"], opened[0]["after"]) == pytest.approx((800_000.0, 802_000.0), abs=0.5)
+    assert any(
+        line.startswith("tk-5: closing mass 800,000 → 802,000 kg because the density of tk-5 of 2026-03-14T08:00:00Z")
+        for line in tank.words("2026-03-13")
+    )
+
     now = tank.inventory("2026-03-14 06:00")
     assert now.of("tk-5")["mass_kg"] == pytest.approx(802_000.0, abs=0.5)
     assert "sample_predates_receipt" not in now.warnings("tk-5")

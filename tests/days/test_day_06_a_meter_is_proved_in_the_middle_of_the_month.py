@@ -67,6 +67,10 @@ def test_once_known_the_proving_measures_the_error_of_the_interval_before_it(rac
     assert book["imbalance_uncertainty_kg"] == pytest.approx(math.hypot(119.5, GAUGE), abs=3.0)
     assert night.ticket("rack-0314")["measured_mass_kg"] == book["delivered_kg"]
     assert rack.book(before["id"]).of("tk-6")["delivered_kg"] == pytest.approx(401_200.0, abs=0.01)
+    assert rack.because("2026-03-14") == {("definition", "meter m-rack")}
+    (ticket,) = (one for one in rack.changes("2026-03-14") if one.get("transfer") == "rack-0314")
+    assert (ticket["before"], ticket["after"]) == (401_200.0, book["delivered_kg"])
+    assert "because the definition of meter m-rack was changed on " in rack.words("2026-03-14")[0]
 
 
 def test_a_ticket_after_the_proving_is_as_read(rack):
