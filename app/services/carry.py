@@ -55,6 +55,11 @@ class Carried:
         """The mass of a stock-take that counts as it stands: found empty, or weighed."""
         return Estimate(0.0) if self.empty else self.weighed
 
+    @property
+    def changed(self) -> bool:
+        """Whether the mass, or what is known of it, is another than that of its reading."""
+        return bool(self.stated is not None or self.extras or self.moved.value or self.moved.parts)
+
     def warn(self, code: str, detail: str, *, uncertain: bool = False) -> None:
         """Say what is doubtful."""
         self.warnings.append({"code": code, "detail": detail})

@@ -87,7 +87,7 @@ class CompiledVessel:
     until: int = ALL_TIME  # µs; nor what is read from here on: another substance, or out of service
     history: tuple[tuple[int, Vessel], ...] = ()  # effective_from and body of every text, where there are several
 
-    @property
+    @cached_property
     def has_liquid(self) -> bool:
         """Whether the vessel has a level and a liquid under it."""
         return bool(self.method & Method.LIQUID)
@@ -97,7 +97,7 @@ class CompiledVessel:
         """Whether the substance's vapour counts beside a blanket, whose pressure has then to be known."""
         return bool(self.method & Method.BLANKET)
 
-    @property
+    @cached_property
     def is_full(self) -> bool:
         """Whether it is a line kept full: a liquid without a level."""
         return bool(self.method & Method.FULL)
@@ -109,7 +109,7 @@ class CompiledVessel:
             return "liquid_temperature"
         return "level" if self.has_liquid else "pressure"
 
-    @property
+    @cached_property
     def has_vapour(self) -> bool:
         """Whether the substance's vapour counts in this vessel."""
         return bool(self.method & Method.VAPOUR)

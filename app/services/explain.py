@@ -83,7 +83,7 @@ def status(measured: Measured, row: int) -> str:
     marks = Mark(int(measured.result.marks[row]))
     doubtful = Mark.ROOF_LANDING_ZONE | Mark.GUARD_WIDE
     uncertain = any(
-        c.usable[row] and c.quality[row] == 1 for name, c in measured.chosen.items() if _counts(measured, row, name)
+        c.quality[row] == 1 and c.usable[row] and _counts(measured, row, name) for name, c in measured.chosen.items()
     )
     carried = measured.carried.get(row)
     if carried and carried.stated is not None:
@@ -168,8 +168,6 @@ def _answer(measured: Measured, row: int, spread: float, *, working: bool, budge
 def _carry(measured: Measured, row: int, answer: dict[str, Any]) -> None:
     """What moved between the reading and the instant, in mass and in the liquid's volumes."""
     carried = measured.carried[row]
-    whole = mass_estimate(measured, row)
-    assert whole is not None
     if carried.empty:
         # A density that nobody read makes no volume of what came since.
         nothing = 0.0 if carried.moved.value == 0.0 else None
@@ -177,9 +175,10 @@ def _carry(measured: Measured, row: int, answer: dict[str, Any]) -> None:
         answer |= {"liquid_mass_kg": 0.0, "vapour_mass_kg": 0.0, "fill_pct": nothing}
     elif carried.weighed is not None:
         answer |= {name: None for name, _ in FIELDS} | {"fill_pct": None}
-    if carried.extras or carried.stated is not None or carried.moved.parts:
-        answer["mass_uncertainty_kg"] = whole.uncertainty
-    answer["mass_kg"] = whole.value
+    if carried.changed:
+        whole = mass_estimate(measured, row)
+        assert whole is not None
+        answer |= {"mass_kg": whole.value, "mass_uncertainty_kg": whole.uncertainty}
     if measured.instant(row) == int(measured.collected.at[row]) and not carried.empty:
         return
     moved = carried.moved.value
@@ -188,10 +187,10 @@ def _carry(measured: Measured, row: int, answer: dict[str, Any]) -> None:
         return
     vessel = measured.vessel(row)
     if not vessel.has_liquid:
-        answer["vapour_mass_kg"] = whole.value
+        answer["vapour_mass_kg"] = answer["mass_kg"]
         read = float(measured.result["mass"][row])
         if answer["gas_standard_volume_m3"] is not None and read > 0.0:
-            answer["gas_standard_volume_m3"] *= whole.value / read
+            answer["gas_standard_volume_m3"] *= answer["mass_kg"] / read
         return
     answer["liquid_mass_kg"] += moved
     if not carried.empty:
@@ -303,7 +302,7 @@ def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
     marks = Mark(int(measured.result.marks[row]))
     found = [
         {"code": code, "detail": detail}
-        for mark, (code, detail) in WARNINGS.items()
+        for mark, (code, detail) in (WARNINGS.items() if marks else ())
         if marks & mark and not mark & UNMEASURED
     ]
     for spec in INPUTS:
