@@ -6,7 +6,8 @@ from typing import Any
 
 import pytest
 
-from tests.app.services.plant import OIL, Plant, row
+from app.services import close
+from tests.app.services.plant import OIL, Plant, instant, row
 
 OPENED, NOON, CLOSED = "2026-03-14T06:00", "2026-03-14T12:00", "2026-03-15T06:00"
 HEAVY: dict[str, Any] = {**OIL, "name": "heavy", "liquid": {**OIL["liquid"], "density_kg_m3": 900.0}}
@@ -95,6 +96,20 @@ def test_a_sample_after_a_delivery_is_not_of_what_was_delivered(plant: Plant) ->
     plant.read("tk-1", "2026-03-14T07:00", "lab", observed_density_kg_m3=810.0, observed_density_temperature_c=15.0)
     night = plant.close("2026-03-14")
     assert (night["revision"], row(night, "tk-1")["delivered_kg"]) == (2, pytest.approx(81_000.0, rel=1e-12))
+
+
+def test_a_receipt_is_the_same_mass_in_a_night_and_in_a_longer_period(plant: Plant) -> None:
+    """100 m³ in the night of the 14th, a sample of 840 the day after: 80,000 kg, whichever period counts them."""
+    plant.tank("tk-1")
+    for day, level in ((14, 2.0), (15, 3.0), (16, 3.0)):
+        plant.read("tk-1", f"2026-03-{day}T06:00", level_m=level)
+    said = {"standard_volume_m3": 100.0, "mass_uncertainty_kg": 0.0}
+    plant.ticket("in", "boundary:jetty", "tk-1", "2026-03-14T08:00", "2026-03-14T09:00", **said)
+    plant.read("tk-1", "2026-03-15T12:00", observed_density_kg_m3=840.0, observed_density_temperature_c=15.0)
+    night = row(plant.close("2026-03-14"), "tk-1")
+    bounds = instant("2026-03-14T06:00"), instant("2026-03-16T06:00")
+    both = row(close.close(plant.store, plant.clock, plant.site, bounds=bounds)[0], "tk-1")
+    assert night["received_kg"] == both["received_kg"] == pytest.approx(80_000.0, rel=1e-12)
 
 
 def test_a_tank_that_is_out_at_the_close_delivered_what_it_held(plant: Plant) -> None:
