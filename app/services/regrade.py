@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections import ChainMap
+from collections import ChainMap, Counter
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -47,21 +47,28 @@ class Moving:
             self.spaces = vapours(closing.measured)
             for row, vessel in enumerate(closing.site.vessels):
                 self.standard[vessel.name] = standard_density(closing.measured, row)
-        for one in tickets:
-            name = _density_of(one, closing)
-            if name is not None:
-                self._measure(connection, closing.site, one, name)
+        found: dict[str, list[Any]] = {}
+        for together in _rounds([(one, _density_of(one, closing)) for one in tickets]):
+            found |= self._measure(connection, closing.site, together)
+        self.grounds = [found[one.name] for one in tickets if one.name in found]
 
-    def _measure(self, connection: Connection, site: SiteInForce, ticket: Ticket, vessel: str) -> None:
-        """A vessel's density when a ticket began, by the definitions and the sample of then."""
-        held = site_in_force(connection, site.site_id, site.name, ticket.started_at, site.known)
-        former = held.vessel(vessel)
-        if former is not None and former.has_liquid:
-            at = np.array([ticket.started_at], dtype=np.int64)
-            measured = measure_at(connection, site.site_id, (former,), at, site.known, self.meters)
-            self.then[ticket.name] = former, standard_density(measured, 0)
-            cited = [list(one) for one in former.definitions]
-            self.grounds.append([ticket.name, cited, inputs_read(measured, 0)])
+    def _measure(
+        self, connection: Connection, site: SiteInForce, tickets: Mapping[str, Ticket]
+    ) -> dict[str, list[Any]]:  # fmt: skip
+        """Each vessel's density when its ticket began, by the definitions and the sample of then; what it rests on."""
+        held = {name: _former(connection, site, name, ticket.started_at) for name, ticket in tickets.items()}
+        vessels = tuple(one for one in held.values() if one is not None and one.has_liquid)
+        if not vessels:
+            return {}
+        own = [tickets[vessel.name] for vessel in vessels]
+        at = np.array([one.started_at for one in own], dtype=np.int64)
+        measured = measure_at(connection, site.site_id, vessels, at, site.known, self.meters)
+        found: dict[str, list[Any]] = {}
+        for row, (vessel, ticket) in enumerate(zip(vessels, own, strict=True)):
+            self.then[ticket.name] = vessel, standard_density(measured, row)
+            cited = [list(one) for one in vessel.definitions]
+            found[ticket.name] = [ticket.name, cited, inputs_read(measured, row)]
+        return found
 
     def between(self, first: int, last: int) -> list[Moved]:
         """What the tickets that ran between two instants moved then; one of no duration where it stands."""
@@ -79,6 +86,27 @@ class Moving:
             vessels = ChainMap({vessel.name: vessel}, self.vessels)
             standard = ChainMap({vessel.name: density}, self.standard)
         return move.moved(one, first, last, vessels, self.meters, standard, self.spaces)
+
+
+def _rounds(wanted: Sequence[tuple[Ticket, str | None]]) -> list[dict[str, Ticket]]:
+    """Tickets by the vessel that each asks for, a vessel once in a round: a round is measured together."""
+    rounds: list[dict[str, Ticket]] = []
+    taken: Counter[str] = Counter()
+    for ticket, vessel in wanted:
+        if vessel is not None:
+            if taken[vessel] == len(rounds):
+                rounds.append({})
+            rounds[taken[vessel]][vessel] = ticket
+            taken[vessel] += 1
+    return rounds
+
+
+def _former(connection: Connection, site: SiteInForce, name: str, at: int) -> CompiledVessel | None:
+    """A vessel by the definitions of an instant before the close; those of the close where they held by then."""
+    vessel = site.vessel(name)
+    if vessel is not None and all(one.effective_from is None or one.effective_from <= at for one in vessel.definitions):
+        return vessel
+    return site_in_force(connection, site.site_id, site.name, at, site.known).vessel(name)
 
 
 def _density_of(ticket: Ticket, closing: Stock) -> str | None:
