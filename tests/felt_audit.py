@@ -241,7 +241,8 @@ def tests_of(path: str) -> tuple[list[str], list[str]]:
     """Test files that should feel a file of models/, and those that feel it by way of its users."""
     modules = {path} if path.endswith(".py") else set(readers(path))
     own = [mirror(module) for module in modules]
-    own += [test for test in [*code("tests/models"), *code("tests/published")] if imported(test) & modules]
+    every = [test for folder in ("tests/models", "tests/published") for test in code(folder) if "/test_" in test]
+    own += [test for test in every if imported(test) & modules]
     own += [test for module in modules for test in FURTHER.get(module, ())]
     users = [mirror(user) for user in code("models") if imported(user) & modules]
     first = [test for test in dict.fromkeys(own) if (ROOT / test).is_file()]
