@@ -166,9 +166,9 @@ def _write(writing: Writing, rows: Sequence[tuple[int, Reading]], errors: list[R
             outcome.unchanged += 1
     changed = ("stored", "revised")
     kept = [
-        (mark.begins(one.taken_at, one.named(), one.sample_holds_from, revised="revised" in fate), one.named())
+        (mark.begins(one.taken_at, named := one.named(), one.sample_holds_from, revised="revised" in fate), named)
         for (_, one), fate in zip(rows, fates, strict=True)
-        if fate & set(changed)
+        if not fate.isdisjoint(changed)
     ]
     mark.readings(writing, kept)
     outcome.known_at = writing.recorded_at
