@@ -104,8 +104,8 @@ def values(number: int, step: int = 0) -> dict[str, float]:
 
 def define_all(writing: Writing, vessels: int) -> None:
     """Everything that has a text, in one transaction."""
-    for name, text in SUBSTANCES.items():
-        definitions.put(writing, "substance", name, None, canonical(Substance.model_validate(text)))
+    for name, said in SUBSTANCES.items():
+        definitions.put(writing, "substance", name, None, canonical(Substance.model_validate(said)))
     for number in range(vessels):
         text = canonical(Vessel.model_validate(body(number)))
         definitions.put(writing, "vessel", name_of(number), None, text)
