@@ -18,7 +18,7 @@ MORNINGS = (*(f"{day}T06:00:00Z" for day in NIGHTS), "2026-03-16T06:00:00Z")
 OF_THE_CLOSE = ("id", "revision", "known_at", "site")  # when it was closed, not what it says
 # The same examples in every run, a few of them, not shrunk: each is a site of its own on a real database.
 FEW = settings(
-    max_examples=6, derandomize=True, deadline=None, database=None, phases=[Phase.generate],
+    max_examples=5, derandomize=True, deadline=None, database=None, phases=[Phase.generate],
     suppress_health_check=[HealthCheck.function_scoped_fixture, HealthCheck.too_slow],
 )  # fmt: skip
 
