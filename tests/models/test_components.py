@@ -133,3 +133,18 @@ def test_an_impossible_constant_is_named(field: str, value: float) -> None:
     }  # fmt: skip
     with pytest.raises(DefinitionError, match=field):
         given_component("x", **(good | {field: value}))
+
+
+@pytest.mark.parametrize(
+    ("field", "inside", "outside"),
+    [("critical_temperature", 1995.0, 2005.0), ("critical_pressure", 4.98e7, 5.02e7), ("acentric_factor", 1.99, 2.01),
+     ("molar_mass", 1.99, 2.01), ("critical_volume", 4.98e-3, 5.02e-3)],
+)  # fmt: skip
+def test_the_limits_of_a_constant_are_those_that_it_is_told(field: str, inside: float, outside: float) -> None:
+    good = {
+        "critical_temperature": 400.0, "critical_pressure": 4e6, "acentric_factor": 0.2, "molar_mass": 0.05,
+        "critical_volume": 3e-4,
+    }  # fmt: skip
+    assert getattr(given_component("x", **(good | {field: inside})), field) == inside
+    with pytest.raises(DefinitionError, match=field):
+        given_component("x", **(good | {field: outside}))

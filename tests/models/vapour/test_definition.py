@@ -29,6 +29,8 @@ OURS = given_component(
         ({"components": ("propane",), "measured_second": -390.0}, "another unit"),
         ({"components": ("propane",), "measured_second": float("nan")}, "another unit"),
         ({"components": ("propane",), "measured_second": -4e-4, "measured_third": 2e-2}, "another unit"),
+        ({"components": ("propane",), "measured_second": -0.0201}, "more than 0.02 m3/mol"),
+        ({"components": ("propane",), "measured_second": -4e-4, "measured_third": 1.01e-4}, "more than 0.0001 m6/mol2"),
         ({"components": ("propane",), "measured_second": ((300.0, -4e-4),)}, "two rows"),
         ({"components": ("propane",), "measured_second": ((300.0, -4e-4), (300.0, -3e-4))}, "they rise"),
         ({"components": ("propane",), "measured_second": ((-3.0, -4e-4), (300.0, -3e-4))}, "-3.0 K"),
@@ -39,6 +41,11 @@ OURS = given_component(
 def test_what_cannot_be_is_named(arguments: dict[str, object], words: str) -> None:
     with pytest.raises(DefinitionError, match=words):
         VapourMixture(**arguments)  # type: ignore[arg-type]
+
+
+def test_the_largest_coefficients_that_are_no_other_unit_are_taken() -> None:
+    mixture = VapourMixture(("propane",), measured_second=-0.0199, measured_third=0.99e-4)
+    assert (mixture.measured_second, mixture.measured_third) == (-0.0199, 0.99e-4)
 
 
 def test_the_source_is_measured_then_fitted_then_the_correlation() -> None:
