@@ -1,6 +1,7 @@
 """Plane sections of each zone against quadrature of the chord."""
 
 import math
+from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -65,7 +66,10 @@ def test_a_section_through_the_axis_is_twice_the_profile():
     assert ellipsoid == pytest.approx(math.pi * 0.6 * 1.5 / 2, rel=1e-14)
 
 
-def test_below_a_quarter_of_a_radian_the_series_is_the_angle_less_its_sine():
-    # Cancellation leaves about 1e-13 of the plain formula; the series' last term is 3e-9 of it.
-    angles = np.array([0.22, 0.24, 0.2499])
-    assert sections._less_sine(angles) == pytest.approx(angles - np.sin(angles), rel=2e-12, abs=0.0)
+@pytest.mark.parametrize("angle", [1e-3, 0.1, 0.22, 0.2499, 0.2501, 1.0])
+def test_an_angle_less_its_sine_keeps_its_digits(angle):
+    # x − sin x = x³/3! − x⁵/5! + …, in whole fractions: the plain formula has lost 1e-13 of itself at 0.25.
+    x = Fraction(angle)
+    exact = float(sum((-1) ** (n + 1) * x ** (2 * n + 1) / math.factorial(2 * n + 1) for n in range(1, 20)))
+    lost = 2e-15 if angle < 0.25 else 5e-13
+    assert sections._less_sine(np.array([angle])) == pytest.approx(exact, rel=lost, abs=0.0)
