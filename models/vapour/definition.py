@@ -142,7 +142,7 @@ def _check_measured(field: str, measured: Measured | None, largest: float, unit:
     """Measured values are finite, not in another unit by the look of them, and their temperatures rise."""
     if measured is None:
         return
-    rows = ((300.0, measured),) if isinstance(measured, (int, float)) else measured
+    rows = ((1.0, measured),) if isinstance(measured, (int, float)) else measured  # any temperature does
     if isinstance(measured, tuple) and len(rows) < 2:
         raise DefinitionError(
             f"{field} has {len(rows)} rows; give a number, or two rows or more", field=field
