@@ -30,10 +30,10 @@ def night(body: Mapping[str, Any]) -> Iterator[str]:
 def flag(one: Mapping[str, Any]) -> str:
     """One flagged vessel: what is missing or too much, its interval, and what chance explains."""
     imbalance, u = one["imbalance_kg"], one["imbalance_uncertainty_kg"]
-    word = "short" if imbalance < 0 else "over"
+    word = "short of book" if imbalance < 0 else "over book"
     names = " with ".join([one["vessel"], *one["judged_with"]])
     return (
-        f"{names}: {abs(imbalance):,.0f} kg {word} of book ± {COVERAGE * u:,.0f} kg (95 %), "
+        f"{names}: {abs(imbalance):,.0f} kg {word} ± {COVERAGE * u:,.0f} kg (95 %), "
         f"{abs(one['score']):.1f} times its standard uncertainty"
     )
 

@@ -31,7 +31,7 @@ def test_a_loss_is_preceded_by_the_emergency_procedure():
 def test_a_gain_needs_no_such_word():
     gain = NIGHT | {"vessels": [VESSEL | {"imbalance_kg": 10.0, "score": 4.0, "judged_with": ["tk-14"]}]}
     lines = list(report.night(gain))
-    assert len(lines) == 2 and lines[1].strip().startswith("tk-12 with tk-14: 10 kg over of book")
+    assert len(lines) == 2 and lines[1].strip().startswith("tk-12 with tk-14: 10 kg over book")
 
 
 def test_the_table_has_a_line_a_vessel_and_says_what_is_unknown():
