@@ -114,9 +114,9 @@ class Misdirected(AppError):
 
 
 class Unprocessable(AppError):
-    """A value that cannot be."""
+    """A request that can be read, with something in it that cannot be."""
 
-    status, title, default_code = 422, "A value cannot be", "invalid"
+    status, title, default_code = 422, "The request cannot be taken as it stands", "invalid"
 
 
 class Unavailable(AppError):
@@ -235,5 +235,7 @@ def _sentence(error: Mapping[str, Any]) -> str:
     """A sentence without the input: pydantic's own, but for the one kind that quotes it."""
     if error["type"] == "union_tag_invalid":
         return f"{error['ctx']['discriminator']} is not one of {error['ctx']['expected_tags']}"
+    if error["type"] == "missing":
+        return f"{error['loc'][-1]} is missing"
     sentence = str(error["msg"]).removeprefix("Value error, ").removeprefix("Assertion failed, ")
     return _UNPRINTABLE.sub("?", sentence)[:500]

@@ -25,7 +25,7 @@ ALWAYS = {
     "400": "The request cannot be read.",
     "404": "What the path names is not there.",
     "421": "The Host is not one of this service.",
-    "422": "A value cannot be; each mistake is named with its place.",
+    "422": "Something in the request cannot be; each mistake is named with its place.",
     "500": "A fault of the service.",
     "503": "The store cannot be reached; Retry-After says when to try again.",
 }

@@ -42,7 +42,7 @@ class Problem(BaseModel):
             "examples": [
                 {
                     "type": "urn:brimbook:problem:invalid",
-                    "title": "A value cannot be",
+                    "title": "The request cannot be taken as it stands",
                     "status": 422,
                     "detail": "The body has 1 error.",
                     "instance": "urn:brimbook:request:4f1c2b9ad1e94c0f9d7f2f6f0c5a1b3e",
@@ -166,5 +166,5 @@ def _parameters(request: Request, error: Exception) -> Response:
     """Path and query parameters; bodies never come here (see ``body.py``)."""
     assert isinstance(error, RequestValidationError)
     errors = [field_error(one, one["loc"]) for one in error.errors()]
-    detail = f"{len(errors)} parameter{'' if len(errors) == 1 else 's'} of the request cannot be."
+    detail = f"The path or query has {len(errors)} error{'' if len(errors) == 1 else 's'}."
     return answer(request.scope, Unprocessable(detail, errors=errors))

@@ -163,7 +163,7 @@ def _compute(vessel: CompiledVessel, measured: Measured, state: State) -> float:
 def _shown(state: State, name: str, scale: float, shift: float) -> float | None:
     column = getattr(state, name)
     value = at_row(column, 0) if column is not None else 0.0
-    return value * scale + shift if math.isfinite(value) else None
+    return round(value * scale + shift, 10) if math.isfinite(value) else None
 
 
 def _moved(

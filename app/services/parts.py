@@ -55,6 +55,11 @@ def at_row(values: FloatColumns, row: int) -> float:
     return float(values[row if len(values) > 1 else 0])
 
 
+def celsius_of(kelvin: float) -> float:
+    """A temperature as it was posted: what the way through kelvin and back adds lies below 1e-10 °C. [°C]"""
+    return round(kelvin - 273.15, 10)
+
+
 def stamp(instant: int) -> str:
     """An instant in error ids: basic UTC to the microsecond."""
     return str(np.datetime64(int(instant), "us")).replace("-", "").replace(":", "") + "Z"

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from app.services.compile import virial_columns
 from app.services.measure import Measured
-from app.services.parts import at_row
+from app.services.parts import at_row, celsius_of
 from models.columns import Mark, Method
 from models.estimate import Estimate, combine
 
@@ -79,7 +79,7 @@ def _geometry(measured: Measured, row: int) -> Iterator[Step]:
     )
     yield _step("volume", "V(h)", result["tank_volume"][row], "m³", vessel.curve.kind, vessel.curve.source)
     yield _step("surface", "A(h)", result["surface_area"][row], "m²", "slope of the same curve", vessel.curve.source)
-    yield _step("shell temperature", "T_shell", result["liquid_shell_temperature"][row] - 273.15, "°C",
+    yield _step("shell temperature", "T_shell", celsius_of(result["liquid_shell_temperature"][row]), "°C",
                 "that of the liquid (insulated)" if parameters["liquid_weight"] == 1.0
                 else "(7 T_liquid + T_ambient)/8", "API MPMS ch. 12.1.1")  # fmt: skip
     yield _step("shell factor", "K", result["shell_factor"][row], "1",
@@ -116,7 +116,7 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     yield _step(
         "sample temperature",
         "T_s",
-        at_row(state.density_temperature, row) - 273.15,
+        celsius_of(at_row(state.density_temperature, row)),
         "°C",
         "as read",
         "as read",
@@ -125,7 +125,7 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     yield _step(
         "liquid temperature",
         "T",
-        at_row(state.liquid_temperature, row) - 273.15,
+        celsius_of(at_row(state.liquid_temperature, row)),
         "°C",
         "mean of the liquid",
         "as read",
@@ -135,7 +135,7 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     yield _step(
         "standard temperature",
         "T_std",
-        vessel.parameters["standard_temperature"] - 273.15,
+        celsius_of(vessel.parameters["standard_temperature"]),
         "°C",
         "the site's base temperature",
         "definition",
@@ -218,7 +218,7 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     )
     if vessel.is_blanketed:
         basis = "as read" if math.isfinite(at_row(measured.state.vapour_temperature, row)) else "that of the liquid"
-    yield _step("vapour temperature", "T_v", result["vapour_temperature"][row] - 273.15, "°C", basis, "as read")
+    yield _step("vapour temperature", "T_v", celsius_of(result["vapour_temperature"][row]), "°C", basis, "as read")
     mixture = measured.mixture(row)
     series = virial_columns((mixture,))
     second, _, third, _ = series.second_and_third(result["vapour_temperature"][row])
