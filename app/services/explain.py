@@ -354,6 +354,9 @@ def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
 
 def reason(measured: Measured, row: int) -> dict[str, str]:
     """Why a row has no mass: the first input that it lacks, or a value outside a limit."""
+    if row in measured.refused:
+        detail = f"the substance's vapour model cannot take the analysis: {measured.refused[row]}"
+        return {"code": "outside_method", "detail": detail}
     vessel = measured.vessel(row)
     state = measured.state
     lacking = {

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
@@ -21,11 +21,13 @@ from app.services.compile import (
     mean_atmosphere,
     mixture_rows,
     stack,
+    virial_columns,
 )
 from app.services.gauged import HEAD, by_head, head_sensitivities, levels_per_unit
 from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Part, at_row
 from models import units
 from models.columns import Inventory, State
+from models.errors import DefinitionError
 from models.estimate import Estimate
 from models.liquid.expansivity import expansivity
 from models.mass import inventory
@@ -57,6 +59,7 @@ class Measured:
     carried: dict[int, Carried] = field(default_factory=dict)
     tickets: list[tuple[str, str]] = field(default_factory=list)
     checks: dict[int, list[dict[str, Any]]] = field(default_factory=dict)
+    refused: Mapping[int, str] = field(default_factory=dict)
 
     def instant(self, row: int) -> int:
         """The instant that a row was asked for; it may have been read at another."""
@@ -111,7 +114,8 @@ def measure(
     parts = parts_of(builder, state, per_unit, gravity)
     mixtures = tuple(mixture_rows(collected.vessels, extra))
     return Measured(
-        collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures, asked
+        collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures, asked,
+        refused=builder.refused,
     )
 
 
@@ -132,6 +136,7 @@ class States:
         self.vented = self.of_vessels([float(vessel.space in ("open", "none")) for vessel in self.vessels]) > 0
         self.at_rest = np.zeros(collected.rows, dtype=bool)
         self.gauge = np.zeros(collected.rows, dtype=bool)
+        self.refused: dict[int, str] = {}  # rows whose analysis the substance's vapour model cannot take, and why
         level, origin = chosen["level"].source, collected.origins["level"]
         means = [origin.of(row, int(level[row]))[0] if level[row] >= 0 else "" for row in range(collected.rows)]
         self.other_means = any(one in OTHER_MEANS for one in means)
@@ -178,6 +183,9 @@ class States:
             vapour_row=vapour_row,
             roof_load=np.nan_to_num(self.chosen["roof_load"].value),
         )
+        for row in self.refused:  # nothing is computed by a composition that is not the content's
+            for column in (state.level, state.pressure):
+                column[row] = np.nan
         return state, extra
 
     def _outlived(self) -> BoolColumns:
@@ -319,6 +327,7 @@ class States:
         own = [vessel.mixture for vessel in self.vessels]
         found: list[VapourMixture | None] = []
         seen: dict[tuple[int, str], VapourMixture | None] = {}
+        refusals: dict[tuple[int, str], str] = {}
         for row in range(self.collected.rows):
             which = row if len(self.vessels) > 1 else 0
             text = texts[row, int(chosen.source[row])] if chosen.source[row] >= 0 else None
@@ -326,13 +335,25 @@ class States:
             if text is not None and mixture is not None and not self.vessels[which].is_blanketed:
                 key = (which, str(text))
                 if key not in seen:
-                    seen[key] = analysed_mixture(self.vessels[which], json.loads(text))
-                mixture = seen[key]
+                    seen[key], refusals[key] = _analysed(self.vessels[which], json.loads(text))
+                if refusals[key]:
+                    self.refused[row] = refusals[key]
+                mixture = seen[key] or mixture
                 self.mixed[row] = mixture is not None and len(mixture.fractions) > 1
             found.append(mixture)
         extra = tuple(dict.fromkeys(mixture for mixture in seen.values() if mixture is not None))
         place = mixture_rows(tuple(self.vessels), extra)
         return np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp), extra
+
+
+def _analysed(vessel: CompiledVessel, analysis: Mapping[str, float]) -> tuple[VapourMixture | None, str]:
+    """The vessel's vapour with a composition, or why the substance's model cannot take it."""
+    try:
+        mixture = analysed_mixture(vessel, analysis)
+        virial_columns((mixture,))
+    except DefinitionError as refused:
+        return None, str(refused)
+    return mixture, ""
 
 
 def standard_density(measured: Measured, row: int) -> Estimate:

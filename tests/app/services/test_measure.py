@@ -9,6 +9,7 @@ import pytest
 
 from app.services.measure import standard_density
 from app.services.parts import at_row
+from tests.app.services.plant import Plant
 from tests.app.services.worked import (
     BULLET,
     GAS_READ,
@@ -125,3 +126,30 @@ def test_a_standard_density_carries_its_samples_errors() -> None:
     thermometer = [part for name, part in found.parts.items() if name.startswith("density-temperature:")]
     assert thermometer == pytest.approx([found.value * 8.3e-4 * 0.25 / 3.0**0.5], rel=1e-6)
     assert standard_density(masses(compiled(RECEIVER, HYDROGEN), GAS_READ), 0).parts == {}
+
+
+def test_an_analysis_that_the_vapour_model_cannot_take_stops_its_own_vessel_and_no_other(plant: Plant) -> None:
+    """A component that another substance gives in full, and one without fitted coefficients where these are asked."""
+    full = {"id": "gas-x", "mole_fraction": 1.0, "molar_mass_g_mol": 40.0, "critical_temperature_k": 150.0,
+            "critical_pressure_kpa_abs": 4_900.0, "acentric_factor": 0.0}  # fmt: skip
+    nitrogen = [{"id": "nitrogen", "mole_fraction": 1.0}]
+    given = {
+        "other": {"model": "virial", "components": [full]},
+        "plain": {"model": "virial", "components": nitrogen},
+        "fitted": {"model": "virial", "components": nitrogen, "coefficients": "fitted"},
+    }
+    for name, vapour in given.items():
+        plant.put("substance", name, {"name": name, "vapour": vapour})
+        shape = {"kind": "fixed_volume", "volume_m3": 10.0}
+        plant.put("vessel", f"r-{name}", {"name": name, "substance": name, "shape": shape})
+        plant.read(f"r-{name}", "2026-03-14T06:00", pressure_kpa=900.0, vapour_temperature_c=20.0)
+    for name in ("plain", "fitted"):
+        plant.read(f"r-{name}", "2026-03-14T05:00", "lab", vapour_composition={"nitrogen": 0.9, "gas-x": 0.1})
+    answers = {one["vessel"]: one for one in plant.inventory("2026-03-14T06:00")["vessels"]}
+    assert answers["r-other"]["mass_kg"] > 0.0
+    for name in ("r-plain", "r-fitted"):
+        assert (answers[name]["status"], answers[name]["mass_kg"]) == ("unmeasured", None)
+        assert answers[name]["reason"]["code"] == "outside_method"
+        assert "gas-x" in answers[name]["reason"]["detail"]
+    night = plant.close("2026-03-14")
+    assert {one["vessel"] for one in night["vessels"]} == {"r-other", "r-plain", "r-fitted"}
