@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from contextlib import suppress
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -15,6 +16,7 @@ from app.services.carry import measure_at
 from app.services.compile import CompiledVessel, compile_bodies
 from app.services.explain import mass_estimate
 from app.services.in_force import SiteInForce
+from models.errors import DefinitionError
 from models.estimate import Estimate
 
 GEOMETRY = ("shape", "shell", "floating_roof", "deadwood")
@@ -42,7 +44,8 @@ def restated(
     for vessel in after.vessels:
         old = former.get(vessel.name)
         if old is not None and closed.get(vessel.name) is not None and _differs(old.body, vessel.body):
-            pairs.append((old, _with_geometry(old, vessel)))
+            with suppress(DefinitionError):  # what it held before cannot be in the later geometry: no figure to restate
+                pairs.append((old, _with_geometry(old, vessel)))
     found: dict[str, Restated] = {}
     for old, new in pairs:
         two = []

@@ -155,3 +155,22 @@ def test_what_was_not_measured_is_not_restated(plant: Plant) -> None:
     plant.tank("tk-1", shape=WIDER, effective_from=f"{OPENED}:00Z")
     own = books(plant)
     assert (own["opening_mass_kg"], own["restated_kg"], own["imbalance_kg"]) == (None, None, None)
+
+
+def test_a_receiver_that_becomes_a_tank_with_a_floating_roof_restates_nothing(plant: Plant) -> None:
+    """A gas under a floating roof cannot be: what it held is reclassified, and the night closes."""
+    gas = {"model": "virial", "components": [{"id": "nitrogen", "mole_fraction": 1.0}]}
+    plant.put("substance", "gas", {"name": "gas", "vapour": gas})
+    upright = {"kind": "vertical_cylinder", "diameter_m": 10.0, "height_m": 8.0}
+    plant.put("vessel", "tk-1", {"name": "one", "substance": "gas", "shape": upright})
+    for at in ("2026-03-13T06:00", OPENED):
+        plant.read("tk-1", at, pressure_kpa=10.0, vapour_temperature_c=15.0)
+    held = row(plant.close(NIGHT), "tk-1")["closing_mass_kg"]
+    assert held > 0.0
+    roof = {"mass_kg": 20_000.0, "lands_at_m": 1.0, "floats_at_m": 1.5, "gauge_sees": "liquid"}
+    plant.tank("tk-1", shape=upright, floating_roof=roof, effective_from="2026-03-14T18:00:00Z")
+    plant.read("tk-1", CLOSED, level_m=3.0)
+    own = row(plant.close(DAY), "tk-1")
+    assert own["restated_kg"] is None
+    assert own["opening_mass_kg"] == held
+    assert own["closing_mass_kg"] > 0.0
