@@ -398,6 +398,10 @@ def _missing(measured: Measured, row: int, name: str, quantity: str, words: str)
         detail = f"{words} ({quantity}) was last read at {format_instant(last)}"
     if age is not None:
         detail += f"; a reading counts for {age * 1e-6:g} s (max_age_s)"
+    if name == "level" and measured.vessel(row).body.gauging.reference_height_m is None:
+        columns = measured.collected.origins[name].columns
+        if any(read == "ullage_m" for read, _ in columns[row if len(columns) > 1 else 0]):
+            detail += "; an ullage needs the vessel's gauging.reference_height_m, which is not given"
     return detail
 
 

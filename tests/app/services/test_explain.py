@@ -32,6 +32,7 @@ BLANKET: Body = {"vapour_space": {"kind": "blanketed", "blanket": "nitrogen"}}
         (TABLE, {"level_m": 0.31}, "outside_table", ["level_m is 0.31 m", "from 0.5 to 14 m"]),
         (TANK, {"free_water_level_m": 8.5}, "outside_vessel", ["free_water_level_m is 8.5 m", "level_m is 8.231 m"]),
         (TANK, {"level_m": None}, "input_missing", ["level_m", "3600 s"]),
+        (TANK, {"level_m": None, "ullage_m": 2.0}, "input_missing", ["reference_height_m", "not given"]),
         (TANK, {"liquid_temperature_c": None}, "input_missing", ["liquid_temperature_c"]),
     ],
 )
