@@ -209,3 +209,66 @@ def test_a_ticket_that_comes_late_moves_the_dip_as_well(receiving):
     assert second["id"] == "2026-03-13.2" and not second.flagged
     assert second.of("tk-2")["moved_kg"] == pytest.approx(KG_PER_H / 3, abs=0.5)
     assert second.of("tk-2")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+
+
+def test_a_dip_that_was_copied_wrongly_is_corrected_and_the_revision_says_what_it_was(receiving):
+    """7.525 m was entered, 7.625 m stands on the operator's sheet; the counter moves 250 t in either case.
+
+    Before 7.525 m × 800 t/m + 250 t = 6,270,000 kg, after 7.625 m × 800 t/m + 250 t = 6,350,000 kg. The book is
+    3,200 t + 3,150 t = 6,350 t: 80 t are missing, seventy times the √2 × 800 kg of two dips, and then none.
+    """
+    progress = [{"at": "2026-03-14 05:40", "mass_kg": 2.9e6}, {"at": CLOSE, "mass_kg": 3.15e6}]
+    line(receiving, progress=progress)
+    receiving.reads("tk-2", "2026-03-14 05:40", source="hand", level_m=7.525)
+    first = receiving.closes("2026-03-13")
+    assert (first["id"], first.flagged) == ("2026-03-13.1", {"tk-2"})
+    assert receiving.changes("2026-03-13.1") == []  # the first close changes nothing
+    assert receiving.reads("tk-2", "2026-03-14 05:40", source="hand", level_m=7.625)["revised"] == 1
+    second = receiving.closes("2026-03-13")
+    assert second["id"] == "2026-03-13.2" and not second.flagged
+
+    assert second.of("tk-2")["closing_mass_kg"] == pytest.approx(6_350_000.0, abs=0.5)
+    former = receiving.book("2026-03-13.1").of("tk-2")
+    assert former["closing_mass_kg"] == pytest.approx(6_270_000.0, abs=0.5) and former["flagged"]
+    told = {one["field"]: one for one in receiving.changes("2026-03-13.2")}
+    assert set(told) == {"closing_mass_kg", "imbalance_kg", "flagged", "verdict"}
+    assert {one["vessel"] for one in told.values()} == {"tk-2"}
+    pairs = {field: (one["before"], one["after"]) for field, one in told.items()}
+    assert pairs["closing_mass_kg"] == pytest.approx((6_270_000.0, 6_350_000.0), abs=0.5)
+    assert pairs["imbalance_kg"] == pytest.approx((-80_000.0, 0.0), abs=0.5)
+    assert (pairs["flagged"], pairs["verdict"]) == ((True, False), ("fail", "pass"))
+    assert receiving.because("2026-03-13.2") == {("revised_reading", "tk-2 level_m 2026-03-14T05:40:00Z from hand")}
+    assert receiving.words("2026-03-13.2")[0].startswith(
+        "tk-2: closing mass 6,270,000 → 6,350,000 kg because the level of tk-2 of 2026-03-14T05:40:00Z from hand "
+        "was revised on "
+    )
+
+
+def test_a_gauge_value_after_the_close_that_comes_late_takes_the_place_of_the_move(receiving):
+    """Closed on 05:57 alone, 7.950 m: 6,360 t, and 3 min of 800 t/h, 40 t: 6,400,000 kg, as the book has it.
+
+    The value of 06:02 arrives an hour later: 8.000 m, for the line ran slower just then. Three fifths of the way
+    from 7.950 m, six o'clock is 7.980 m: 6,384,000 kg, 16 t short of the book. That is well within the 240 t that
+    a ticket divided by time leaves open: nothing is flagged before or after.
+    """
+    line(receiving)
+    receiving.reads("tk-2", "2026-03-14 05:57", source="gauge", level_m=7.95)
+    assert receiving.closes("2026-03-13").of("tk-2")["moved_kg"] == pytest.approx(40_000.0, abs=0.5)
+    receiving.reads("tk-2", "2026-03-14 06:02", source="gauge", level_m=8.0)
+    second = receiving.closes("2026-03-13")
+    assert second["id"] == "2026-03-13.2" and not second.flagged
+    assert second.of("tk-2")["closing_mass_kg"] == pytest.approx(6_384_000.0, abs=0.5)
+    assert not second.of("tk-2").get("moved_kg")
+
+    former = receiving.book("2026-03-13.1").of("tk-2")
+    assert former["closing_mass_kg"] == pytest.approx(6_400_000.0, abs=0.5)
+    assert former["moved_kg"] == pytest.approx(40_000.0, abs=0.5)
+    told = {(one["vessel"], one["field"]): (one["before"], one["after"]) for one in receiving.changes("2026-03-13.2")}
+    assert set(told) == {("tk-2", "closing_mass_kg"), ("tk-2", "imbalance_kg")}
+    assert told["tk-2", "closing_mass_kg"] == pytest.approx((6_400_000.0, 6_384_000.0), abs=0.5)
+    assert told["tk-2", "imbalance_kg"] == pytest.approx((0.0, -16_000.0), abs=0.5)
+    assert receiving.because("2026-03-13.2") == {("late_reading", "tk-2 level_m 2026-03-14T06:02:00Z from gauge")}
+    assert receiving.words("2026-03-13.2")[0].startswith(
+        "tk-2: closing mass 6,400,000 → 6,384,000 kg because the level of tk-2 of 2026-03-14T06:02:00Z from gauge "
+        "came on "
+    )
