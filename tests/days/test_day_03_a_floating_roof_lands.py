@@ -127,7 +127,8 @@ def test_rain_that_is_reported_late_revises_the_night(tank):
     """Ten tonnes fell on the roof. Until somebody says so the tank seems to have gained them.
 
     Nothing came or went, but the roof sinks deeper and the liquid outside it rises by what the rain displaces,
-    10,000 / 750 = 13.333 m³: 13.3 mm, a false gain of 10,000 kg.
+    10,000 / 750 = 13.333 m³: 13.3 mm, a false gain of 10,000 kg. The close is 750 × 5,013.333 − 148,000 =
+    3,612,000 kg before, and with the rain taken off 3,602,000 kg, what it opened with.
     """
     tank.reads("tk-3", "2026-03-13 06:00", level_m=5.0)
     tank.reads("tk-3", "2026-03-14 06:00", level_m=5.0 + 10.0 / 750.0)
@@ -138,3 +139,52 @@ def test_rain_that_is_reported_late_revises_the_night(tank):
     second = tank.closes("2026-03-13")
     assert second["id"] == "2026-03-13.2" and not second.flagged
     assert second.of("tk-3")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+    assert second.of("tk-3")["closing_mass_kg"] == pytest.approx(3_602_000.0, abs=0.5)
+    assert tank.book("2026-03-13.1").of("tk-3")["closing_mass_kg"] == pytest.approx(3_612_000.0, abs=0.5)
+    assert tank.book("2026-03-13.1").flagged == {"tk-3"}
+
+    told = {one["field"]: (one["before"], one["after"]) for one in tank.changes("2026-03-13.2")}
+    assert set(told) == {"closing_mass_kg", "imbalance_kg", "flagged", "verdict"}
+    assert {one["vessel"] for one in tank.changes("2026-03-13.2")} == {"tk-3"}
+    assert told["closing_mass_kg"] == pytest.approx((3_612_000.0, 3_602_000.0), abs=0.5)
+    assert told["imbalance_kg"] == pytest.approx((10_000.0, 0.0), abs=0.5)
+    assert (told["flagged"], told["verdict"]) == ((True, False), ("fail", "pass"))
+    rain = "tk-3 roof_load_kg 2026-03-14T06:00:00Z from operator"
+    assert tank.because("2026-03-13.2") == {("late_reading", rain)}
+    assert tank.words("2026-03-13.2")[0].startswith(
+        "tk-3: closing mass 3,612,000 → 3,602,000 kg because the roof load of tk-3 of 2026-03-14T06:00:00Z "
+        "from operator came on "
+    )
+
+
+def test_a_roof_that_was_lighter_on_paper_is_corrected_and_changes_the_opening_only(site):
+    """The drawing says 148 t; weighed with its new seals the roof has 158 t, and had them all month.
+
+    It lands in that night: afloat at 5.000 m the tank opened with 750 × 5,000 − 148,000 = 3,602,000 kg on paper,
+    with 3,592,000 kg in truth. Landed at 1.500 m it closed with 1,125,000 kg either way. The weighbridge has
+    2,467,000 kg: by the drawing 10,000 kg are missing, nine times the √2 × 750 kg of the gauge; in truth nothing.
+    """
+    site.liquid("naphtha", 750.0)
+    since = "2026-03-01 06:00"
+    site.tank("tk-3", "naphtha", shape=AS_IT_IS, floating_roof=ROOF, effective_from=since)
+    site.reads("tk-3", "2026-03-13 06:00", level_m=5.0)
+    site.reads("tk-3", "2026-03-14 06:00", level_m=1.5)
+    site.delivers("tk-3", "pipe-0313", "2026-03-13 09:00", "2026-03-13 23:00", mass_kg=2_467_000.0)
+    assert site.closes("2026-03-13").flagged == {"tk-3"}
+    weighed = {**ROOF, "mass_kg": 158_000}
+    assert site.tank("tk-3", "naphtha", shape=AS_IT_IS, floating_roof=weighed, effective_from=since) == "revised"
+    second = site.closes("2026-03-13")
+    assert second["id"] == "2026-03-13.2" and not second.flagged
+    assert second.of("tk-3")["opening_mass_kg"] == pytest.approx(3_592_000.0, abs=0.5)
+    former = site.book("2026-03-13.1").of("tk-3")
+    assert former["opening_mass_kg"] == pytest.approx(3_602_000.0, abs=0.5) and former["flagged"]
+    assert former["closing_mass_kg"] == second.of("tk-3")["closing_mass_kg"] == pytest.approx(1_125_000.0, abs=0.5)
+
+    told = {one["field"]: (one["before"], one["after"]) for one in site.changes("2026-03-13.2")}
+    assert set(told) == {"opening_mass_kg", "imbalance_kg", "flagged", "verdict"}
+    assert told["opening_mass_kg"] == pytest.approx((3_602_000.0, 3_592_000.0), abs=0.5)
+    assert told["imbalance_kg"] == pytest.approx((-10_000.0, 0.0), abs=0.5)
+    assert site.because("2026-03-13.2") == {("definition", "vessel tk-3")}
+    assert site.words("2026-03-13.2")[0].startswith(
+        "tk-3: opening mass 3,602,000 → 3,592,000 kg because the definition of vessel tk-3 was changed on "
+    )
