@@ -86,7 +86,11 @@ def test_one_ticket_without_a_density_leaves_the_old_sample(blender):
 
 
 def test_the_morning_sample_replaces_the_blend(blender):
-    """811.0 × 900 = 729,900 kg; 100 kg short of the book, with √(80² + 81.1²) = 114 kg."""
+    """811.0 × 900 = 729,900 kg; 100 kg short of the book, with √(80² + 81.1²) = 114 kg.
+
+    The blend had made it 730,000 kg, what the book says. The opening keeps the old sample: the new one stands
+    from midnight on, 18 hours later.
+    """
     receipts(blender)
     first = blender.closes("2026-03-13")
     blender.reads("tk-7", "2026-03-14 08:00", source="lab", observed_density_kg_m3=811.0,
@@ -100,6 +104,22 @@ def test_the_morning_sample_replaces_the_blend(blender):
     assert book["imbalance_kg"] == pytest.approx(-100.0, abs=0.5)
     assert book["imbalance_uncertainty_kg"] == pytest.approx(math.hypot(80.0, 81.1), abs=0.5)
     assert not night.flagged
+
+    former = blender.book("2026-03-13.1").of("tk-7")
+    assert former["status"] == "uncertain"
+    assert former["closing_mass_kg"] == pytest.approx(730_000.0, abs=0.5)
+    told = {(one["vessel"], one["field"]): one for one in blender.changes("2026-03-13.2")}
+    assert set(told) == {("tk-7", "closing_mass_kg"), ("tk-7", "imbalance_kg")}
+    closing, imbalance = told["tk-7", "closing_mass_kg"], told["tk-7", "imbalance_kg"]
+    assert (closing["before"], closing["after"]) == pytest.approx((730_000.0, 729_900.0), abs=0.5)
+    assert (imbalance["before"], imbalance["after"]) == pytest.approx((0.0, -100.0), abs=0.5)
+    drawn = "2026-03-14T08:00:00Z from lab"
+    causes = blender.because("2026-03-13.2")
+    assert ("late_reading", f"tk-7 observed_density_kg_m3 {drawn}") in causes
+    assert all(kind == "late_reading" and subject.endswith(drawn) for kind, subject in causes)  # no ticket among them
+    assert blender.words("2026-03-13.2")[0].startswith(
+        f"tk-7: closing mass 730,000 → 729,900 kg because the density of tk-7 of {drawn} came on "
+    )
 
 
 def components_into_fuel(site):
