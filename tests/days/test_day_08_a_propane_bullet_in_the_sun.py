@@ -115,9 +115,47 @@ def test_vapour_that_nobody_wrote_down_is_a_false_gain(bullet):
 
 
 def test_the_corrected_ticket_revises_the_night(bullet):
+    """10,000 kg delivered become 10,000 − 433.6 = 9,566.4 kg; the false gain of 433.6 kg goes."""
     loads(bullet, meter="m-road", mass_kg=10_000.0)
     assert bullet.closes(NIGHT).flagged == {"v-8"}
     loads(bullet, meter="m-road", mass_kg=10_000.0, vapour_return=WAYS["mass"])
     night = bullet.closes(NIGHT)
     assert night["id"] == f"{NIGHT}.2" and not night.flagged
     assert bullet.book(f"{NIGHT}.1").flagged == {"v-8"}
+    assert bullet.book(f"{NIGHT}.1").of("v-8")["delivered_kg"] == pytest.approx(10_000.0, abs=0.01)
+    told = {one["field"]: one for one in bullet.changes(f"{NIGHT}.2") if "vessel" in one}
+    delivered = told["delivered_kg"]
+    assert delivered["vessel"] == "v-8"
+    assert (delivered["before"], delivered["after"]) == pytest.approx((10_000.0, 9_566.4), abs=0.01)
+    assert (told["flagged"]["before"], told["flagged"]["after"]) == (True, False)
+    assert bullet.because(f"{NIGHT}.2") == {("late_transfer", "road-77")}
+    assert bullet.words(f"{NIGHT}.2")[0].startswith(
+        "v-8: deliveries 10,000 → 9,566 kg because ticket road-77 was corrected on "
+    )
+
+
+def test_the_slip_of_the_weighbridge_comes_a_day_late(bullet):
+    """Nobody brought the slip before the close: 22,825.2 − 13,258.8 = 9,566.4 kg are missing, and flagged.
+
+    The slip says 9,566.4 kg. It moves the deliveries from 0 and the imbalance to 0; the bullet's own two masses
+    were weighed by nobody and stay what they are.
+    """
+    first = bullet.closes(NIGHT)
+    assert first.flagged == {"v-8"}
+    assert first.of("v-8")["imbalance_kg"] == pytest.approx(-9_566.4, abs=4.0)
+    loads(bullet, by="weighbridge", mass_kg=9_566.4, mass_uncertainty_kg=10.0)
+    second = bullet.closes(NIGHT)
+    assert second["id"] == f"{NIGHT}.2" and not second.flagged
+    assert bullet.book(f"{NIGHT}.1").of("v-8")["delivered_kg"] == 0.0
+    assert bullet.book(f"{NIGHT}.1").flagged == {"v-8"}
+
+    told = {(one.get("vessel") or one["transfer"], one["field"]): one for one in bullet.changes(f"{NIGHT}.2")}
+    of_the_bullet = {field for name, field in told if name == "v-8"}
+    assert of_the_bullet == {"delivered_kg", "imbalance_kg", "flagged", "verdict"}
+    moved = {key: (one["before"], one["after"]) for key, one in told.items()}
+    assert moved["v-8", "delivered_kg"] == pytest.approx((0.0, 9_566.4), abs=0.01)
+    assert moved["v-8", "imbalance_kg"] == pytest.approx((-9_566.4, 0.0), abs=4.0)
+    assert moved["v-8", "verdict"] == ("fail", "pass")
+    assert moved["road-77", "measured_mass_kg"] == (None, pytest.approx(9_566.4, abs=0.01))
+    assert bullet.because(f"{NIGHT}.2") == {("late_transfer", "road-77")}
+    assert bullet.words(f"{NIGHT}.2")[0].startswith("v-8: deliveries 0 → 9,566 kg because ticket road-77 came on ")

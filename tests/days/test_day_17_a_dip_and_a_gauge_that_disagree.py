@@ -132,5 +132,39 @@ def test_a_dip_that_is_entered_late_changes_no_book(site):
     site.reads("tk-17", DIPPED, source="hand", level_m=8.239)
     second = site.closes("2026-03-13")
     assert (second["id"], second["vessels"]) == ("2026-03-13.1", first["vessels"])
+    assert site.changes("2026-03-13") == []  # the first revision, and nothing before it
     assert "sources_disagree" in site.inventory(AT).warnings("tk-17")
     assert "sources_disagree" not in site.inventory(AT, as_of=before["known_at"]).warnings("tk-17")
+
+
+def test_a_corrected_value_of_the_radar_does_what_the_late_dip_did_not(site):
+    """The radar's 06:00 was 8.229 m, 2 mm less: 8.231 × 1,000 × 800 = 6,584,800 kg become 6,583,200 kg.
+
+    1,600 kg short of the opening, with 800 kg fresh at either reading: 1,600 / 1,131 = 1.41, flagged in neither
+    revision. The dip that came with it is named nowhere.
+    """
+    tank(site, sources=ORDER)
+    site.reads("tk-17", "2026-03-13 06:00", source="radar", level_m=8.231)
+    for at, level in RADAR:
+        site.reads("tk-17", at, source="radar", level_m=level)
+    assert site.closes("2026-03-13")["id"] == "2026-03-13.1"
+    site.reads("tk-17", DIPPED, source="hand", level_m=8.239)
+    site.reads("tk-17", AT, source="radar", level_m=8.229)
+    second = site.closes("2026-03-13")
+    assert second["id"] == "2026-03-13.2" and not second.flagged
+    assert second.of("tk-17")["score"] == pytest.approx(-math.sqrt(2.0), abs=0.001)
+    first = site.book("2026-03-13.1").of("tk-17")
+    assert first["closing_mass_kg"] == pytest.approx(6_584_800.0, abs=0.5)
+    assert first["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
+
+    told = {one["field"]: one for one in site.changes("2026-03-13.2")}
+    assert set(told) == {"closing_mass_kg", "imbalance_kg"}
+    closing, imbalance = told["closing_mass_kg"], told["imbalance_kg"]
+    assert (closing["vessel"], imbalance["vessel"]) == ("tk-17", "tk-17")
+    assert (closing["before"], closing["after"]) == pytest.approx((6_584_800.0, 6_583_200.0), abs=0.5)
+    assert (imbalance["before"], imbalance["after"]) == pytest.approx((0.0, -1_600.0), abs=0.5)
+    assert site.because("2026-03-13.2") == {("revised_reading", "tk-17 level_m 2026-03-14T06:00:00Z from radar")}
+    assert site.words("2026-03-13.2")[0].startswith(
+        "tk-17: closing mass 6,584,800 → 6,583,200 kg because the level of tk-17 of 2026-03-14T06:00:00Z from radar "
+        "was revised on "
+    )
