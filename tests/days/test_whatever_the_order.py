@@ -93,6 +93,7 @@ class Depot:
 
 
 TABLES = {"reading": "readings", "ticket": "transfers"}
+MANY = settings(FEW, max_examples=200, derandomize=False, print_blob=True)  # on demand
 
 
 @st.composite
@@ -132,6 +133,13 @@ def test_the_books_end_the_same(new_site, in_turn, arrival):
     assert depot.books() == in_turn
 
 
+@pytest.mark.long
+@MANY
+@given(arrival=arrivals())
+def test_the_books_end_the_same_in_many_orders(new_site, in_turn, arrival):
+    test_the_books_end_the_same.hypothesis.inner_test(new_site, in_turn, arrival)
+
+
 @pytest.fixture
 def in_turn(new_site):
     """The books of a depot to which everything was told once and in turn, before any night was closed."""
@@ -159,12 +167,15 @@ def hour(number):
     return f"2026-03-{13 + day:02}T{of_day:02}:00:00Z"
 
 
+MONTHS = {
+    "levels": st.tuples(LEVELS, LEVELS),
+    "moves": st.lists(st.tuples(ENDS, HOURS, st.integers(0, 40), QUANTITIES, st.floats(1.0, 1e5)), max_size=6),
+    "samples": st.lists(st.tuples(st.sampled_from(["tk-1", "tk-2"]), HOURS, st.floats(700.0, 900.0)), max_size=3),
+}
+
+
 @FEW
-@given(
-    levels=st.tuples(LEVELS, LEVELS),
-    moves=st.lists(st.tuples(ENDS, HOURS, st.integers(0, 40), QUANTITIES, st.floats(1.0, 1e5)), max_size=6),
-    samples=st.lists(st.tuples(st.sampled_from(["tk-1", "tk-2"]), HOURS, st.floats(700.0, 900.0)), max_size=3),
-)
+@given(**MONTHS)
 def test_the_imbalances_of_nights_add_up_to_that_of_the_whole(new_site, levels, moves, samples):
     """Whatever is divided at six o'clock is divided once: what one night has not, the next one has."""
     depot = Depot(new_site())
@@ -185,3 +196,10 @@ def test_the_imbalances_of_nights_add_up_to_that_of_the_whole(new_site, levels, 
             parts = [one["imbalance_kg"] for night in nights for one in night[block] if one[key] == name]
             assert len(parts) == len(NIGHTS)
             assert math.fsum(parts) == pytest.approx(entry["imbalance_kg"], abs=1e-6), (block, name)
+
+
+@pytest.mark.long
+@MANY
+@given(**MONTHS)
+def test_the_imbalances_of_many_nights_add_up(new_site, levels, moves, samples):
+    test_the_imbalances_of_nights_add_up_to_that_of_the_whole.hypothesis.inner_test(new_site, levels, moves, samples)

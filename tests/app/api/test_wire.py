@@ -290,3 +290,29 @@ def test_no_number_that_is_accepted_is_a_fault_later(world: Any, data: st.DataOb
     period = {"from": "2026-05-28T00:00:00Z", "to": "2026-05-29T00:00:01Z", "every": 3600}
     check(world.get(f"{name}/vessels/v/inventory", params=period), body)
     check(world.post(f"{name}/reconciliations", json={"day": "2026-05-28"}), body)
+
+
+# --- ten thousand, on demand ---------------------------------------------------------------------
+
+LONG = settings(FUZZ, max_examples=10_000, derandomize=False, print_blob=True)
+
+
+@pytest.mark.long
+@given(data=st.data())
+@LONG
+def test_no_body_of_ten_thousand_is_a_fault(world: Any, data: st.DataObject) -> None:
+    test_no_body_is_a_fault.hypothesis.inner_test(world, data.draw(st.sampled_from(BODIES)), data)
+
+
+@pytest.mark.long
+@given(data=st.data())
+@LONG
+def test_no_parameter_of_ten_thousand_is_a_fault(world: Any, data: st.DataObject) -> None:
+    test_no_parameter_is_a_fault.hypothesis.inner_test(world, data.draw(st.sampled_from(sorted(OPERATIONS))), data)
+
+
+@pytest.mark.long
+@given(data=st.data())
+@LONG
+def test_no_number_of_ten_thousand_that_is_accepted_is_a_fault_later(world: Any, data: st.DataObject) -> None:
+    test_no_number_that_is_accepted_is_a_fault_later.hypothesis.inner_test(world, data)
