@@ -27,8 +27,8 @@ DENSITY = 387_500.0 / 550.0
 
 
 @pytest.fixture
-def tank(site):
-    """The heel of gasoline with its sample, and the tank's new text from noon on."""
+def heel(site):
+    """The heel of gasoline with its sample; of the planners' change nobody has said anything."""
     site.liquid("gasoline", 745.0)
     site.liquid("naphtha", 700.0)
     site.tank("tk-9", "gasoline", max_age_s=A_DAY)
@@ -36,8 +36,18 @@ def tank(site):
                observed_density_temperature_c=15.0, sample="s-0312")  # fmt: skip
     for day in ("2026-03-13", "2026-03-14"):
         site.reads("tk-9", f"{day} 06:00", level_m=0.5)
-    assert site.tank("tk-9", "naphtha", max_age_s=A_DAY, effective_from=NOON) == "revised"
     return site
+
+
+def becomes_naphtha(site):
+    assert site.tank("tk-9", "naphtha", max_age_s=A_DAY, effective_from=NOON) == "revised"
+
+
+@pytest.fixture
+def tank(heel):
+    """The heel, and the tank's new text from noon on."""
+    becomes_naphtha(heel)
+    return heel
 
 
 def fills(site):
@@ -147,3 +157,48 @@ def test_the_late_sample_revises_the_night(tank):
     assert second["id"] == "2026-03-14.2"
     assert second.of("tk-9")["imbalance_kg"] == pytest.approx(0.0, abs=0.5)
     assert tank.book("2026-03-14.1").of("tk-9")["imbalance_kg"] == pytest.approx(-2_500.0, abs=0.5)
+    closing = next(one for one in tank.changes("2026-03-14.2") if one["field"] == "closing_mass_kg")
+    assert closing["vessel"] == "tk-9"
+    assert (closing["before"], closing["after"]) == pytest.approx((385_000.0, 387_500.0), abs=0.5)
+    assert {one["kind"] for one in closing["because"]} == {"late_reading"}
+    subjects = {one["subject"] for one in closing["because"]}
+    assert "tk-9 observed_density_kg_m3 2026-03-15T05:30:00Z from lab" in subjects
+    assert tank.words("2026-03-14.2")[0].startswith(
+        "tk-9: closing mass 385,000 → 387,500 kg because the density of tk-9 of 2026-03-15T05:30:00Z from lab came on "
+    )
+
+
+def test_the_change_of_product_is_entered_a_day_late(heel):
+    """Closed as gasoline, the barge's density blends with the heel: (37,500 + 350,000) / (50 + 500) = 704.545.
+
+    5.500 m are 550 m³ and 387,500 kg, all of it gasoline, nothing missing. Then the change at noon is entered: the
+    gasoline's sample is no part of any blend, and naphtha's own 700 counts: 550 × 700 = 385,000 kg, 2,500 kg short
+    until there is a sample. A millimetre at either end is 75 and 70 kg, so that this is flagged, and says why. The
+    opening and the receipt are what they were; the heel became naphtha.
+    """
+    fills(heel)
+    heel.closes("2026-03-13")
+    first = heel.closes("2026-03-14")
+    assert first.of("tk-9")["closing_mass_kg"] == pytest.approx(387_500.0, abs=0.5)
+    assert first.total("gasoline")["closing_mass_kg"] == pytest.approx(387_500.0, abs=0.5)
+    assert not first.total("gasoline").get("reclassified_kg")
+
+    becomes_naphtha(heel)
+    second = heel.closes("2026-03-14")
+    assert second["id"] == "2026-03-14.2"
+    assert heel.closes("2026-03-13")["id"] == "2026-03-13.1"  # it was gasoline throughout
+    assert second.of("tk-9")["closing_mass_kg"] == pytest.approx(385_000.0, abs=0.5)
+    assert second.total("gasoline")["reclassified_kg"] == pytest.approx(-37_500.0, abs=0.5)
+    assert second.total("naphtha")["reclassified_kg"] == pytest.approx(37_500.0, abs=0.5)
+    assert heel.book("2026-03-14.1").of("tk-9")["closing_mass_kg"] == pytest.approx(387_500.0, abs=0.5)
+    assert not heel.book("2026-03-14.1").total("gasoline").get("reclassified_kg")
+
+    told = {one["field"]: one for one in heel.changes("2026-03-14.2")}
+    assert set(told) == {"closing_mass_kg", "imbalance_kg", "flagged", "verdict"}
+    assert (told["flagged"]["before"], told["flagged"]["after"]) == (False, True)
+    closing, imbalance = told["closing_mass_kg"], told["imbalance_kg"]
+    assert (closing["vessel"], imbalance["vessel"]) == ("tk-9", "tk-9")
+    assert (closing["before"], closing["after"]) == pytest.approx((387_500.0, 385_000.0), abs=0.5)
+    assert (imbalance["before"], imbalance["after"]) == pytest.approx((0.0, -2_500.0), abs=0.5)
+    assert heel.because("2026-03-14.2") == {("definition", "vessel tk-9")}
+    assert "because the definition of vessel tk-9 was changed on " in heel.words("2026-03-14.2")[0]
