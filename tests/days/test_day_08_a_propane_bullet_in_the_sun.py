@@ -138,7 +138,7 @@ def test_the_slip_of_the_weighbridge_comes_a_day_late(bullet):
     """Nobody brought the slip before the close: 22,825.2 − 13,258.8 = 9,566.4 kg are missing, and flagged.
 
     The slip says 9,566.4 kg. It moves the deliveries from 0 and the imbalance to 0; the bullet's own two masses
-    were weighed by nobody and stay what they are.
+    stay what they are.
     """
     first = bullet.closes(NIGHT)
     assert first.flagged == {"v-8"}
