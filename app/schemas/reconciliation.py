@@ -321,10 +321,13 @@ class BookChange(Answer):
     )  # fmt: skip
 
     vessel: str | None = Field(default=None, exclude_if=is_none, description="The vessel, or")
-    transfer: str | None = Field(default=None, exclude_if=is_none, description="the transfer")
+    transfer: str | None = Field(default=None, exclude_if=is_none, description="the transfer, or")
+    substance: str | None = Field(
+        default=None, exclude_if=is_none, description="the substance, of whose totals no vessel's figures tell"
+    )
     field: Literal[
-        "opening_mass_kg", "closing_mass_kg", "received_kg", "delivered_kg", "restated_kg", "imbalance_kg", "flagged",
-        "verdict", "measured_mass_kg",
+        "opening_mass_kg", "closing_mass_kg", "received_kg", "delivered_kg", "restated_kg", "reclassified_kg",
+        "imbalance_kg", "flagged", "verdict", "measured_mass_kg",
     ] = Field(description="What changed; masses that differ by less than a gram did not")  # fmt: skip
     before: float | bool | str | None = Field(description="As it stood in the revision before [unit of the field]")
     after: float | bool | str | None = Field(description="As it stands in this revision [unit of the field]")
@@ -353,5 +356,5 @@ class BookChanges(Answer):
 
     id: str = Field(description="The period and its revision")
     before: str | None = Field(description="The revision before; null for the first")
-    changes: Items[BookChange] = Field(description="Vessels by name, then transfers by name")
+    changes: Items[BookChange] = Field(description="Vessels by name, then transfers and substances by name")
     words: Items[str] = Field(description="Each change as a sentence, in the same order")

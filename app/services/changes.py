@@ -29,7 +29,9 @@ SOURCES = {
 }
 RESULTS = {"imbalance_kg": "imbalance", "flagged": "flagged", "verdict": "verdict"}
 MEASURED = "measured_mass_kg"
+RECLASSIFIED = "reclassified_kg"
 WORDS = {**SOURCES, **RESULTS, MEASURED: "measured mass"}
+OF_SUBSTANCES = {**SOURCES, RECLASSIFIED: "reclassified", "imbalance_kg": "imbalance"}
 TOLD = 3  # causes of one change that its sentence tells; all are listed
 
 Entry = Mapping[str, Any]
@@ -39,7 +41,7 @@ Entry = Mapping[str, Any]
 class Change:
     """One field that differs, before it has a reason."""
 
-    owner: str  # "vessel" or "transfer"
+    owner: str  # "vessel", "transfer" or "substance"
     name: str
     field: str
     before: Any
@@ -77,7 +79,7 @@ class Revised:
         self.openings: dict[tuple[Side, Side], Compared] = {}
 
     def changes(self) -> list[tuple[Change, list[Cause]]]:
-        """Every field that differs, transfers last, with what it comes from."""
+        """Every field that differs, of vessels, of transfers and of substances, with what it comes from."""
         vessels = [_by_name(body["vessels"], "vessel") for body in self.bodies]
         entries = {
             name: (vessels[0].get(name, {}), vessels[1].get(name, {})) for name in sorted({*vessels[0], *vessels[1]})
@@ -97,10 +99,25 @@ class Revised:
                 causes = merged(cause for _, several in with_it for cause in several)
                 found += [(one, causes or self._every(members[name])) for one in results]
         found += [(one, self._ticket(one.name)) for one in self._tickets_changed]
+        found += self._of_substances({one.field for one, _ in found}, sorted(entries))
         if any(not causes for _, causes in found):  # a vessel is also judged beside the others
             everything = merged(cause for _, causes in found for cause in causes)
             found = [(one, causes or everything) for one, causes in found]
         return found
+
+    def _of_substances(self, told: set[str], vessels: list[str]) -> list[tuple[Change, list[Cause]]]:
+        """What moved from one substance to another: no vessel's own figures tell it."""
+        before, after = (_by_name(body.get("totals", ()), "substance") for body in self.bodies)
+        changed = [
+            one
+            for name in sorted({*before, *after})
+            for one in _differing("substance", name, (before.get(name, {}), after.get(name, {})), OF_SUBSTANCES)
+            if one.field not in told
+        ]
+        if not changed:
+            return []
+        causes = merged(cause for name in vessels for cause in self.closing.definitions(name))
+        return [(one, causes) for one in changed]
 
     # --- where a figure comes from -------------------------------------------------------------------
 
@@ -262,12 +279,12 @@ def sentence(change: Change, causes: Iterable[Cause]) -> str:
     before, after, unit = change.before, change.after, ""
     if change.field.endswith("_kg"):
         close_by = None not in (before, after) and abs(after - before) < 1.0
-        lacking = "none" if change.owner == "transfer" else "unknown"
+        lacking = "unknown" if change.owner == "vessel" else "none"
         before, after = (lacking if one is None else f"{one:,.{3 if close_by else 0}f}" for one in (before, after))
         unit = " kg"
     elif change.field == "flagged":
         before, after = ("yes" if one else "no" for one in (before, after))
-    text = f"{subject}: {WORDS[change.field]} {before or 'none'} → {after or 'none'}{unit}"
+    text = f"{subject}: {(WORDS | OF_SUBSTANCES)[change.field]} {before or 'none'} → {after or 'none'}{unit}"
     if not told:
         return text
     more = f"; and {len(told) - TOLD} more" if len(told) > TOLD else ""
