@@ -12,6 +12,7 @@ from models.geometry.heads import Zone
 
 SMALL_ANGLE = 0.25  # rad; below it x − sin x is a series, whose first term left out is 9e-16 of it
 KNUCKLE_NODES = 40
+EPSILON = float(np.finfo(np.float64).eps)
 
 
 def section_area(zone: Zone, depth: FloatArray, slope: float) -> FloatArray:
@@ -55,7 +56,8 @@ def section_area(zone: Zone, depth: FloatArray, slope: float) -> FloatArray:
     if zone.kind == "torus":
         return _torus(zone, depth, slope)
     p0, p1, p2 = zone.figures
-    if p2 == 0.0 and slope == 0.0:
+    rise = abs(slope) * (zone.stop - zone.start)
+    if p2 == 0.0 and rise <= EPSILON * math.sqrt(p0):  # level but for a rounding: eq. 2 divides by the slope
         half = np.sqrt(np.maximum((math.sqrt(p0) - depth) * (math.sqrt(p0) + depth), 0.0))
         return np.asarray(2.0 * half * (zone.stop - zone.start))
     return 2.0 * (_hyperbola(zone, depth, slope) if p2 > 0.0 else _ellipse(zone, depth, slope))

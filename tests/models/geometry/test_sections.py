@@ -73,3 +73,10 @@ def test_an_angle_less_its_sine_keeps_its_digits(angle):
     exact = float(sum((-1) ** (n + 1) * x ** (2 * n + 1) / math.factorial(2 * n + 1) for n in range(1, 20)))
     lost = 2e-15 if angle < 0.25 else 5e-13
     assert sections._less_sine(np.array([angle])) == pytest.approx(exact, rel=lost, abs=0.0)
+
+
+@pytest.mark.parametrize("slope", [1e-300, 1e-160, 1e-100, 1e-17, 1e-15, 1e-12, 1e-9])
+def test_a_slope_below_a_rounding_is_level_and_none_divides_by_it(slope):
+    """2 · 10 m · √(1.5² − y²) at mid-length: the two ends cancel but for the slope's square."""
+    level = 20.0 * np.sqrt(np.maximum(2.25 - (DEPTHS - 5.0 * slope) ** 2, 0.0))
+    assert section_area(ZONES["shell"], DEPTHS, slope) == pytest.approx(level, abs=1e-12)
