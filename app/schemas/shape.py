@@ -9,6 +9,8 @@ from pydantic import AfterValidator, ConfigDict, Discriminator, Field, model_val
 
 from app.schemas.types import UNTAGGED, Body, Items, refusal
 
+LEAST_KNUCKLE_M = 1e-3  # m; no plate is bent more sharply
+
 # --- heads, bottoms and tops ---------------------------------------------------------------------
 
 
@@ -46,7 +48,7 @@ class TorisphericalHead(Body):
 
     kind: Literal["torispherical"] = Field(description="Crown and knuckle")
     crown_radius_m: float = Field(ge=1e-3, le=500, description="Inside radius of the crown [m]")
-    knuckle_radius_m: float = Field(ge=0, le=100, description="Inside radius of the knuckle [m]")
+    knuckle_radius_m: float = Field(ge=0, le=100, description="Inside radius of the knuckle; 0 for none [m]")
 
 
 class ConicalHead(Body):
@@ -87,6 +89,9 @@ def _head_fits(head: Head | Bottom, diameter: float, place: str) -> None:
         raise refusal("impossible", detail, place, "crown_radius_m")
     if head.knuckle_radius_m > diameter / 2:
         detail = "knuckle_radius_m is at most half the diameter, in m"
+        raise refusal("impossible", detail, place, "knuckle_radius_m")
+    if 0.0 < head.knuckle_radius_m < LEAST_KNUCKLE_M:
+        detail = f"knuckle_radius_m is 0, for none, or at least {LEAST_KNUCKLE_M:g} m"
         raise refusal("impossible", detail, place, "knuckle_radius_m")
 
 

@@ -66,6 +66,11 @@ def test_shape_is_taken(refusals: Any, shape: dict[str, Any]) -> None:
             "/right_head/knuckle_radius_m",
             "impossible",
         ),
+        (
+            {**LYING, "right_head": {"kind": "torispherical", "crown_radius_m": 2.4, "knuckle_radius_m": 1e-300}},
+            "/right_head/knuckle_radius_m",
+            "impossible",
+        ),
         ({**LYING, "tilt_deg": 0.5}, "/gauge_at_m", "missing"),
         ({**LYING, "tilt_deg": 90, "gauge_at_m": 1}, "/tilt_deg", "out_of_range"),
         ({**LYING, "gauge_at_m": 12.1}, "/gauge_at_m", "out_of_range"),
