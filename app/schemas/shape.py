@@ -127,8 +127,8 @@ class VerticalCylinder(Body):
     def _ends_fit(self) -> Self:
         _head_fits(self.bottom, self.diameter_m, "bottom")
         _head_fits(self.top, self.diameter_m, "top")
-        inverted = isinstance(self.bottom, ConicalBottom) and self.bottom.inverted
-        if inverted and self.bottom.depth_m >= self.height_m:  # type: ignore[union-attr]
+        bottom = self.bottom
+        if isinstance(bottom, ConicalBottom) and bottom.inverted and bottom.depth_m >= self.height_m:
             raise refusal("impossible", "depth_m of an inverted bottom is less than height_m", "bottom", "depth_m")
         return self
 

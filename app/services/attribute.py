@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from app.services.compile import DAY_US
+from app.services.compile import DAY_US, Instrument
 from app.services.gauged import HEAD
 from app.services.parts import PASCAL, Errors, Part, capacity_parts, model_parts
 from models import instruments
@@ -112,7 +112,7 @@ def _sample(builder: States, errors: Errors) -> None:
     known = [errors.vessel(row).instrument("observed_density_kg_m3", sources[row]) for row in rows]
     thermometers = [errors.vessel(row).instrument("observed_density_temperature_c", sources[row]) for row in rows]
 
-    def of(row: int):  # type: ignore[no-untyped-def]
+    def of(row: int) -> Instrument:
         return known[row if len(known) > 1 else 0]
 
     sampled = builder.density_is_sample

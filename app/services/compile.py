@@ -199,7 +199,7 @@ def _declared(body: Vessel, quantity: str, source: str) -> Declared | None:
     for item in body.sources:
         if item.source == source and quantity in item.instruments:
             return item.instruments[quantity]
-    return body.instruments.get(quantity)  # type: ignore[call-overload,no-any-return]
+    return cast("Mapping[str, Declared]", body.instruments).get(quantity)
 
 
 def base_state(site: Conditions) -> tuple[float, float]:

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, cast
 
 from sqlalchemy import Connection
 
@@ -43,7 +43,7 @@ def quality_of(reading: Values, quantity: str) -> int:
     """Quality of one quantity of a reading: the word for all, or its own; good where nothing is said."""
     if isinstance(reading.quality, str):
         return QUALITY[reading.quality]
-    return QUALITY[reading.quality.get(quantity, "good")]  # type: ignore[call-overload]
+    return QUALITY[cast("Mapping[str, str]", reading.quality).get(quantity, "good")]
 
 
 def text_of(value: object) -> str:

@@ -6,7 +6,7 @@ import json
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -295,7 +295,7 @@ class States:
         column = int(chosen.source[row])
         if column < 0 or candidates.before_at[row, column] != chosen.begins[row]:
             return None
-        return texts[row, column]  # type: ignore[no-any-return]
+        return cast("str | None", texts[row, column])
 
     def _is_dry(self) -> FloatColumns:
         """1 where the density is that of the dry liquid: said with the sample, or a blend's."""
