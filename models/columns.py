@@ -14,6 +14,7 @@ import numpy as np
 
 from models.arrays import BoolArray, FloatArray, IntArray
 from models.geometry.curves import Curves
+from models.liquid.compiled import LiquidColumns
 from models.saturation import SaturationColumns
 from models.vapour.series import VapourColumns
 
@@ -49,10 +50,11 @@ class Mark(IntFlag):
     MISSING = 4096
     VAPOUR_AT_PRESSURE = 8192
     VAPOUR_AT_LIQUID_TEMPERATURE = 16384
+    LIQUID_OUTSIDE_METHOD = 32768
 
 
 UNMEASURED = Mark.GUARD_REFUSED | Mark.OUTSIDE_VESSEL | Mark.OUTSIDE_TABLE | Mark.OUTSIDE_METHOD
-UNMEASURED |= Mark.NO_VAPOUR_ROOT | Mark.MISSING
+UNMEASURED |= Mark.NO_VAPOUR_ROOT | Mark.MISSING | Mark.LIQUID_OUTSIDE_METHOD
 
 
 @dataclass(frozen=True)
@@ -82,10 +84,8 @@ class Vessels:
         pressure of the table. [1/Pa, 1/Pa, Pa]
     roof_mass, roof_lands, roof_floats, roof_volume_per_mass : FloatArray, shape (v,)
         Floating roof; the last is 1/density at which a table already deducts it, or 0. [kg, m, m, m³/kg]
-    expansivity : tuple of FloatArray, shape (v,)
-        b_0, b_1, … of the liquid. [1/K, 1/K², …]
-    expansivity_origin, compressibility : FloatArray, shape (v,)
-        Origin of the powers, and κ. [K, 1/Pa]
+    liquids, liquid_row : LiquidColumns or None, IntArray, shape (v,)
+        The liquids, and the row of each vessel's own. [1]
     standard_temperature, standard_pressure : FloatArray, shape (v,)
         Standard state of the liquid. [K, Pa]
     water_density : FloatArray, shape (v,)
@@ -115,9 +115,8 @@ class Vessels:
     roof_lands: FloatArray
     roof_floats: FloatArray
     roof_volume_per_mass: FloatArray
-    expansivity: tuple[FloatArray, ...]
-    expansivity_origin: FloatArray
-    compressibility: FloatArray
+    liquids: LiquidColumns | None
+    liquid_row: IntArray
     standard_temperature: FloatArray
     standard_pressure: FloatArray
     water_density: FloatArray
@@ -126,6 +125,23 @@ class Vessels:
     saturation: SaturationColumns | None
     saturation_row: IntArray
     gas_standard_density: FloatArray
+
+    def kind(self, rows: IntArray) -> IntArray:
+        """Which kind of liquid each reading's vessel holds.
+
+        Parameters
+        ----------
+        rows : IntArray, shape (n,)
+            Row of each reading's vessel. [1]
+
+        Returns
+        -------
+        IntArray, shape (n,)
+            A number a kind; 0 where there is no liquid. [1]
+        """
+        if self.liquids is None:
+            return np.zeros(len(rows), dtype=np.intp)
+        return np.asarray(self.liquids.kind[self.liquid_row[rows]])
 
     def take(self, rows: IntArray | slice) -> Vessels:
         """The parameters of given rows, as columns that broadcast with as many readings.
@@ -143,7 +159,7 @@ class Vessels:
         taken: dict[str, Any] = {
             item.name: value[rows] for item in fields(self) if isinstance(value := getattr(self, item.name), np.ndarray)
         }
-        return replace(self, expansivity=tuple(b[rows] for b in self.expansivity), **taken)
+        return replace(self, **taken)
 
 
 @dataclass(frozen=True)
@@ -166,6 +182,8 @@ class State:
         1 where the density is that of the dry liquid, 0 where it is that of the wet sample. [1]
     vapour_row : IntArray or None
         Virial series of each row where its composition was analysed; None for the vessel's own. [1]
+    liquid_row : IntArray or None
+        Liquid of each row where its composition was analysed; None for the vessel's own. [1]
     roof_load : FloatArray or None
         Rain, snow and other load on the floating roof; None for none. [kg]
     pressure_uncertainty, temperature_uncertainty : FloatArray
@@ -187,6 +205,7 @@ class State:
     pressure_uncertainty: FloatArray
     temperature_uncertainty: FloatArray
     vapour_row: IntArray | None = None
+    liquid_row: IntArray | None = None
     roof_load: FloatArray | None = None
 
     @property

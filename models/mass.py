@@ -15,7 +15,7 @@ import numpy as np
 from models.arrays import BLOCK_ROWS, FloatArray, IntArray, blocks
 from models.columns import Inventory, Mark, Method, State, Step, Vessels
 from models.geometry.roof import afloat_fraction
-from models.liquid.expansivity import expansivity, log_volume_ratio
+from models.liquid.state import Conditions, LiquidState
 from models.space import vapour, vapour_conditions
 
 RESULTS = {
@@ -25,7 +25,9 @@ RESULTS = {
     "vapour_density": "kg/m³", "vapour_mass": "kg", "gas_standard_volume": "m³", "mass": "kg",
     "tank_volume": "m³", "surface_area": "m²", "liquid_shell_temperature": "K", "full_factor": "1",
     "vapour_temperature": "K", "vapour_pressure": "Pa", "second_virial": "m³/mol", "third_virial": "m⁶/mol²",
-    "reduced_density": "1", "roof_volume": "m³",
+    "reduced_density": "1", "roof_volume": "m³", "expansivity": "1/K", "compressibility": "1/Pa",
+    "by_sample": "1", "by_sample_temperature": "1/K", "standard_by_sample": "1",
+    "standard_by_sample_temperature": "1/K", "method_error": "1",
 }  # fmt: skip
 
 SENSITIVITIES = {
@@ -78,12 +80,12 @@ def inventory(vessels: Vessels, rows: IntArray | None, state: State) -> Inventor
         for block in blocks(total, BLOCK_ROWS):
             _compute(method, vessels.take(slice(0, 1)), state.take(block), made, block)  # eq. 1
         return made.inventory()
-    methods = vessels.method[rows]
-    for number in np.unique(methods):  # a handful of methods, never a loop over vessels
-        members = np.flatnonzero(methods == number)
+    groups = vessels.method[rows] + KINDS_FROM * vessels.kind(rows)
+    for number in np.unique(groups):  # a handful of methods, never a loop over vessels
+        members = np.flatnonzero(groups == number)
         for block in blocks(len(members), BLOCK_ROWS):
             at = members[block]
-            _compute(Method(int(number)), vessels.take(rows[at]), state.take(at), made, at)
+            _compute(Method(int(number) % KINDS_FROM), vessels.take(rows[at]), state.take(at), made, at)
     return made.inventory()
 
 
@@ -138,6 +140,7 @@ def _compute(method: Method, vessels: Vessels, state: State, made: _Made, where:
     made.put(step, where)
 
 
+KINDS_FROM = 1024  # above every flag of Method: which kind of liquid, so that a block has one
 _HARMLESS = int(
     Mark.ROOF_LANDING_ZONE | Mark.SATURATION_LOW | Mark.SATURATION_HIGH | Mark.VAPOUR_SATURATED | Mark.GUARD_WIDE
     | Mark.LIQUID_FULL | Mark.VAPOUR_LEFT_OUT | Mark.VAPOUR_AT_PRESSURE | Mark.VAPOUR_AT_LIQUID_TEMPERATURE
@@ -184,41 +187,75 @@ def _geometry(step: Step) -> None:
         water = water_area = np.zeros(1)
     total, vertical = _strain(step, s.liquid_temperature)
     reach = np.where(volume > 0.0, (level - v.bottom) * area / volume, 1.0)
-    factor = 1.0 + total - vertical * reach
+    spread, rise = 1.0 + total / 3.0, 1.0 + vertical * reach
+    factor = spread**3 / rise
     out.update(
         tank_volume=volume, surface_area=area, free_water_volume=factor * water, shell_factor=factor,
-        full_factor=1.0 + total, level_fraction=volume / v.capacity,
+        full_factor=spread**3, level_fraction=volume / v.capacity,
     )  # fmt: skip
     step.sens["_water_area"] = np.asarray(factor * water_area)
-    step.sens["_reach"] = reach
+    step.sens.update(
+        _by_sum=factor / spread, _by_vertical=np.asarray(factor * reach / rise), _full_by_sum=spread**2
+    )
 
 
 def _filled(step: Step) -> None:
     """A line that is kept full: no level, the whole capacity and the strain of a full vessel."""
     total, _ = _strain(step, step.state.liquid_temperature)
+    spread = 1.0 + total / 3.0
     full = step.vessels.capacity + np.zeros(len(step.marks))
     step.out.update(
-        tank_volume=full, surface_area=np.zeros(1), free_water_volume=np.zeros(1), shell_factor=1.0 + total,
-        full_factor=1.0 + total, level_fraction=np.ones(1),
+        tank_volume=full, surface_area=np.zeros(1), free_water_volume=np.zeros(1), shell_factor=spread**3,
+        full_factor=spread**3, level_fraction=np.ones(1),
     )  # fmt: skip
-    step.sens["_water_area"] = step.sens["_reach"] = np.zeros(1)
+    step.sens["_water_area"] = step.sens["_by_vertical"] = np.zeros(1)
+    step.sens["_by_sum"] = step.sens["_full_by_sum"] = spread**2
+
+
+def densities(vessels: Vessels, state: State) -> LiquidState:
+    """Density of each content in its vessel and at its standard state, by the method of its liquid.
+
+    Parameters
+    ----------
+    vessels : Vessels
+        A row a reading, or one for all; all of one kind of liquid. [SI]
+    state : State
+        What was read. [SI]
+
+    Returns
+    -------
+    LiquidState
+        Columns of n rows; NaN where the method does not reach. [SI]
+    """
+    assert vessels.liquids is not None
+    v, s = vessels, state
+    return vessels.liquids.state(
+        s.density,
+        Conditions(s.density_temperature, s.density_pressure, v.standard_pressure),
+        Conditions(s.liquid_temperature, s.pressure, s.atmosphere),
+        Conditions(v.standard_temperature, v.standard_pressure, v.standard_pressure),
+        v.liquid_row if s.liquid_row is None else s.liquid_row,
+    )
+
+
+def _density(step: Step) -> LiquidState:
+    """The content's densities, and what they owe to their inputs, for the working and the sensitivities."""
+    s, found = step.state, densities(step.vessels, step.state)
+    known = np.isfinite(s.density + s.density_temperature + s.density_pressure + s.liquid_temperature + s.pressure)
+    step.mark(known & np.isnan(found.density + found.density_standard), Mark.LIQUID_OUTSIDE_METHOD)
+    step.out.update(
+        expansivity=found.expansivity, compressibility=found.compressibility, by_sample=found.by_sample,
+        by_sample_temperature=found.by_sample_temperature, standard_by_sample=found.standard_by_sample,
+        standard_by_sample_temperature=found.standard_by_sample_temperature, method_error=found.method_error,
+    )  # fmt: skip
+    return found
 
 
 def _liquid(step: Step, method: Method) -> None:
     """Density of the sample to the state and to the standard state; volumes and liquid mass."""
     v, s, out, sens = step.vessels, step.state, step.out, step.sens
-    b, liquid = v.expansivity, {"origin": v.expansivity_origin}
-    kappa, t, p = v.compressibility, s.liquid_temperature, s.pressure
-    state_to_sample = log_volume_ratio(
-        t, p, temperature_ref=s.density_temperature, pressure_ref=s.density_pressure,
-        coefficients=b, compressibility=kappa, **liquid,
-    )  # fmt: skip
-    to_standard = log_volume_ratio(
-        s.density_temperature, s.density_pressure, temperature_ref=v.standard_temperature,
-        pressure_ref=v.standard_pressure, coefficients=b, compressibility=kappa, **liquid,
-    )  # fmt: skip
-    density = s.density * np.exp(-state_to_sample)
-    standard = s.density * np.exp(to_standard)  # V_std/V_sample = exp(−ln V_sample/V_std)
+    liquid = _density(step)
+    density, standard = liquid.density, liquid.density_standard
     water = s.sediment_water
     # The water's share of a wet sample leaves it as sampled: so the mass does not depend on the standard state.
     share = np.where(s.density_is_dry > 0.0, 1.0 - water, 1.0 - water * v.water_density / s.density)
@@ -245,35 +282,34 @@ def _liquid(step: Step, method: Method) -> None:
         net_standard_volume=gross * ratio * (1.0 - water), liquid_density=density,
         standard_density=share * standard / (1.0 - water), liquid_mass=mass,
     )  # fmt: skip
-    thermal = state_to_sample + kappa * (p - s.density_pressure)
-    _liquid_sensitivities(step, net, before_roof, displaced, share, slope, thermal)
+    _liquid_sensitivities(step, net, before_roof, displaced, share, slope)
 
 
 def _liquid_sensitivities(
     step: Step, net: FloatArray, before_roof: FloatArray, displaced: FloatArray, share: FloatArray,
-    slope: FloatArray, thermal: FloatArray,
+    slope: FloatArray,
 ) -> None:  # fmt: skip
     """Derivatives of the liquid mass; those of the vapour are added by the vapour's own step."""
     v, s, out, sens = step.vessels, step.state, step.out, step.sens
-    b, origin = v.expansivity, v.expansivity_origin
-    beta = expansivity(s.liquid_temperature, coefficients=b, origin=origin)
-    sample_beta = expansivity(s.density_temperature, coefficients=b, origin=origin)
-    volume, reach = out["tank_volume"], sens["_reach"]
-    stretch_temperature = v.expansion * (3.0 - reach)  # dK/dT_shell
-    stretch_pressure = v.strain_sum - v.strain_vertical * reach
+    volume = out["tank_volume"]
+    by_sum, by_vertical = sens["_by_sum"], sens["_by_vertical"]  # dK by the strains
+    stretch_temperature = v.expansion * (3.0 * by_sum - by_vertical)
+    stretch_pressure = v.strain_sum * by_sum - v.strain_vertical * by_vertical
     liquid_volume = volume - out["free_water_volume"] / out["shell_factor"]
     shell = net * liquid_volume * stretch_temperature
     full = net * before_roof
     dry = s.density_is_dry > 0.0
-    by_log_density = np.where(dry, full, out["liquid_density"] * before_roof - displaced * (1.0 - share))
+    # A wet sample that is denser holds less water by mass: 1 − share = f ρ_w/ρ_s.
+    leaves_less = np.where(dry, 0.0, (out["liquid_density"] * before_roof - displaced) * (1.0 - share))
+    by_log_density = full * out["by_sample"] + leaves_less
     sens["level"] = net * out["shell_factor"] * out["surface_area"] + slope * (net * v.roof_volume_per_mass - share)
     sens["water_level"] = -net * sens["_water_area"]
-    sens["liquid_temperature"] = -beta * full + v.liquid_weight * shell
+    sens["liquid_temperature"] = -out["expansivity"] * full + v.liquid_weight * shell
     sens["ambient_temperature"] = (1.0 - v.liquid_weight) * shell
-    sens["pressure"] = v.compressibility * full + net * liquid_volume * stretch_pressure
+    sens["pressure"] = out["compressibility"] * full + net * liquid_volume * stretch_pressure
     sens["density"] = by_log_density / s.density
-    sens["density_temperature"] = full * sample_beta
-    sens["expansion"] = -full * thermal
+    sens["density_temperature"] = full * out["by_sample_temperature"]
+    sens["expansion"] = full * out["method_error"]
     sens["capacity"] = net * out["shell_factor"] * liquid_volume
     sens["capacity_local"] = net * out["shell_factor"] * volume
     gross = out["gross_observed_volume"]
@@ -286,8 +322,11 @@ def _whole_vessel(step: Step) -> None:
     total, _ = _strain(step, step.state.vapour_temperature)
     rows = len(step.marks)
     nothing = np.zeros(rows)
+    spread = 1.0 + total / 3.0
+    step.sens["_by_sum"] = step.sens["_by_vertical"] = nothing
+    step.sens["_full_by_sum"] = spread**2
     step.out.update(
-        tank_volume=nothing, shell_factor=np.ones(rows), full_factor=1.0 + total + nothing,
+        tank_volume=nothing, shell_factor=np.ones(rows), full_factor=spread**3 + nothing,
         free_water_volume=nothing, gross_observed_volume=nothing, liquid_mass=nothing,
     )  # fmt: skip
 
@@ -295,7 +334,7 @@ def _whole_vessel(step: Step) -> None:
 def _sum(step: Step, method: Method) -> None:
     """Liquid plus vapour, and the gas at its base state."""
     out, sens = step.out, step.sens
-    for name in ("_reach", "_water_area"):
+    for name in ("_water_area", "_by_sum", "_by_vertical", "_full_by_sum"):
         sens.pop(name, None)
     gas = out.get("vapour_mass", np.zeros(1))
     out["mass"] = np.broadcast_to(out["liquid_mass"] + gas, step.marks.shape)

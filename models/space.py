@@ -173,10 +173,11 @@ def _vapour_sensitivities(
     v, out, sens = step.vessels, step.out, step.sens
     mass, density = out["vapour_mass"], np.where(np.isfinite(gas.density), gas.density, 0.0)
     by_p, by_t = np.where(np.isfinite(by_p), by_p, 0.0), np.where(np.isfinite(by_t), by_t, 0.0)
-    reach = sens.get("_reach", np.ones(1))
     volume = out["tank_volume"]
-    shell = density * v.expansion * (3.0 * v.capacity - (3.0 - reach) * volume)
-    pressed = density * (v.strain_sum * v.capacity - (v.strain_sum - v.strain_vertical * reach) * volume)
+    by_sum = sens["_full_by_sum"] * v.capacity - sens["_by_sum"] * volume  # the space by the strains
+    by_vertical = sens["_by_vertical"] * volume
+    shell = density * v.expansion * (3.0 * by_sum + by_vertical)
+    pressed = density * (v.strain_sum * by_sum + v.strain_vertical * by_vertical)
     sens["ambient_temperature"] = sens.get("ambient_temperature", 0.0) + (1.0 - v.liquid_weight) * shell
     sens["vapour_model"] = mass * np.where(np.isfinite(gas.model_uncertainty), gas.model_uncertainty, 0.0)
     sens["molar_mass"] = mass

@@ -12,7 +12,8 @@ from sqlalchemy import Connection
 from app.errors import Conflict, Unprocessable
 from app.services import move
 from app.services.carry import vapours
-from app.services.compile import CompiledVessel, stack, virial_columns
+from app.services.compile import CompiledVessel, stack
+from app.services.compositions import virial_columns
 from app.services.explain import mass_estimate
 from app.services.find import site_number, watermark
 from app.services.in_force import meters_in_force

@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import json
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from functools import cached_property, lru_cache
 from typing import NamedTuple, cast
@@ -14,25 +14,32 @@ import numpy as np
 
 from app.schemas.instruments import Assumed
 from app.schemas.instruments import Instrument as Declared
+from app.schemas.liquid import LightHydrocarbonLiquid
 from app.schemas.site import Conditions, Site
-from app.schemas.substance import Component as WireComponent
-from app.schemas.substance import Substance, VirialVapour
+from app.schemas.substance import Substance
 from app.schemas.vessel import Vessel
+from app.services import liquids
+from app.services.compositions import (
+    Boiling,
+    analysed,
+    fractions_of,
+    mixture_of,
+    saturation_columns,
+    virial_columns,
+)
 from app.services.find import ALL_TIME
+from app.services.liquids import base_state
 from app.services.shapes import capacity_curve, strain_of
 from models import constants, instruments, units
 from models.columns import Method, Vessels
-from models.components import Component, component, given_component
 from models.errors import DefinitionError
 from models.geometry.curves import Curve, Curves
-from models.liquid.expansivity import log_volume_ratio
+from models.geometry.shell import LIQUID_WEIGHT
+from models.liquid.definition import Liquid
 from models.liquid.water import water_density
-from models.saturation import SaturationColumns
-from models.vapour.series import VapourColumns, VapourMixture
+from models.vapour.series import VapourMixture
 
-Boiling = tuple[tuple[Component, float], ...]  # a liquid as substances and mole fractions
 WATER_DENSITY = float(water_density(288.15))  # at 15 °C, whatever the base: a mass does not depend on the base
-UNINSULATED_LIQUID_WEIGHT = 7.0 / 8.0  # API MPMS 12.1.1: T_shell = (7 T_liquid + T_ambient)/8
 HOUR_US, DAY_US = 3_600_000_000, 86_400_000_000
 MAX_AGE_US: dict[str, int | None] = {
     "level_m": HOUR_US, "ullage_m": HOUR_US, "liquid_volume_m3": HOUR_US, "liquid_volume_pct": HOUR_US,
@@ -76,7 +83,7 @@ class CompiledVessel:
     curve: Curve | None
     capacity: float
     parameters: Mapping[str, float]
-    expansivity: tuple[float, ...]
+    liquid: Liquid | None
     mixture: VapourMixture | None
     boiling: Boiling | None
     density: tuple[float, float, float]
@@ -155,11 +162,6 @@ class CompiledVessel:
         return {}
 
     @property
-    def compressibility(self) -> float:
-        """κ of the liquid. [1/Pa]"""
-        return _compressibility(self.substance)
-
-    @property
     def density_declared(self) -> bool:
         """Whether the substance says how well its density is known."""
         liquid = self.substance.liquid
@@ -202,11 +204,6 @@ def _declared(body: Vessel, quantity: str, source: str) -> Declared | None:
     return cast("Mapping[str, Declared]", body.instruments).get(quantity)
 
 
-def base_state(site: Conditions) -> tuple[float, float]:
-    """Base temperature and pressure of a site. [K, Pa]"""
-    return float(units.kelvin(site.base_temperature_c)), float(units.pascal(site.base_pressure_kpa_abs))
-
-
 def mean_atmosphere(site: Conditions) -> tuple[float, bool]:
     """The place's atmospheric pressure where no barometer is read, and whether it was only assumed. [Pa]"""
     if site.atmospheric_pressure_kpa_abs is not None:
@@ -214,25 +211,6 @@ def mean_atmosphere(site: Conditions) -> tuple[float, bool]:
     if site.elevation_m is not None:
         return float(units.atmospheric_pressure(site.elevation_m)), False
     return constants.STANDARD_ATMOSPHERE, True
-
-
-def boiling_pressure(composition: Boiling | None, temperature: float) -> float:
-    """Vapour pressure of a substance at a temperature; 0 where it has none that we know. [Pa]"""
-    if composition is None:
-        return 0.0
-    pressure, _ = _saturation((composition,)).pressure(np.array([temperature]), 0)
-    return float(pressure[0]) if math.isfinite(pressure[0]) else 0.0
-
-
-@lru_cache(maxsize=64)
-def _saturation(compositions: tuple[Boiling, ...]) -> SaturationColumns:
-    return SaturationColumns.from_compositions([list(composition) for composition in compositions])
-
-
-@lru_cache(maxsize=256)
-def virial_columns(mixtures: tuple[VapourMixture, ...]) -> VapourColumns:
-    """Virial series of some mixtures; the same mixtures are compiled once."""
-    return VapourColumns.from_mixtures(list(mixtures))
 
 
 @lru_cache(maxsize=50_000)
@@ -281,14 +259,25 @@ def compile_bodies(
             "the substance has neither a liquid that this shape can gauge nor a vapour that counts in this space",
             field="substance",
         )
-    mixture = _mixture(vapour) if method & Method.VAPOUR else None
-    boiling = _composition(vapour) if method & Method.SATURATION else None
-    state = _reference_density(site, substance, boiling) if liquid is not None else (math.nan,) * 4
-    parameters = _site_parameters(site, boiling) | _shell_parameters(body) | _roof_parameters(body)
+    mixture = mixture_of(vapour) if vapour is not None and method & Method.VAPOUR else None
+    boiling = _boiling(substance) if method & Method.SATURATION else None
+    own = None if liquid is None else liquids.liquid_of(liquid, site)
+    state: tuple[float, ...] = (math.nan,) * 4
+    if liquid is not None and own is not None:
+        state = liquids.reference(liquid, own, site, boiling)
+    parameters = _site_parameters(site, own, boiling) | _shell_parameters(body) | _roof_parameters(body)
     return CompiledVessel(
         name, definitions, site, body, substance, method, curve, capacity, parameters,
-        _expansivity(substance), mixture, boiling, state[:3], state[3], space, kind == "capacity_table",
+        own, mixture, boiling, (state[0], state[1], state[2]), state[3], space, kind == "capacity_table",
     )  # fmt: skip
+
+
+def _boiling(substance: Substance) -> Boiling:
+    """What boils in the vessel: the liquid's composition where it is known, else the vapour's."""
+    if isinstance(substance.liquid, LightHydrocarbonLiquid) and substance.liquid.components is not None:
+        return fractions_of(substance.liquid.components)
+    assert substance.vapour is not None
+    return fractions_of(substance.vapour.components)
 
 
 def _space(body: Vessel, substance: Substance) -> str:
@@ -299,90 +288,16 @@ def _space(body: Vessel, substance: Substance) -> str:
     return "product" if substance.vapour is not None else "open"
 
 
-def _composition(vapour: VirialVapour | None) -> Boiling:
-    assert vapour is not None
-    total = math.fsum(item.mole_fraction for item in vapour.components)
-    return tuple((_component(item), item.mole_fraction / total) for item in vapour.components)
-
-
-def _component(item: WireComponent) -> Component:
-    if item.critical_temperature_k is None:
-        return component(item.id)
-    assert item.critical_pressure_kpa_abs is not None and item.acentric_factor is not None
-    assert item.molar_mass_g_mol is not None
-    return given_component(
-        item.id, critical_temperature=item.critical_temperature_k,
-        critical_pressure=item.critical_pressure_kpa_abs * units.PASCAL_PER_KPA,
-        acentric_factor=item.acentric_factor, molar_mass=item.molar_mass_g_mol * units.KILOGRAM_PER_GRAM,
-    )  # fmt: skip
-
-
-def _mixture(vapour: VirialVapour | None) -> VapourMixture:
-    assert vapour is not None
-    pairs = _composition(vapour)
-    cubic = units.CUBIC_METRE_PER_CUBIC_CENTIMETRE
-    return VapourMixture(
-        tuple(item for item, _ in pairs), tuple(fraction for _, fraction in pairs), form=vapour.form,
-        terms=vapour.terms, coefficients=vapour.coefficients, second_virial=vapour.second_virial,
-        third_virial=vapour.third_virial, measured_second=_measured(vapour.second_virial_cm3_mol, cubic),
-        measured_third=_measured(vapour.third_virial_cm6_mol2, cubic**2),
-    )  # fmt: skip
-
-
-def _measured(
-    given: float | tuple[tuple[float, float], ...] | None, scale: float
-) -> float | tuple[tuple[float, float], ...] | None:
-    if given is None or isinstance(given, int | float):
-        return None if given is None else given * scale
-    return tuple((float(units.kelvin(t)), value * scale) for t, value in given)
-
-
-@lru_cache(maxsize=1024)
-def _analysed(vapour: VirialVapour, analysis: tuple[tuple[str, float], ...]) -> VapourMixture:
-    """The substance's vapour with the composition of an analysis in place of its own."""
-    own = {item.id: item for item in vapour.components}
-    total = math.fsum(fraction for _, fraction in analysis)
-    return replace(
-        _mixture(vapour),
-        components=tuple(_component(own[name]) if name in own else component(name) for name, _ in analysis),
-        mole_fractions=tuple(fraction / total for _, fraction in analysis),
-    )
-
-
 def analysed_mixture(vessel: CompiledVessel, analysis: Mapping[str, float]) -> VapourMixture:
     """The vessel's vapour with an analysis's mole fractions, which are normalised."""
     assert vessel.substance.vapour is not None
-    return _analysed(vessel.substance.vapour, tuple(sorted(analysis.items())))
+    return analysed(vessel.substance.vapour, tuple(sorted(analysis.items())))
 
 
-def _expansivity(substance: Substance) -> tuple[float, ...]:
-    if substance.liquid is None:
-        return (0.0,)
-    given = substance.liquid.expansivity_per_k
-    return tuple(given) if isinstance(given, Sequence) else (given,)
-
-
-def _reference_density(
-    site: Conditions, substance: Substance, boiling: Boiling | None
-) -> tuple[float, float, float, float]:
-    """Density, temperature and pressure of the substance's own figure, and its standard uncertainty."""
-    liquid = substance.liquid
-    assert liquid is not None
-    temperature = float(units.kelvin(liquid.at_temperature_c))
-    if liquid.at_pressure_kpa_abs is not None:
-        pressure = liquid.at_pressure_kpa_abs * units.PASCAL_PER_KPA
-    else:
-        pressure = max(base_state(site)[1], boiling_pressure(boiling, temperature))
-    given = liquid.density_uncertainty_kg_m3
-    spread = instruments.DENSITY_SHARE * liquid.density_kg_m3 if given is None else given
-    return liquid.density_kg_m3, temperature, pressure, spread
-
-
-def _site_parameters(site: Conditions, boiling: Boiling | None) -> dict[str, float]:
-    temperature, pressure = base_state(site)
+def _site_parameters(site: Conditions, liquid: Liquid | None, boiling: Boiling | None) -> dict[str, float]:
     return {
-        "standard_temperature": temperature,
-        "standard_pressure": max(pressure, boiling_pressure(boiling, temperature)),
+        "standard_temperature": base_state(site)[0],
+        "standard_pressure": liquids.standard_pressure(liquid, site, boiling),
         "water_density": WATER_DENSITY,
     }
 
@@ -393,7 +308,7 @@ def _shell_parameters(body: Vessel) -> dict[str, float]:
     return {
         "expansion": shell.expansion_per_k,
         "expansion_temperature": float(units.kelvin(shell.at_temperature_c)),
-        "liquid_weight": 1.0 if shell.insulated else UNINSULATED_LIQUID_WEIGHT,
+        "liquid_weight": 1.0 if shell.insulated else LIQUID_WEIGHT,
         "strain_sum": total,
         "strain_vertical": vertical,
         "strain_pressure": shell.at_pressure_kpa * units.PASCAL_PER_KPA,
@@ -420,7 +335,7 @@ def stack(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixture, ...]
     curve_row = np.cumsum([c.curve is not None for c in compiled]) - 1
     mixtures = tuple(dict.fromkeys([c.mixture for c in compiled if c.mixture is not None] + list(extra)))
     boiling = tuple(dict.fromkeys(c.boiling for c in compiled if c.boiling is not None))
-    width = max((len(c.expansivity) for c in compiled), default=1)
+    own = tuple(dict.fromkeys(c.liquid for c in compiled if c.liquid is not None))
 
     def column(name: str) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
         return np.array([c.parameters[name] for c in compiled], dtype=np.float64)
@@ -434,14 +349,11 @@ def stack(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixture, ...]
         is_table=np.array([float(c.table) for c in compiled]),
         capacity=np.array([c.capacity for c in compiled]),
         **{name: column(name) for name in PARAMETERS},
-        expansivity=tuple(
-            np.array([c.expansivity[j] if j < len(c.expansivity) else 0.0 for c in compiled]) for j in range(width)
-        ),
-        expansivity_origin=np.array([c.density[1] for c in compiled]),
-        compressibility=np.array([_compressibility(c.substance) for c in compiled]),
+        liquids=liquids.liquid_columns(own) if own else None,
+        liquid_row=np.array([own.index(c.liquid) if c.liquid else 0 for c in compiled], dtype=np.intp),
         vapour=virial_columns(mixtures) if mixtures else None,
         vapour_row=np.array([mixtures.index(c.mixture) if c.mixture else 0 for c in compiled], dtype=np.intp),
-        saturation=_saturation(boiling) if boiling else None,
+        saturation=saturation_columns(boiling) if boiling else None,
         saturation_row=np.array([boiling.index(c.boiling) if c.boiling else 0 for c in compiled], dtype=np.intp),
         gas_standard_density=np.array([_gas_standard_density(c) for c in compiled]),
     )
@@ -458,12 +370,6 @@ def mixture_rows(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixtur
     """Row of each mixture in the stacked virial series."""
     mixtures = dict.fromkeys([c.mixture for c in compiled if c.mixture is not None] + list(extra))
     return {mixture: row for row, mixture in enumerate(mixtures)}
-
-
-def _compressibility(substance: Substance) -> float:
-    if substance.liquid is None:
-        return 0.0
-    return substance.liquid.compressibility_per_kpa / units.PASCAL_PER_KPA
 
 
 def _gas_standard_density(c: CompiledVessel) -> float:
@@ -487,13 +393,3 @@ def vapour_density(c: CompiledVessel, pressure: float, temperature: float) -> tu
 
 
 IDEAL_GAS_SHARE = 0.2  # of a vapour so dense that the virial equation refuses it
-
-
-def density_at(c: CompiledVessel, temperature: float, pressure: float) -> float:
-    """Density of the vessel's liquid by the substance's own figure, at a state. [kg/m³]"""
-    density, at_temperature, at_pressure = c.density
-    ratio = log_volume_ratio(
-        temperature, pressure, temperature_ref=at_temperature, pressure_ref=at_pressure,
-        coefficients=c.expansivity, origin=at_temperature, compressibility=_compressibility(c.substance),
-    )  # fmt: skip
-    return float(density * np.exp(-ratio))

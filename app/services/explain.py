@@ -9,7 +9,7 @@ from typing import Any
 from app.schemas.types import format_instant
 from app.services.choose import NEVER
 from app.services.collect import INPUTS
-from app.services.compile import virial_columns
+from app.services.compositions import virial_columns
 from app.services.measure import Measured
 from app.services.parts import at_row, estimate, sigmas
 from app.services.working import budget_lines, working_steps

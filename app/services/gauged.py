@@ -10,9 +10,9 @@ from numpy.typing import NDArray
 
 from app.services.compile import CompiledVessel
 from models import constants, units
-from models.columns import Inventory, State
+from models.columns import Inventory, State, Vessels
 from models.geometry.curves import Curve, Curves
-from models.liquid.expansivity import expansivity, log_volume_ratio
+from models.mass import densities
 
 FloatColumns = NDArray[np.float64]
 
@@ -44,44 +44,40 @@ def _column(vessels: tuple[CompiledVessel, ...], rows: int, value: Callable[[Com
     return column if len(vessels) > 1 else np.full(rows, column[0])
 
 
-def _expansion(vessels: tuple[CompiledVessel, ...], rows: int) -> tuple[list[FloatColumns], FloatColumns]:
-    """Coefficients of each row's β, as many as the longest has, and the temperature from which they count."""
-    coefficients = [
-        _column(vessels, rows, lambda one, j=j: one.expansivity[j] if j < len(one.expansivity) else 0.0)  # type: ignore[misc]
-        for j in range(max(len(vessel.expansivity) for vessel in vessels))
-    ]
-    return coefficients, _column(vessels, rows, lambda one: one.density[1])
-
-
-def state_density(vessels: tuple[CompiledVessel, ...], state: State) -> FloatColumns:
+def state_density(vessels: tuple[CompiledVessel, ...], compiled: Vessels, state: State) -> FloatColumns:
     """Density of the liquid in each row's state; at its standard pressure where none was read. [kg/m³]"""
-    rows = state.rows
-    coefficients, origin = _expansion(vessels, rows)
-    standard = _column(vessels, rows, lambda one: one.parameters["standard_pressure"])
-    pressure = np.where(np.isfinite(state.pressure), state.pressure, standard)
-    ratio = log_volume_ratio(
-        state.liquid_temperature, pressure, temperature_ref=state.density_temperature,
-        pressure_ref=state.density_pressure, coefficients=coefficients, origin=origin,
-        compressibility=_column(vessels, rows, lambda one: one.compressibility),
-    )  # fmt: skip
-    return np.asarray(state.density * np.exp(-ratio))
+    rows = np.zeros(state.rows, dtype=np.intp) if len(vessels) == 1 else np.arange(state.rows, dtype=np.intp)
+    standard = compiled.standard_pressure[rows]
+    density = np.full(state.rows, np.nan)
+    if compiled.liquids is None:
+        return density
+    pressed = replace(state, pressure=np.where(np.isfinite(state.pressure), state.pressure, standard))
+    kinds = compiled.kind(rows)
+    for kind in np.unique(kinds):
+        members = np.flatnonzero(kinds == kind)
+        density[members] = densities(compiled.take(rows[members]), pressed.take(members)).density
+    return density
 
 
-def by_head(vessels: tuple[CompiledVessel, ...], state: State, where: NDArray[np.bool_]) -> State:
+def by_head(
+    vessels: tuple[CompiledVessel, ...], compiled: Vessels, state: State, where: NDArray[np.bool_]
+) -> State:
     """Rows whose level is a head of liquid in kPa get the level that it stands for: h = tap + ΔP/(g ρ)."""
     if not where.any():
         return state
-    density = state_density(vessels, state)
+    density = state_density(vessels, compiled, state)
     tap = _column(vessels, state.rows, lambda one: one.body.gauging.tap_m)
     level = tap + state.level * units.PASCAL_PER_KPA / (constants.STANDARD_GRAVITY * density)
     return replace(state, level=np.where(where, level, state.level))
 
 
-def levels_per_unit(vessels: tuple[CompiledVessel, ...], state: State, result: Inventory) -> Mapping[str, FloatColumns]:
+def levels_per_unit(
+    vessels: tuple[CompiledVessel, ...], compiled: Vessels, state: State, result: Inventory
+) -> Mapping[str, FloatColumns]:
     """Change of the level for one unit of each quantity that may stand for it. [m/unit]"""
     with np.errstate(divide="ignore", invalid="ignore"):
         area = np.nan_to_num(1.0 / result["surface_area"], posinf=0.0, neginf=0.0)
-        density = state_density(vessels, state)
+        density = state_density(vessels, compiled, state)
         head = units.PASCAL_PER_KPA / (constants.STANDARD_GRAVITY * density)
     capacity = _column(vessels, state.rows, lambda one: one.capacity)
     return {"liquid_volume_m3": area, "liquid_volume_pct": area * capacity / 100.0, HEAD: np.nan_to_num(head)}
@@ -99,19 +95,12 @@ def head_sensitivities(
         return np.zeros(1)
     tap = _column(vessels, state.rows, lambda one: one.body.gauging.tap_m)
     by_log_density = np.where(where, -(state.level - tap) * result.sensitivities["level"], 0.0)
-    coefficients, origin = _expansion(vessels, state.rows)
-    beta, sample = (
-        expansivity(t, coefficients=coefficients, origin=origin)
-        for t in (state.liquid_temperature, state.density_temperature)
-    )
-    thermal = log_volume_ratio(
-        state.liquid_temperature, 0.0, temperature_ref=state.density_temperature, pressure_ref=0.0,
-        coefficients=coefficients, origin=origin, compressibility=0.0,
-    )  # fmt: skip
     for name, change in (
-        ("density", by_log_density / state.density), ("liquid_temperature", -beta * by_log_density),
-        ("density_temperature", sample * by_log_density), ("expansion", -thermal * by_log_density),
-        ("pressure", _column(vessels, state.rows, lambda one: one.compressibility) * by_log_density),
-    ):  # fmt: skip
+        ("density", result["by_sample"] * by_log_density / state.density),
+        ("liquid_temperature", -result["expansivity"] * by_log_density),
+        ("density_temperature", result["by_sample_temperature"] * by_log_density),
+        ("expansion", result["method_error"] * by_log_density),
+        ("pressure", result["compressibility"] * by_log_density),
+    ):
         result.sensitivities[name][:] += np.nan_to_num(change)
     return np.where(where, GRAVITY_SHARE * np.nan_to_num(state.level - tap), 0.0)

@@ -17,19 +17,18 @@ from app.services.collect import INPUTS, Collected
 from app.services.compile import (
     CompiledVessel,
     analysed_mixture,
-    boiling_pressure,
     mean_atmosphere,
     mixture_rows,
     stack,
-    virial_columns,
 )
+from app.services.compositions import boiling_pressure, virial_columns
 from app.services.gauged import HEAD, by_head, head_sensitivities, levels_per_unit
+from app.services.liquids import SATURATED
 from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Part, at_row
 from models import units
 from models.columns import Inventory, State
 from models.errors import DefinitionError
 from models.estimate import Estimate
-from models.liquid.expansivity import expansivity
 from models.mass import inventory
 from models.vapour.series import VapourMixture
 
@@ -107,10 +106,10 @@ def measure(
     vessels = stack(collected.vessels, extra)
     rows = None if len(collected.vessels) == 1 else np.arange(collected.rows, dtype=np.intp)
     heads = builder.by_head
-    state = by_head(collected.vessels, state, heads)
+    state = by_head(collected.vessels, vessels, state, heads)
     result = inventory(vessels, rows, state)
     gravity = head_sensitivities(collected.vessels, state, result, heads)
-    per_unit = levels_per_unit(collected.vessels, state, result) if builder.other_means else None
+    per_unit = levels_per_unit(collected.vessels, vessels, state, result) if builder.other_means else None
     parts = parts_of(builder, state, per_unit, gravity)
     mixtures = tuple(mixture_rows(collected.vessels, extra))
     return Measured(
@@ -274,7 +273,7 @@ class States:
         boiling = np.zeros(self.collected.rows)
         for row in np.flatnonzero(where).tolist():
             vessel = self.vessels[row if len(self.vessels) > 1 else 0]
-            if vessel.boiling is None:
+            if vessel.boiling is None or isinstance(vessel.liquid, SATURATED):
                 continue
             boiling[row] = boiling_pressure(vessel.boiling, float(temperature[row]))
         return boiling
@@ -362,13 +361,10 @@ def standard_density(measured: Measured, row: int) -> Estimate:
     if not math.isfinite(value):
         return Estimate(math.nan)
     per_unit = value / at_row(measured.state.density, row)
-    vessel = measured.vessel(row)
-    beta = float(
-        expansivity(
-            at_row(measured.state.density_temperature, row), coefficients=vessel.expansivity, origin=vessel.density[1]
-        )
-    )
-    slopes = {"density": per_unit, "density_temperature": value * beta}
+    slopes = {
+        "density": per_unit * float(measured.result["standard_by_sample"][row]),
+        "density_temperature": value * float(measured.result["standard_by_sample_temperature"][row]),
+    }
     named: dict[str, float] = {}
     for part in measured.parts:
         slope = slopes.get(part.sensitivity)

@@ -13,8 +13,10 @@ from app.schemas.meter import Meter
 from app.schemas.transfer import MovedQuantity, NamedTransfer, Transfer
 from app.schemas.types import canonical
 from app.services import mark
-from app.services.compile import CompiledVessel, boiling_pressure, density_at, mean_atmosphere, vapour_density
+from app.services.compile import CompiledVessel, mean_atmosphere, vapour_density
+from app.services.compositions import boiling_pressure
 from app.services.find import ALL_TIME, site_number
+from app.services.liquids import density_between
 from app.store import definitions, transfers
 from app.store.engine import Store, Writing
 from app.store.transfers import Outcome
@@ -201,7 +203,7 @@ def _kilograms_per_unit(
         return Estimate(1.0)
     own = own_density(name, body, vessel)
     density = own or standard
-    if density is None or vessel is None or vessel.substance.liquid is None:
+    if density is None or vessel is None or vessel.liquid is None:
         return None
     if kind == "standard_volume_m3":
         return density
@@ -210,7 +212,7 @@ def _kilograms_per_unit(
         base = vessel.parameters["standard_temperature"], vessel.parameters["standard_pressure"]
         pressure = base[1] if body.pressure_kpa is None else body.pressure_kpa * units.PASCAL_PER_KPA + base[1]
         temperature = float(units.kelvin(body.temperature_c))
-        ratio = density_at(vessel, temperature, pressure) / density_at(vessel, *base)
+        ratio = density_between(vessel.liquid, density.value, base, (temperature, pressure), base[1]) / density.value
         return Estimate(density.value * ratio, {name: part * ratio for name, part in density.parts.items()})
     air, weights = constants.CONVENTIONAL_AIR_DENSITY, constants.CONVENTIONAL_WEIGHT_DENSITY
     return Estimate((1.0 - air / weights) / (1.0 - air / density.value))  # weight in air to mass, OIML D 28
@@ -218,12 +220,12 @@ def _kilograms_per_unit(
 
 def own_density(name: str, body: Transfer, vessel: CompiledVessel | None) -> Estimate | None:
     """The ticket's own density, taken to the vessel's standard state."""
-    if body.density_kg_m3 is None or vessel is None or vessel.substance.liquid is None:
+    if body.density_kg_m3 is None or vessel is None or vessel.liquid is None:
         return None
     assert body.density_temperature_c is not None
     base = vessel.parameters["standard_temperature"], vessel.parameters["standard_pressure"]
     there = float(units.kelvin(body.density_temperature_c))
-    ratio = density_at(vessel, *base) / density_at(vessel, there, base[1])
+    ratio = density_between(vessel.liquid, body.density_kg_m3, (there, base[1]), base, base[1]) / body.density_kg_m3
     instrument = vessel.instrument("observed_density_kg_m3", "lab")
     return Estimate(
         body.density_kg_m3 * ratio,

@@ -6,7 +6,7 @@ import math
 from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
-from app.services.compile import virial_columns
+from app.services.compositions import virial_columns
 from app.services.measure import Measured
 from app.services.parts import at_row, celsius_of
 from models.columns import Mark, Method
@@ -146,12 +146,13 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     yield _step(
         "expansivity",
         "β(t₀)",
-        vessel.expansivity[0],
+        vessel.liquid.coefficients[0],
         "1/K",
         "first coefficient of powers of T − t₀",
         "definition",
     )
-    yield _step("compressibility", "κ", float(vessel.compressibility * 1000.0), "1/kPa", "constant", "definition")
+    kappa = float(vessel.liquid.compressibility * 1000.0)
+    yield _step("compressibility", "κ", kappa, "1/kPa", "constant", "definition")
     yield _step("density in the vessel", "ρ", result["liquid_density"][row], "kg/m³",
                 "ρ_s exp(−∫β dT from T_s to T + κ (P − P_s))", EXPONENTIAL)  # fmt: skip
     yield _step(

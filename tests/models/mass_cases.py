@@ -15,6 +15,8 @@ from models.geometry.curves import Curve, Curves
 from models.geometry.heads import Head
 from models.geometry.lying import horizontal_cylinder
 from models.geometry.shell import pressure_strain
+from models.liquid.compiled import LiquidColumns
+from models.liquid.definition import ExpansivityLiquid, Liquid
 from models.saturation import SaturationColumns
 from models.vapour.series import VapourColumns, VapourMixture
 
@@ -35,6 +37,7 @@ class Case:
     mixture: str | None = None
     boiling: str | None = None
     capacity: float | None = None
+    liquid: Liquid = ExpansivityLiquid((0.0,), 288.15, 0.0)
 
     def reads(self, **changed: float) -> Case:
         """The same vessel, read otherwise."""
@@ -44,8 +47,7 @@ class Case:
 VESSEL: dict[str, Any] = {
     "is_table": 0.0, "expansion": STEEL, "expansion_temperature": 288.15, "liquid_weight": 7.0 / 8.0,
     "strain_sum": 0.0, "strain_vertical": 0.0, "strain_pressure": 0.0, "roof_mass": 0.0, "roof_lands": 0.0,
-    "roof_floats": 0.0, "roof_volume_per_mass": 0.0, "expansivity": (0.0,), "expansivity_origin": 288.15,
-    "compressibility": 0.0, "standard_temperature": 288.15, "standard_pressure": ATMOSPHERE,
+    "roof_floats": 0.0, "roof_volume_per_mass": 0.0, "standard_temperature": 288.15, "standard_pressure": ATMOSPHERE,
     "water_density": 999.1, "gas_standard_density": 1.0,
 }  # fmt: skip
 READING: dict[str, float] = {
@@ -62,7 +64,6 @@ def vessels(cases: Sequence[Case]) -> Vessels:
     mixtures = [VapourMixture((case.mixture,)) for case in cases if case.mixture is not None]
     boiling = [{case.boiling: 1.0} for case in cases if case.boiling is not None]
     merged = [VESSEL | case.vessel for case in cases]
-    width = max(len(one["expansivity"]) for one in merged)
 
     def rows(held: list[bool]) -> np.ndarray[tuple[int, ...], np.dtype[np.intp]]:
         return np.asarray(np.maximum(np.cumsum(held) - 1, 0), dtype=np.intp)
@@ -70,16 +71,14 @@ def vessels(cases: Sequence[Case]) -> Vessels:
     def limit(which: str) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
         return np.array([getattr(case.curve, which) if case.curve else math.nan for case in cases])
 
-    plain = {name: np.array([one[name] for one in merged], dtype=float) for name in VESSEL if name != "expansivity"}
+    plain = {name: np.array([one[name] for one in merged], dtype=float) for name in VESSEL}
     return Vessels(
         method=np.array([int(case.method) for case in cases]),
         curves=Curves.from_curves(curves) if curves else None,
         curve_row=rows([case.curve is not None for case in cases]),
         bottom=limit("bottom"), top=limit("top"),
         capacity=np.array([case.curve.capacity if case.curve else case.capacity for case in cases], dtype=float),
-        expansivity=tuple(
-            np.array([(*one["expansivity"], *[0.0] * width)[j] for one in merged]) for j in range(width)
-        ),
+        liquids=LiquidColumns.from_liquids([case.liquid for case in cases]), liquid_row=np.arange(len(cases)),
         vapour=VapourColumns.from_mixtures(mixtures) if mixtures else None,
         vapour_row=rows([case.mixture is not None for case in cases]),
         saturation=SaturationColumns.from_compositions(boiling) if boiling else None,
@@ -94,8 +93,8 @@ def state(cases: Sequence[Case]) -> State:
     return State(**{name: np.array([one[name] for one in merged], dtype=float) for name in READING})
 
 
-CRUDE = {"expansivity": (8.3e-4,), "compressibility": 7.5e-10}
-PROPANE = {"expansivity": (2.9e-3, 1.1e-5), "compressibility": 4.5e-9}
+CRUDE = ExpansivityLiquid((8.3e-4,), 288.15, 7.5e-10)
+PROPANE = ExpansivityLiquid((2.9e-3, 1.1e-5), 288.15, 4.5e-9)
 UPRIGHT = shapes.vertical_cylinder(diameter=30.0, height=15.0, bottom=Head("cone", 0.3))
 OIL_READING = {
     "level": 8.231, "water_level": 0.52, "liquid_temperature": 303.4, "density": 846.0, "density_temperature": 293.7,
@@ -126,34 +125,34 @@ LPG_READING = {
     "density_temperature": 289.4, "density_pressure": 7.4e5,
 }  # fmt: skip
 BULLET_CASE = Case(
-    "bullet, all measured", TWO_PHASE, BULLET, PROPANE | strained("horizontal_cylinder", 3.0, 0.018), LPG_READING,
-    "propane", "propane",
+    "bullet, all measured", TWO_PHASE, BULLET, strained("horizontal_cylinder", 3.0, 0.018), LPG_READING,
+    "propane", "propane", liquid=PROPANE,
 )  # fmt: skip
 SPHERE_CASE = replace(
-    BULLET_CASE, name="sphere under pressure", curve=SPHERE, vessel=PROPANE | strained("sphere", 18.0, 0.028)
+    BULLET_CASE, name="sphere under pressure", curve=SPHERE, vessel=strained("sphere", 18.0, 0.028)
 ).reads(level=11.3)
-OIL = Case("upright, wet sample", Method.LIQUID, UPRIGHT, CRUDE, OIL_READING)
+OIL = Case("upright, wet sample", Method.LIQUID, UPRIGHT, {}, OIL_READING, liquid=CRUDE)
 NITROGEN = Case(
     "gas receiver", Method.VAPOUR, None, strained("horizontal_cylinder", 2.0, 0.02),
     {"vapour_temperature": 297.2, "pressure": 3.1e6}, "nitrogen", capacity=50.0,
 )  # fmt: skip
-PENTANE = {"expansivity": (1.6e-3,), "compressibility": 2.2e-9}
+PENTANE = ExpansivityLiquid((1.6e-3,), 288.15, 2.2e-9)
 BLANKETED = Case(
-    "blanketed, all measured", TWO_PHASE | Method.BLANKET, UPRIGHT, PENTANE | strained("vertical_cylinder", 30.0, 0.01),
+    "blanketed, all measured", TWO_PHASE | Method.BLANKET, UPRIGHT, strained("vertical_cylinder", 30.0, 0.01),
     {"level": 6.2, "liquid_temperature": 293.4, "vapour_temperature": 297.1, "pressure": ATMOSPHERE + 5e3,
      "density": 626.1, "density_temperature": 293.15},
-    "n-pentane", "n-pentane",
+    "n-pentane", "n-pentane", liquid=PENTANE,
 )  # fmt: skip
-FLOATING = replace(OIL, name="floating roof", method=Method.LIQUID | Method.ROOF, vessel=CRUDE | ROOF)
+FLOATING = replace(OIL, name="floating roof", method=Method.LIQUID | Method.ROOF, vessel=ROOF)
 DEDUCTED = replace(
     FLOATING, name="floating roof that the table deducts", curve=_net_table(),
-    vessel=CRUDE | ROOF | {"roof_volume_per_mass": 1.0 / 850.0, "is_table": 1.0},
+    vessel=ROOF | {"roof_volume_per_mass": 1.0 / 850.0, "is_table": 1.0},
 )  # fmt: skip
 
 CASES = [
     OIL,
     replace(OIL, name="upright, dry sample").reads(density_is_dry=1.0),
-    replace(OIL, name="upright, vented to a low pressure", vessel=CRUDE | strained("vertical_cylinder", 30.0, 0.01))
+    replace(OIL, name="upright, vented to a low pressure", vessel=strained("vertical_cylinder", 30.0, 0.01))
     .reads(pressure=ATMOSPHERE + 4e3),
     FLOATING,
     replace(FLOATING, name="floating roof, landing").reads(level=1.93),

@@ -15,8 +15,8 @@ from tests.models.mass_cases import BULLET_CASE, CASES, OIL, Case, state, vessel
 def test_vessels_are_taken_row_by_row_with_their_curves_whole() -> None:
     both = vessels([OIL, BULLET_CASE])
     taken = both.take(np.array([1, 1, 0]))
-    assert taken.compressibility.tolist() == [4.5e-9, 4.5e-9, 7.5e-10]
-    assert [b.tolist() for b in taken.expansivity] == [[2.9e-3, 2.9e-3, 8.3e-4], [1.1e-5, 1.1e-5, 0.0]]
+    assert taken.liquid_row.tolist() == [1, 1, 0]
+    assert taken.liquids is both.liquids
     assert taken.curve_row.tolist() == [1, 1, 0]
     assert taken.curves is both.curves
     assert taken.saturation is both.saturation
@@ -37,6 +37,7 @@ def test_a_states_columns_of_one_value_stay_as_they_are() -> None:
 @pytest.mark.parametrize("mark", list(Mark))
 def test_marks_that_take_the_mass_away_are_told_from_those_that_doubt_it(mark: Mark) -> None:
     lost = {"GUARD_REFUSED", "OUTSIDE_VESSEL", "OUTSIDE_TABLE", "OUTSIDE_METHOD", "NO_VAPOUR_ROOT", "MISSING"}
+    lost |= {"LIQUID_OUTSIDE_METHOD"}
     row = Inventory(np.array([int(mark)]), {"mass": np.array([1.0])}, {})
     assert row.measured[0] == (mark.name not in lost)
     assert bool(mark & UNMEASURED) == (mark.name in lost)

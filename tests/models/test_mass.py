@@ -12,11 +12,11 @@ import pytest
 from models.columns import Mark, Method, Vessels
 from models.constants import GAS_CONSTANT
 from models.geometry import shapes
+from models.liquid.definition import ExpansivityLiquid
 from models.mass import inventory, standard_uncertainty
 from tests.models.mass_cases import (
     BULLET_CASE,
     CASES,
-    CRUDE,
     NITROGEN,
     OIL,
     READING,
@@ -65,9 +65,11 @@ def scaled(given: Vessels, factor: float) -> Vessels:
     return replace(given, curves=curves, capacity=given.capacity * factor)
 
 
-def expanding(given: Vessels, factor: float) -> Vessels:
-    """Vessels whose liquid expands more by one factor."""
-    return replace(given, expansivity=tuple(b * factor for b in given.expansivity))
+def expanding(case: Case, factor: float) -> Vessels:
+    """A vessel whose liquid expands more by one factor."""
+    liquid = case.liquid
+    assert isinstance(liquid, ExpansivityLiquid)
+    return vessels([replace(case, liquid=replace(liquid, coefficients=tuple(b * factor for b in liquid.coefficients)))])
 
 
 def heavier(given: Vessels, factor: float) -> Vessels:
@@ -115,7 +117,9 @@ def test_each_sensitivity_to_a_definition_is_the_slope_of_the_whole_chain(case: 
     own = inventory(vessels([case]), None, state([case])).sensitivities
     assert own["capacity"][0] == pytest.approx(by_vessel(case, scaled), rel=CLOSE)
     if case.method & Method.LIQUID:
-        assert own["expansion"][0] == pytest.approx(by_vessel(case, expanding), rel=CLOSE)
+        above, below = (inventory(expanding(case, 1.0 + step), None, state([case])) for step in (1e-5, -1e-5))
+        slope = float(above["mass"][0] - below["mass"][0]) / 2e-5
+        assert own["expansion"][0] == pytest.approx(slope, rel=CLOSE)
     if case.method & Method.VAPOUR:
         assert own["molar_mass"][0] == pytest.approx(by_vessel(case, heavier), rel=CLOSE)
 
@@ -133,7 +137,7 @@ def test_the_vapours_model_error_is_its_relative_error_of_the_vapour() -> None:
 
 
 def test_a_roof_in_its_landing_zone_is_uncertain_by_its_mass() -> None:
-    afloat = replace(OIL, method=Method.LIQUID | Method.ROOF, vessel=CRUDE | ROOF)
+    afloat = replace(OIL, method=Method.LIQUID | Method.ROOF, vessel=ROOF)
     cases = [afloat.reads(level=1.93, sediment_water=0.0), afloat.reads(level=2.2), afloat.reads(level=1.7)]
     own = inventory(vessels(cases), np.arange(3), state(cases))
     np.testing.assert_allclose(own.sensitivities["roof"], [1.2e5, 0.0, 0.0], rtol=1e-12)
@@ -346,7 +350,7 @@ def test_missing_stays_missing(name: str) -> None:
 @pytest.mark.parametrize("table", [False, True])
 @pytest.mark.parametrize("level", [-0.01, 15.4, 99.0])
 def test_a_level_outside_the_vessel_is_marked_and_never_clamped(level: float, table: bool) -> None:
-    case = replace(OIL, vessel=CRUDE | {"is_table": float(table)}).reads(level=level)
+    case = replace(OIL, vessel={"is_table": float(table)}).reads(level=level)
     own = inventory(vessels([case]), None, state([case]))
     assert math.isnan(own["mass"][0])
     assert math.isnan(own["tank_volume"][0])
@@ -397,8 +401,11 @@ def test_a_small_vapour_that_cannot_be_computed_is_left_out_within_its_bound() -
     assert math.isnan(refused["mass"][0])
 
 
+NOT_EXPANDING = ExpansivityLiquid((0.0,), 288.15, 0.0)
+
+
 def test_a_vapour_is_left_out_up_to_one_percent_of_its_liquid() -> None:
-    case = replace(BULLET_CASE, curve=shapes.box(length=1.0, width=1.0, height=1.0), vessel={"expansion": 0.0}).reads(
+    case = replace(BULLET_CASE, curve=shapes.box(length=1.0, width=1.0, height=1.0), vessel={"expansion": 0.0}, liquid=NOT_EXPANDING).reads(
         level=0.95, liquid_temperature=353.15, vapour_temperature=math.nan, pressure=math.nan, density=500.0
     )
     pressure = inventory(vessels([case]), None, state([case]))["vapour_pressure"][0]

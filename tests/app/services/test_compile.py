@@ -10,13 +10,12 @@ import pytest
 from app.schemas.site import Conditions
 from app.services.compile import (
     analysed_mixture,
-    boiling_pressure,
-    density_at,
     mean_atmosphere,
     mixture_rows,
     stack,
-    virial_columns,
 )
+from app.services.compositions import boiling_pressure, virial_columns
+from app.services.liquids import density_between
 from models.columns import Method
 from models.errors import DefinitionError
 from tests.app.services.worked import HYDROGEN, PROPANE, RECEIVER, SPHERE, TANK, Body, compiled
@@ -136,8 +135,8 @@ def test_a_stack_holds_every_vessel_in_its_row() -> None:
     stacked = stack(cases)
     assert stacked.method.tolist() == [1, 2, 11, 11]
     assert np.isnan(stacked.bottom).tolist() == [False, True, False, False]
-    assert [b.tolist() for b in stacked.expansivity] == [[8.3e-4, 0.0, 2.9e-3, 2.9e-3], [0.0, 0.0, 1.1e-5, 1.1e-5]]
-    assert stacked.compressibility.tolist() == pytest.approx([7.5e-10, 0.0, 4.5e-9, 4.5e-9])
+    assert stacked.liquids is not None
+    assert stacked.liquid_row[[0, 2, 3]].tolist() == [0, 1, 1]  # one substance, one liquid
     assert stacked.curve_row[[0, 2, 3]].tolist() == [0, 1, 2]
     assert stacked.vapour_row[1:].tolist() == [0, 1, 1]  # one substance, one series
     # an ideal gas at 0 °C and 101.325 kPa: hydrogen 2.01588 g/mol in 22.41397 l/mol (CODATA 2018)
@@ -157,6 +156,9 @@ def test_an_analysis_replaces_the_composition_and_is_normalised() -> None:
 def test_a_density_follows_from_the_substances_own_figure() -> None:
     vessel = compiled(TANK)
     expected = 840.0 * math.exp(-8.3e-4 * 10.0 + 7.5e-7 * 100.0)
-    assert density_at(vessel, 298.15, 201_325.0) == pytest.approx(expected, rel=1e-12)
+    density, *at = vessel.density
+    assert vessel.liquid is not None
+    found = density_between(vessel.liquid, density, (at[0], at[1]), (298.15, 201_325.0), 101_325.0)
+    assert found == pytest.approx(expected, rel=1e-12)
     assert vessel.density_declared
     assert compiled(SPHERE, PROPANE).density_uncertainty == pytest.approx(5.074)  # 1 % of 507.4

@@ -7,7 +7,7 @@ import math
 import numpy as np
 import pytest
 
-from app.services.compile import CompiledVessel
+from app.services.compile import CompiledVessel, stack
 from app.services.gauged import HEAD, levels_per_unit, state_density, volume_level
 from app.services.measure import Measured
 from tests.app.services.worked import GAS_OIL, HYDROGEN, RECEIVER, Body, compiled, masses
@@ -61,7 +61,7 @@ def test_a_head_weighs_what_stands_above_the_tap() -> None:
 def test_one_unit_of_each_is_so_much_level() -> None:
     vessel = box()
     measured = masses(vessel, {HEAD: 15.0, "liquid_temperature_c": 15.0})
-    found = levels_per_unit((vessel,), measured.state, measured.result)
+    found = levels_per_unit((vessel,), stack((vessel,)), measured.state, measured.result)
     assert float(found["liquid_volume_m3"][0]) == pytest.approx(0.01, rel=1e-12)  # 1 m³ on 100 m²
     assert float(found["liquid_volume_pct"][0]) == pytest.approx(0.05, rel=1e-12)  # 5 m³ on 100 m²
     assert float(found[HEAD][0]) == pytest.approx(1000.0 / (GRAVITY * 800.0), rel=1e-12)
@@ -71,7 +71,7 @@ def test_the_density_of_a_state_is_that_of_its_temperature() -> None:
     # β = 8.3e-4 + 4e-6 (T − 15 °C), 26 K up from the sample: ln(ρ/800) = −(8.3e-4 × 26 + 4e-6 × 26²/2).
     vessel = box({**CURVED, "liquid": {**CURVED["liquid"], "compressibility_per_kpa": 0.0}})
     expected = 800.0 * math.exp(-(8.3e-4 * 26.0 + 4e-6 * 338.0))
-    assert float(state_density((vessel,), masses(vessel, READ).state)[0]) == pytest.approx(expected, rel=1e-12)
+    assert float(state_density((vessel,), stack((vessel,)), masses(vessel, READ).state)[0]) == pytest.approx(expected, rel=1e-12)
 
 
 @pytest.mark.parametrize("substance", [GAS_OIL, CURVED], ids=["constant", "polynomial"])

@@ -68,9 +68,9 @@ TALLER = {"expansion_per_k": 1e-4, "at_temperature_c": 5.0, "insulated": True}
 ROUND = {"shape": {"kind": "vertical_cylinder", "diameter_m": 12.0, "height_m": 10.0}}
 ROOFED = ROUND | {"floating_roof": {"mass_kg": 20_000.0, "lands_at_m": 1.0, "floats_at_m": 1.2}}
 GEOMETRIES: list[tuple[str, dict[str, Any], float]] = [
-    # The shell at 15 °C, 10 K above its table: two strains of 1e-3 upon the area, and the third and the level's take
-    # each other away.
-    ("shell", {"shell": TALLER}, 400_000.0 * 2e-3),
+    # The shell at 15 °C, 10 K above its table: two strains of 1e-3 upon the area, (1 + 1e-3)² − 1; the third and the
+    # level's take each other away.
+    ("shell", {"shell": TALLER}, 400_000.0 * 2.001e-3),
     ("roof", ROOFED, -20_000.0),
     ("datum", {"gauging": {"datum_m": 0.05}}, 0.05 * KG_PER_M),
     ("deadwood", {"deadwood": [[1.0, 2.0, 3.0]]}, -2_400.0),

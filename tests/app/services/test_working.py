@@ -57,7 +57,8 @@ def redo_geometry(s: Steps, vessel: CompiledVessel, gauge_kpa: float) -> tuple[f
     vertical = thermal + p["strain_vertical"] * gauge_kpa * 1e3
     assert vessel.curve is not None
     reach = (s["h"] - vessel.curve.bottom) * s["A(h)"] / s["V(h)"]
-    return 1.0 + total - vertical * reach, 1.0 + total
+    spread = (1.0 + total / 3.0) ** 3
+    return spread / (1.0 + vertical * reach), spread
 
 
 def redo_liquid(s: Steps, substance: dict[str, Any], vessel: CompiledVessel) -> float:

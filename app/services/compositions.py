@@ -1,0 +1,89 @@
+"""What substances are made of: components, the vapour's mixture, an analysis, what boils at which pressure."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import replace
+from functools import lru_cache
+
+import numpy as np
+
+from app.schemas.component import Component as WireComponent
+from app.schemas.substance import VirialVapour
+from models import units
+from models.components import Component, component, given_component
+from models.saturation import SaturationColumns
+from models.vapour.series import VapourColumns, VapourMixture
+
+Boiling = tuple[tuple[Component, float], ...]  # a liquid as substances and mole fractions
+
+
+def boiling_pressure(composition: Boiling | None, temperature: float) -> float:
+    """Vapour pressure of a substance at a temperature; 0 where it has none that we know. [Pa]"""
+    if composition is None:
+        return 0.0
+    pressure, _ = saturation_columns((composition,)).pressure(np.array([temperature]), 0)
+    return float(pressure[0]) if math.isfinite(pressure[0]) else 0.0
+
+
+@lru_cache(maxsize=64)
+def saturation_columns(compositions: tuple[Boiling, ...]) -> SaturationColumns:
+    """Vapour pressures of some liquids; the same liquids are compiled once."""
+    return SaturationColumns.from_compositions([list(composition) for composition in compositions])
+
+
+@lru_cache(maxsize=256)
+def virial_columns(mixtures: tuple[VapourMixture, ...]) -> VapourColumns:
+    """Virial series of some mixtures; the same mixtures are compiled once."""
+    return VapourColumns.from_mixtures(list(mixtures))
+
+
+def fractions_of(components: Sequence[WireComponent]) -> Boiling:
+    """Substances and mole fractions, which sum to one."""
+    total = math.fsum(item.mole_fraction for item in components)
+    return tuple((_component(item), item.mole_fraction / total) for item in components)
+
+
+def _component(item: WireComponent) -> Component:
+    if item.critical_temperature_k is None:
+        return component(item.id)
+    assert item.critical_pressure_kpa_abs is not None and item.acentric_factor is not None
+    assert item.molar_mass_g_mol is not None
+    return given_component(
+        item.id, critical_temperature=item.critical_temperature_k,
+        critical_pressure=item.critical_pressure_kpa_abs * units.PASCAL_PER_KPA,
+        acentric_factor=item.acentric_factor, molar_mass=item.molar_mass_g_mol * units.KILOGRAM_PER_GRAM,
+    )  # fmt: skip
+
+
+def mixture_of(vapour: VirialVapour) -> VapourMixture:
+    """The vapour of a substance, as the virial equation takes it."""
+    pairs = fractions_of(vapour.components)
+    cubic = units.CUBIC_METRE_PER_CUBIC_CENTIMETRE
+    return VapourMixture(
+        tuple(item for item, _ in pairs), tuple(fraction for _, fraction in pairs), form=vapour.form,
+        terms=vapour.terms, coefficients=vapour.coefficients, second_virial=vapour.second_virial,
+        third_virial=vapour.third_virial, measured_second=_measured(vapour.second_virial_cm3_mol, cubic),
+        measured_third=_measured(vapour.third_virial_cm6_mol2, cubic**2),
+    )  # fmt: skip
+
+
+def _measured(
+    given: float | tuple[tuple[float, float], ...] | None, scale: float
+) -> float | tuple[tuple[float, float], ...] | None:
+    if given is None or isinstance(given, int | float):
+        return None if given is None else given * scale
+    return tuple((float(units.kelvin(t)), value * scale) for t, value in given)
+
+
+@lru_cache(maxsize=1024)
+def analysed(vapour: VirialVapour, analysis: tuple[tuple[str, float], ...]) -> VapourMixture:
+    """The substance's vapour with the composition of an analysis in place of its own."""
+    own = {item.id: item for item in vapour.components}
+    total = math.fsum(fraction for _, fraction in analysis)
+    return replace(
+        mixture_of(vapour),
+        components=tuple(_component(own[name]) if name in own else component(name) for name, _ in analysis),
+        mole_fractions=tuple(fraction / total for _, fraction in analysis),
+    )

@@ -1,0 +1,128 @@
+"""The liquid of a substance: its method, its own density figure, and densities taken from state to state."""
+
+from __future__ import annotations
+
+import math
+from functools import lru_cache
+
+import numpy as np
+
+from app.schemas import liquid as wire
+from app.schemas.site import Conditions as Site
+from app.services.compositions import Boiling, boiling_pressure, fractions_of
+from models import constants, instruments, units
+from models.errors import DefinitionError
+from models.liquid import definition
+from models.liquid.compiled import LiquidColumns
+from models.liquid.definition import Liquid
+from models.liquid.state import Conditions, LiquidState
+
+State = tuple[float, float]  # temperature and absolute pressure [K, Pa]
+SATURATED = (definition.MixtureLiquid, definition.LightHydrocarbonLiquid)
+"""Methods that start from the saturated liquid: a pressure below that of equilibrium counts as it."""
+
+
+def base_state(site: Site) -> State:
+    """Base temperature and pressure of a site. [K, Pa]"""
+    return float(units.kelvin(site.base_temperature_c)), float(units.pascal(site.base_pressure_kpa_abs))
+
+
+def liquid_of(body: wire.Liquid, site: Site) -> Liquid:
+    """The method that a body asks for."""
+    match body:
+        case wire.ExpansivityLiquid():
+            given = body.expansivity_per_k
+            coefficients = (float(given),) if isinstance(given, float | int) else tuple(given)
+            kappa = body.compressibility_per_kpa / units.PASCAL_PER_KPA
+            return definition.ExpansivityLiquid(coefficients, float(units.kelvin(body.at_temperature_c)), kappa)
+        case wire.PetroleumLiquid():
+            return definition.PetroleumLiquid(body.commodity, body.alpha60_per_f)
+        case wire.LightHydrocarbonLiquid(components=None):
+            return definition.LightHydrocarbonLiquid()
+        case wire.LightHydrocarbonLiquid():
+            assert body.components is not None
+            return definition.MixtureLiquid(fractions_of(body.components))
+        case wire.WaterLiquid():
+            return definition.WaterLiquid()
+        case wire.DensityTableLiquid():
+            rows = tuple((float(units.kelvin(t)), density) for t, density in body.rows)
+            given_at = body.at_pressure_kpa_abs
+            pressure = base_state(site)[1] if given_at is None else given_at * units.PASCAL_PER_KPA
+            return definition.TableLiquid(rows, body.compressibility_per_kpa / units.PASCAL_PER_KPA, pressure)
+
+
+def standard_pressure(liquid: Liquid | None, site: Site, boiling: Boiling | None) -> float:
+    """Pressure of the standard state: the base pressure or, where higher, that of equilibrium. [Pa]
+
+    A method that starts from the saturated liquid finds the equilibrium itself and takes the base pressure.
+    """
+    temperature, pressure = base_state(site)
+    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, temperature))
+
+
+def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> tuple[float, ...]:
+    """The substance's own density, its temperature and pressure, and its standard uncertainty. [kg/m³, K, Pa]"""
+    given = body.density_uncertainty_kg_m3
+    density = getattr(body, "density_kg_m3", None)
+    if density is None:
+        at = base_state(site)[0], standard_pressure(liquid, site, boiling)
+        density = own_density(liquid, at)
+        share = instruments.METHOD_DENSITY_SHARE[type(liquid).__name__]
+        return density, *at, share * density if given is None else given
+    temperature = float(units.kelvin(body.at_temperature_c))  # type: ignore[union-attr]
+    stated = body.at_pressure_kpa_abs  # type: ignore[union-attr]
+    if stated is not None:
+        pressure = stated * units.PASCAL_PER_KPA
+    elif isinstance(liquid, SATURATED):
+        pressure = base_state(site)[1]
+    else:
+        pressure = max(base_state(site)[1], boiling_pressure(boiling, temperature))
+    _check(liquid, density, (temperature, pressure), (base_state(site)[0], standard_pressure(liquid, site, boiling)))
+    return density, temperature, pressure, instruments.DENSITY_SHARE * density if given is None else given
+
+
+def own_density(liquid: Liquid, at: State) -> float:
+    """Density of a liquid whose method needs no sample; refused where the method does not reach. [kg/m³]"""
+    columns, row = liquid_columns((liquid,)), np.zeros(1, dtype=np.intp)
+    found = float(columns.own_density(np.array([at[0]]), np.array([at[1]]), row)[0])
+    if not math.isfinite(found):
+        raise DefinitionError(why_outside(liquid, math.nan, at, at), field="liquid")
+    return found
+
+
+def why_outside(liquid: Liquid, density: float, sample: State, here: State) -> str:
+    """Which limit of the liquid's method was passed, in one sentence."""
+    return liquid_columns((liquid,)).why_outside(density, sample, here, 0)
+
+
+def density_between(liquid: Liquid, density: float, sample: State, here: State, standard_pressure: float) -> float:
+    """A density that was read at one state, at another. [kg/m³]"""
+    found = state_of(liquid, density, sample, here, (sample[0], standard_pressure), standard_pressure)
+    return float(found.density[0])
+
+
+def _check(liquid: Liquid, density: float, sample: State, standard: State) -> None:
+    """Refuse a density figure from which the method finds no standard density."""
+    if not math.isfinite(state_of(liquid, density, sample, standard, standard).density_standard[0]):
+        raise DefinitionError(why_outside(liquid, density, sample, sample), field="liquid/density_kg_m3")
+
+
+@lru_cache(maxsize=256)
+def liquid_columns(liquids: tuple[Liquid, ...]) -> LiquidColumns:
+    """Columns of some liquids; the same liquids are compiled once."""
+    return LiquidColumns.from_liquids(liquids)
+
+
+def state_of(
+    liquid: Liquid, density: float, sample: State, here: State, standard: State,
+    atmosphere: float = constants.STANDARD_ATMOSPHERE,
+) -> LiquidState:  # fmt: skip
+    """Everything that follows from one sample: arrays of one value. [SI]"""
+
+    def conditions(at: State, datum: float) -> Conditions:
+        return Conditions(np.array([at[0]]), np.array([at[1]]), np.array([datum]))
+
+    return liquid_columns((liquid,)).state(
+        np.array([density]), conditions(sample, standard[1]), conditions(here, atmosphere),
+        conditions(standard, standard[1]), np.zeros(1, dtype=np.intp),
+    )  # fmt: skip
