@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 
 from models.arrays import ArrayLike, BoolArray, FloatArray, as_floats
@@ -32,7 +34,7 @@ _COLDEST, _HOTTEST = -20.0, 40.0  # °C, the range of the formula
 _HIGHEST_PRESSURE = 1e6  # Pa; the tables are those at one atmosphere
 _ROUNDING = 1e-9  # °C, what a conversion of units may leave
 _STEPS = 60  # bisection alone would find the last bit of a mass fraction
-_TOLERANCE = 1e-15
+_TOLERANCE = 1e-10  # of a mass fraction; the step that is taken last squares what was left
 
 
 def _table() -> FloatArray:
@@ -88,7 +90,7 @@ def point(
     t = kelvin - ZERO_CELSIUS
     inside = (key >= 0.0) & (key <= 1.0) & (p >= 0.0) & (p <= _HIGHEST_PRESSURE) & _warm(t)
     theta = np.where(_warm(t), t, np.nan) - _REFERENCE
-    density, by_key, by_temperature = np.zeros(()), np.zeros(()), np.zeros(())
+    density, by_key, by_temperature = as_floats(0.0, 0.0, 0.0)
     for row in _COEFFICIENTS[::-1]:  # eq. 1, powers of p outside, of t − 20 inside
         value, slope = _polynomial(row, theta)
         by_key = by_key * key + density
@@ -182,12 +184,11 @@ def _warm(t: FloatArray | np.float64) -> BoolArray:
 
 def _polynomial(coefficients: FloatArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
     """A polynomial and its slope; the highest powers that are zero cost nothing."""
-    kept = coefficients[: int(np.flatnonzero(coefficients)[-1]) + 1]
-    return _value_and_slope([np.float64(one) for one in kept], x)
+    return _value_and_slope(as_floats(*coefficients[: int(np.flatnonzero(coefficients)[-1]) + 1]), x)
 
 
-def _value_and_slope(coefficients: list[np.float64] | list[FloatArray], x: FloatArray) -> tuple[FloatArray, FloatArray]:
-    value, slope = np.zeros(()), np.zeros(())
+def _value_and_slope(coefficients: Sequence[FloatArray], x: FloatArray) -> tuple[FloatArray, FloatArray]:
+    value, slope = as_floats(0.0, 0.0)
     for coefficient in reversed(coefficients):
         slope = slope * x + value
         value = value * x + coefficient
