@@ -4,14 +4,17 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+
 from app.schemas.types import format_instant
 from app.services.choose import NEVER
 from app.services.collect import INPUTS
-from app.services.compile import virial_columns
+from app.services.compile import stack, virial_columns
 from app.services.measure import Measured
-from app.services.parts import at_row
+from app.services.parts import at_row, celsius_of
 from models import instruments
 from models.columns import UNMEASURED, Mark
+from models.space import SaturationInterval, saturation_interval
 
 NEEDED = {
     "level": ("level_m", "a level or an ullage"),
@@ -26,18 +29,17 @@ WARNINGS: dict[Mark, tuple[str, str]] = {
     ),
     Mark.SATURATION_LOW: (
         "saturation_low",
-        "the pressure lies below the vapour pressure at both temperatures by more than twice its uncertainty: "
         "look for gauge and absolute confused, a warm thermometer, a lighter product withdrawn, another product, or a "
         "blanket that is lost",
     ),
     Mark.SATURATION_HIGH: (
         "saturation_high",
-        "the pressure lies above the vapour pressure at both temperatures by more than twice its uncertainty: "
-        "look for gas that does not condense, a cold thermometer, or a lighter product",
+        "look for gauge and absolute confused, gas that does not condense, a cold thermometer, or a lighter product",
     ),
     Mark.VAPOUR_SATURATED: (
         "vapour_saturated",
-        "the vapour was above saturation beside its liquid and is taken as saturated at its pressure",
+        "the vapour was above saturation beside its liquid and is taken as saturated at its pressure, or at its "
+        "liquid's temperature where no vapour of the substance stands at that pressure",
     ),
     Mark.VAPOUR_LEFT_OUT: (
         "vapour_left_out",
@@ -69,6 +71,9 @@ WARNINGS: dict[Mark, tuple[str, str]] = {
 }
 
 
+UNSATURATED = Mark.SATURATION_LOW | Mark.SATURATION_HIGH
+
+
 def counts(measured: Measured, row: int, name: str) -> bool:
     """Whether an input enters this vessel's mass at all."""
     vessel = measured.vessel(row)
@@ -98,7 +103,7 @@ def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
     """What is doubtful, and why a row has no mass."""
     marks = Mark(int(measured.result.marks[row]))
     found = [
-        {"code": code, "detail": detail}
+        {"code": code, "detail": _saturation(measured, row, detail) if mark & UNSATURATED else detail}
         for mark, (code, detail) in (WARNINGS.items() if marks else ())
         if marks & mark and not mark & UNMEASURED
     ]
@@ -120,6 +125,75 @@ def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
     found.extend(_assumptions(measured, row))
     carried = measured.carried.get(row)
     return found if carried is None else found + carried.warnings
+
+
+def _saturation(measured: Measured, row: int, look: str) -> str:
+    """The pressure, the interval that it should lie in, what made that and its tolerance: enough to redo it."""
+    state, vessel = measured.state, measured.vessel(row)
+    pressure, spread = at_row(state.pressure, row), at_row(state.pressure_uncertainty, row)
+    kelvin = at_row(state.temperature_uncertainty, row)
+    liquid, vapour = at_row(state.liquid_temperature, row), at_row(state.vapour_temperature, row)
+    own = interval_of(measured, row)
+    ends = {"liquid": (liquid, own.at_liquid), "vapour": (vapour, own.at_vapour)}
+    if vessel.is_blanketed and math.isfinite(own.at_vapour):
+        del ends["liquid"]  # the gas's own temperature says what part of it is product
+    said = " and ".join(
+        f"{_kpa(float(one))} kPa at {celsius_of(t):.5g} °C of the {where}"
+        for where, (t, one) in ends.items()
+        if math.isfinite(one)
+    )
+    low, high = float(own.lowest), float(own.highest)
+    below = pressure < low
+    far = _kpa(low - pressure if below else pressure - high)
+    detail = (
+        f"the pressure is {_kpa(pressure)} kPa absolute, {far} kPa {'below' if below else 'above'} the vapour "
+        f"pressure, which is {said}; the tolerance is 2u = {_kpa(float(own.tolerance))} kPa, of u = {_kpa(spread)} kPa "
+        f"in the pressure, {kelvin:.4g} K at {_kpa(float(own.slope))} kPa/K in the temperature and "
+        f"{_kpa(float(own.departure))} kPa in the vapour pressure: "
+    )
+    return detail + look + _slip(measured, row, own)
+
+
+def interval_of(measured: Measured, row: int) -> SaturationInterval:
+    """The pressures that agree with the temperatures of a row, as the chain took them."""
+    stacked, state = stack((measured.vessel(row),)), measured.state
+    assert stacked.saturation is not None
+    vapour = at_row(state.vapour_temperature, row)
+    if measured.vessel(row).is_blanketed:  # beside a blanket the gas's temperature alone counts
+        vapour = vapour if math.isfinite(vapour) else at_row(state.liquid_temperature, row)
+    liquid = vapour if measured.vessel(row).is_blanketed else at_row(state.liquid_temperature, row)
+    columns = liquid, vapour, at_row(state.pressure_uncertainty, row), at_row(state.temperature_uncertainty, row)
+    return saturation_interval(
+        stacked.saturation, int(stacked.saturation_row[0]), *(np.asarray(value) for value in columns)
+    )
+
+
+def _slip(measured: Measured, row: int, own: SaturationInterval) -> str:
+    """One sentence more where the same number, taken as the other of gauge and absolute, would fit."""
+    if measured.vessel(row).is_blanketed:
+        return ""  # every pressure above the product's fits
+    pressure, air = at_row(measured.state.pressure, row), at_row(measured.state.atmosphere, row)
+    absolute = _read_absolute(measured, row)
+    other = pressure + air if absolute else pressure - air
+    if not own.lowest - own.tolerance <= other <= own.highest + own.tolerance:
+        return ""
+    posted, meant = ("pressure_kpa_abs", "pressure_kpa") if absolute else ("pressure_kpa", "pressure_kpa_abs")
+    number = _kpa(pressure if absolute else other)
+    reads = f"gauge pressure, {number} kPa over {_kpa(air)} kPa" if absolute else f"absolute pressure, {number} kPa"
+    return f". It fits if the transmitter reads {reads}: check whether {posted} was meant as {meant}"
+
+
+def _read_absolute(measured: Measured, row: int) -> bool:
+    """Whether what counts for the pressure was posted, or assumed, as an absolute one."""
+    chosen = measured.chosen["pressure"]
+    if chosen.usable[row]:
+        return measured.collected.origins["pressure"].of(row, int(chosen.source[row]))[0] == "pressure_kpa_abs"
+    assumed = measured.assumed.get("pressure_kpa_abs")
+    return assumed is not None and bool(assumed[row])
+
+
+def _kpa(pascal: float) -> str:
+    return f"{pascal / 1000.0:.5g}"
 
 
 def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
