@@ -3,19 +3,100 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from typing import NamedTuple
 
 import numpy as np
 
 from models.arrays import BoolArray, FloatArray, IntArray
 from models.columns import Mark, Method, Step
 from models.constants import GAS_CONSTANT
+from models.saturation import SaturationColumns
+from models.vapour.guard import Verdict
 from models.vapour.series import VapourState
 
 LEFT_OUT_SHARE = 0.01  # of the liquid; a vapour that cannot be computed is left out up to this bound
 SATURATION_COVERAGE = 2.0  # standard uncertainties
+# A vapour that is not computed is at most so many times the ideal gas at its pressure and temperature: saturated
+# vapours have Z above 0.50 up to 0.96 of their critical temperature and above 0.25 up to 0.999 of it, by the
+# reference equations of 20 fluids (CoolProp 8.0.0; helium and associating vapours are left aside).
+DENSER_THAN_IDEAL, DENSEST_NEAR_CRITICAL, NEAR_CRITICAL = 2.0, 4.0, 0.96
 # Of a vapour beside a blanket, for each pascal of the blanket: what the two gases do to each other is left out.
 # Enhancement factors at 1 to 2 bar are 1.005 to 1.04: J. M. Prausnitz et al., 3rd ed., 1999, ch. 5 (from memory).
 BLANKET_SHARE = 0.02 / 1e5  # 1/Pa
+
+
+class SaturationInterval(NamedTuple):
+    """Where the pressure above a liquid can lie: from its vapour pressure at the colder to that at the warmer end.
+
+    Parameters
+    ----------
+    at_liquid, at_vapour : FloatArray, shape (...)
+        Vapour pressure at the temperature of the liquid, and of the vapour; NaN where there is none. [Pa]
+    slope : FloatArray, shape (...)
+        Of the vapour pressure by temperature, at the vapour's where it is known, else at the liquid's. [Pa/K]
+    departure : FloatArray, shape (...)
+        Standard uncertainty of the vapour pressure itself. [Pa]
+    lowest, highest : FloatArray, shape (...)
+        Ends of the interval; one point where only the liquid's temperature is known. [Pa]
+    tolerance : FloatArray, shape (...)
+        By which a pressure may lie outside and still agree. [Pa]
+    """
+
+    at_liquid: FloatArray
+    at_vapour: FloatArray
+    slope: FloatArray
+    departure: FloatArray
+    lowest: FloatArray
+    highest: FloatArray
+    tolerance: FloatArray
+
+
+def saturation_interval(
+    saturation: SaturationColumns, row: IntArray | int, liquid_temperature: FloatArray,
+    vapour_temperature: FloatArray, pressure_uncertainty: FloatArray, temperature_uncertainty: FloatArray,
+) -> SaturationInterval:  # fmt: skip
+    """Pressures that agree with the temperatures of a liquid and of the vapour above it.
+
+    Parameters
+    ----------
+    saturation : SaturationColumns
+        Vapour pressures. [1]
+    row : IntArray or int, shape (...)
+        Which substance. [1]
+    liquid_temperature, vapour_temperature : FloatArray, shape (...)
+        As measured; NaN where the vapour's is not. [K]
+    pressure_uncertainty, temperature_uncertainty : FloatArray, shape (...)
+        Standard uncertainties. [Pa, K]
+
+    Returns
+    -------
+    SaturationInterval
+        The interval and its tolerance. [Pa]
+
+    Notes
+    -----
+    With p the vapour pressure and u_p the worst departure of its equation::
+
+        lowest  = min(p(T_l), p(T_v)),  highest = max(p(T_l), p(T_v))        (1)
+        tolerance = 2 √(u(P)² + (dp/dT u(T))² + u_p²)                       (2)
+
+    References
+    ----------
+    .. [1] JCGM 100:2008 (GUM), eq. 10 and 6.2 (coverage factor 2).
+    """
+    at_liquid, liquid_slope = saturation.pressure(liquid_temperature, row)
+    at_vapour, vapour_slope = saturation.pressure(vapour_temperature, row)
+    known = np.isfinite(at_vapour)
+    slope = np.where(known, vapour_slope, liquid_slope)
+    departure = saturation.departure[row] * np.where(known, at_vapour, at_liquid)
+    return SaturationInterval(
+        at_liquid, at_vapour, slope, departure,
+        np.where(known, np.minimum(at_liquid, at_vapour), at_liquid),  # eq. 1
+        np.where(known, np.maximum(at_liquid, at_vapour), at_liquid),
+        SATURATION_COVERAGE * np.sqrt(
+            pressure_uncertainty**2 + (slope * temperature_uncertainty) ** 2 + departure**2  # eq. 2
+        ),
+    )  # fmt: skip
 
 
 def vapour_conditions(step: Step, method: Method) -> tuple[FloatArray, FloatArray, BoolArray, BoolArray]:
@@ -23,6 +104,8 @@ def vapour_conditions(step: Step, method: Method) -> tuple[FloatArray, FloatArra
 
     In this order: as measured; at the measured pressure, saturated; without a pressure, saturated at the
     liquid's temperature. A vapour above saturation beside its liquid is taken as saturated at its pressure.
+    A pressure at which the liquid nowhere boils is taken with the liquid's temperature, and where it lies
+    above the liquid's vapour pressure as that.
 
     Parameters
     ----------
@@ -48,30 +131,32 @@ def vapour_conditions(step: Step, method: Method) -> tuple[FloatArray, FloatArra
         return pressure, temperature, nowhere, nowhere
     assert v.saturation is not None
     row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
-    at_liquid, liquid_slope = v.saturation.pressure(s.liquid_temperature, row)
-    by_liquid = np.isnan(pressure)
-    pressure = np.where(by_liquid, at_liquid, pressure)
-    temperature = np.where(by_liquid, s.liquid_temperature, temperature)
-    at_vapour, slope = v.saturation.pressure(temperature, row)
-    above = (pressure > at_vapour) & ~by_liquid
-    by_pressure = np.isnan(temperature) | above
+    unread = np.isnan(pressure)
+    own = saturation_interval(
+        v.saturation, row, s.liquid_temperature, np.where(unread, np.nan, temperature), s.pressure_uncertainty,
+        s.temperature_uncertainty,
+    )  # fmt: skip
+    step.mark(s.pressure < own.lowest - own.tolerance, Mark.SATURATION_LOW)
+    step.mark(s.pressure > own.highest + own.tolerance, Mark.SATURATION_HIGH)
+    above = pressure > own.at_vapour
+    by_pressure = ~unread & (np.isnan(temperature) | above)
+    by_liquid = unread
+    # The liquid's pressure is that of the space above it, also where that is the vapour pressure.
+    step.state = replace(s, pressure=np.where(unread, own.at_liquid, pressure))
+    pressure = step.state.pressure
+    temperature = np.where(unread, s.liquid_temperature, temperature)
     if by_pressure.any():
         boiling = v.saturation.temperature(pressure, row)
         temperature = np.where(by_pressure, boiling, temperature)
-    tolerance = SATURATION_COVERAGE * np.hypot(
-        s.pressure_uncertainty, np.where(np.isfinite(slope), slope, liquid_slope) * s.temperature_uncertainty
-    )
-    measured = np.isfinite(s.pressure) & ~by_liquid
-    known = np.isfinite(at_vapour)
-    lower = np.where(known, np.minimum(at_liquid, at_vapour), at_liquid)
-    upper = np.where(known, np.maximum(at_liquid, at_vapour), at_liquid)
-    step.mark(measured & (s.pressure < lower - tolerance), Mark.SATURATION_LOW)
-    step.mark(measured & (s.pressure > upper + tolerance), Mark.SATURATION_HIGH)
+        nowhere_boiling = by_pressure & np.isnan(boiling)
+        if nowhere_boiling.any():
+            beyond = nowhere_boiling & (pressure > own.at_liquid)
+            by_pressure, by_liquid = by_pressure & ~nowhere_boiling, by_liquid | beyond
+            temperature = np.where(nowhere_boiling, s.liquid_temperature, temperature)
+            pressure = np.where(beyond, own.at_liquid, pressure)
     step.mark(above, Mark.VAPOUR_SATURATED)
     step.mark(by_pressure & ~above, Mark.VAPOUR_AT_PRESSURE)
     step.mark(by_liquid, Mark.VAPOUR_AT_LIQUID_TEMPERATURE)
-    # The liquid's pressure is that of the space above it, also where that is the vapour pressure.
-    step.state = replace(s, pressure=pressure)
     return pressure, temperature, by_pressure, by_liquid
 
 
@@ -123,6 +208,8 @@ def vapour(step: Step, method: Method) -> None:
     rows = v.vapour_row if s.vapour_row is None else s.vapour_row
     row = rows if len(rows) > 1 else int(rows[0])
     gas = v.vapour.state(pressure, temperature, row)
+    if method & Method.SATURATION and not method & Method.BLANKET and (gas.verdict >= Verdict.REFUSED).any():
+        gas, pressure, temperature, by_pressure, by_liquid = _at_its_liquid(step, gas, row)
     space = out["full_factor"] * v.capacity - out["shell_factor"] * out["tank_volume"]
     if method & Method.LIQUID:
         step.mark(space <= 0.0, Mark.LIQUID_FULL)
@@ -140,6 +227,27 @@ def vapour(step: Step, method: Method) -> None:
     _vapour_sensitivities(step, method, gas, by_p, by_t, (by_pressure, by_liquid))
 
 
+def _at_its_liquid(
+    step: Step, gas: VapourState, row: IntArray | int
+) -> tuple[VapourState, FloatArray, FloatArray, BoolArray, BoolArray]:
+    """A vapour too dense at the pressure that was read, taken as saturated at its liquid's temperature instead.
+
+    So much more than the liquid's vapour pressure is another gas, or a mistaken pressure: neither is its vapour.
+    """
+    v, s = step.vessels, step.state
+    assert v.vapour is not None and v.saturation is not None and step.conditions is not None
+    pressure, temperature, by_pressure, by_liquid = step.conditions
+    which = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    at_liquid, _ = v.saturation.pressure(s.liquid_temperature, which)
+    instead = (gas.verdict >= Verdict.REFUSED) & by_pressure & (pressure > at_liquid)
+    if not instead.any():
+        return gas, pressure, temperature, by_pressure, by_liquid
+    pressure, temperature = np.where(instead, at_liquid, pressure), np.where(instead, s.liquid_temperature, temperature)
+    step.mark(instead, Mark.VAPOUR_AT_LIQUID_TEMPERATURE)
+    again = v.vapour.state(pressure, temperature, row)
+    return again, pressure, temperature, by_pressure & ~instead, by_liquid | instead
+
+
 def _guard(
     step: Step, method: Method, gas: VapourState, pressure: FloatArray, temperature: FloatArray,
     space: FloatArray, row: IntArray | int,
@@ -147,22 +255,23 @@ def _guard(
     """What the virial equation says of itself, and a small vapour that it refuses, left out."""
     v, out = step.vessels, step.out
     assert v.vapour is not None
-    step.mark((gas.verdict == 1) | (gas.verdict == 2), Mark.GUARD_WIDE)
-    refused = np.asarray(gas.verdict >= 3) & np.isfinite(pressure) & np.isfinite(temperature)
+    step.mark((gas.verdict == Verdict.WIDE) | (gas.verdict == Verdict.UNCERTAIN), Mark.GUARD_WIDE)
+    refused = np.asarray(gas.verdict >= Verdict.REFUSED) & np.isfinite(pressure) & np.isfinite(temperature)
     if method & Method.LIQUID:
         nothing = np.isnan(out["vapour_density"])
         sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
         known = np.where(np.isfinite(pressure), pressure, step.state.pressure)
-        # Twice the ideal gas bounds the vapour up to Z = 0.5, where the guard has long refused.
-        bound = 2.0 * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
+        near = sure > NEAR_CRITICAL * v.vapour.critical_temperature[row]
+        denser = np.where(near, DENSEST_NEAR_CRITICAL, DENSER_THAN_IDEAL)
+        bound = denser * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
         small = nothing & (bound <= LEFT_OUT_SHARE * np.abs(out["liquid_mass"]))
         step.mark(small, Mark.VAPOUR_LEFT_OUT)
         out["vapour_mass"] = np.where(small, 0.0, out["vapour_mass"])
         step.sens["vapour_left_out"] = np.where(small, bound, 0.0)
         refused = refused & ~small
-    step.mark(refused & (gas.verdict == 3), Mark.GUARD_REFUSED)
-    step.mark(refused & (gas.verdict == 4), Mark.NO_VAPOUR_ROOT)
-    step.mark(refused & (gas.verdict == 5), Mark.OUTSIDE_METHOD)
+    step.mark(refused & (gas.verdict == Verdict.REFUSED), Mark.GUARD_REFUSED)
+    step.mark(refused & (gas.verdict == Verdict.NO_VAPOUR_ROOT), Mark.NO_VAPOUR_ROOT)
+    step.mark(refused & (gas.verdict == Verdict.OUTSIDE_RANGE), Mark.OUTSIDE_METHOD)
 
 
 def _vapour_sensitivities(
@@ -203,8 +312,11 @@ def _vapour_sensitivities(
     _, slope = v.saturation.pressure(out["vapour_temperature"], row)
     along = np.where(by_pressure, by_t / slope, 0.0)
     by_pressure_alone = sens["pressure"] + by_p
-    sens["pressure"] = np.where(by_liquid, 0.0, by_pressure_alone + along)
-    along_liquid = by_t + by_pressure_alone * slope
+    # At its liquid's temperature a vapour follows that; so does the liquid's pressure where none was read.
+    read = by_liquid & (out["vapour_pressure"] != step.state.pressure)
+    liquid_alone = np.where(read, sens["pressure"], 0.0)
+    along_liquid = by_t + np.where(read, by_p, by_pressure_alone) * slope
+    sens["pressure"] = np.where(by_liquid, liquid_alone, by_pressure_alone + along)
     sens["liquid_temperature"] = sens["liquid_temperature"] + np.where(by_liquid, along_liquid, 0.0)
 
 

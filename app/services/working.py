@@ -185,6 +185,8 @@ VAPOUR_BASIS = {
     Mark.VAPOUR_SATURATED: "computed above saturation beside its liquid: taken as saturated at its pressure",
     Mark.VAPOUR_AT_LIQUID_TEMPERATURE: "no pressure is read: saturated at the liquid's temperature",
 }
+NO_SUCH_VAPOUR = "no vapour of the substance stands at the pressure as read: saturated at the liquid's temperature"
+NO_BOILING = "that of the liquid: at the pressure as read its own boiling point is not known"
 BESIDE_BLANKET = "the product's vapour pressure at T_v, its part of the pressure beside the blanket (Dalton's law)"
 NO_BLANKET = "that of the space: the product's vapour pressure has reached it and no blanket is left"
 
@@ -193,6 +195,9 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     result, vessel = measured.result, measured.vessel(row)
     marks = Mark(int(result.marks[row]))
     basis = next((words for mark, words in VAPOUR_BASIS.items() if marks & mark), "as read")
+    unread = not math.isfinite(at_row(measured.state.vapour_temperature, row))
+    if marks & Mark.VAPOUR_AT_LIQUID_TEMPERATURE and math.isfinite(at_row(measured.state.pressure, row)):
+        basis = NO_SUCH_VAPOUR
     if vessel.is_blanketed:
         basis = BESIDE_BLANKET if result["vapour_pressure"][row] < at_row(measured.state.pressure, row) else NO_BLANKET
     virial = ("virial equation", "definition")
@@ -218,7 +223,10 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
         "as read",
     )
     if vessel.is_blanketed:
-        basis = "as read" if math.isfinite(at_row(measured.state.vapour_temperature, row)) else "that of the liquid"
+        yield from _blanket(measured, row)
+        basis = "that of the liquid" if unread else "as read"
+    elif basis == "as read" and unread:
+        basis = NO_BOILING
     yield _step("vapour temperature", "T_v", celsius_of(result["vapour_temperature"][row]), "°C", basis, "as read")
     mixture = measured.mixture(row)
     series = virial_columns((mixture,))
@@ -245,6 +253,16 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
                 "molar density times the critical volume: how far from an ideal gas", virial[1])  # fmt: skip
     yield _step("vapour density", "ρ_v", result["vapour_density"][row], "kg/m³", "P m/(Z R T_v)", virial[1])
     yield _step("vapour mass", "M_vapour", result["vapour_mass"][row], "kg", "V_v ρ_v", ORDER)
+
+
+def _blanket(measured: Measured, row: int) -> Iterator[Step]:
+    """What is not product in a blanketed space: shown, and no part of the mass."""
+    kind = measured.vessel(row).body.vapour_space
+    name = "blanket" if kind is None or kind.blanket is None else kind.blanket
+    rest = max(0.0, at_row(measured.state.pressure, row) - float(measured.result["vapour_pressure"][row]))
+    yield _step("blanket pressure", "P_b", rest / 1000.0, "kPa",
+                f"{name}: the pressure of the space less the vapour's own; it counts in no mass",
+                "Dalton's law")  # fmt: skip
 
 
 def budget_lines(measured: Measured, row: int) -> list[dict[str, Any]]:

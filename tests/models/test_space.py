@@ -1,8 +1,9 @@
-"""The space above a liquid: the product's vapour beside a blanket, and where the blanket is gone."""
+"""The space above a liquid: the order in which its vapour is found, beside a blanket, and where it is saturated."""
 
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -10,7 +11,10 @@ import pytest
 from models.columns import Mark
 from models.geometry import shapes
 from models.mass import inventory
-from tests.models.mass_cases import ATMOSPHERE, BLANKETED, Case, state, vessels
+from models.saturation import SaturationColumns
+from models.space import saturation_interval
+from models.vapour.series import VapourColumns, VapourMixture
+from tests.models.mass_cases import ATMOSPHERE, BLANKETED, BULLET_CASE, Case, state, vessels
 
 # n-Pentane by its reference equation of state (M. Thol et al., Fluid Phase Equilib., 2019, by CoolProp 8.0.0):
 # saturated at 20 °C at 56.568 kPa with 1.72447 kg/m³; at 38 °C at 108.21 kPa; at 38 °C and 102.325 kPa a gas of
@@ -68,3 +72,144 @@ def test_where_the_vapour_pressure_reaches_that_of_the_space_all_is_product() ->
 def test_a_blanket_whose_pressure_is_not_known_makes_no_mass() -> None:
     own = inventory(vessels([tank(20.0, math.nan)]), None, state([tank(20.0, math.nan)]))
     assert math.isnan(own["mass"][0]) and own.marks[0] & Mark.MISSING
+
+
+# Propane by its reference equation of state (E. W. Lemmon et al., J. Chem. Eng. Data 54 (2009) 3141; CoolProp 8.0.0).
+PROPANE_KPA = {18.1: 795.358, 20.0: 836.461, 23.0: 904.509, 25.0: 952.075}
+PROPANE_VAPOUR = {20.0: 18.08234, 25.0: 20.61786}  # saturated, kg/m³
+AT_700_KPA_23_C, SATURATED_AT_760_KPA = 14.36049, 16.42615  # kg/m³
+GAS_CONSTANT = 8.31446261815324  # J/(mol K), exact since 2019: CODATA 2018
+UNREAD = math.nan
+
+
+def lpg(liquid: float, gas: float = UNREAD, kpa: float = UNREAD) -> Case:
+    """A stiff box of 1,000 m³ with 200 m³ of propane in it, at temperatures in °C."""
+    return Case(
+        "propane", BULLET_CASE.method, BOX, {"expansion": 0.0},
+        {"level": 2.0, "liquid_temperature": liquid + 273.15, "density": 500.0, "density_pressure": 836e3,
+         "vapour_temperature": gas + 273.15, "pressure": kpa * 1e3},
+        "propane", "propane",
+    )  # fmt: skip
+
+
+def one(case: Case) -> tuple[float, Mark]:
+    """Vapour mass and marks of a single reading."""
+    own = inventory(vessels([case]), None, state([case]))
+    return float(own["vapour_mass"][0]), Mark(int(own.marks[0]))
+
+
+@pytest.mark.parametrize(
+    ("gas", "kpa", "density", "mark"),
+    [
+        (23.0, 700.0, AT_700_KPA_23_C, Mark.NONE),
+        (UNREAD, 760.0, SATURATED_AT_760_KPA, Mark.VAPOUR_AT_PRESSURE),
+        (UNREAD, UNREAD, PROPANE_VAPOUR[20.0], Mark.VAPOUR_AT_LIQUID_TEMPERATURE),
+        (23.0, UNREAD, PROPANE_VAPOUR[20.0], Mark.VAPOUR_AT_LIQUID_TEMPERATURE),
+    ],
+    ids=["as measured", "pressure only", "neither", "a thermometer alone"],
+)
+def test_a_vapour_is_as_measured_or_saturated_at_its_pressure_or_at_its_liquid(
+    gas: float, kpa: float, density: float, mark: Mark
+) -> None:
+    found, marks = one(lpg(20.0, gas, kpa))
+    assert found == pytest.approx(800.0 * density, rel=0.002)
+    assert marks & ~(Mark.SATURATION_LOW | Mark.SATURATION_HIGH) == mark
+
+
+def test_a_vapour_above_saturation_is_taken_as_saturated_at_its_pressure() -> None:
+    """At 10 °C it would not be a vapour at 760 kPa: the pressure is believed, as without a thermometer."""
+    found, marks = one(lpg(16.0, 10.0, 760.0))
+    assert marks & Mark.VAPOUR_SATURATED
+    assert found == pytest.approx(800.0 * SATURATED_AT_760_KPA, rel=0.002)
+
+
+@pytest.mark.parametrize("kpa", [3600.0, 4000.0, 9000.0], ids=["too dense", "no root", "beyond the critical point"])
+@pytest.mark.parametrize("gas", [UNREAD, 21.0])
+def test_a_pressure_at_which_no_vapour_stands_leaves_the_vapour_of_the_liquids_temperature(
+    kpa: float, gas: float
+) -> None:
+    found, marks = one(lpg(20.0, gas, kpa))
+    assert found == pytest.approx(800.0 * PROPANE_VAPOUR[20.0], rel=0.002)
+    assert marks & Mark.SATURATION_HIGH and marks & Mark.VAPOUR_AT_LIQUID_TEMPERATURE
+
+
+def test_such_a_vapour_follows_its_liquid_and_not_the_pressure() -> None:
+    case = replace(lpg(20.0, 21.0, 4000.0), vessel={"compressibility": 4e-9, "expansivity": (3e-3,), "expansion": 0.0})
+    for name, step in (("liquid_temperature", 0.01), ("pressure", 100.0)):
+        sides = [case.reads(**{name: case.reading[name] + sign * step}) for sign in (1.0, -1.0)]
+        mass = inventory(vessels(sides), np.arange(2), state(sides))["mass"]
+        own = inventory(vessels([case]), None, state([case])).sensitivities[name][0]
+        assert own == pytest.approx((mass[0] - mass[1]) / (2.0 * step), rel=1e-4)
+
+
+def test_a_pressure_below_every_vapour_pressure_is_that_of_a_gas_as_warm_as_its_liquid() -> None:
+    """1 Pa, far under the lowest vapour pressure that we know: an ideal gas of 1.8e-5 kg/m³."""
+    found, marks = one(lpg(20.0, UNREAD, 1e-3))
+    assert found == pytest.approx(800.0 * 0.0440956 / (GAS_CONSTANT * 293.15), rel=1e-4)
+    assert marks & Mark.SATURATION_LOW
+
+
+def test_the_interval_runs_between_the_vapour_pressures_of_the_two_temperatures() -> None:
+    """836.46 kPa at 20 °C and 952.08 kPa at 25 °C; u of 2 kPa and of 0.3 K, at 23.9 kPa/K: 2u = 14.9 kPa."""
+    columns = SaturationColumns.from_compositions([{"propane": 1.0}])
+
+    def interval(liquid: float, gas: float) -> tuple[float, float, float]:
+        kelvin = np.array([liquid + 273.15]), np.array([gas + 273.15])
+        own = saturation_interval(columns, 0, *kelvin, np.array([2e3]), np.array([0.3]))
+        return float(own.lowest[0]), float(own.highest[0]), float(own.tolerance[0])
+
+    ends = [PROPANE_KPA[20.0] * 1e3, PROPANE_KPA[25.0] * 1e3]
+    tolerance = 2e3 * math.hypot(2.0, 0.3 * 23.9)  # (952.08 − 904.51)/2 kPa/K, a little less than at 25 °C itself
+    assert interval(20.0, 25.0) == pytest.approx((*ends, tolerance), rel=0.02)
+    assert interval(25.0, 20.0)[:2] == pytest.approx(ends, rel=2e-4)
+    assert interval(20.0, UNREAD)[:2] == pytest.approx((ends[0], ends[0]), rel=2e-4)
+    unsure = saturation_interval(replace(columns, departure=np.array([0.05])), 0, *(np.array([293.15]),) * 2,
+                                 np.zeros(1), np.zeros(1))  # fmt: skip
+    assert unsure.tolerance[0] == pytest.approx(2.0 * 0.05 * ends[0], rel=2e-4)
+
+
+@pytest.mark.parametrize(
+    ("gas", "off", "mark"),
+    [
+        (25.0, -15.0, Mark.NONE), (25.0, -19.0, Mark.SATURATION_LOW), (25.0, 129.0, Mark.NONE),
+        (25.0, 134.0, Mark.SATURATION_HIGH), (UNREAD, -15.0, Mark.NONE), (UNREAD, -18.0, Mark.SATURATION_LOW),
+        (UNREAD, 15.0, Mark.NONE), (UNREAD, 18.0, Mark.SATURATION_HIGH),
+    ],
+)  # fmt: skip
+def test_a_pressure_within_twice_its_uncertainty_of_the_interval_agrees(gas: float, off: float, mark: Mark) -> None:
+    """From 20 °C: the interval ends there, or 115.6 kPa higher at 25 °C; 2u is 2 √(5² + (0.3 × 22)²) to 17.5 kPa."""
+    case = lpg(20.0, gas, PROPANE_KPA[20.0] + off).reads(pressure_uncertainty=5e3, temperature_uncertainty=0.3)
+    assert one(case)[1] & (Mark.SATURATION_LOW | Mark.SATURATION_HIGH) == mark
+
+
+@pytest.mark.parametrize(("celsius", "times"), [(80.0, 2.0), (95.0, 4.0)])
+def test_a_vapour_left_out_is_bounded_by_multiples_of_the_ideal_gas(celsius: float, times: float) -> None:
+    """Saturated propane at 95 °C has Z = 0.37 (reference equation): twice the ideal gas would be no bound."""
+    case = lpg(celsius).reads(level=9.99)
+    own = inventory(vessels([case]), None, state([case]))
+    ideal = 0.0440956 * own["vapour_pressure"][0] * 1.0 / (GAS_CONSTANT * (celsius + 273.15))
+    assert own.marks[0] & Mark.VAPOUR_LEFT_OUT
+    assert own.sensitivities["vapour_left_out"][0] == pytest.approx(times * ideal, rel=1e-6)
+
+
+def test_pitfall_12_an_ideal_gas_over_lpg_is_a_sixth_too_light() -> None:
+    """At 20 °C p M/(R T) gives 15.133 kg/m³ of 18.082: 16.3 % too little (reference equation, as above)."""
+    ideal = 800.0 * PROPANE_KPA[20.0] * 1e3 * 0.0440956 / (GAS_CONSTANT * 293.15)
+    assert ideal / one(lpg(20.0, 20.0, PROPANE_KPA[20.0] - 0.5))[0] == pytest.approx(1.0 - 0.163, abs=0.002)
+
+
+def test_pitfall_12_the_vapour_has_not_the_liquids_composition() -> None:
+    """Half propane, half n-butane at 20 °C: 0.5 × 836.46/(0.5 × (836.46 + 207.6)) = 0.801 of the vapour is propane.
+
+    Its molar mass is 0.801 × 44.10 + 0.199 × 58.12 = 46.88 against 51.11 g/mol: 8 % of the vapour's mass. Vapour
+    pressure of n-butane: D. Bücker, W. Wagner, J. Phys. Chem. Ref. Data 35 (2006) 929, by CoolProp 8.0.0.
+    """
+    liquid = SaturationColumns.from_compositions([{"propane": 0.5, "n-butane": 0.5}])
+    fractions = [float(part) for part in liquid.vapour_fractions(293.15)]
+    assert fractions == pytest.approx([0.801, 0.199], abs=0.001)
+    names = ("propane", "n-butane")
+    gases = VapourColumns.from_mixtures([VapourMixture(names, tuple(fractions)), VapourMixture(names, (0.5, 0.5))])
+    assert gases.molar_mass[:2] == pytest.approx([0.04688, 0.05111], abs=2e-5)
+    own = gases.state(np.full(2, 300e3), np.full(2, 293.15), np.arange(2)).density
+    assert own[1] / own[0] == pytest.approx(0.05111 / 0.04688, rel=0.02)  # and a little more, by its lower Z
+    assert own[1] / own[0] > 0.05111 / 0.04688

@@ -43,6 +43,21 @@ def test_a_gauge_pressure_stands_on_the_air(site: Body, row: Body, pascal: float
     assert value(state.pressure) == pytest.approx(pascal, rel=1e-12)
 
 
+def test_pitfall_1_at_altitude_a_gauge_stands_on_a_thinner_air() -> None:
+    """At 2,250 m ISO 2533 gives 101.325 × (1 − 0.0065 × 2250/288.15)^5.25588 = 77.08 kPa, not 101.325.
+
+    Nitrogen at 500 kPa gauge and 25 °C: 577.08 kPa and 6.5282 kg/m³, where 601.325 kPa would be 6.8028 kg/m³, 4.2 %
+    too much (R. Span et al., J. Phys. Chem. Ref. Data 29 (2000) 1361, by CoolProp 8.0.0).
+    """
+    nitrogen = {"name": "n2", "vapour": {"model": "virial", "components": [{"id": "nitrogen", "mole_fraction": 1.0}]}}
+    row = {"vapour_temperature_c": 25.0, "pressure_kpa": 500.0}
+    found = {}
+    for name, site in (("mountain", {"elevation_m": 2250.0}), ("shore", {"elevation_m": 0.0})):
+        vessel = compiled(RECEIVER, nitrogen, site=site, shell={"expansion_per_k": 0.0})
+        found[name] = float(masses(vessel, row).result["mass"][0]) / 95.0
+    assert found == pytest.approx({"mountain": 6.5282, "shore": 6.8028}, rel=2e-4)
+
+
 def test_the_air_is_an_error_of_a_gauge_pressure_only() -> None:
     site = {"elevation_m": 0.0, "barometer_uncertainty_kpa": 0.7}
     for row, expected in (({"pressure_kpa": 500.0}, [700.0]), ({"pressure_kpa_abs": 600.0}, [])):

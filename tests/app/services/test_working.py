@@ -195,3 +195,69 @@ def test_a_declared_error_is_told_from_a_default() -> None:
     assert {line["instrument"] for line in level} == {"radar 7"}
     temperature = [line for line in lines if line["input"] == "liquid_temperature_c"]
     assert not any(line["declared"] for line in temperature)
+
+
+HEXANE: dict[str, Any] = {
+    "name": "hexane",
+    "liquid": {"model": "expansivity", "density_kg_m3": 655.0, "at_temperature_c": 25.0, "expansivity_per_k": 1.39e-3,
+               "compressibility_per_kpa": 1.7e-6},
+    "vapour": {"model": "virial", "components": [{"id": "n-hexane", "mole_fraction": 1.0}]},
+}  # fmt: skip
+BLANKETED: dict[str, Any] = {"vapour_space": {"kind": "blanketed", "blanket": "nitrogen"}}
+
+
+def words_of(vessel: CompiledVessel, row: dict[str, Any]) -> dict[str, str]:
+    return {step["symbol"]: step["method"] for step in working_steps(masses(vessel, row), 0)}
+
+
+def test_a_blanketed_space_shows_the_product_by_its_vapour_pressure_and_the_blanket_by_the_rest() -> None:
+    """n-Hexane at 25 °C under nitrogen at 103 kPa, 500 m³ of room, by hand.
+
+    Antoine (constants from memory): log10 p/mmHg = 6.87601 − 1171.17/(224.41 + 25), so p = 151.3 mmHg = 20.17 kPa.
+    With Z = 1 + B p/(R T), B = −1,900 cm³/mol at 25 °C (compilations of measured values, from memory): Z = 0.9845.
+    500 m³ × 20,170 Pa × 0.08618 kg/mol / (0.9845 R 298.15 K) = 356.1 kg. Nitrogen has 103 − 20.17 = 82.83 kPa.
+    """
+    vessel = compiled({"kind": "box", "length_m": 10.0, "width_m": 10.0, "height_m": 10.0}, HEXANE,
+                      shell={"expansion_per_k": 0.0}, **BLANKETED)  # fmt: skip
+    row = {"level_m": 5.0, "liquid_temperature_c": 25.0, "vapour_temperature_c": 25.0, "pressure_kpa_abs": 103.0}
+    s, words = steps_of(vessel, row), words_of(vessel, row)
+    assert s["P"] == pytest.approx(20.17, rel=0.005)
+    assert s["P_b"] == pytest.approx(82.83, rel=0.002)
+    assert s["M_vapour"] == pytest.approx(356.1, rel=0.005)
+    assert s["M"] == s["M_liquid"] + s["M_vapour"]  # no nitrogen in it
+    assert words["P_b"].startswith("nitrogen: ") and "counts in no mass" in words["P_b"]
+    gone = row | {"pressure_kpa_abs": 15.0}
+    assert steps_of(vessel, gone)["P_b"] == 0.0
+    assert steps_of(vessel, gone)["P"] == 15.0
+
+
+def test_without_a_vapour_model_nothing_is_counted_under_a_blanket() -> None:
+    plain = {name: part for name, part in HEXANE.items() if name != "vapour"}
+    vessel = compiled(TANK, plain, **BLANKETED)
+    found = answer(vessel, {"level_m": 5.0, "liquid_temperature_c": 25.0, "pressure_kpa_abs": 103.0})
+    assert found["mass_kg"] == found["liquid_mass_kg"]
+    assert found["vapour_mass_kg"] is None
+
+
+@pytest.mark.parametrize(
+    ("read", "said"),
+    [
+        ({"vapour_temperature_c": 23.0, "pressure_kpa_abs": 790.0}, "as read"),
+        ({"pressure_kpa_abs": 790.0}, "saturated at the measured pressure"),
+        ({}, "no pressure is read: saturated at the liquid's temperature"),
+        ({"vapour_temperature_c": 12.0, "pressure_kpa_abs": 790.0}, "taken as saturated at its pressure"),
+        ({"vapour_temperature_c": 23.0, "pressure_kpa_abs": 4500.0}, "no vapour of the substance stands"),
+        ({"pressure_kpa_abs": 4500.0}, "no vapour of the substance stands"),
+        ({"pressure_kpa_abs": 1e-6}, "that of the liquid: at the pressure as read its own boiling point is not known"),
+    ],
+)
+def test_the_working_says_how_a_vapours_temperature_was_found(read: dict[str, float], said: str) -> None:
+    row = {"level_m": 1.4, "liquid_temperature_c": 18.1, "ambient_temperature_c": 9.0} | read
+    vessel = compiled(BULLET, PROPANE)
+    assert said in words_of(vessel, row)["T_v"]
+    lines = [line for line in answer(vessel, row, budget=True)["budget"] if line["input"] == "vapour_temperature_c"]
+    if "vapour_temperature_c" not in read:  # 3 K of doubt, where no thermometer says more
+        assert [line["standard_uncertainty"] for line in lines] == [3.0]
+        assert not lines[0]["declared"]
+    else:
+        assert 3.0 not in [line["standard_uncertainty"] for line in lines]
