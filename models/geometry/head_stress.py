@@ -59,8 +59,8 @@ def coursed_shell(
     A wall that stands free of the bottom carries the head by its hoops alone, so at a height z under a
     level h it widens by ε = ρ g (h − z) D/(2 E t), and the courses from z_k to z_(k+1) hold more by::
 
-        ΔV = ρ (π g D³/8E) Σ_k [(h − z_k)₊² − (h − z_(k+1))₊²]/t_k        (1)
-           = ρ Σ_k w_k (h − z_k)₊²,  w_k = (π g D³/8E) (1/t_k − 1/t_(k−1))        (2)
+        ΔV = ρ (π g D³/8E) Σ_k [(h − z_k)₊² − (h − z_(k+1))₊²]/t_k
+           = ρ Σ_k w_k (h − z_k)₊²,  w_k = (π g D³/8E) (1/t_k − 1/t_(k−1))        (1)
 
     with 1/t = 0 below the first course and above the last. g is the standard one: the local one changes
     a thousandth of the volume by less than a three-hundredth.
@@ -91,7 +91,7 @@ def coursed_shell(
             field="courses",
         )
     stiffness = np.pi * STANDARD_GRAVITY * size**3 / (8.0 * elastic_modulus)
-    return CoursedShell(feet, stiffness * np.diff(1.0 / thicknesses, prepend=0.0, append=0.0))  # eq. 2
+    return CoursedShell(feet, stiffness * np.diff(1.0 / thicknesses, prepend=0.0, append=0.0))  # eq. 1
 
 
 @dataclass(frozen=True)
@@ -150,7 +150,7 @@ class HeadStress:
 
         Notes
         -----
-        Equation (2) of :func:`coursed_shell` without ρ, and its slope 2 Σ_k w_k (h − z_k)₊.
+        Equation (1) of :func:`coursed_shell` without ρ, and its slope 2 Σ_k w_k (h − z_k)₊.
 
         References
         ----------
@@ -183,7 +183,7 @@ class HeadStress:
         The wall beside the water is stretched by the whole column, not by the water alone. What of it is
         above a floor h_w counts with every course cut off there::
 
-            ΔV/ρ = Σ_k w_k (h − max(z_k, h_w))₊²        (3)
+            ΔV/ρ = Σ_k w_k (h − max(z_k, h_w))₊²        (2)
 
         One density stands for the whole column. Water is heavier than the oil over it by a fifth, so a
         depth of it d under a level h makes the head greater by about 0.2 d/h of itself: not counted.
@@ -198,7 +198,78 @@ class HeadStress:
         for feet, weights in zip(self.feet, self.weights, strict=True):  # a few courses, never the readings
             foot, weight = feet[row], weights[row]
             pull = weight * np.maximum(h - np.maximum(foot, low), 0.0)
-            volume += pull * np.maximum(h - np.maximum(foot, low), 0.0)  # eq. 3
+            volume += pull * np.maximum(h - np.maximum(foot, low), 0.0)  # eq. 2
             slope += 2.0 * pull
             by_floor -= np.where(foot < low, 2.0 * pull, 0.0)
         return volume, slope, by_floor
+
+    def widening(
+        self, level: ArrayLike, water_level: ArrayLike, density: ArrayLike, density_included: ArrayLike,
+        row: IntArray | int = 0,
+    ) -> Widening:  # fmt: skip
+        """What the head adds to the volumes of a capacity curve, above free water and below.
+
+        Parameters
+        ----------
+        level, water_level : array_like, shape (...)
+            Level of the liquid, and of free water under it, on one datum. [m]
+        density : array_like, shape (...)
+            Density of the liquid at its temperature and pressure; it stands for the whole column. [kg/m³]
+        density_included : array_like, shape (...)
+            Density at which a capacity table holds the widening already; 0 where it does not. [kg/m³]
+        row : IntArray, shape (...), or int
+            Shell of each level. [1]
+
+        Returns
+        -------
+        Widening
+            Volumes to be added, with their derivatives. [m³]
+
+        Notes
+        -----
+        With S(h) of (1) and S(h|h_w) of (2), each for one unit of density, a table made at ρ_t holds
+        ρ_t S(h) at the level and ρ_t S(h_w) at the water's, so what is missing is::
+
+            of the liquid    ΔV   = ρ S(h|h_w) − ρ_t [S(h) − S(h_w)]        (3)
+            of the water     ΔV_w = ρ [S(h) − S(h|h_w)] − ρ_t S(h_w)        (4)
+
+        and of both together (ρ − ρ_t) S(h).
+
+        References
+        ----------
+        .. [1] As of :func:`coursed_shell`.
+        """
+        rho, table = as_floats(density, density_included)
+        over, slope, by_floor = self.above(level, water_level, row)
+        whole, whole_slope = self.volume_per_density(level, row)
+        water, water_slope = self.volume_per_density(water_level, row)
+        return Widening(
+            volume=rho * over - table * (whole - water),  # eq. 3
+            water_volume=rho * (whole - over) - table * water,  # eq. 4
+            by_level=rho * slope - table * whole_slope,
+            by_water_level=rho * by_floor + table * water_slope,
+            by_density=over,
+        )
+
+
+@dataclass(frozen=True)
+class Widening:
+    """Volumes that the head of a liquid adds to those of a capacity curve.
+
+    Parameters
+    ----------
+    volume : FloatArray, shape (...)
+        To the liquid's, free water excluded; below 0 where the table was made for a heavier one. [m³]
+    water_volume : FloatArray, shape (...)
+        To the free water's. [m³]
+    by_level, by_water_level : FloatArray, shape (...)
+        Derivatives of the liquid's volume by both levels. [m²]
+    by_density : FloatArray, shape (...)
+        Its derivative by the liquid's density. [m³/(kg/m³)]
+    """
+
+    volume: FloatArray
+    water_volume: FloatArray
+    by_level: FloatArray
+    by_water_level: FloatArray
+    by_density: FloatArray

@@ -130,3 +130,36 @@ def test_an_impossible_shell_is_refused(changed, field, told):
 def test_courses_that_add_up_in_decimals_reach_the_top():
     assert shell([(0.1, 0.01)] * 3, top=0.3).feet[-1] == pytest.approx(0.3)
     assert shell([(0.3, 0.01)] * 4, top=1.2).feet[-1] == pytest.approx(1.2)
+
+
+# --- what is added to a curve ---------------------------------------------------------------------
+
+
+def test_head_stress_already_in_the_table_counts_by_the_difference_of_the_densities_only():
+    """Pitfall: a table made at 850 kg/m³ needs nothing at 850, and −1.2 % of its 0.12 % at 840."""
+    tank = stack(shell([(12.0, 0.010)], 50.0, top=12.0))
+    geometric = tank.widening(12.0, 0.0, 860.0, 0.0).volume
+    assert geometric == pytest.approx(28.80, abs=0.005)
+    assert tank.widening(12.0, 0.0, 850.0, 850.0).volume == 0.0
+    lighter = tank.widening(12.0, 0.0, 840.0, 850.0).volume
+    assert lighter == pytest.approx(-28.80 * 10.0 / 860.0, rel=2e-4)
+    assert tank.widening(12.0, 0.0, 860.0, 850.0).volume == pytest.approx(-lighter, rel=1e-12)
+
+
+def test_above_water_and_water_share_the_whole():
+    found = stack(shell()).widening(10.0, 0.6, 840.0, 0.0)
+    assert found.volume == pytest.approx(840.0 * by_quadrature(10.0, floor=0.6), rel=1e-12)
+    assert found.volume + found.water_volume == pytest.approx(840.0 * by_quadrature(10.0), rel=1e-12)
+    table = stack(shell()).widening(10.0, 0.6, 840.0, 800.0)
+    held = 800.0 * (by_quadrature(10.0) - by_quadrature(0.6))
+    assert table.volume == pytest.approx(840.0 * by_quadrature(10.0, floor=0.6) - held, rel=1e-11)
+    assert table.volume + table.water_volume == pytest.approx(40.0 * by_quadrature(10.0), rel=1e-11)
+
+
+def test_the_derivatives_of_what_is_added():
+    tank, given, step = stack(shell()), np.array([9.1, 0.7, 840.0, 790.0]), np.array([1e-4, 1e-4, 1e-2, 0.0])
+    found = tank.widening(*given)
+    for place, own in enumerate((found.by_level, found.by_water_level, found.by_density)):
+        change = np.where(np.arange(4) == place, step, 0.0)
+        slope = (tank.widening(*(given + change)).volume - tank.widening(*(given - change)).volume) / (2 * step[place])
+        assert own == pytest.approx(slope, rel=1e-6)
