@@ -54,13 +54,16 @@ class Shell(Body):
         default=None,
         ge=1e-4,
         le=2,
-        description="Thickness of the wall; left out, pressure does not strain it [m]",
+        description="Thickness of the wall, for pressure; left out, pressure does not strain it [m]",
     )
     elastic_modulus_gpa: float = Field(default=207.0, ge=1e-3, le=2000, description="Young's modulus of the wall [GPa]")
     poisson_ratio: float = Field(default=0.3, ge=0, lt=0.5, description="Poisson's ratio of the wall [1]")
     courses: Items[Course] = Field(
         default=(), max_length=100,
-        description="Rows of [height_m, thickness_m] from the bottom up, for the head of the liquid [m, m]",
+        description="Rows of [height_m, thickness_m], one for each course from the bottom up: the height of the "
+        "course itself, not of its upper edge above the bottom. Together they reach the end of the shell, or the "
+        "highest row of a capacity table, at whose zero they begin. Given, the shell widens under the head of "
+        "its liquid; thickness_m alone is for pressure [m, m]",
     )  # fmt: skip
 
 

@@ -73,7 +73,7 @@ def _put(writing: Writing, kind: str, name: str, body: Any) -> Put:
     return Put(outcome, writing.recorded_at)
 
 
-PLACES = {"datum_m": "gauging/datum_m"}
+PLACES = {"datum_m": "gauging/datum_m", "courses": "shell/courses"}
 """Where a field that the models name stands in a body, if not at its top."""
 
 

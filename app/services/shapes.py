@@ -13,7 +13,8 @@ from models import units
 from models.errors import DefinitionError
 from models.geometry import shapes, tables
 from models.geometry.curves import Curve
-from models.geometry.heads import Head
+from models.geometry.head_stress import CoursedShell, coursed_shell
+from models.geometry.heads import Head, head_depth, zones
 from models.geometry.lying import horizontal_cylinder
 from models.geometry.pieces import with_datum
 from models.geometry.shell import pressure_strain
@@ -98,3 +99,31 @@ def strain_of(body: Vessel) -> tuple[float, float]:
         kind, diameter or 1.0, shell.thickness_m, shell.elastic_modulus_gpa * 1e6 * units.PASCAL_PER_KPA,
         shell.poisson_ratio,
     )  # fmt: skip
+
+
+def courses_of(body: Vessel) -> CoursedShell | None:
+    """The shell by its courses, on the levels of the vessel's curve; None where no courses are given."""
+    shape, shell = body.shape, body.shell
+    if not shell.courses:
+        return None
+    if isinstance(shape, wire.VerticalCylinder):
+        bottom = _head(shape.bottom)
+        depth = 0.0 if bottom.inverted else head_depth(zones(bottom, 0.5 * shape.diameter_m, "bottom"))
+        diameter, foot = shape.diameter_m, depth - body.gauging.datum_m
+        top = foot + shape.height_m
+    elif isinstance(shape, wire.CapacityTable) and shape.of == "vertical_cylinder" and shape.diameter_m is not None:
+        diameter, foot, top = shape.diameter_m, 0.0, shape.rows[-1][0]
+    else:
+        raise DefinitionError(
+            "courses are of an upright cylinder: a vertical_cylinder, or a capacity_table of one that gives diameter_m",
+            field="courses",
+        )
+    return coursed_shell(
+        diameter=diameter, elastic_modulus=shell.elastic_modulus_gpa * 1e6 * units.PASCAL_PER_KPA,
+        courses=shell.courses, foot=foot, top=top,
+    )  # fmt: skip
+
+
+def head_included(body: Vessel) -> float:
+    """Density at which the capacity table holds the widening by the head already; 0 where it does not. [kg/m³]"""
+    return getattr(body.shape, "head_included_at_kg_m3", None) or 0.0

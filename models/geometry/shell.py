@@ -143,21 +143,22 @@ def shell_factor(
 
     Notes
     -----
-    The shell grows in every direction while the level stays where the gauge reads it, so::
+    The shell grows in every direction while the level stays where the gauge reads it, so with S the sum
+    of its strains::
 
-        K = 1 + ε_x + ε_y + ε_z − ε_z h A/V        (4)
+        K = (1 + S/3)³/(1 + ε_z h A/V)        (4)
 
-    In an upright cylinder h A = V and K = 1 + 2ε, the trade's C_TSh without its square; in a sphere
-    K = 1 + 3ε R/(3R − h).
+    In an upright cylinder h A = V: a temperature's strain ε gives K = (1 + ε)² = 1 + 2 α ΔT + α² ΔT²
+    exactly, the trade's C_TSh. Elsewhere (4) is right to the first order, 1 + S − ε_z h A/V: in a
+    sphere 1 + 3ε R/(3R − h), and the square of a strain below 1e-3 is nothing.
 
     References
     ----------
-    .. [1] First order of V(h; ε) = (1 + ε)³ V(h/(1 + ε)), which is geometry; API MPMS ch. 12.1.1 for
-       upright cylinders.
+    .. [1] V(h; ε) = (1 + ε)³ V(h/(1 + ε)), which is geometry; API MPMS ch. 12.1.1 for upright cylinders.
     """
     h, a, v, total, vertical = as_floats(level, area, volume, strain_sum, strain_vertical)
     reach = np.divide(h * a, v, out=np.ones(np.broadcast(h, a, v).shape), where=v > 0.0)
-    return np.asarray(1.0 + total - vertical * reach)  # eq. 4
+    return np.asarray((1.0 + total / 3.0) ** 3 / (1.0 + vertical * reach))  # eq. 4
 
 
 def full_factor(strain_sum: ArrayLike) -> FloatArray:
@@ -173,9 +174,16 @@ def full_factor(strain_sum: ArrayLike) -> FloatArray:
     FloatArray, shape (...)
         The factor. [1]
 
+    Notes
+    -----
+    With S the sum of the three strains::
+
+        K_T = (1 + S/3)³        (5)
+
     References
     ----------
-    .. [1] First order of (1 + ε_x)(1 + ε_y)(1 + ε_z), which is geometry.
+    .. [1] (1 + ε_x)(1 + ε_y)(1 + ε_z), which is geometry; exact where the three are equal, as of a
+       temperature, and right to the first order where they are not.
     """
     (total,) = as_floats(strain_sum)
-    return np.asarray(1.0 + total)
+    return np.asarray((1.0 + total / 3.0) ** 3)  # eq. 5

@@ -7,9 +7,10 @@ import math
 import pytest
 
 from app.schemas.vessel import Vessel
-from app.services.shapes import capacity_curve, strain_of
+from app.services.shapes import capacity_curve, courses_of, head_included, strain_of
 from models.errors import DefinitionError
 from models.geometry.curves import Curves
+from models.geometry.head_stress import HeadStress
 from tests.app.services.worked import BULLET, RECEIVER, SPHERE, TANK, Body
 
 
@@ -73,3 +74,61 @@ def test_pressure_strains_a_shell_of_known_thickness_only() -> None:
     assert strain_of(vessel(table | {"diameter_m": 18.0}, shell=thick)) == (total, vertical)
     with pytest.raises(DefinitionError, match="diameter_m"):
         strain_of(vessel(table, shell=thick))
+
+
+# --- courses --------------------------------------------------------------------------------------
+
+COURSES: Body = {"courses": [[5.0, 0.02], [5.0, 0.015], [5.0, 0.01]]}
+TABLE: Body = {
+    "kind": "capacity_table", "of": "vertical_cylinder", "diameter_m": 30.0, "rows": [[0.0, 1.0], [15.0, 10600.0]],
+    "head_included_at_kg_m3": 850.0,
+}  # fmt: skip
+
+
+def widened(body: Vessel, level: float) -> float:
+    stress = HeadStress.from_shells([courses_of(body)])
+    return 0.0 if stress is None else float(stress.volume_per_density(level)[0])
+
+
+def by_hand(level: float) -> float:
+    """π g D³/(8 E) Σ [(h − z_k)² − (h − z_(k+1))²]/t_k of a 30 m tank."""
+    edges, total = (0.0, 5.0, 10.0, 15.0), 0.0
+    for low, high, thickness in zip(edges, edges[1:], (0.02, 0.015, 0.01), strict=False):
+        total += (max(level - low, 0.0) ** 2 - max(level - high, 0.0) ** 2) / thickness
+    return math.pi * 9.80665 * 30.0**3 / (8.0 * 207e9) * total
+
+
+@pytest.mark.parametrize("shape", [TANK, TABLE], ids=lambda shape: str(shape["kind"]))
+def test_courses_widen_an_upright_shell_under_its_liquid(shape: Body) -> None:
+    assert widened(vessel(shape, shell=COURSES), 11.0) == pytest.approx(by_hand(11.0), rel=1e-12)
+    assert head_included(vessel(TABLE)) == 850.0 and head_included(vessel(TANK)) == 0.0
+
+
+def test_without_courses_a_thickness_alone_is_for_pressure() -> None:
+    assert courses_of(vessel(TANK, shell={"thickness_m": 0.01})) is None
+
+
+def test_courses_begin_where_the_shell_does() -> None:
+    cone = TANK | {"bottom": {"kind": "cone", "depth_m": 0.5}}
+    assert widened(vessel(cone, shell=COURSES), 11.5) == pytest.approx(by_hand(11.0), rel=1e-12)
+    inverted = TANK | {"bottom": {"kind": "cone", "depth_m": 0.5, "inverted": True}}
+    assert widened(vessel(inverted, shell=COURSES), 11.0) == pytest.approx(by_hand(11.0), rel=1e-12)
+    raised = vessel(TANK, shell=COURSES, gauging={"datum_m": 0.2})
+    assert widened(raised, 10.8) == pytest.approx(by_hand(11.0), rel=1e-12)
+
+
+@pytest.mark.parametrize(
+    ("shape", "told"),
+    [
+        (SPHERE, "upright cylinder"),
+        (BULLET, "upright cylinder"),
+        ({"kind": "box", "length_m": 6.0, "width_m": 2.5, "height_m": 2.0}, "upright cylinder"),
+        ({"kind": "capacity_table", "rows": [[0.0, 1.0], [2.0, 9.0]]}, "diameter_m"),
+        (TANK | {"height_m": 15.01}, "must reach 15.01 m"),
+        (TABLE | {"rows": [[0.0, 1.0], [15.01, 10600.0]]}, "must reach 15.01 m"),
+    ],
+)
+def test_courses_of_another_shape_or_too_short_are_refused(shape: Body, told: str) -> None:
+    with pytest.raises(DefinitionError, match=told) as refused:
+        courses_of(vessel(shape, shell=COURSES))
+    assert refused.value.field == "courses"
