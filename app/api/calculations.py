@@ -2,15 +2,31 @@
 
 from __future__ import annotations
 
-from typing import Annotated
+from typing import Annotated, Any
 
 from fastapi import APIRouter, Depends, Query
 
 from app.api.bodies import json_body
+from app.edge.rows import RowsText, table_body
 from app.schemas.calculation import Balance, BalanceCalculation, InventoryCalculation, InventoryResults
-from app.services import balance, calculate
+from app.schemas.errors import sentence
+from app.schemas.tabulate import TableOptions, TabulatedShape, Tabulation
+from app.services import balance, calculate, read_table, tabulate
 
 router = APIRouter(prefix="/v1/calculations", tags=["calculations"])
+
+TABLE = table_body(
+    Tabulation,
+    RowsText(
+        read_table.read,
+        "A capacity table to be checked: RFC 4180 with commas, in UTF-8; the first line names its two columns, "
+        "level_m and volume_m3, or with the unit that they stand in: level [ft-in-16] (23-04-11), level [mm], "
+        "volume [bbl] (42 US gallons), volume [L]. What else there is to say of it stands in the query.",
+        "level [ft-in-16],volume [bbl]\n00-00-00,12.4\n00-01-00,137.6\n",
+    ),
+    sentence,
+)
+"""A shape to be tabulated as JSON, or a table to be checked as CSV."""
 
 
 @router.post("/inventory")
@@ -28,3 +44,11 @@ def calculate_inventory(
 def calculate_balance(body: Annotated[BalanceCalculation, Depends(json_body(BalanceCalculation))]) -> Balance:
     """A network of nodes and streams, reconciled and tested."""
     return Balance.model_validate(balance.solve_network(body))
+
+
+@router.post("/capacity-table")
+def calculate_capacity_table(
+    body: Annotated[Any, Depends(TABLE)], options: Annotated[TableOptions, Query()]
+) -> TabulatedShape:  # fmt: skip
+    """A shape as a capacity table with its worst interpolation error; or a table from CSV, checked."""
+    return tabulate.capacity_table_of(body, options)

@@ -18,7 +18,7 @@ from pydantic.json_schema import models_json_schema
 
 from app.edge.body import JSON, JsonBody
 from app.edge.problems import MEDIA_TYPE, Problem
-from app.edge.rows import RowsBody
+from app.edge.rows import RowsBody, TableBody
 
 COMPONENT = "#/components/schemas/{model}"
 ALWAYS = {
@@ -76,7 +76,7 @@ def _bodies(app: FastAPI) -> Iterator[tuple[str, JsonBody[Any]]]:
 
 def _texts(body: JsonBody[Any]) -> dict[str, Any]:
     """The other media types of a body whose rows may also stand in a text."""
-    if not isinstance(body, RowsBody):
+    if not isinstance(body, RowsBody | TableBody):
         return {}
     return {
         media_type: {"schema": {"type": "string", "description": text.description}, "example": text.example}

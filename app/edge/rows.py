@@ -8,7 +8,7 @@ from typing import Annotated, Any, TypeVar
 from fastapi import Depends, Request
 from pydantic import BaseModel
 
-from app.edge.body import JSON, BatchBody, ReceivedBytes, decoded
+from app.edge.body import JSON, BatchBody, JsonBody, ReceivedBytes, decoded
 from app.errors import Sentence
 
 NDJSON = "application/x-ndjson"
@@ -62,3 +62,22 @@ def rows_body(
         Makes the sentences of a body that is no batch.
     """
     return RowsBody(model, read, {NDJSON: ndjson, CSV: csv}, say)
+
+
+class TableBody(JsonBody[M]):
+    """Dependency: a JSON body, or a table as CSV in its place, told apart by the content type."""
+
+    def __init__(self, model: type[M], csv: RowsText, say: Sentence | None = None) -> None:
+        super().__init__(model, say)
+        self.texts = {CSV: csv}
+
+    def __call__(self, request: Request, received: Annotated[bytes, Depends(ReceivedBytes(JSON, CSV))]) -> Any:
+        """The validated body, or what the reader of the table makes of it."""
+        if request.headers["content-type"].partition(";")[0].strip().lower() == JSON:
+            return super().__call__(request, received)
+        return self.texts[CSV].read(decoded(request, received))
+
+
+def table_body(model: type[M], csv: RowsText, say: Sentence | None = None) -> TableBody[M]:
+    """Dependency that reads a JSON body of this model, or a CSV table; OpenAPI shows both."""
+    return TableBody(model, csv, say)

@@ -10,6 +10,8 @@ from pydantic import AfterValidator, ConfigDict, Discriminator, Field, model_val
 from app.schemas.types import UNTAGGED, Body, Items, refusal
 
 LEAST_KNUCKLE_M = 1e-3  # m; no plate is bent more sharply
+TABLE_ROWS = 100_000
+"""Rows of one capacity table, at most."""
 
 # --- heads, bottoms and tops ---------------------------------------------------------------------
 
@@ -230,7 +232,7 @@ class CapacityTable(Body):
     kind: Literal["capacity_table"] = Field(description="A table of volumes by level")
     rows: Annotated[
         Items[Annotated[tuple[Level, Volume], Field(strict=False)]],
-        Field(min_length=2, max_length=100_000),
+        Field(min_length=2, max_length=TABLE_ROWS),
         AfterValidator(_rises),
     ] = Field(description="Rows of [level_m, volume_m3]; levels rise, volumes never fall [m, m³]")
     total_volume_m3: float | None = Field(

@@ -179,9 +179,8 @@ def split(curve: Curve, levels: ArrayLike) -> Curve:
     wanted = wanted[(wanted > curve.bottom) & (wanted < curve.top)]
     knots = np.union1d(curve.levels, wanted)
     piece = np.clip(np.searchsorted(curve.levels, knots[:-1], side="right") - 1, 0, len(curve.coefficients) - 1)
-    t = knots[:-1] - curve.levels[piece]
-    rows = np.stack([_moved(c, d) for c, d in zip(curve.coefficients[piece], t, strict=True)])
-    return replace(curve, levels=knots, coefficients=rows)
+    rows = _moved(curve.coefficients[piece].T, knots[:-1] - curve.levels[piece]).T
+    return replace(curve, levels=knots, coefficients=np.ascontiguousarray(rows))
 
 
 def with_datum(curve: Curve, datum: float) -> Curve:
@@ -209,8 +208,8 @@ def with_datum(curve: Curve, datum: float) -> Curve:
     return replace(above, levels=above.levels - datum)
 
 
-def _moved(cubic: FloatArray, by: float) -> FloatArray:
-    """Coefficients of the same cubic in powers of the distance to a point further up."""
+def _moved(cubic: FloatArray, by: float | FloatArray) -> FloatArray:
+    """Coefficients of the same cubic, or of each column's, in powers of the distance to a point further up."""
     c0, c1, c2, c3 = cubic
     return np.array(
         [c0 + by * (c1 + by * (c2 + by * c3)), c1 + by * (2.0 * c2 + 3.0 * by * c3), c2 + 3.0 * by * c3, c3]

@@ -13,7 +13,7 @@ from fastapi.testclient import TestClient
 from pydantic import BaseModel
 
 from app.edge import openapi, problems
-from app.edge.rows import RowsText, rows_body
+from app.edge.rows import RowsText, rows_body, table_body
 from app.errors import Unprocessable
 from app.settings import Settings
 
@@ -37,10 +37,12 @@ NAMES = rows_body(
     csv=RowsText(lambda text: ["cell", *text.decode().split(",")], "Names.", "anna,berta"),
 )
 
+TABLE = table_body(Names, RowsText(lambda text: ["cell", *text.decode().split(",")], "Names.", "anna,berta"))
+
 
 @pytest.fixture(scope="module")
 def app() -> FastAPI:
-    """An application of one path; bodies up to 1 kB."""
+    """An application of two paths; bodies up to 1 kB."""
     app = FastAPI(telemetry={"tracing": False, "metrics": False, "logs": False, "operation_spans": False},
                   generate_unique_id_function=openapi.operation_id)  # fmt: skip
     app.state.settings = Settings(max_body_mb=0.001)
@@ -49,6 +51,10 @@ def app() -> FastAPI:
     def post_names(body: Annotated[Any, Depends(NAMES)]) -> list[str]:
         found: list[str] = body
         return found
+
+    @app.post("/table")
+    def post_table(body: Annotated[Any, Depends(TABLE)]) -> list[str]:
+        return body.names if isinstance(body, Names) else list(body)
 
     problems.install(app)
     return app
@@ -109,3 +115,23 @@ def test_the_description_shows_every_type(app: FastAPI) -> None:
     assert content["application/json"]["schema"]["$ref"].endswith("/Names")
     assert content["text/csv"] == {"schema": {"type": "string", "description": "Names."}, "example": "anna,berta"}
     assert {"413", "415"} <= set(operation["responses"])
+
+
+@pytest.mark.parametrize(
+    ("kind", "text", "names"),
+    [("application/json", b'{"names": ["anna"]}', ["anna"]), ("Text/CSV; charset=UTF-8", b"anna", ["cell", "anna"])],
+)
+def test_a_table_may_stand_in_place_of_a_body(client: TestClient, kind: str, text: bytes, names: list[str]) -> None:
+    plain = client.post("/table", content=text, headers={"Content-Type": kind})
+    assert (plain.status_code, plain.json()) == (200, names)
+    packed = {"Content-Type": kind, "Content-Encoding": "gzip"}
+    assert client.post("/table", content=gzip.compress(text), headers=packed).json() == names
+
+
+def test_a_body_or_a_table_is_of_two_types_only(app: FastAPI, client: TestClient) -> None:
+    answer = client.post("/table", content=b"anna", headers={"Content-Type": "application/x-ndjson"})
+    assert (answer.status_code, answer.headers["accept"]) == (415, "application/json, text/csv")
+    assert client.post("/table", json={"names": 1}).json()["errors"][0]["pointer"] == "/names"
+    content = openapi.describe(app)["paths"]["/table"]["post"]["requestBody"]["content"]
+    assert set(content) == {"application/json", "text/csv"}
+    assert content["text/csv"] == {"schema": {"type": "string", "description": "Names."}, "example": "anna,berta"}
