@@ -8,7 +8,8 @@ from fastapi import APIRouter, Depends, Query
 
 from app.api.bodies import json_body
 from app.schemas.calculation import Balance, BalanceCalculation, InventoryCalculation, InventoryResults
-from app.services import balance, calculate
+from app.schemas.fit import ExpansivityCalculation, FittedExpansivity
+from app.services import balance, calculate, fit
 
 router = APIRouter(prefix="/v1/calculations", tags=["calculations"])
 
@@ -28,3 +29,11 @@ def calculate_inventory(
 def calculate_balance(body: Annotated[BalanceCalculation, Depends(json_body(BalanceCalculation))]) -> Balance:
     """A network of nodes and streams, reconciled and tested."""
     return Balance.model_validate(balance.solve_network(body))
+
+
+@router.post("/expansivity", response_model_exclude_unset=True)
+def calculate_expansivity(
+    body: Annotated[ExpansivityCalculation, Depends(json_body(ExpansivityCalculation))],
+) -> FittedExpansivity:
+    """β and κ from measured densities, their covariance, the residuals, and the substance that they make."""
+    return FittedExpansivity.model_validate(fit.fit(body))
