@@ -9,8 +9,9 @@ import numpy as np
 
 from app.errors import FieldError, Unprocessable
 from app.schemas.fit import ExpansivityCalculation
+from models.arrays import FloatArray
 from models.constants import STANDARD_ATMOSPHERE, ZERO_CELSIUS
-from models.liquid.fit import ExpansivityFit, fit_expansivity
+from models.liquid.fit import PRESSURE_SPAN, ExpansivityFit, fit_expansivity
 
 USUAL_TEMPERATURE_C = 15.0
 """Of a density that names no temperature."""
@@ -19,10 +20,11 @@ KILO = 1e3
 
 def fit(body: ExpansivityCalculation) -> dict[str, Any]:
     """The fit and the substance that it makes, as ``FittedExpansivity`` takes them."""
-    celsius, kilopascal, density = np.array(body.rows, dtype=np.float64).reshape(-1, 3).T
+    celsius, kilopascal, density = np.array(body.rows, dtype=np.float64).T
     at_c = _nearest(body.at_temperature_c, celsius, USUAL_TEMPERATURE_C)
     at_kpa = _nearest(body.at_pressure_kpa_abs, kilopascal, STANDARD_ATMOSPHERE / KILO)
     given = body.compressibility_per_kpa
+    _refuse_pressure(body, at_kpa, kilopascal)
     found = fit_expansivity(
         celsius + ZERO_CELSIUS,
         kilopascal * KILO,
@@ -58,11 +60,9 @@ def fit(body: ExpansivityCalculation) -> dict[str, Any]:
     }
 
 
-def _nearest(given: float | None, rows: np.ndarray[Any, np.dtype[np.float64]], usual: float) -> float:
+def _nearest(given: float | None, rows: FloatArray, usual: float) -> float:
     """What was given, or the usual state as far as it lies within the rows."""
-    if given is not None:
-        return given
-    return float(min(max(usual, rows.min()), rows.max())) if rows.size else usual
+    return given if given is not None else float(min(max(usual, rows.min()), rows.max()))
 
 
 def _per_kpa(per_pascal: float | None) -> float | None:
@@ -88,6 +88,17 @@ def _parameters(found: ExpansivityFit, coefficients: list[float]) -> dict[str, A
         ],
         "covariance": None if math.isnan(uncertainty[0]) else covariance.tolist(),
     }
+
+
+def _refuse_pressure(body: ExpansivityCalculation, at_kpa: float, rows: FloatArray) -> None:
+    """Refuse a density at a pressure that no row has where nothing says how the liquid gives way."""
+    beyond = max(at_kpa - rows.max(), rows.min() - at_kpa) * KILO >= PRESSURE_SPAN
+    if beyond and body.compressibility_per_kpa is None and np.ptp(rows) * KILO < PRESSURE_SPAN:
+        detail = (
+            "at_pressure_kpa_abs lies 10 kPa or more from every row, and the rows tell no κ: give "
+            "compressibility_per_kpa, or leave at_pressure_kpa_abs out"
+        )
+        raise Unprocessable(detail, code="missing", errors=[FieldError("/compressibility_per_kpa", "missing", detail)])
 
 
 def _refuse_no_liquid(found: ExpansivityFit) -> None:

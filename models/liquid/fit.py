@@ -165,10 +165,10 @@ def _refuse_degree(degree: int, t: FloatArray) -> None:
     ordered = np.sort(t)
     differ = 1 + int(np.count_nonzero(np.diff(ordered) > SAME_TEMPERATURE)) if len(t) else 0
     if differ < degree + 2:
+        lower = ", or fit a lower degree" if degree else ""
         raise DefinitionError(
-            f"the rows have {differ} temperature{'' if differ == 1 else 's'} that differ by more than "
-            f"{SAME_TEMPERATURE:g} K; a β of degree {degree} needs {degree + 2}: measure at more of them, or fit a "
-            "lower degree",
+            f"a β of degree {degree} needs {degree + 2} temperatures that differ by more than {SAME_TEMPERATURE:g} K; "
+            f"the rows have {differ}: measure at more{lower}",
             field="rows",
         )
 
