@@ -118,6 +118,15 @@ def fit_expansivity(
     t, p, rho = (np.atleast_1d(column) for column in as_floats(temperature, pressure, density))
     _refuse_rows(t, p, rho)
     _refuse_degree(degree, t)
+    if density_uncertainty is not None and not 0.0 < density_uncertainty < np.inf:
+        raise DefinitionError(
+            f"the uncertainty of a density is {density_uncertainty:.6g} kg/m³; it is above 0 kg/m³: leave it out "
+            "where it is not known",
+            field="density_uncertainty",
+        )
+    if compressibility is not None and not 0.0 <= compressibility < np.inf:
+        detail = f"the compressibility is {compressibility:.6g} 1/Pa; it is 0 or above: leave it out to fit it"
+        raise DefinitionError(detail, field="compressibility")
     fitted = compressibility is None and float(np.ptp(p)) >= PRESSURE_SPAN
     count = degree + 2 + fitted
     if len(t) < count:

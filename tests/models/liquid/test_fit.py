@@ -176,6 +176,8 @@ def test_pitfall_handbook_beta(fluid, density, beta, kappa):
         ([288.15, 298.15], [P0, 3e6], [840.0, 834.0], {}, "2 rows for 3 unknowns: the density, 1 of β and κ"),
         ([288.15, 298.15, 308.15], [1e6, 2e6, 3e6], [840.0, 834.0, 828.0], {}, "change together"),
         ([288.15, 298.15], [P0] * 2, [840.0, 833.0], {"degree": 4}, "it is 0 to 3"),
+        ([288.15, 298.15], [P0] * 2, [840.0, 833.0], {"density_uncertainty": 0.0}, "uncertainty of a density is 0"),
+        ([288.15, 298.15], [P0] * 2, [840.0, 833.0], {"compressibility": -1e-10}, "compressibility is -1e-10 1/Pa"),
         ([288.15, 298.15], [P0] * 2, [840.0, 0.0], {}, "density at index 1 is 0 kg/m³"),
         ([288.15, 0.0], [P0] * 2, [840.0, 833.0], {}, "temperature at index 1 is 0 K"),
         ([288.15, 298.15], [P0, -1.0], [840.0, 833.0], {}, "pressure at index 1 is -1 Pa"),
