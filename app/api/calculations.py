@@ -10,8 +10,9 @@ from app.api.bodies import json_body
 from app.edge.rows import RowsText, table_body
 from app.schemas.calculation import Balance, BalanceCalculation, InventoryCalculation, InventoryResults
 from app.schemas.errors import sentence
+from app.schemas.fit import ExpansivityCalculation, FittedExpansivity
 from app.schemas.tabulate import TableOptions, TabulatedShape, Tabulation
-from app.services import balance, calculate, read_table, tabulate
+from app.services import balance, calculate, fit, read_table, tabulate
 
 router = APIRouter(prefix="/v1/calculations", tags=["calculations"])
 
@@ -52,3 +53,11 @@ def calculate_capacity_table(
 ) -> TabulatedShape:  # fmt: skip
     """A shape as a capacity table with its worst interpolation error; or a table from CSV, checked."""
     return tabulate.capacity_table_of(body, options)
+
+
+@router.post("/expansivity", response_model_exclude_unset=True)
+def calculate_expansivity(
+    body: Annotated[ExpansivityCalculation, Depends(json_body(ExpansivityCalculation))],
+) -> FittedExpansivity:
+    """β and κ from measured densities, their covariance, the residuals, and the substance that they make."""
+    return FittedExpansivity.model_validate(fit.fit(body))

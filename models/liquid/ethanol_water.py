@@ -10,8 +10,8 @@ from models.arrays import ArrayLike, BoolArray, FloatArray, as_floats
 from models.constants import STANDARD_ATMOSPHERE, ZERO_CELSIUS
 from models.liquid.point import LiquidPoint
 
-# OIML R 22 (1973), p. 13, printed again in the annex of Directive 76/766/EEC; every digit is that of four
-# independent transcriptions (a fifth has two digits of C_2,3 exchanged, 1e-8 kg/m3).
+# OIML R 22 (1973), p. 13, printed again in the annex of Directive 76/766/EEC; every digit stands alike in
+# three public copies (a fourth has digits of C_2,3 and C_2,5 exchanged: below 1e-6 kg/m3).
 _A = (
     9.982012300e2, -1.929769495e2, 3.891238958e2, -1.668103923e3, 1.352215441e4, -8.829278388e4,
     3.062874042e5, -6.138381234e5, 7.470172998e5, -5.478461354e5, 2.234460334e5, -3.903285426e4,

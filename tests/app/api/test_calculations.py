@@ -171,8 +171,77 @@ def test_a_network_that_cannot_be_is_named_with_its_place(client, change, expect
     assert expected in places(balance(client, 422, **change))
 
 
+# --- expansivity ---------------------------------------------------------------------------------
+
+
+def expansivity(client, status=200, **body):
+    answer = client.post("/v1/calculations/expansivity", json=body)
+    assert answer.status_code == status, answer.text
+    return answer.json()
+
+
+def densities(celsius, kpa=(101.325,)):
+    """Rows of a liquid of 840 kg/m³ at 15 °C and one atmosphere, β = 8.3e-4 + 1e-6 (t − 15) /K, κ = 7.5e-7 /kPa."""
+    return [
+        [t, p, 840.0 * math.exp(-8.3e-4 * (t - 15) - 1e-6 * (t - 15) ** 2 / 2 + 7.5e-7 * (p - 101.325))]
+        for t in celsius
+        for p in kpa
+    ]
+
+
+def test_densities_make_the_substance_that_gives_them_back(site):
+    """What is answered is put as it is, and an inventory at each row has the density of the row."""
+    rows = densities((5.0, 15.0, 25.0, 35.0, 45.0), (101.325, 2101.325))
+    found = expansivity(site.client, rows=rows, degree=1, name="house grade")
+    assert found["expansivity_per_k"] == pytest.approx([8.3e-4, 1e-6], rel=1e-6)
+    assert found["compressibility_per_kpa"] == pytest.approx(7.5e-7, rel=1e-9)
+    assert found["degrees_of_freedom"] == 6
+    assert found["residuals_kg_m3"] == pytest.approx([0.0] * 10, abs=1e-9)
+    site.put("/substances/house", found["substance"], status=201)
+    assert site.get("/substances/house")["definition"]["liquid"]["density_kg_m3"] == pytest.approx(840.0, rel=1e-12)
+    readings = [{"level_m": 1.0, "liquid_temperature_c": t, "pressure_kpa_abs": p} for t, p, _ in rows]
+    vessel = REQUEST["vessel"] | {"vapour_space": {"kind": "blanketed", "blanket": "nitrogen"}}
+    answered = inventory(site.client, substance=found["substance"], vessel=vessel, readings=readings)["results"]
+    assert [one["liquid_density_kg_m3"] for one in answered] == pytest.approx([row[2] for row in rows], rel=1e-9)
+
+
+def test_a_constant_expansivity_is_one_number(client):
+    found = expansivity(client, rows=densities((10.0, 20.0)), compressibility_per_kpa=7.5e-7)
+    assert found["expansivity_per_k"] == pytest.approx(8.3e-4, rel=1e-3)
+    assert found["compressibility_per_kpa"] == found["substance"]["liquid"]["compressibility_per_kpa"] == 7.5e-7
+    assert (found["covariance"], found["residual_deviation_kg_m3"]) == (None, None)
+    assert [one["standard_uncertainty"] for one in found["parameters"]] == [None, None]
+    assert set(found["substance"]) == {"name", "liquid"}
+
+
+@pytest.mark.parametrize(
+    ("body", "expected"),
+    [
+        ({}, ("/rows", "missing")),
+        ({"rows": [[15, 101, 840]]}, ("/rows", "wrong_length")),
+        ({"rows": [[15, 101, 840], [25, 101]]}, ("/rows/1/2", "missing")),
+        ({"rows": [[15, 101, 840], [25, -1, 830]]}, ("/rows/1/1", "out_of_range")),
+        ({"rows": [[15, 101, 840], [25, 101, 0]]}, ("/rows/1/2", "out_of_range")),
+        ({"rows": [[15, 101, 840], ["25", 101, 830]]}, ("/rows/1/0", "wrong_type")),
+        ({"rows": [[15, 101, 840], [15, 101, 840]]}, ("/rows", "impossible_definition")),
+        ({"rows": [[15, 101, 840], [25, 101, 833]], "degree": 1}, ("/rows", "impossible_definition")),
+        ({"rows": [[15, 101, 840], [25, 1101, 833]]}, ("/rows", "impossible_definition")),
+        ({"rows": [[15, 101, 840], [25, 1101, 833], [35, 2101, 826]]}, ("/rows", "impossible_definition")),
+        ({"rows": [[15, 101, 840], [25, 101, 833], [25, 1101, 830]]}, ("/rows", "impossible_fit")),
+        ({"rows": [[15, 101, 840], [16, 101, 400]]}, ("/rows", "impossible_fit")),
+        ({"rows": [[15, 101, 840], [25, 101, 833]], "degree": 4}, ("/degree", "out_of_range")),
+        ({"rows": [[15, 101, 840], [25, 101, 833]], "at_pressure_kpa_abs": 500},
+         ("/compressibility_per_kpa", "missing")),
+        ({"rows": [[15, 101, 840], [25, 101, 833]], "density_uncertainty_kg_m3": 0},
+         ("/density_uncertainty_kg_m3", "out_of_range")),
+    ],
+)  # fmt: skip
+def test_densities_that_tell_no_expansivity_are_refused_with_their_place(client, body, expected):
+    assert expected in places(expansivity(client, 422, **body))
+
+
 def test_bodies_of_another_type_and_from_elsewhere_are_turned_away(client):
-    for name in ("inventory", "balance"):
+    for name in ("inventory", "balance", "expansivity"):
         path = f"/v1/calculations/{name}"
         assert client.post(path, content=b"x", headers={"Content-Type": "text/csv"}).status_code == 415
         assert client.post(path, json={}, headers={"Origin": "https://elsewhere.example"}).status_code == 403

@@ -45,6 +45,7 @@ WITHOUT_UNIT = {
     "value", "standard_uncertainty", "difference", "sensitivity",
     "reconciled", "uncertainty", "adjustment", "imbalance", "magnitude", "interval", "share",
     "liquid_composition", "vapour_composition", "composition", "quality", "before", "after",
+    "covariance",
 }  # fmt: skip
 # Lists of numbers, and maps of bodies or of numbers by quantity, whose description has the units.
 LISTS = {"rows", "courses", "deadwood"}
