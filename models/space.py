@@ -170,10 +170,12 @@ def _beside_blanket(step: Step) -> tuple[FloatArray, FloatArray, BoolArray, Bool
     row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
     unread = np.broadcast_to(np.isnan(s.vapour_temperature), step.marks.shape)
     temperature = np.where(unread, s.liquid_temperature, s.vapour_temperature)
-    boiling, slope = v.saturation.pressure(temperature, row)
+    own = saturation_interval(
+        v.saturation, row, temperature, temperature, s.pressure_uncertainty, s.temperature_uncertainty
+    )
+    boiling = own.lowest
     alone = np.broadcast_to(boiling >= s.pressure, step.marks.shape)
-    tolerance = SATURATION_COVERAGE * np.hypot(s.pressure_uncertainty, slope * s.temperature_uncertainty)
-    step.mark(alone & (s.pressure < boiling - tolerance), Mark.SATURATION_LOW)
+    step.mark(alone & (s.pressure < boiling - own.tolerance), Mark.SATURATION_LOW)
     return np.where(alone, s.pressure, boiling), temperature, ~alone, unread
 
 

@@ -182,14 +182,28 @@ def test_a_pressure_within_twice_its_uncertainty_of_the_interval_agrees(gas: flo
     assert one(case)[1] & (Mark.SATURATION_LOW | Mark.SATURATION_HIGH) == mark
 
 
-@pytest.mark.parametrize(("celsius", "times"), [(80.0, 2.0), (95.0, 4.0)])
+@pytest.mark.parametrize(("celsius", "times"), [(80.0, 2.0), (81.5, 2.0), (82.4, 4.0), (95.0, 4.0)])
 def test_a_vapour_left_out_is_bounded_by_multiples_of_the_ideal_gas(celsius: float, times: float) -> None:
-    """Saturated propane at 95 °C has Z = 0.37 (reference equation): twice the ideal gas would be no bound."""
+    """Saturated propane at 95 °C has Z = 0.37 (reference equation): twice the ideal gas would be no bound.
+
+    The change is at 0.96 × 369.89 K = 81.94 °C.
+    """
     case = lpg(celsius).reads(level=9.99)
     own = inventory(vessels([case]), None, state([case]))
     ideal = 0.0440956 * own["vapour_pressure"][0] * 1.0 / (GAS_CONSTANT * (celsius + 273.15))
     assert own.marks[0] & Mark.VAPOUR_LEFT_OUT
     assert own.sensitivities["vapour_left_out"][0] == pytest.approx(times * ideal, rel=1e-6)
+
+
+def test_a_vapour_is_left_out_up_to_one_percent_of_its_liquid() -> None:
+    """At 80 °C twice the ideal gas is 94.0 kg/m³ (31.3 bar): 1 % of 500 kg/m³ with 0.505 of 10 m of room."""
+    shares = []
+    for room in (0.499, 0.509):
+        case = lpg(80.0).reads(level=10.0 - room)
+        shares.append(94.0 * room / (500.0 * (10.0 - room)))
+        left_out = bool(one(case)[1] & Mark.VAPOUR_LEFT_OUT)
+        assert left_out == (shares[-1] < 0.01)
+    assert shares == pytest.approx([0.0099, 0.0101], abs=1e-4)
 
 
 def test_pitfall_12_an_ideal_gas_over_lpg_is_a_sixth_too_light() -> None:
