@@ -262,7 +262,7 @@ def _guard(
     if method & Method.LIQUID:
         nothing = np.isnan(out["vapour_density"])
         sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
-        known = np.where(np.isfinite(pressure), pressure, step.state.pressure)
+        known = np.where(np.isfinite(pressure), pressure, _most(step, method, sure))
         near = sure > NEAR_CRITICAL * v.vapour.critical_temperature[row]
         denser = np.where(near, DENSEST_NEAR_CRITICAL, DENSER_THAN_IDEAL)
         bound = denser * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
@@ -274,6 +274,18 @@ def _guard(
     step.mark(refused & (gas.verdict == Verdict.REFUSED), Mark.GUARD_REFUSED)
     step.mark(refused & (gas.verdict == Verdict.NO_VAPOUR_ROOT), Mark.NO_VAPOUR_ROOT)
     step.mark(refused & (gas.verdict == Verdict.OUTSIDE_RANGE), Mark.OUTSIDE_METHOD)
+
+
+def _most(step: Step, method: Method, temperature: FloatArray) -> FloatArray:
+    """Pressure that a vapour of unknown pressure does not exceed: that of the space, and in the cold still less."""
+    v, whole = step.vessels, step.state.pressure
+    if not method & Method.BLANKET:
+        return whole
+    assert v.saturation is not None
+    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    lowest = np.asarray(v.saturation.lowest[row])
+    boiling, _ = v.saturation.pressure(lowest, row)
+    return np.where(temperature < lowest, np.minimum(boiling, whole), whole)
 
 
 def _vapour_sensitivities(

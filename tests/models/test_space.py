@@ -74,6 +74,26 @@ def test_a_blanket_whose_pressure_is_not_known_makes_no_mass() -> None:
     assert math.isnan(own["mass"][0]) and own.marks[0] & Mark.MISSING
 
 
+@pytest.mark.parametrize(
+    ("celsius", "level", "left_out"), [(-64.0, 0.5, True), (200.0, 0.5, False), (200.0, 9.9, True)]
+)
+def test_beside_a_blanket_an_unknown_vapour_pressure_is_bounded_by_what_is_known(
+    celsius: float, level: float, left_out: bool
+) -> None:
+    """n-Pentane has none that we know under 212 K, 570.3 Pa there, nor above its critical point at 196.6 °C.
+
+    In the cold it has less than at 212 K: 2 × 570.3 Pa × 0.07215 kg/mol / (R 209.15 K) = 0.0473 kg/m³, 0.14 % of
+    the liquid's mass with 19 times its room. In the heat all of 106.3 kPa may be pentane: four times 1.95 kg/m³.
+    """
+    case = tank(celsius, 5e3, level=level)
+    own = inventory(vessels([case]), None, state([case]))
+    assert bool(own.marks[0] & Mark.VAPOUR_LEFT_OUT) == left_out
+    assert np.isfinite(own["mass"][0]) == left_out
+    density = 0.0473 if celsius < 0.0 else 7.80
+    if left_out:
+        assert own.sensitivities["vapour_left_out"][0] == pytest.approx(100.0 * (10.0 - level) * density, rel=0.01)
+
+
 # Propane by its reference equation of state (E. W. Lemmon et al., J. Chem. Eng. Data 54 (2009) 3141; CoolProp 8.0.0).
 PROPANE_KPA = {18.1: 795.358, 20.0: 836.461, 23.0: 904.509, 25.0: 952.075}
 PROPANE_VAPOUR = {20.0: 18.08234, 25.0: 20.61786}  # saturated, kg/m³
