@@ -324,12 +324,14 @@ def _vapour_sensitivities(
     row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
     _, slope = v.saturation.pressure(out["vapour_temperature"], row)
     along = np.where(by_pressure, by_t / slope, 0.0)
-    by_pressure_alone = sens["pressure"] + by_p
+    liquid_alone = sens["pressure"]
+    sens["pressure"] = liquid_alone + by_p + along
+    if not by_liquid.any():
+        return
     # At its liquid's temperature a vapour follows that; so does the liquid's pressure where none was read.
-    read = by_liquid & (out["vapour_pressure"] != step.state.pressure)
-    liquid_alone = np.where(read, sens["pressure"], 0.0)
-    along_liquid = by_t + np.where(read, by_p, by_pressure_alone) * slope
-    sens["pressure"] = np.where(by_liquid, liquid_alone, by_pressure_alone + along)
+    read = out["vapour_pressure"] != step.state.pressure
+    along_liquid = by_t + np.where(read, by_p, liquid_alone + by_p) * slope
+    sens["pressure"] = np.where(by_liquid, np.where(read, liquid_alone, 0.0), sens["pressure"])
     sens["liquid_temperature"] = sens["liquid_temperature"] + np.where(by_liquid, along_liquid, 0.0)
 
 
