@@ -14,6 +14,7 @@ from models.saturation import SaturationColumns
 from models.vapour.guard import Verdict
 from models.vapour.series import VapourState
 
+NO_SERIES = -1  # for a row's virial series: none of the substance can take the composition that was analysed
 LEFT_OUT_SHARE = 0.01  # of the liquid; a vapour that cannot be computed is left out up to this bound
 SATURATION_COVERAGE = 2.0  # standard uncertainties
 # A vapour that is not computed is at most so many times the ideal gas at its pressure and temperature: saturated
@@ -208,10 +209,16 @@ def vapour(step: Step, method: Method) -> None:
     assert step.conditions is not None
     pressure, temperature, by_pressure, by_liquid = step.conditions
     rows = v.vapour_row if s.vapour_row is None else s.vapour_row
+    unknown = rows == NO_SERIES
+    if unknown.any():
+        rows = np.where(unknown, v.vapour_row, rows)
     row = rows if len(rows) > 1 else int(rows[0])
     gas = v.vapour.state(pressure, temperature, row)
     if method & Method.SATURATION and not method & Method.BLANKET and (gas.verdict >= Verdict.REFUSED).any():
         gas, pressure, temperature, by_pressure, by_liquid = _at_its_liquid(step, gas, row)
+    if unknown.any():  # what its own composition gives bounds it, and is no vapour of this row
+        density = np.where(unknown, np.nan, gas.density)
+        gas = replace(gas, density=density, verdict=np.where(unknown, Verdict.OUTSIDE_RANGE, gas.verdict))
     space = out["full_factor"] * v.capacity - out["shell_factor"] * out["tank_volume"]
     if method & Method.LIQUID:
         step.mark(space <= 0.0, Mark.LIQUID_FULL)
