@@ -14,6 +14,7 @@ from models.saturation import SaturationColumns
 from models.vapour.guard import Verdict
 from models.vapour.series import VapourState
 
+NO_SERIES = -1  # for a row's virial series: none of the substance can take the composition that was analysed
 LEFT_OUT_SHARE = 0.01  # of the liquid; a vapour that cannot be computed is left out up to this bound
 SATURATION_COVERAGE = 2.0  # standard uncertainties
 # A vapour that is not computed is at most so many times the ideal gas at its pressure and temperature: saturated
@@ -170,10 +171,12 @@ def _beside_blanket(step: Step) -> tuple[FloatArray, FloatArray, BoolArray, Bool
     row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
     unread = np.broadcast_to(np.isnan(s.vapour_temperature), step.marks.shape)
     temperature = np.where(unread, s.liquid_temperature, s.vapour_temperature)
-    boiling, slope = v.saturation.pressure(temperature, row)
+    own = saturation_interval(
+        v.saturation, row, temperature, temperature, s.pressure_uncertainty, s.temperature_uncertainty
+    )
+    boiling = own.lowest
     alone = np.broadcast_to(boiling >= s.pressure, step.marks.shape)
-    tolerance = SATURATION_COVERAGE * np.hypot(s.pressure_uncertainty, slope * s.temperature_uncertainty)
-    step.mark(alone & (s.pressure < boiling - tolerance), Mark.SATURATION_LOW)
+    step.mark(alone & (s.pressure < boiling - own.tolerance), Mark.SATURATION_LOW)
     return np.where(alone, s.pressure, boiling), temperature, ~alone, unread
 
 
@@ -206,10 +209,16 @@ def vapour(step: Step, method: Method) -> None:
     assert step.conditions is not None
     pressure, temperature, by_pressure, by_liquid = step.conditions
     rows = v.vapour_row if s.vapour_row is None else s.vapour_row
+    unknown = rows == NO_SERIES
+    if unknown.any():
+        rows = np.where(unknown, v.vapour_row, rows)
     row = rows if len(rows) > 1 else int(rows[0])
     gas = v.vapour.state(pressure, temperature, row)
     if method & Method.SATURATION and not method & Method.BLANKET and (gas.verdict >= Verdict.REFUSED).any():
         gas, pressure, temperature, by_pressure, by_liquid = _at_its_liquid(step, gas, row)
+    if unknown.any():  # what its own composition gives bounds it, and is no vapour of this row
+        density = np.where(unknown, np.nan, gas.density)
+        gas = replace(gas, density=density, verdict=np.where(unknown, Verdict.OUTSIDE_RANGE, gas.verdict))
     space = out["full_factor"] * v.capacity - out["shell_factor"] * out["tank_volume"]
     if method & Method.LIQUID:
         step.mark(space <= 0.0, Mark.LIQUID_FULL)
@@ -260,7 +269,7 @@ def _guard(
     if method & Method.LIQUID:
         nothing = np.isnan(out["vapour_density"])
         sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
-        known = np.where(np.isfinite(pressure), pressure, step.state.pressure)
+        known = np.where(np.isfinite(pressure), pressure, _most(step, method, sure))
         near = sure > NEAR_CRITICAL * v.vapour.critical_temperature[row]
         denser = np.where(near, DENSEST_NEAR_CRITICAL, DENSER_THAN_IDEAL)
         bound = denser * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
@@ -272,6 +281,18 @@ def _guard(
     step.mark(refused & (gas.verdict == Verdict.REFUSED), Mark.GUARD_REFUSED)
     step.mark(refused & (gas.verdict == Verdict.NO_VAPOUR_ROOT), Mark.NO_VAPOUR_ROOT)
     step.mark(refused & (gas.verdict == Verdict.OUTSIDE_RANGE), Mark.OUTSIDE_METHOD)
+
+
+def _most(step: Step, method: Method, temperature: FloatArray) -> FloatArray:
+    """Pressure that a vapour of unknown pressure does not exceed: that of the space, and in the cold still less."""
+    v, whole = step.vessels, step.state.pressure
+    if not method & Method.BLANKET:
+        return whole
+    assert v.saturation is not None
+    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    lowest = np.asarray(v.saturation.lowest[row])
+    boiling, _ = v.saturation.pressure(lowest, row)
+    return np.where(temperature < lowest, np.minimum(boiling, whole), whole)
 
 
 def _vapour_sensitivities(
@@ -311,12 +332,14 @@ def _vapour_sensitivities(
     row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
     _, slope = v.saturation.pressure(out["vapour_temperature"], row)
     along = np.where(by_pressure, by_t / slope, 0.0)
-    by_pressure_alone = sens["pressure"] + by_p
+    liquid_alone = sens["pressure"]
+    sens["pressure"] = liquid_alone + by_p + along
+    if not by_liquid.any():
+        return
     # At its liquid's temperature a vapour follows that; so does the liquid's pressure where none was read.
-    read = by_liquid & (out["vapour_pressure"] != step.state.pressure)
-    liquid_alone = np.where(read, sens["pressure"], 0.0)
-    along_liquid = by_t + np.where(read, by_p, by_pressure_alone) * slope
-    sens["pressure"] = np.where(by_liquid, liquid_alone, by_pressure_alone + along)
+    read = out["vapour_pressure"] != step.state.pressure
+    along_liquid = by_t + np.where(read, by_p, liquid_alone + by_p) * slope
+    sens["pressure"] = np.where(by_liquid, np.where(read, liquid_alone, 0.0), sens["pressure"])
     sens["liquid_temperature"] = sens["liquid_temperature"] + np.where(by_liquid, along_liquid, 0.0)
 
 

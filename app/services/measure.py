@@ -30,6 +30,7 @@ from models.columns import Inventory, State
 from models.errors import DefinitionError
 from models.estimate import Estimate
 from models.mass import inventory
+from models.space import NO_SERIES
 from models.vapour.series import VapourMixture
 
 if TYPE_CHECKING:
@@ -71,7 +72,7 @@ class Measured:
     def mixture(self, row: int) -> VapourMixture:
         """The vapour of a row: by its analysis, or the substance's own."""
         own = self.vessel(row).mixture
-        if self.state.vapour_row is None:
+        if self.state.vapour_row is None or self.state.vapour_row[row] == NO_SERIES:
             assert own is not None
             return own
         return self.mixtures[int(self.state.vapour_row[row])]
@@ -183,8 +184,8 @@ class States:
             roof_load=np.nan_to_num(self.chosen["roof_load"].value),
         )
         for row in self.refused:  # nothing is computed by a composition that is not the content's
-            for column in (state.level, state.pressure):
-                column[row] = np.nan
+            if not self.vessels[row if len(self.vessels) > 1 else 0].has_liquid:
+                state.pressure[row] = np.nan
         return state, extra
 
     def _outlived(self) -> BoolColumns:
@@ -342,7 +343,9 @@ class States:
             found.append(mixture)
         extra = tuple(dict.fromkeys(mixture for mixture in seen.values() if mixture is not None))
         place = mixture_rows(tuple(self.vessels), extra)
-        return np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp), extra
+        series = np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp)
+        series[list(self.refused)] = NO_SERIES
+        return series, extra
 
 
 def _analysed(vessel: CompiledVessel, analysis: Mapping[str, float]) -> tuple[VapourMixture | None, str]:

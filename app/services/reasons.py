@@ -104,7 +104,7 @@ def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
     """What is doubtful, and why a row has no mass."""
     marks = Mark(int(measured.result.marks[row]))
     found = [
-        {"code": code, "detail": _saturation(measured, row, detail) if mark & UNSATURATED else detail}
+        {"code": code, "detail": _in_full(measured, row, mark, detail)}
         for mark, (code, detail) in (WARNINGS.items() if marks else ())
         if marks & mark and not mark & UNMEASURED
     ]
@@ -126,6 +126,15 @@ def warnings(measured: Measured, row: int) -> list[dict[str, str]]:
     found.extend(_assumptions(measured, row))
     carried = measured.carried.get(row)
     return found if carried is None else found + carried.warnings
+
+
+def _in_full(measured: Measured, row: int, mark: Mark, detail: str) -> str:
+    """A mark's sentence with what this row adds to it."""
+    if mark & UNSATURATED:
+        return _saturation(measured, row, detail)
+    if mark & Mark.VAPOUR_LEFT_OUT and row in measured.refused:
+        return f"{detail}: the substance's vapour model cannot take the analysis: {measured.refused[row]}"
+    return detail
 
 
 def _saturation(measured: Measured, row: int, look: str) -> str:

@@ -11,11 +11,12 @@ from sqlalchemy import Connection
 
 from app.errors import Unprocessable
 from app.services.carry import measure_at
-from app.services.explain import answers, mass_estimate, reason
+from app.services.explain import answers, mass_estimate
 from app.services.find import site_number, watermark
 from app.services.in_force import SiteInForce, meters_in_force, named, site_in_force
 from app.services.instants import in_order
 from app.services.measure import Measured
+from app.services.reasons import reason
 from app.store import definitions
 from app.store.engine import Store
 from models.estimate import Estimate, combine

@@ -74,6 +74,26 @@ def test_a_blanket_whose_pressure_is_not_known_makes_no_mass() -> None:
     assert math.isnan(own["mass"][0]) and own.marks[0] & Mark.MISSING
 
 
+@pytest.mark.parametrize(
+    ("celsius", "level", "left_out"), [(-64.0, 0.5, True), (200.0, 0.5, False), (200.0, 9.9, True)]
+)
+def test_beside_a_blanket_an_unknown_vapour_pressure_is_bounded_by_what_is_known(
+    celsius: float, level: float, left_out: bool
+) -> None:
+    """n-Pentane has none that we know under 212 K, 570.3 Pa there, nor above its critical point at 196.6 °C.
+
+    In the cold it has less than at 212 K: 2 × 570.3 Pa × 0.07215 kg/mol / (R 209.15 K) = 0.0473 kg/m³, 0.14 % of
+    the liquid's mass with 19 times its room. In the heat all of 106.3 kPa may be pentane: four times 1.95 kg/m³.
+    """
+    case = tank(celsius, 5e3, level=level)
+    own = inventory(vessels([case]), None, state([case]))
+    assert bool(own.marks[0] & Mark.VAPOUR_LEFT_OUT) == left_out
+    assert np.isfinite(own["mass"][0]) == left_out
+    density = 0.0473 if celsius < 0.0 else 7.80
+    if left_out:
+        assert own.sensitivities["vapour_left_out"][0] == pytest.approx(100.0 * (10.0 - level) * density, rel=0.01)
+
+
 # Propane by its reference equation of state (E. W. Lemmon et al., J. Chem. Eng. Data 54 (2009) 3141; CoolProp 8.0.0).
 PROPANE_KPA = {18.1: 795.358, 20.0: 836.461, 23.0: 904.509, 25.0: 952.075}
 PROPANE_VAPOUR = {20.0: 18.08234, 25.0: 20.61786}  # saturated, kg/m³
@@ -182,14 +202,28 @@ def test_a_pressure_within_twice_its_uncertainty_of_the_interval_agrees(gas: flo
     assert one(case)[1] & (Mark.SATURATION_LOW | Mark.SATURATION_HIGH) == mark
 
 
-@pytest.mark.parametrize(("celsius", "times"), [(80.0, 2.0), (95.0, 4.0)])
+@pytest.mark.parametrize(("celsius", "times"), [(80.0, 2.0), (81.5, 2.0), (82.4, 4.0), (95.0, 4.0)])
 def test_a_vapour_left_out_is_bounded_by_multiples_of_the_ideal_gas(celsius: float, times: float) -> None:
-    """Saturated propane at 95 °C has Z = 0.37 (reference equation): twice the ideal gas would be no bound."""
+    """Saturated propane at 95 °C has Z = 0.37 (reference equation): twice the ideal gas would be no bound.
+
+    The change is at 0.96 × 369.89 K = 81.94 °C.
+    """
     case = lpg(celsius).reads(level=9.99)
     own = inventory(vessels([case]), None, state([case]))
     ideal = 0.0440956 * own["vapour_pressure"][0] * 1.0 / (GAS_CONSTANT * (celsius + 273.15))
     assert own.marks[0] & Mark.VAPOUR_LEFT_OUT
     assert own.sensitivities["vapour_left_out"][0] == pytest.approx(times * ideal, rel=1e-6)
+
+
+def test_a_vapour_is_left_out_up_to_one_percent_of_its_liquid() -> None:
+    """At 80 °C twice the ideal gas is 94.0 kg/m³ (31.3 bar): 1 % of 500 kg/m³ with 0.505 of 10 m of room."""
+    shares = []
+    for room in (0.499, 0.509):
+        case = lpg(80.0).reads(level=10.0 - room)
+        shares.append(94.0 * room / (500.0 * (10.0 - room)))
+        left_out = bool(one(case)[1] & Mark.VAPOUR_LEFT_OUT)
+        assert left_out == (shares[-1] < 0.01)
+    assert shares == pytest.approx([0.0099, 0.0101], abs=1e-4)
 
 
 def test_pitfall_12_an_ideal_gas_over_lpg_is_a_sixth_too_light() -> None:

@@ -20,6 +20,7 @@ from tests.app.services.worked import (
     RECEIVER,
     TANK,
     Body,
+    answer,
     compiled,
     masses,
 )
@@ -168,3 +169,19 @@ def test_an_analysis_that_the_vapour_model_cannot_take_stops_its_own_vessel_and_
         assert "gas-x" in answers[name]["reason"]["detail"]
     night = plant.close("2026-03-14")
     assert {one["vessel"] for one in night["vessels"]} == {"r-other", "r-plain", "r-fitted"}
+
+
+@pytest.mark.parametrize(("level", "status"), [(2.98, "measured"), (1.4, "unmeasured")])
+def test_beside_a_liquid_a_vapour_that_the_model_cannot_take_is_left_out_where_it_is_small(
+    level: float, status: str
+) -> None:
+    """Of a full bullet 1.4 m³ are room: with twice the ideal gas, 27 kg/m³, 37 kg beside 52.6 t. Else it counts."""
+    row = LPG_READ | {"level_m": level, "vapour_composition": {"propane": 0.9, "gas-x": 0.1}}
+    found = answer(compiled(BULLET, PROPANE), row)
+    assert found["status"] == status
+    if status == "measured":
+        assert found["mass_kg"] == found["liquid_mass_kg"]
+        assert "gas-x" in next(one["detail"] for one in found["warnings"] if one["code"] == "vapour_left_out")
+        assert answer(compiled(BULLET, PROPANE), row, budget=True, working=True)["vapour_mass_kg"] == 0.0
+    else:
+        assert found["reason"]["code"] == "outside_method" and "gas-x" in found["reason"]["detail"]
