@@ -48,7 +48,7 @@ def test_entry_limits_follow_from_those_at_60_f(commodity: int, low: float, high
     hot, cold, full = 423.15, 223.15, 1500.0 * 6894.757
     lightest = float(point(610.6 if commodity != LUBRICATING else 800.9, hot, 0.0, commodity).density)
     heaviest = float(point(1163.5, cold, full, commodity).density)
-    assert lightest == pytest.approx(low, abs=0.11) and heaviest == pytest.approx(high, abs=0.11)
+    assert lightest == pytest.approx(low, abs=0.15) and heaviest == pytest.approx(high, abs=0.15)
     assert np.isnan(density_60f([lightest - 0.1, heaviest + 0.1], [hot, cold], [0.0, full], commodity)).all()
     assert f"from {lightest:.1f} to" in why_outside(lightest - 0.1, hot, 0.0, commodity, observed=True)
     assert f"to {heaviest:.1f} kg/m³" in why_outside(heaviest + 0.1, cold, full, commodity, observed=True)
