@@ -270,7 +270,7 @@ def density_60f(
         ln ρ60 ← ln ρ60 + [ln(ρ/ρ60) − ln CTPL(ρ60)] / (∂ln ρ/∂ln ρ60)        (1)
 
     The group of a refined product is that of the solution: it is the heaviest whose lightest liquid would
-    not be denser than observed. At a group's limit CTL jumps by some 1e-6. Where the jump leaves densities
+    not be denser than observed. At a group's limit CTL jumps by up to 1e-7. Where the jump leaves densities
     that no liquid has, the answer is the limit itself; where two liquids have the density, it is the denser
     one. Of a special liquid near 610.6 kg/m³, 150 °C and 1500 psig two may have the density: the same holds.
 

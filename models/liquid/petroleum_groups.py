@@ -67,7 +67,7 @@ _K0, _K1, _K2 = (np.array([group[place] for group in GROUPS]) for place in (3, 4
 # API MPMS 11.1-2004, table of limits: −58 to 302 °F, 0 to 1500 psig, α60 230e-6 to 930e-6 1/°F.
 LOWEST_TEMPERATURE, HIGHEST_TEMPERATURE = ZERO_CELSIUS - 50.0, ZERO_CELSIUS + 150.0  # K
 PASCAL_PER_PSI = 6894.757  # as the standard converts; the exact factor is 4e-8 larger
-HIGHEST_PRESSURE = 1500.0 * PASCAL_PER_PSI  # Pa gauge, 103.4 bar
+HIGHEST_PRESSURE = 1500.0 * 6894.757293168  # Pa gauge, with the exact factor so that an exact conversion fits
 LOWEST_ALPHA60, HIGHEST_ALPHA60 = 230e-6, 930e-6  # 1/°F
 # Only the unit in which a limit is defined is exact: one that was converted there and back may lie a
 # rounding beyond it and still counts as inside.
