@@ -14,6 +14,7 @@ import numpy as np
 
 from models.arrays import BoolArray, FloatArray, IntArray
 from models.geometry.curves import Curves
+from models.geometry.head_stress import HeadStress
 from models.liquid.compiled import LiquidColumns
 from models.saturation import SaturationColumns
 from models.vapour.series import VapourColumns
@@ -29,6 +30,7 @@ class Method(IntFlag):
     SATURATION = 8
     FULL = 16
     BLANKET = 32
+    HEAD = 64
 
 
 class Mark(IntFlag):
@@ -51,6 +53,7 @@ class Mark(IntFlag):
     VAPOUR_AT_PRESSURE = 8192
     VAPOUR_AT_LIQUID_TEMPERATURE = 16384
     LIQUID_OUTSIDE_METHOD = 32768
+    STANDARD_OUTSIDE_METHOD = 65536
 
 
 UNMEASURED = Mark.GUARD_REFUSED | Mark.OUTSIDE_VESSEL | Mark.OUTSIDE_TABLE | Mark.OUTSIDE_METHOD
@@ -82,6 +85,10 @@ class Vessels:
     strain_sum, strain_vertical, strain_pressure : FloatArray, shape (v,)
         Sum of the three strains and the vertical one for each pascal of gauge pressure, and the gauge
         pressure of the table. [1/Pa, 1/Pa, Pa]
+    head_stress, head_row : HeadStress or None, IntArray, shape (v,)
+        Courses of the shells that the liquid's head widens, and the row of each vessel's. [m⁴/kg]
+    head_included : FloatArray, shape (v,)
+        Density at which a table contains that already, or 0. [kg/m³]
     roof_mass, roof_lands, roof_floats, roof_volume_per_mass : FloatArray, shape (v,)
         Floating roof; the last is 1/density at which a table already deducts it, or 0. [kg, m, m, m³/kg]
     liquids, liquid_row : LiquidColumns or None, IntArray, shape (v,)
@@ -111,6 +118,9 @@ class Vessels:
     strain_sum: FloatArray
     strain_vertical: FloatArray
     strain_pressure: FloatArray
+    head_stress: HeadStress | None
+    head_row: IntArray
+    head_included: FloatArray
     roof_mass: FloatArray
     roof_lands: FloatArray
     roof_floats: FloatArray
@@ -182,8 +192,8 @@ class State:
         1 where the density is that of the dry liquid, 0 where it is that of the wet sample. [1]
     vapour_row : IntArray or None
         Virial series of each row where its composition was analysed; None for the vessel's own. [1]
-    liquid_row : IntArray or None
-        Liquid of each row where its composition was analysed; None for the vessel's own. [1]
+    liquid_row, saturation_row : IntArray or None
+        Liquid and vapour pressure of each row where the liquid was analysed; None for the vessel's own. [1]
     roof_load : FloatArray or None
         Rain, snow and other load on the floating roof; None for none. [kg]
     pressure_uncertainty, temperature_uncertainty : FloatArray
@@ -206,6 +216,7 @@ class State:
     temperature_uncertainty: FloatArray
     vapour_row: IntArray | None = None
     liquid_row: IntArray | None = None
+    saturation_row: IntArray | None = None
     roof_load: FloatArray | None = None
 
     @property
@@ -285,6 +296,12 @@ class Step:
     out: dict[str, FloatArray]
     sens: dict[str, FloatArray]
     conditions: tuple[FloatArray, FloatArray, BoolArray, BoolArray] | None = None
+
+    @property
+    def saturation_row(self) -> IntArray | int:
+        """Row of each reading's vapour pressure; one number where all have the same. [1]"""
+        own = self.vessels.saturation_row if self.state.saturation_row is None else self.state.saturation_row
+        return own if len(own) > 1 else int(own[0])
 
     def mark(self, where: BoolArray, flag: Mark) -> None:
         """Mark some rows.

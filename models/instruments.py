@@ -89,9 +89,9 @@ LOCAL_SPAN = 1.0  # m, distance between the knots of the local error; a setting 
 BAROMETER_KPA = 1.0  # kPa, weather about the mean pressure of the place; common practice, ISO 2533 for the mean
 DENSITY_SHARE = 0.01  # of a density that no sample ever confirmed
 METHOD_DENSITY_SHARE: dict[str, float] = {
-    "WaterLiquid": 1e-4,  # impurities of a service water, common practice; the equation itself is good to 1e-5
-    "MixtureLiquid": 0.005,  # R. W. Hankinson, G. H. Thomson, AIChE J. 25 (1979) 653: 0.4 % on average, mixtures 1.4 %
-    "TableLiquid": DENSITY_SHARE,
+    "water": 1e-4,  # impurities of a service water, common practice; the equation itself is good to 1e-5
+    "light_hydrocarbon": 0.005,  # 0.4 % on average: R. W. Hankinson, G. H. Thomson, AIChE J. 25 (1979) 653
+    "density_table": DENSITY_SHARE,
 }  # of the density that a method gives of its own, where none was ever read
 EXPANSION_SHARE = 0.02  # of β, constant: drift of β over 30 K, against reference equations of state
 SATURATED_VAPOUR_TEMPERATURE = 3.0  # K, of a vapour whose temperature is taken from its saturation

@@ -14,6 +14,7 @@ import numpy as np
 
 from models.arrays import BLOCK_ROWS, FloatArray, IntArray, blocks
 from models.columns import Inventory, Mark, Method, State, Step, Vessels
+from models.geometry.head_stress import Widening
 from models.geometry.roof import afloat_fraction
 from models.liquid.state import Conditions, LiquidState
 from models.space import vapour, vapour_conditions
@@ -25,7 +26,7 @@ RESULTS = {
     "vapour_density": "kg/m³", "vapour_mass": "kg", "gas_standard_volume": "m³", "mass": "kg",
     "tank_volume": "m³", "surface_area": "m²", "liquid_shell_temperature": "K", "full_factor": "1",
     "vapour_temperature": "K", "vapour_pressure": "Pa", "second_virial": "m³/mol", "third_virial": "m⁶/mol²",
-    "reduced_density": "1", "roof_volume": "m³", "expansivity": "1/K", "compressibility": "1/Pa",
+    "reduced_density": "1", "roof_volume": "m³", "head_volume": "m³", "expansivity": "1/K", "compressibility": "1/Pa",
     "by_sample": "1", "by_sample_temperature": "1/K", "standard_by_sample": "1",
     "standard_by_sample_temperature": "1/K", "method_error": "1",
 }  # fmt: skip
@@ -144,6 +145,7 @@ KINDS_FROM = 1024  # above every flag of Method: which kind of liquid, so that a
 _HARMLESS = int(
     Mark.ROOF_LANDING_ZONE | Mark.SATURATION_LOW | Mark.SATURATION_HIGH | Mark.VAPOUR_SATURATED | Mark.GUARD_WIDE
     | Mark.LIQUID_FULL | Mark.VAPOUR_LEFT_OUT | Mark.VAPOUR_AT_PRESSURE | Mark.VAPOUR_AT_LIQUID_TEMPERATURE
+    | Mark.STANDARD_OUTSIDE_METHOD
 )  # fmt: skip
 
 
@@ -242,12 +244,28 @@ def _density(step: Step) -> LiquidState:
     """The content's densities, and what they owe to their inputs, for the working and the sensitivities."""
     s, found = step.state, densities(step.vessels, step.state)
     known = np.isfinite(s.density + s.density_temperature + s.density_pressure + s.liquid_temperature + s.pressure)
-    step.mark(known & np.isnan(found.density + found.density_standard), Mark.LIQUID_OUTSIDE_METHOD)
+    lost = np.isnan(found.density)
+    step.mark(known & lost, Mark.LIQUID_OUTSIDE_METHOD)
+    step.mark(known & ~lost & np.isnan(found.density_standard), Mark.STANDARD_OUTSIDE_METHOD)
     step.out.update(
         expansivity=found.expansivity, compressibility=found.compressibility, by_sample=found.by_sample,
         by_sample_temperature=found.by_sample_temperature, standard_by_sample=found.standard_by_sample,
         standard_by_sample_temperature=found.standard_by_sample_temperature, method_error=found.method_error,
     )  # fmt: skip
+    return found
+
+
+_NONE = np.zeros(1)
+NOT_WIDENED = Widening(_NONE, _NONE, _NONE, _NONE, _NONE)
+
+
+def _widening(step: Step, density: FloatArray) -> Widening:
+    """What the head of the liquid adds to the volumes of the shell as tabulated."""
+    v, s, out = step.vessels, step.state, step.out
+    assert v.head_stress is not None
+    row = v.head_row if len(v.head_row) > 1 else int(v.head_row[0])
+    found = v.head_stress.widening(s.level, s.water_level, density, v.head_included, row)
+    out["head_volume"] = found.volume
     return found
 
 
@@ -262,7 +280,8 @@ def _liquid(step: Step, method: Method) -> None:
     ratio = density / standard  # C_T C_P
     net = share * density
     factor, volume = out["shell_factor"], out["tank_volume"]
-    before_roof = factor * volume - out["free_water_volume"]
+    widening = _widening(step, density) if method & Method.HEAD else NOT_WIDENED
+    before_roof = factor * volume - out["free_water_volume"] + widening.volume
     displaced = np.zeros(1)
     slope = np.zeros(1)
     if method & Method.ROOF:
@@ -282,12 +301,13 @@ def _liquid(step: Step, method: Method) -> None:
         net_standard_volume=gross * ratio * (1.0 - water), liquid_density=density,
         standard_density=share * standard / (1.0 - water), liquid_mass=mass,
     )  # fmt: skip
-    _liquid_sensitivities(step, net, before_roof, displaced, share, slope)
+    _liquid_sensitivities(step, net, before_roof, displaced, share, slope, widening)
+    out["free_water_volume"] = out["free_water_volume"] + widening.water_volume
 
 
 def _liquid_sensitivities(
     step: Step, net: FloatArray, before_roof: FloatArray, displaced: FloatArray, share: FloatArray,
-    slope: FloatArray,
+    slope: FloatArray, widening: Widening,
 ) -> None:  # fmt: skip
     """Derivatives of the liquid mass; those of the vapour are added by the vapour's own step."""
     v, s, out, sens = step.vessels, step.state, step.out, step.sens
@@ -297,13 +317,14 @@ def _liquid_sensitivities(
     stretch_pressure = v.strain_sum * by_sum - v.strain_vertical * by_vertical
     liquid_volume = volume - out["free_water_volume"] / out["shell_factor"]
     shell = net * liquid_volume * stretch_temperature
-    full = net * before_roof
+    full = net * (before_roof + out["liquid_density"] * widening.by_density)  # a denser liquid widens its tank
     dry = s.density_is_dry > 0.0
     # A wet sample that is denser holds less water by mass: 1 − share = f ρ_w/ρ_s.
     leaves_less = np.where(dry, 0.0, (out["liquid_density"] * before_roof - displaced) * (1.0 - share))
     by_log_density = full * out["by_sample"] + leaves_less
-    sens["level"] = net * out["shell_factor"] * out["surface_area"] + slope * (net * v.roof_volume_per_mass - share)
-    sens["water_level"] = -net * sens["_water_area"]
+    surface = out["shell_factor"] * out["surface_area"] + widening.by_level
+    sens["level"] = net * surface + slope * (net * v.roof_volume_per_mass - share)
+    sens["water_level"] = net * (widening.by_water_level - sens["_water_area"])
     sens["liquid_temperature"] = -out["expansivity"] * full + v.liquid_weight * shell
     sens["ambient_temperature"] = (1.0 - v.liquid_weight) * shell
     sens["pressure"] = out["compressibility"] * full + net * liquid_volume * stretch_pressure

@@ -131,7 +131,7 @@ def vapour_conditions(step: Step, method: Method) -> tuple[FloatArray, FloatArra
     if not method & Method.SATURATION or not method & Method.LIQUID:
         return pressure, temperature, nowhere, nowhere
     assert v.saturation is not None
-    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    row = step.saturation_row
     unread = np.isnan(pressure)
     own = saturation_interval(
         v.saturation, row, s.liquid_temperature, np.where(unread, np.nan, temperature), s.pressure_uncertainty,
@@ -168,7 +168,7 @@ def _beside_blanket(step: Step) -> tuple[FloatArray, FloatArray, BoolArray, Bool
     """
     v, s = step.vessels, step.state
     assert v.saturation is not None
-    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    row = step.saturation_row
     unread = np.broadcast_to(np.isnan(s.vapour_temperature), step.marks.shape)
     temperature = np.where(unread, s.liquid_temperature, s.vapour_temperature)
     own = saturation_interval(
@@ -246,7 +246,7 @@ def _at_its_liquid(
     v, s = step.vessels, step.state
     assert v.vapour is not None and v.saturation is not None and step.conditions is not None
     pressure, temperature, by_pressure, by_liquid = step.conditions
-    which = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    which = step.saturation_row
     at_liquid, _ = v.saturation.pressure(s.liquid_temperature, which)
     instead = (gas.verdict >= Verdict.REFUSED) & by_pressure & (pressure > at_liquid)
     if not instead.any():
@@ -329,7 +329,7 @@ def _vapour_sensitivities(
         sens["pressure"] = sens["pressure"] + by_p
         return
     assert v.saturation is not None
-    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    row = step.saturation_row
     _, slope = v.saturation.pressure(out["vapour_temperature"], row)
     along = np.where(by_pressure, by_t / slope, 0.0)
     liquid_alone = sens["pressure"]
@@ -349,7 +349,7 @@ def _blanket_sensitivities(
     """Beside its blanket a vapour follows its temperature alone, once as a gas and once as its vapour pressure."""
     v, s, out, sens = step.vessels, step.state, step.out, step.sens
     assert v.saturation is not None
-    row = v.saturation_row if len(v.saturation_row) > 1 else int(v.saturation_row[0])
+    row = step.saturation_row
     _, slope = v.saturation.pressure(out["vapour_temperature"], row)
     whole = np.where(beside, by_t + by_p * np.where(np.isfinite(slope), slope, 0.0), by_t)
     sens["pressure"] = sens["pressure"] + np.where(beside, 0.0, by_p)

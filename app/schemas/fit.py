@@ -6,7 +6,9 @@ from typing import Annotated
 
 from pydantic import ConfigDict, Field
 
-from app.schemas.substance import Expansivity, Substance, Temperature
+from app.schemas.component import Temperature
+from app.schemas.liquid import Expansivity
+from app.schemas.substance import Substance
 from app.schemas.types import Answer, Body, Items, Known, Text
 
 ROWS = 10_000

@@ -122,6 +122,36 @@ class WaterLiquid(_Uncertain):
     model: Literal["water"] = Field(description="Water by its published density and compressibility")
 
 
+class EthanolWaterLiquid(_Uncertain):
+    """Ethanol and water by their density or their strength: OIML R 22, −20 to 40 °C."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {"model": "ethanol_water", "alcohol_volume_pct": 96.0},
+                {"model": "ethanol_water", "density_kg_m3": 807.42, "at_temperature_c": 20.0},
+            ]
+        }
+    )
+
+    model: Literal["ethanol_water"] = Field(description="The international alcoholometric tables")
+    alcohol_volume_pct: float | None = Field(
+        default=None, ge=0, le=100, description="Strength, volume of ethanol in the volume at 20 °C [%]"
+    )
+    density_kg_m3: Density | None = Field(
+        default=None, description="Density at the temperature below, in vacuo; instead of the strength [kg/m³]"
+    )
+    at_temperature_c: float = Field(default=20.0, ge=-20, le=40, description="Temperature of the density [°C]")
+
+    @model_validator(mode="after")
+    def _by_one_of_them(self) -> Self:
+        if (self.alcohol_volume_pct is None) == (self.density_kg_m3 is None):
+            detail = "Ethanol and water are known by their alcohol_volume_pct or by their density_kg_m3, by one of them"
+            code = "missing" if self.density_kg_m3 is None else "conflicting"
+            raise refusal(code, detail, "alcohol_volume_pct")
+        return self
+
+
 class LightHydrocarbonLiquid(_Uncertain):
     """A liquefied gas: by its density (GPA TP-27 / API MPMS 11.2.4), or by its composition (COSTALD)."""
 
@@ -187,7 +217,12 @@ class DensityTableLiquid(_Uncertain):
 
 
 Liquid = Annotated[
-    ExpansivityLiquid | PetroleumLiquid | LightHydrocarbonLiquid | WaterLiquid | DensityTableLiquid,
+    ExpansivityLiquid
+    | PetroleumLiquid
+    | LightHydrocarbonLiquid
+    | WaterLiquid
+    | DensityTableLiquid
+    | EthanolWaterLiquid,
     Discriminator("model"),
     UNTAGGED,
 ]

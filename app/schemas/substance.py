@@ -19,7 +19,7 @@ from app.schemas.component import NUMBER_OR_LIST, Component, Temperature, temper
 from app.schemas.liquid import Liquid
 from app.schemas.types import UNTAGGED, Body, Instant, Items, Text, refusal
 
-LIQUID_MODELS = ("expansivity", "petroleum", "light_hydrocarbon", "water", "density_table")
+LIQUID_MODELS = ("expansivity", "petroleum", "light_hydrocarbon", "water", "density_table", "ethanol_water")
 """Values of ``liquid.model`` that this version computes."""
 VAPOUR_MODELS = ("virial",)
 """Values of ``vapour.model`` that this version computes."""

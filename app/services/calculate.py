@@ -21,10 +21,11 @@ from models.components import COMPONENTS
 
 def calculate(request: InventoryCalculation, *, working: bool, budget: bool) -> list[dict[str, Any]]:
     """One inventory for each reading, in order; nothing is carried from one to the next."""
-    define.check_computed(request.vessel, "/vessel")
     define.check_components(request.substance, "/substance")
     _check_analyses(request)
-    vessel = compile_bodies("vessel", request.site, request.vessel, request.substance)
+    vessel = define.check(
+        lambda: compile_bodies("vessel", request.site, request.vessel, request.substance), "/vessel", "/substance"
+    )
     if not request.readings:
         return []
     results = answers(measure(collected(vessel, request.readings)), working=working, budget=budget)

@@ -12,8 +12,8 @@ from sqlalchemy import Connection
 from app.errors import Conflict, Unprocessable
 from app.services import move
 from app.services.carry import vapours
-from app.services.compile import CompiledVessel, stack
-from app.services.compositions import virial_columns
+from app.services.compile import Analysed, CompiledVessel, all_of, stack
+from app.services.compositions import Boiling, virial_columns
 from app.services.explain import mass_estimate
 from app.services.find import site_number, watermark
 from app.services.in_force import meters_in_force
@@ -23,6 +23,7 @@ from app.services.take_stock import Stock, stock_at
 from app.store import transfers
 from app.store.engine import Store
 from models.columns import State
+from models.liquid.definition import Liquid, MixtureLiquid
 from models.mass import inventory
 
 KELVIN, KPA = 273.15, 1000.0
@@ -126,6 +127,11 @@ def _steps(before: Measured, after: Measured) -> list[dict[str, Any]]:
         elif now != mass or seen[0] != seen[1]:
             steps.append(_step(name, unit, *seen, now - mass))
             mass = now
+    if _liquids(before) != _liquids(after):
+        now = _compute(old, after, state, vapour_of=before)
+        contribution = now - mass if math.isfinite(now) else None
+        steps.append(_step("liquid_composition", "", None, None, contribution))
+        mass = now if math.isfinite(now) else mass
     if _has_vapour(before) and _has_vapour(after) and before.mixture(0) != after.mixture(0):
         now = _compute(old, after, state)
         contribution = now - mass if math.isfinite(now) else None
@@ -135,6 +141,12 @@ def _steps(before: Measured, after: Measured) -> list[dict[str, Any]]:
     if final != mass:
         steps.append(_step("definition", "", None, None, final - mass))
     return steps
+
+
+def _liquids(measured: Measured) -> tuple[Liquid | None, Boiling | None]:
+    """The liquid's composition, once as a density and once as a vapour pressure."""
+    liquid = measured.vessel(0).liquid
+    return measured.liquid(0) if isinstance(liquid, MixtureLiquid) else None, measured.boiling(0)
 
 
 def _has_vapour(measured: Measured) -> bool:
@@ -151,14 +163,26 @@ def _molar_mass(measured: Measured) -> float:
     return float(virial_columns((measured.mixture(0),)).molar_mass[0]) * 1e3
 
 
-def _compute(vessel: CompiledVessel, measured: Measured, state: State) -> float:
-    """The chain's mass of one vessel in a state, with the vapour of a measured row."""
-    extra = (measured.mixture(0),) if vessel.mixture is not None else ()
+def _compute(
+    vessel: CompiledVessel, measured: Measured, state: State, vapour_of: Measured | None = None
+) -> float:
+    """The chain's mass of one vessel in a state, with the compositions of a measured row."""
+    boiling = measured.boiling(0) if vessel.boiling is not None else None
+    extra = Analysed(
+        ((vapour_of or measured).mixture(0),) if vessel.mixture is not None else (),
+        (measured.liquid(0),) if isinstance(vessel.liquid, MixtureLiquid) else (),
+        () if boiling is None else (boiling,),
+    )
+    held = all_of((vessel,), extra)
+    rows = {
+        name: np.array([columns.index(one[0])], dtype=np.intp) if one else None
+        for name, one, columns in (
+            ("vapour_row", extra.mixtures, held.mixtures), ("liquid_row", extra.liquids, held.liquids),
+            ("saturation_row", extra.boiling, held.boiling),
+        )
+    }  # fmt: skip
     columns = stack((vessel,), extra)
-    if extra:
-        mixtures = list(dict.fromkeys([one for one in (vessel.mixture, *extra) if one is not None]))
-        state = replace(state, vapour_row=np.array([mixtures.index(extra[0])], dtype=np.intp))
-    return float(inventory(columns, None, state)["mass"][0])
+    return float(inventory(columns, None, replace(state, **rows))["mass"][0])
 
 
 def _shown(state: State, name: str, scale: float, shift: float) -> float | None:

@@ -59,9 +59,12 @@ INPUTS: tuple[InputSpec, ...] = (
         "density",
         ("observed_density_kg_m3",),
         sample=True,
-        companions=("observed_density_temperature_c", "observed_density_pressure_kpa_abs", "sample"),
+        companions=(
+            "observed_density_temperature_c", "observed_density_pressure_kpa_abs", "observed_density_by", "sample",
+        ),
     ),
     InputSpec("sediment_water", ("sediment_water_pct",), sample=True, companions=("density_basis", "sample")),
+    InputSpec("liquid_composition", ("liquid_composition",), sample=True, companions=("sample",)),
     InputSpec("vapour_composition", ("vapour_composition",), sample=True, companions=("sample",)),
     InputSpec("roof_load", ("roof_load_kg",)),
 )

@@ -29,11 +29,12 @@ from app.services.compositions import (
 )
 from app.services.find import ALL_TIME
 from app.services.liquids import base_state
-from app.services.shapes import capacity_curve, strain_of
+from app.services.shapes import capacity_curve, courses_of, head_included, strain_of
 from models import constants, instruments, units
 from models.columns import Method, Vessels
 from models.errors import DefinitionError
 from models.geometry.curves import Curve, Curves
+from models.geometry.head_stress import CoursedShell, HeadStress
 from models.geometry.shell import LIQUID_WEIGHT
 from models.liquid.definition import Liquid
 from models.liquid.water import water_density
@@ -90,6 +91,7 @@ class CompiledVessel:
     density_uncertainty: float
     space: str
     table: bool
+    courses: CoursedShell | None
     since: int = -ALL_TIME  # µs; nothing about the liquid that was read before counts
     until: int = ALL_TIME  # µs; nor what is read from here on: another substance, or out of service
     history: tuple[tuple[int, Vessel], ...] = ()  # effective_from and body of every text, where there are several
@@ -254,6 +256,9 @@ def compile_bodies(
         method |= Method.ROOF
     if method & Method.LIQUID and method & Method.VAPOUR:
         method |= Method.SATURATION
+    courses = courses_of(body)
+    if courses is not None and method & Method.LIQUID:
+        method |= Method.HEAD
     if method == Method.NOTHING and kind != "junction":
         raise DefinitionError(
             "the substance has neither a liquid that this shape can gauge nor a vapour that counts in this space",
@@ -268,7 +273,7 @@ def compile_bodies(
     parameters = _site_parameters(site, own, boiling) | _shell_parameters(body) | _roof_parameters(body)
     return CompiledVessel(
         name, definitions, site, body, substance, method, curve, capacity, parameters,
-        own, mixture, boiling, (state[0], state[1], state[2]), state[3], space, kind == "capacity_table",
+        own, mixture, boiling, (state[0], state[1], state[2]), state[3], space, kind == "capacity_table", courses,
     )  # fmt: skip
 
 
@@ -312,6 +317,7 @@ def _shell_parameters(body: Vessel) -> dict[str, float]:
         "strain_sum": total,
         "strain_vertical": vertical,
         "strain_pressure": shell.at_pressure_kpa * units.PASCAL_PER_KPA,
+        "head_included": head_included(body),
     }
 
 
@@ -328,14 +334,23 @@ def _roof_parameters(body: Vessel) -> dict[str, float]:
     }
 
 
+class Analysed(NamedTuple):
+    """What analyses brought beside the vessels' own substances: it follows them in the columns."""
+
+    mixtures: tuple[VapourMixture, ...] = ()
+    liquids: tuple[Liquid, ...] = ()
+    boiling: tuple[Boiling, ...] = ()
+
+
+NOT_ANALYSED = Analysed()
+
+
 @lru_cache(maxsize=64)
-def stack(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixture, ...] = ()) -> Vessels:
-    """Columns of parameters of some vessels, in their order; ``extra`` mixtures follow the vessels' own."""
+def stack(compiled: tuple[CompiledVessel, ...], extra: Analysed = NOT_ANALYSED) -> Vessels:
+    """Columns of parameters of some vessels, in their order."""
     curves = [c.curve for c in compiled if c.curve is not None]
     curve_row = np.cumsum([c.curve is not None for c in compiled]) - 1
-    mixtures = tuple(dict.fromkeys([c.mixture for c in compiled if c.mixture is not None] + list(extra)))
-    boiling = tuple(dict.fromkeys(c.boiling for c in compiled if c.boiling is not None))
-    own = tuple(dict.fromkeys(c.liquid for c in compiled if c.liquid is not None))
+    mixtures, own, boiling = all_of(compiled, extra)
 
     def column(name: str) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
         return np.array([c.parameters[name] for c in compiled], dtype=np.float64)
@@ -351,6 +366,8 @@ def stack(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixture, ...]
         **{name: column(name) for name in PARAMETERS},
         liquids=liquids.liquid_columns(own) if own else None,
         liquid_row=np.array([own.index(c.liquid) if c.liquid else 0 for c in compiled], dtype=np.intp),
+        head_stress=HeadStress.from_shells([c.courses for c in compiled]),
+        head_row=np.arange(len(compiled), dtype=np.intp),
         vapour=virial_columns(mixtures) if mixtures else None,
         vapour_row=np.array([mixtures.index(c.mixture) if c.mixture else 0 for c in compiled], dtype=np.intp),
         saturation=saturation_columns(boiling) if boiling else None,
@@ -362,14 +379,17 @@ def stack(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixture, ...]
 PARAMETERS = (
     "expansion", "expansion_temperature", "liquid_weight", "strain_sum", "strain_vertical", "strain_pressure",
     "roof_mass", "roof_lands", "roof_floats", "roof_volume_per_mass", "standard_temperature",
-    "standard_pressure", "water_density",
+    "standard_pressure", "water_density", "head_included",
 )  # fmt: skip
 
 
-def mixture_rows(compiled: tuple[CompiledVessel, ...], extra: tuple[VapourMixture, ...]) -> dict[VapourMixture, int]:
-    """Row of each mixture in the stacked virial series."""
-    mixtures = dict.fromkeys([c.mixture for c in compiled if c.mixture is not None] + list(extra))
-    return {mixture: row for row, mixture in enumerate(mixtures)}
+def all_of(compiled: tuple[CompiledVessel, ...], extra: Analysed) -> Analysed:
+    """Everything that the columns hold, each once: the vessels' own first, then what analyses brought."""
+    return Analysed(
+        tuple(dict.fromkeys([*(c.mixture for c in compiled if c.mixture is not None), *extra.mixtures])),
+        tuple(dict.fromkeys([*(c.liquid for c in compiled if c.liquid is not None), *extra.liquids])),
+        tuple(dict.fromkeys([*(c.boiling for c in compiled if c.boiling is not None), *extra.boiling])),
+    )
 
 
 def _gas_standard_density(c: CompiledVessel) -> float:

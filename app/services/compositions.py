@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from functools import lru_cache
 
 import numpy as np
 
 from app.schemas.component import Component as WireComponent
-from app.schemas.substance import VirialVapour
+from app.schemas.substance import Substance, VirialVapour
 from models import units
 from models.components import Component, component, given_component
 from models.saturation import SaturationColumns
@@ -86,4 +86,16 @@ def analysed(vapour: VirialVapour, analysis: tuple[tuple[str, float], ...]) -> V
         mixture_of(vapour),
         components=tuple(_component(own[name]) if name in own else component(name) for name, _ in analysis),
         mole_fractions=tuple(fraction / total for _, fraction in analysis),
+    )
+
+
+def boiling_of(substance: Substance, analysis: Mapping[str, float]) -> Boiling:
+    """An analysis's substances and mole fractions, which sum to one; a substance gives its components in full."""
+    parts = (getattr(part, "components", None) or () for part in (substance.liquid, substance.vapour))
+    own = {item.id: item for given in parts for item in given}
+    total = math.fsum(analysis.values())
+    return tuple(
+        (_component(own[name]) if name in own else component(name), fraction / total)
+        for name, fraction in sorted(analysis.items())
+        if fraction > 0.0
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any, TypeVar
 
@@ -24,7 +25,7 @@ from app.store.tables import ALWAYS
 from models.components import COMPONENTS
 from models.errors import ModelError
 
-B = TypeVar("B", bound=BaseModel)
+T = TypeVar("T")
 KINDS: dict[str, type[BaseModel]] = {"site": Site, "substance": Substance, "vessel": Vessel, "meter": Meter}
 
 
@@ -38,7 +39,7 @@ class Put:
 
 def put_site(store: Store, name: str, body: Site, request: str = "") -> Put:
     """Define a site or revise it; the first definition makes it."""
-    _check(lambda: check_zone(body.time_zone), "time_zone")
+    check(lambda: check_zone(body.time_zone), "time_zone")
     with store.writing(name, deed="site", request=request, create=True) as writing:
         if not writing.created:
             _zone_is_free(writing, name, body)
@@ -50,7 +51,7 @@ def put(store: Store, site: str, kind: str, name: str, body: Substance | Vessel 
     with store.reading() as connection:
         site_number(connection, site)
     if isinstance(body, Substance):
-        _check(lambda: _substance_can_be(body), "")
+        check(lambda: _substance_can_be(body), "")
     with store.writing(site, deed=kind, request=request) as writing:
         if isinstance(body, Vessel):
             _vessel_fits(writing, site, name, body)
@@ -75,13 +76,17 @@ def _put(writing: Writing, kind: str, name: str, body: Any) -> Put:
 
 PLACES = {"datum_m": "gauging/datum_m", "courses": "shell/courses"}
 """Where a field that the models name stands in a body, if not at its top."""
+SUBSTANCE = ("liquid", "vapour", "components", "substance")
+"""Fields that the models name of a substance."""
 
 
-def _check(act: Any, pointer: str) -> None:
-    """What the models refuse of a definition, as a refusal of the body."""
+def check(act: Callable[[], T], pointer: str, of_substance: str | None = None) -> T:
+    """What the models refuse of a definition, as a refusal of the body; ``of_substance`` is where that stands."""
     try:
-        act()
+        return act()
     except ModelError as refused:
+        if of_substance is not None and (refused.field or "").partition("/")[0] in SUBSTANCE:
+            pointer = of_substance
         place = f"{pointer}/{PLACES.get(refused.field, refused.field)}" if refused.field else pointer
         raise Unprocessable(
             refused.detail, code=refused.code, errors=[FieldError(place, refused.code, refused.detail, refused.index)]
@@ -138,7 +143,6 @@ PLAIN_SITE = Site.model_validate({"name": "any", "time_zone": "UTC"})
 
 def _vessel_fits(writing: Writing, site: str, name: str, body: Vessel) -> None:
     """The vessel's substance exists when the vessel begins, and the two go together."""
-    check_computed(body)
     if body.substance is None:
         return
     begins = ALWAYS if body.effective_from is None else body.effective_from
@@ -158,17 +162,7 @@ def _vessel_fits(writing: Writing, site: str, name: str, body: Vessel) -> None:
     own = definitions.in_force(writing.connection, writing.site_id, "site", at, writing.recorded_at) or (
         definitions.in_force(writing.connection, writing.site_id, "site", ALL_TIME, writing.recorded_at)
     )
-    _check(lambda: compile_bodies(name, Site.model_validate_json(own[0].body), body, substance), "")
-
-
-def check_computed(body: Vessel, within: str = "") -> None:
-    """What the body may say but this version does not compute is refused, not left aside."""
-    refused: list[FieldError] = []
-    if body.shell.courses:
-        detail = "This version does not compute the head of the liquid by courses"
-        refused.append(FieldError(f"{within}/shell/courses", "not_computed", detail))
-    if refused:
-        raise Unprocessable(refused[0].detail, code="not_computed", errors=refused)
+    check(lambda: compile_bodies(name, Site.model_validate_json(own[0].body), body, substance), "")
 
 
 def newest(store: Store, site: str, kind: str, name: str, at: int | None, as_of: int | None) -> dict[str, Any]:

@@ -15,11 +15,14 @@ from models.errors import DefinitionError
 from models.liquid import definition
 from models.liquid.compiled import LiquidColumns
 from models.liquid.definition import Liquid
+from models.liquid.ethanol_water import density_of_strength
 from models.liquid.state import Conditions, LiquidState
 
 State = tuple[float, float]  # temperature and absolute pressure [K, Pa]
 SATURATED = (definition.MixtureLiquid, definition.LightHydrocarbonLiquid)
 """Methods that start from the saturated liquid: a pressure below that of equilibrium counts as it."""
+
+STRENGTH_C = 20.0  # °C, at which a strength by volume is stated: OIML R 22
 
 
 def base_state(site: Site) -> State:
@@ -42,6 +45,8 @@ def liquid_of(body: wire.Liquid, site: Site) -> Liquid:
         case wire.LightHydrocarbonLiquid():
             assert body.components is not None
             return definition.MixtureLiquid(fractions_of(body.components))
+        case wire.EthanolWaterLiquid():
+            return definition.EthanolWaterLiquid()
         case wire.WaterLiquid():
             return definition.WaterLiquid()
         case wire.DensityTableLiquid():
@@ -62,23 +67,41 @@ def standard_pressure(liquid: Liquid | None, site: Site, boiling: Boiling | None
 
 def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> tuple[float, ...]:
     """The substance's own density, its temperature and pressure, and its standard uncertainty. [kg/m³, K, Pa]"""
-    given = body.density_uncertainty_kg_m3
-    density = getattr(body, "density_kg_m3", None)
+    at = _stated_at(body, liquid, site, boiling)
+    density = _stated_density(body)
     if density is None:
-        at = base_state(site)[0], standard_pressure(liquid, site, boiling)
         density = own_density(liquid, at)
-        share = instruments.METHOD_DENSITY_SHARE[type(liquid).__name__]
-        return density, *at, share * density if given is None else given
-    temperature = float(units.kelvin(body.at_temperature_c))  # type: ignore[union-attr]
-    stated = body.at_pressure_kpa_abs  # type: ignore[union-attr]
-    if stated is not None:
-        pressure = stated * units.PASCAL_PER_KPA
-    elif isinstance(liquid, SATURATED):
-        pressure = base_state(site)[1]
+        share = instruments.METHOD_DENSITY_SHARE[body.model]
     else:
-        pressure = max(base_state(site)[1], boiling_pressure(boiling, temperature))
-    _check(liquid, density, (temperature, pressure), (base_state(site)[0], standard_pressure(liquid, site, boiling)))
-    return density, temperature, pressure, instruments.DENSITY_SHARE * density if given is None else given
+        share = instruments.DENSITY_SHARE
+        if not math.isfinite(density_between(liquid, density, at, at, at[1])):
+            raise DefinitionError(why_outside(liquid, density, at, at), field="liquid/density_kg_m3")
+    given = body.density_uncertainty_kg_m3
+    return density, *at, share * density if given is None else given
+
+
+def _stated_at(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> State:
+    """Temperature and pressure of the substance's own density, as stated or as they are meant. [K, Pa]"""
+    temperature, base = base_state(site)
+    if isinstance(liquid, definition.TableLiquid):
+        return min(max(temperature, liquid.rows[0][0]), liquid.rows[-1][0]), liquid.pressure
+    if isinstance(body, wire.EthanolWaterLiquid):
+        stated = body.at_temperature_c if body.alcohol_volume_pct is None else STRENGTH_C
+        return float(units.kelvin(stated)), constants.STANDARD_ATMOSPHERE
+    if _stated_density(body) is None:
+        return temperature, standard_pressure(liquid, site, boiling)
+    temperature = float(units.kelvin(body.at_temperature_c))  # type: ignore[union-attr]
+    pressure = body.at_pressure_kpa_abs  # type: ignore[union-attr]
+    if pressure is not None:
+        return temperature, pressure * units.PASCAL_PER_KPA
+    return temperature, base if isinstance(liquid, SATURATED) else max(base, boiling_pressure(boiling, temperature))
+
+
+def _stated_density(body: wire.Liquid) -> float | None:
+    """The density that a body gives, as such or as a strength. [kg/m³]"""
+    if isinstance(body, wire.EthanolWaterLiquid) and body.alcohol_volume_pct is not None:
+        return density_of_strength(body.alcohol_volume_pct / 100.0)
+    return getattr(body, "density_kg_m3", None)
 
 
 def own_density(liquid: Liquid, at: State) -> float:
@@ -101,12 +124,6 @@ def density_between(liquid: Liquid, density: float, sample: State, here: State, 
     return float(found.density[0])
 
 
-def _check(liquid: Liquid, density: float, sample: State, standard: State) -> None:
-    """Refuse a density figure from which the method finds no standard density."""
-    if not math.isfinite(state_of(liquid, density, sample, standard, standard).density_standard[0]):
-        raise DefinitionError(why_outside(liquid, density, sample, sample), field="liquid/density_kg_m3")
-
-
 @lru_cache(maxsize=256)
 def liquid_columns(liquids: tuple[Liquid, ...]) -> LiquidColumns:
     """Columns of some liquids; the same liquids are compiled once."""
@@ -126,3 +143,9 @@ def state_of(
         np.array([density]), conditions(sample, standard[1]), conditions(here, atmosphere),
         conditions(standard, standard[1]), np.zeros(1, dtype=np.intp),
     )  # fmt: skip
+
+
+def key_of(liquid: Liquid, density: float, sample: State, datum: float) -> float:
+    """What a sample says of a content by its liquid's method: its density at 60 °F, a factor beside 1, …"""
+    at = Conditions(np.array([sample[0]]), np.array([sample[1]]), np.array([datum]))
+    return float(liquid_columns((liquid,)).key(np.array([density]), at, np.zeros(1, dtype=np.intp))[0])

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
@@ -11,24 +10,20 @@ from typing import TYPE_CHECKING, Any, cast
 import numpy as np
 from numpy.typing import NDArray
 
+from app.services.analyses import UNCHANGED, analyses_of
 from app.services.attribute import parts_of
 from app.services.choose import NEVER, Chosen, choose
 from app.services.collect import INPUTS, Collected
-from app.services.compile import (
-    CompiledVessel,
-    analysed_mixture,
-    mean_atmosphere,
-    mixture_rows,
-    stack,
-)
-from app.services.compositions import boiling_pressure, virial_columns
+from app.services.compile import NOT_ANALYSED, Analysed, CompiledVessel, all_of, mean_atmosphere, stack
+from app.services.compositions import Boiling, boiling_pressure
 from app.services.gauged import HEAD, by_head, head_sensitivities, levels_per_unit
 from app.services.liquids import SATURATED
 from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Part, at_row
 from models import units
 from models.columns import Inventory, State
-from models.errors import DefinitionError
 from models.estimate import Estimate
+from models.liquid.definition import Liquid
+from models.liquid.hydrometer import hydrometer_factor
 from models.mass import inventory
 from models.space import NO_SERIES
 from models.vapour.series import VapourMixture
@@ -40,6 +35,7 @@ if TYPE_CHECKING:
 FloatColumns = NDArray[np.float64]
 BoolColumns = NDArray[np.bool_]
 
+HYDROMETERS = (288.15, 293.15, 288.706)  # K; a scale is right at the site's base of 15 °C, 20 °C or 60 °F, or at 15 °C
 CLOSED = 1e-12  # share of a missing vapour; below it nothing is said
 
 
@@ -54,7 +50,7 @@ class Measured:
     parts: list[Part]
     assumed: dict[str, BoolColumns] = field(default_factory=dict)
     atmosphere_assumed: BoolColumns | None = None
-    mixtures: tuple[VapourMixture, ...] = ()
+    held: Analysed = NOT_ANALYSED
     asked: NDArray[np.int64] | None = None
     carried: dict[int, Carried] = field(default_factory=dict)
     tickets: list[tuple[str, str]] = field(default_factory=list)
@@ -75,7 +71,21 @@ class Measured:
         if self.state.vapour_row is None or self.state.vapour_row[row] == NO_SERIES:
             assert own is not None
             return own
-        return self.mixtures[int(self.state.vapour_row[row])]
+        return self.held.mixtures[int(self.state.vapour_row[row])]
+
+    def liquid(self, row: int) -> Liquid:
+        """The liquid of a row: by its analysis, or the substance's own."""
+        own = self.vessel(row).liquid
+        if self.state.liquid_row is None:
+            assert own is not None
+            return own
+        return self.held.liquids[int(self.state.liquid_row[row])]
+
+    def boiling(self, row: int) -> Boiling | None:
+        """What boils in a row: by its analysis, or by the substance's own composition."""
+        if self.state.saturation_row is None or self.vessel(row).boiling is None:
+            return self.vessel(row).boiling
+        return self.held.boiling[int(self.state.saturation_row[row])]
 
     def vessel(self, row: int) -> CompiledVessel:
         """The vessel of a row."""
@@ -112,11 +122,10 @@ def measure(
     gravity = head_sensitivities(collected.vessels, state, result, heads)
     per_unit = levels_per_unit(collected.vessels, vessels, state, result) if builder.other_means else None
     parts = parts_of(builder, state, per_unit, gravity)
-    mixtures = tuple(mixture_rows(collected.vessels, extra))
     return Measured(
-        collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed, mixtures, asked,
-        refused=builder.refused,
-    )
+        collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed,
+        all_of(collected.vessels, extra), asked, refused=builder.refused,
+    )  # fmt: skip
 
 
 class States:
@@ -158,12 +167,14 @@ class States:
             column = np.where(use, instead, column)
         return column
 
-    def build(self) -> tuple[State, tuple[VapourMixture, ...]]:
-        """The state of every row, and the mixtures that analyses brought."""
+    def build(self) -> tuple[State, Analysed]:
+        """The state of every row, and what analyses brought."""
         liquid = units.kelvin(self.value("liquid_temperature", "liquid_temperature_c"))
         atmosphere = self._atmosphere()
-        density = self._density()
-        vapour_row, extra = self._compositions()
+        analysed = analyses_of(self)
+        self.refused.update(analysed.refused)
+        self.mixed = np.where(analysed.mixed == UNCHANGED, self.mixed, analysed.mixed == 1)
+        density = self._density(analysed.own_densities)
         water = self.value("free_water", "free_water_level_m")
         state = State(
             level=self.value("level", "level_m"),
@@ -180,13 +191,17 @@ class States:
             density_is_dry=self._is_dry(),
             pressure_uncertainty=np.hypot(self._spread("pressure_kpa", PASCAL), self.weather()),
             temperature_uncertainty=self._spread("liquid_temperature_c", KELVIN),
-            vapour_row=vapour_row,
+            vapour_row=analysed.vapour_row,
+            liquid_row=analysed.liquid_row,
+            saturation_row=analysed.saturation_row,
             roof_load=np.nan_to_num(self.chosen["roof_load"].value),
         )
         for row in self.refused:  # nothing is computed by a composition that is not the content's
-            if not self.vessels[row if len(self.vessels) > 1 else 0].has_liquid:
+            if row in analysed.refused_liquids:
+                state.level[row] = np.nan
+            elif not self.vessels[row if len(self.vessels) > 1 else 0].has_liquid:
                 state.pressure[row] = np.nan
-        return state, extra
+        return state, analysed.extra
 
     def _outlived(self) -> BoolColumns:
         """Where free water was read, but too long ago: it is neither what was read nor none."""
@@ -236,9 +251,11 @@ class States:
         gas = units.kelvin(self.chosen["vapour_temperature"].value)
         return np.where(np.isfinite(read), read, np.where(np.isfinite(liquid), liquid, gas))
 
-    def _density(self) -> tuple[FloatColumns, FloatColumns, FloatColumns]:
-        """The sample's density and state, or the substance's own figure."""
+    def _density(self, analysed: Mapping[int, float]) -> tuple[FloatColumns, FloatColumns, FloatColumns]:
+        """The sample's density and state, or the substance's own figure, or that of the analysed composition."""
         own = [self.of_vessels([vessel.density[i] for vessel in self.vessels]) for i in range(3)]
+        for row, density in analysed.items():
+            own[0][row] = density
         read = self.value("density", "observed_density_kg_m3")
         sampled = np.isfinite(read)
         self.density_is_sample = sampled & self.chosen["density"].usable
@@ -247,6 +264,7 @@ class States:
         temperature = np.where(np.isfinite(temperature), temperature, standard)
         pressure = units.pascal(self.companion("density", "observed_density_pressure_kpa_abs"))
         if sampled.any():
+            read = read * self._glass(temperature, standard)
             base = self.of_vessels([vessel.site.base_pressure_kpa_abs * PASCAL for vessel in self.vessels])
             pressure = np.where(np.isfinite(pressure), pressure, np.maximum(base, self._boiling(temperature, sampled)))
         density = [
@@ -260,6 +278,15 @@ class States:
                 density[0][row] = blend.density
                 density[1][row], density[2][row] = held["standard_temperature"], held["standard_pressure"]
         return density[0], density[1], density[2]
+
+    def _glass(self, temperature: FloatColumns, standard: FloatColumns) -> FloatColumns:
+        """What the glass of a hydrometer did to each reading: 1 for every other instrument."""
+        if not self.collected.companions[("density", "observed_density_by")][1].any():
+            return np.ones(1)
+        by = [self.companion_text("density", "observed_density_by", row) for row in range(self.collected.rows)]
+        of_glass = np.array([one == "hydrometer" for one in by])
+        scale = np.where(np.isin(np.round(standard, 3), HYDROMETERS), standard, HYDROMETERS[0])
+        return np.where(of_glass, hydrometer_factor(temperature, scale), 1.0)
 
     def _sediment_water(self) -> FloatColumns:
         """The sample's share of sediment and water, or a blend's."""
@@ -317,45 +344,6 @@ class States:
             own = vessel.instrument(quantity, source)
             spreads.append(np.hypot(own.random, own.systematic) * scale)
         return self.of_vessels(spreads)
-
-    def _compositions(self) -> tuple[NDArray[np.intp] | None, tuple[VapourMixture, ...]]:
-        """Row of the virial series for each reading, where an analysis stands for the substance's own."""
-        chosen = self.chosen["vapour_composition"]
-        texts = self.collected.texts["vapour_composition"]
-        if not chosen.usable.any():
-            return None, ()
-        own = [vessel.mixture for vessel in self.vessels]
-        found: list[VapourMixture | None] = []
-        seen: dict[tuple[int, str], VapourMixture | None] = {}
-        refusals: dict[tuple[int, str], str] = {}
-        for row in range(self.collected.rows):
-            which = row if len(self.vessels) > 1 else 0
-            text = texts[row, int(chosen.source[row])] if chosen.source[row] >= 0 else None
-            mixture = own[which]
-            if text is not None and mixture is not None and not self.vessels[which].is_blanketed:
-                key = (which, str(text))
-                if key not in seen:
-                    seen[key], refusals[key] = _analysed(self.vessels[which], json.loads(text))
-                if refusals[key]:
-                    self.refused[row] = refusals[key]
-                mixture = seen[key] or mixture
-                self.mixed[row] = mixture is not None and len(mixture.fractions) > 1
-            found.append(mixture)
-        extra = tuple(dict.fromkeys(mixture for mixture in seen.values() if mixture is not None))
-        place = mixture_rows(tuple(self.vessels), extra)
-        series = np.array([place[m] if m is not None else 0 for m in found], dtype=np.intp)
-        series[list(self.refused)] = NO_SERIES
-        return series, extra
-
-
-def _analysed(vessel: CompiledVessel, analysis: Mapping[str, float]) -> tuple[VapourMixture | None, str]:
-    """The vessel's vapour with a composition, or why the substance's model cannot take it."""
-    try:
-        mixture = analysed_mixture(vessel, analysis)
-        virial_columns((mixture,))
-    except DefinitionError as refused:
-        return None, str(refused)
-    return mixture, ""
 
 
 def standard_density(measured: Measured, row: int) -> Estimate:

@@ -14,6 +14,7 @@ from app.services.compile import CompiledVessel, Instrument
 from models import instruments, units
 from models.columns import Inventory
 from models.estimate import Estimate
+from models.liquid.definition import ExpansivityLiquid
 
 FloatColumns = NDArray[np.float64]
 Kind = Literal["random", "systematic", "model"]
@@ -216,10 +217,12 @@ def _capacity(vessel: CompiledVessel) -> tuple[float, float, float, bool]:
     )
 
 
-def model_parts(errors: Errors, expansion: float = instruments.EXPANSION_SHARE) -> None:
+def model_parts(errors: Errors) -> None:
     """Errors of the methods themselves, shared by every mass that uses them: they cancel where they must."""
+    # A method's error is one standard uncertainty of its own; that of a given β is all of β, of which a share counts.
+    shares = [instruments.EXPANSION_SHARE if isinstance(v.liquid, ExpansivityLiquid) else 1.0 for v in errors.vessels]
     errors.add(
-        "expansivity", "expansion", expansion, "model",
+        "expansivity", "expansion", np.array(shares), "model",
         lambda row: f"expansion:{errors.vessel(row).body.substance}", declared=lambda row: False,
     )  # fmt: skip
     errors.add(

@@ -9,12 +9,13 @@ import numpy as np
 from app.schemas.types import format_instant
 from app.services.choose import NEVER
 from app.services.collect import INPUTS
-from app.services.compile import stack
-from app.services.compositions import virial_columns
+from app.services.compositions import saturation_columns, virial_columns
+from app.services.liquids import why_outside
 from app.services.measure import Measured
 from app.services.parts import at_row, celsius_of
 from models import instruments
 from models.columns import UNMEASURED, Mark
+from models.liquid.definition import MixtureLiquid
 from models.space import SaturationInterval, saturation_interval
 
 NEEDED = {
@@ -65,6 +66,11 @@ WARNINGS: dict[Mark, tuple[str, str]] = {
         "outside_method",
         "a temperature lies outside the range of the virial coefficients",
     ),
+    Mark.LIQUID_OUTSIDE_METHOD: ("outside_method", "the liquid lies outside its method"),
+    Mark.STANDARD_OUTSIDE_METHOD: (
+        "outside_method",
+        "the standard state lies outside the liquid's method: the mass needs none, standard volumes are unknown",
+    ),
     Mark.NO_VAPOUR_ROOT: (
         "guard_refused",
         "the virial equation has no vapour at this pressure and temperature: it would condense",
@@ -90,6 +96,8 @@ def counts(measured: Measured, row: int, name: str) -> bool:
         return vessel.has_liquid
     if name == "vapour_temperature":  # beside a liquid it counts with a pressure only
         return vessel.has_vapour and (not vessel.has_liquid or math.isfinite(at_row(measured.state.pressure, row)))
+    if name == "liquid_composition":
+        return vessel.boiling is not None or isinstance(vessel.liquid, MixtureLiquid)
     if name == "vapour_composition":
         return vessel.has_vapour and not vessel.is_blanketed
     if name in ("ambient", "site_ambient"):
@@ -166,16 +174,14 @@ def _saturation(measured: Measured, row: int, look: str) -> str:
 
 def interval_of(measured: Measured, row: int) -> SaturationInterval:
     """The pressures that agree with the temperatures of a row, as the chain took them."""
-    stacked, state = stack((measured.vessel(row),)), measured.state
-    assert stacked.saturation is not None
+    state, boiling = measured.state, measured.boiling(row)
+    assert boiling is not None
     vapour = at_row(state.vapour_temperature, row)
     if measured.vessel(row).is_blanketed:  # beside a blanket the gas's temperature alone counts
         vapour = vapour if math.isfinite(vapour) else at_row(state.liquid_temperature, row)
     liquid = vapour if measured.vessel(row).is_blanketed else at_row(state.liquid_temperature, row)
     columns = liquid, vapour, at_row(state.pressure_uncertainty, row), at_row(state.temperature_uncertainty, row)
-    return saturation_interval(
-        stacked.saturation, int(stacked.saturation_row[0]), *(np.asarray(value) for value in columns)
-    )
+    return saturation_interval(saturation_columns((boiling,)), 0, *(np.asarray(value) for value in columns))
 
 
 def _slip(measured: Measured, row: int, own: SaturationInterval) -> str:
@@ -294,6 +300,8 @@ def _limit(measured: Measured, row: int, mark: Mark, detail: str) -> str:
         if curve.bottom <= level <= curve.top:
             return f"free water lies above the liquid: free_water_level_m is {water:.4g} m, level_m is {level:.4g} m"
         return f"{detail}: level_m is {level:.4g} m; levels run from {curve.bottom:.4g} to {curve.top:.4g} m"
+    if mark & (Mark.LIQUID_OUTSIDE_METHOD | Mark.STANDARD_OUTSIDE_METHOD):
+        return _liquid_limit(measured, row, mark, detail)
     result = measured.result
     pressure, temperature = float(result["vapour_pressure"][row]), float(result["vapour_temperature"][row])
     at = f"{pressure / 1000.0:.6g} kPa absolute at {temperature - 273.15:.4g} °C"
@@ -306,3 +314,17 @@ def _limit(measured: Measured, row: int, mark: Mark, detail: str) -> str:
         low, high = series.lowest.min() - 273.15, series.highest.max() - 273.15
         return f"{detail}: {at}; they hold from {low:.4g} to {high:.4g} °C"
     return f"{detail}: {at}"
+
+
+def _liquid_limit(measured: Measured, row: int, mark: Mark, detail: str) -> str:
+    """Which limit of its method the liquid passed, in the vessel or at the standard state."""
+    state, held = measured.state, measured.vessel(row).parameters
+    pressure = at_row(state.pressure, row)
+    if not math.isfinite(pressure):
+        pressure = float(measured.result["vapour_pressure"][row])
+    here = at_row(state.liquid_temperature, row), pressure
+    if not mark & Mark.LIQUID_OUTSIDE_METHOD:
+        here = held["standard_temperature"], held["standard_pressure"]
+    sample = at_row(state.density_temperature, row), at_row(state.density_pressure, row)
+    why = why_outside(measured.liquid(row), at_row(state.density, row), sample, here)
+    return f"{detail}: {why}" if why else detail

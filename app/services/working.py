@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
 from app.services.compositions import virial_columns
+from app.services.liquid_working import Sampled, density_steps
 from app.services.measure import Measured
 from app.services.parts import at_row, celsius_of
 from models.columns import Mark, Method
@@ -22,7 +23,6 @@ STRAIN = (
     "V(h; ε) = (1+ε)³ V(h/(1+ε)): homogeneous strain at a fixed level; "
     "2ε for upright cylinders, the C_TSh of API MPMS 12.1.1"
 )
-EXPONENTIAL = "definitions of β and κ, integrated: CRC Handbook of Chemistry and Physics, 87th ed."
 
 
 def working_steps(measured: Measured, row: int) -> list[Step]:
@@ -143,18 +143,7 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     yield _step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa",
                 "absolute; the site's base pressure or, where higher, the vapour pressure at T_std",
                 "definition")  # fmt: skip
-    yield _step(
-        "expansivity",
-        "β(t₀)",
-        vessel.liquid.coefficients[0],
-        "1/K",
-        "first coefficient of powers of T − t₀",
-        "definition",
-    )
-    kappa = float(vessel.liquid.compressibility * 1000.0)
-    yield _step("compressibility", "κ", kappa, "1/kPa", "constant", "definition")
-    yield _step("density in the vessel", "ρ", result["liquid_density"][row], "kg/m³",
-                "ρ_s exp(−∫β dT from T_s to T + κ (P − P_s))", EXPONENTIAL)  # fmt: skip
+    yield from density_steps(content(measured, row))
     yield _step(
         "sediment and water",
         "f",
@@ -166,12 +155,21 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     yield _step("water density", "ρ_w", vessel.parameters["water_density"], "kg/m³",
                 "of the water in a wet sample, 15 °C", "M. Tanaka et al., Metrologia 38 (2001) 301-309")  # fmt: skip
     yield _step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
-                "(ρ_s − f ρ_w)/(1 − f) of a wet sample, ρ_s of a dry one, taken to the standard state",
-                EXPONENTIAL)  # fmt: skip
-    yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³",
-                "GOV exp(−∫β dT from T_std to T + κ (P − P_std))", EXPONENTIAL)  # fmt: skip
+                "ρ_s,std (1 − f ρ_w/ρ_s)/(1 − f) of a wet sample, ρ_s,std of a dry one", ORDER)  # fmt: skip
+    yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³", "GOV C_T C_P", ORDER)
     yield _step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)
     yield _step("liquid mass", "M_liquid", result["liquid_mass"][row], "kg", "NSV ρ_std", ORDER)
+
+
+def content(measured: Measured, row: int) -> Sampled:
+    """The liquid of a row: its sample, where it is, and its standard state."""
+    state, held = measured.state, measured.vessel(row).parameters
+    return Sampled(
+        measured.liquid(row), at_row(state.density, row),
+        (at_row(state.density_temperature, row), at_row(state.density_pressure, row)),
+        (at_row(state.liquid_temperature, row), _pressure(measured, row)),
+        (held["standard_temperature"], held["standard_pressure"]), at_row(state.atmosphere, row),
+    )  # fmt: skip
 
 
 def _pressure(measured: Measured, row: int) -> float:

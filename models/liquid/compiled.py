@@ -4,82 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Protocol
 
 import numpy as np
 
 from models.arrays import FloatArray, IntArray
-from models.liquid import definition
 from models.liquid.definition import Liquid
-from models.liquid.expansivity import expansivity, log_volume_ratio
+from models.liquid.methods import METHODS, LiquidMethod
 from models.liquid.state import Conditions, LiquidState, Row
-
-
-class LiquidMethod(Protocol):
-    """One kind of liquid, as columns of its own parameters."""
-
-    def state(
-        self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
-    ) -> LiquidState:
-        """Densities that follow from a sample. [SI]"""
-
-    def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
-        """Density by the method alone; NaN where it needs a sample. [kg/m³]"""
-
-    def why_outside(self, density: float, sample: tuple[float, float], here: tuple[float, float], row: int) -> str:
-        """Which limit was passed, in one sentence."""
-
-
-@dataclass(frozen=True)
-class _Expansivity:
-    """β and κ; the sample's density is carried by their integral."""
-
-    coefficients: tuple[FloatArray, ...]
-    origin: FloatArray
-    compressibility: FloatArray
-
-    @classmethod
-    def of(cls, liquids: Sequence[definition.ExpansivityLiquid]) -> _Expansivity:
-        width = max(len(one.coefficients) for one in liquids)
-        return cls(
-            tuple(np.array([(*one.coefficients, *[0.0] * width)[j] for one in liquids]) for j in range(width)),
-            np.array([one.origin for one in liquids]),
-            np.array([one.compressibility for one in liquids]),
-        )
-
-    def state(
-        self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
-    ) -> LiquidState:
-        rows = np.atleast_1d(np.asarray(row))
-        series, origin, kappa = [b[rows] for b in self.coefficients], self.origin[rows], self.compressibility[rows]
-        from_sample = log_volume_ratio(
-            here.temperature, here.pressure, temperature_ref=sample.temperature, pressure_ref=sample.pressure,
-            coefficients=series, origin=origin, compressibility=kappa,
-        )  # fmt: skip
-        to_standard = log_volume_ratio(
-            sample.temperature, sample.pressure, temperature_ref=standard.temperature,
-            pressure_ref=standard.pressure, coefficients=series, origin=origin, compressibility=kappa,
-        )  # fmt: skip
-        sample_beta = expansivity(sample.temperature, coefficients=series, origin=origin)
-        thermal = from_sample + kappa * (here.pressure - sample.pressure)
-        one = np.ones(1)
-        return LiquidState(
-            np.asarray(density * np.exp(-from_sample)), np.asarray(density * np.exp(to_standard)),
-            expansivity(here.temperature, coefficients=series, origin=origin), kappa,
-            one, sample_beta, one, sample_beta, np.asarray(-thermal),
-        )  # fmt: skip
-
-    def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
-        return np.full(np.broadcast(temperature, pressure).shape, np.nan)
-
-    def why_outside(self, density: float, sample: tuple[float, float], here: tuple[float, float], row: int) -> str:
-        return "the density at this state is beyond every number"
-
-
-METHODS = {
-    definition.ExpansivityLiquid: _Expansivity.of,
-}
-"""How a kind of liquid is compiled."""
 
 
 @dataclass(frozen=True)
@@ -142,6 +73,25 @@ class LiquidColumns:
             Columns of n rows. [SI]
         """
         return self._method(row).state(density, sample, here, standard, self._own(row))
+
+    def key(self, density: FloatArray, sample: Conditions, row: IntArray) -> FloatArray:
+        """What samples say of contents of one kind; see :class:`models.liquid.point.LiquidPoint`.
+
+        Parameters
+        ----------
+        density : FloatArray, shape (n,) or (1,)
+            Density of the sample. [kg/m³]
+        sample : Conditions
+            Where it was sampled. [K, Pa]
+        row : IntArray, shape (n,) or (1,)
+            Row of each content's liquid; all of one kind. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            The key of each content; NaN outside the method. [as the method has it]
+        """
+        return self._method(row).key(density, sample, self._own(row))
 
     def own_density(self, temperature: FloatArray, pressure: FloatArray, row: IntArray) -> FloatArray:
         """Density of liquids of one kind by their method alone.

@@ -67,6 +67,11 @@ class WaterLiquid:
 
 
 @dataclass(frozen=True)
+class EthanolWaterLiquid:
+    """Ethanol and water, whose strength a density tells."""
+
+
+@dataclass(frozen=True)
 class TableLiquid:
     """A liquid by a table of densities.
 
@@ -85,4 +90,12 @@ class TableLiquid:
     pressure: float = STANDARD_ATMOSPHERE
 
 
-Liquid = ExpansivityLiquid | PetroleumLiquid | LightHydrocarbonLiquid | MixtureLiquid | WaterLiquid | TableLiquid
+Liquid = (
+    ExpansivityLiquid
+    | PetroleumLiquid
+    | LightHydrocarbonLiquid
+    | MixtureLiquid
+    | WaterLiquid
+    | EthanolWaterLiquid
+    | TableLiquid
+)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from scipy.optimize import brentq
 
 from models.arrays import ArrayLike, BoolArray, FloatArray, as_floats
 from models.constants import STANDARD_ATMOSPHERE, ZERO_CELSIUS
@@ -143,6 +144,39 @@ def mass_fraction(density: ArrayLike, temperature: ArrayLike) -> FloatArray:
         if not np.any(possible & (moved > _TOLERANCE)):
             break
     return np.where(possible, fraction, np.nan)
+
+
+def density_of_strength(volume_fraction: float) -> float:
+    """Density at 20 °C of a mixture whose strength by volume is given.
+
+    Parameters
+    ----------
+    volume_fraction : float
+        Volume of ethanol at 20 °C in the volume of the mixture at 20 °C. [1]
+
+    Returns
+    -------
+    float
+        Density at 20 °C and one atmosphere. [kg/m³]
+
+    Notes
+    -----
+    With ρ(p) of eq. 1 of :func:`point` at 20 °C, where p ρ(p) rises with p::
+
+        q ρ(1) = p ρ(p)        (1)
+
+    References
+    ----------
+    .. [1] OIML R 22, "International alcoholometric tables", 1973, p. 5.
+    """
+    kelvin = _REFERENCE + ZERO_CELSIUS
+
+    def density(fraction: float) -> float:
+        return float(point(fraction, kelvin, STANDARD_ATMOSPHERE).density)
+
+    goal = volume_fraction * density(1.0)
+    found = brentq(lambda p: p * density(p) - goal, 0.0, 1.0, xtol=1e-15)  # eq. 1
+    return density(float(found))
 
 
 def why_outside(mass_fraction_key: float, temperature: float, pressure: float) -> str:

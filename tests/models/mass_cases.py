@@ -12,6 +12,7 @@ import numpy as np
 from models.columns import Method, State, Vessels
 from models.geometry import shapes, tables
 from models.geometry.curves import Curve, Curves
+from models.geometry.head_stress import CoursedShell, HeadStress, coursed_shell
 from models.geometry.heads import Head
 from models.geometry.lying import horizontal_cylinder
 from models.geometry.shell import pressure_strain
@@ -37,6 +38,7 @@ class Case:
     mixture: str | None = None
     boiling: str | None = None
     capacity: float | None = None
+    courses: CoursedShell | None = None
     liquid: Liquid = ExpansivityLiquid((0.0,), 288.15, 0.0)
 
     def reads(self, **changed: float) -> Case:
@@ -48,7 +50,7 @@ VESSEL: dict[str, Any] = {
     "is_table": 0.0, "expansion": STEEL, "expansion_temperature": 288.15, "liquid_weight": 7.0 / 8.0,
     "strain_sum": 0.0, "strain_vertical": 0.0, "strain_pressure": 0.0, "roof_mass": 0.0, "roof_lands": 0.0,
     "roof_floats": 0.0, "roof_volume_per_mass": 0.0, "standard_temperature": 288.15, "standard_pressure": ATMOSPHERE,
-    "water_density": 999.1, "gas_standard_density": 1.0,
+    "water_density": 999.1, "head_included": 0.0, "gas_standard_density": 1.0,
 }  # fmt: skip
 READING: dict[str, float] = {
     "level": math.nan, "water_level": NO_WATER, "liquid_temperature": math.nan, "ambient_temperature": 278.15,
@@ -79,6 +81,7 @@ def vessels(cases: Sequence[Case]) -> Vessels:
         bottom=limit("bottom"), top=limit("top"),
         capacity=np.array([case.curve.capacity if case.curve else case.capacity for case in cases], dtype=float),
         liquids=LiquidColumns.from_liquids([case.liquid for case in cases]), liquid_row=np.arange(len(cases)),
+        head_stress=HeadStress.from_shells([case.courses for case in cases]), head_row=np.arange(len(cases)),
         vapour=VapourColumns.from_mixtures(mixtures) if mixtures else None,
         vapour_row=rows([case.mixture is not None for case in cases]),
         saturation=SaturationColumns.from_compositions(boiling) if boiling else None,
@@ -149,8 +152,15 @@ DEDUCTED = replace(
     vessel=ROOF | {"roof_volume_per_mass": 1.0 / 850.0, "is_table": 1.0},
 )  # fmt: skip
 
+COURSES = coursed_shell(
+    diameter=30.0, elastic_modulus=207e9, courses=[(3.0, 0.02), (3.0, 0.014), (9.0, 0.008)], foot=0.3, top=15.3
+)
+HEADED = replace(OIL, name="upright, widened by its head", method=Method.LIQUID | Method.HEAD, courses=COURSES)
+
 CASES = [
     OIL,
+    HEADED,
+    replace(HEADED, name="upright, widened beyond its table", vessel={"head_included": 700.0}),
     replace(OIL, name="upright, dry sample").reads(density_is_dry=1.0),
     replace(OIL, name="upright, vented to a low pressure", vessel=strained("vertical_cylinder", 30.0, 0.01))
     .reads(pressure=ATMOSPHERE + 4e3),

@@ -154,9 +154,9 @@ def test_every_mistake_is_named_at_once(bare):
     ]  # fmt: skip
 
 
-def test_what_is_not_computed_yet_is_refused_and_not_left_aside(bare):
+def test_courses_that_do_not_reach_the_top_are_refused(bare):
     courses = BODY | {"shell": {"courses": [[2.0, 0.01]]}}
-    assert ("/shell/courses", "not_computed") in refused(bare, courses)
+    assert ("/shell/courses", "impossible_definition") in refused(bare, courses)
 
 
 @pytest.mark.parametrize("text", ['{"name": NaN}', "{", "[]", '"x"', '{"name": "a", "name": "b"}', "\ufeff{}", "\x00"])

@@ -59,7 +59,7 @@ def test_model_that_is_not_computed_is_one_refusal_that_names_those_that_are(mod
         (
             "/liquid", "not_computed",
             "This version computes liquid.model expansivity, petroleum, light_hydrocarbon, water, density_table, "
-            "and no other.",
+            "ethanol_water, and no other.",
         )
     ]  # fmt: skip
 

@@ -9,9 +9,10 @@ import pytest
 
 from app.schemas.site import Conditions
 from app.services.compile import (
+    Analysed,
+    all_of,
     analysed_mixture,
     mean_atmosphere,
-    mixture_rows,
     stack,
 )
 from app.services.compositions import boiling_pressure, virial_columns
@@ -150,7 +151,7 @@ def test_an_analysis_replaces_the_composition_and_is_normalised() -> None:
     assert mixture.fractions == pytest.approx((0.99, 0.01), rel=1e-8)
     # by the atomic weights of IUPAC: 0.99 · 2.01588 + 0.01 · 28.0134
     assert float(virial_columns((mixture,)).molar_mass[0]) * 1e3 == pytest.approx(2.27586, rel=2e-5)
-    assert mixture_rows((vessel,), (mixture,))[mixture] == 1
+    assert all_of((vessel,), Analysed(mixtures=(mixture,))).mixtures.index(mixture) == 1
 
 
 def test_a_density_follows_from_the_substances_own_figure() -> None:

@@ -56,7 +56,7 @@ def test_another_definition_must_say_from_when_it_holds(plant: Plant) -> None:
 
 def test_what_does_not_fit_is_refused_by_its_field(plant: Plant) -> None:
     assert refusal(plant, BOX | {"substance": "tea"}) == ("unknown_substance", "/substance")
-    assert refusal(plant, BOX | {"shell": {"courses": [[2.0, 0.02]]}})[0] == "not_computed"
+    assert refusal(plant, BOX | {"shell": {"courses": [[2.0, 0.02]]}}) == ("impossible_definition", "/shell/courses")
     plant.put("substance", "n2", GAS)
     code, pointer = refusal(plant, BOX | {"substance": "n2", "vapour_space": {"kind": "open"}})
     assert pointer == "/substance", code
@@ -64,10 +64,6 @@ def test_what_does_not_fit_is_refused_by_its_field(plant: Plant) -> None:
     code, pointer = refusal(plant, GAS | {"vapour": unknown}, "substance")
     assert pointer.startswith("/"), pointer
 
-
-def test_a_vessel_that_is_only_calculated_with_is_refused_alike() -> None:
-    with pytest.raises(Unprocessable, match="courses"):
-        define.check_computed(Vessel.model_validate(BOX | {"shell": {"courses": [[2.0, 0.02]]}}))
 
 
 def test_a_vessel_may_come_before_the_substance_that_it_takes_later(plant: Plant) -> None:

@@ -1,0 +1,256 @@
+"""Each published method as columns of its own parameters, under one interface."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Protocol
+
+import numpy as np
+
+from models.arrays import FloatArray, IntArray
+from models.constants import STANDARD_ATMOSPHERE
+from models.liquid import ethanol_water, petroleum, petroleum_limits, water
+from models.liquid.definition import (
+    EthanolWaterLiquid,
+    ExpansivityLiquid,
+    PetroleumLiquid,
+    TableLiquid,
+    WaterLiquid,
+)
+from models.liquid.density_table import DensityTableColumns
+from models.liquid.expansivity import expansivity, log_volume_ratio
+from models.liquid.point import LiquidPoint
+from models.liquid.state import Conditions, LiquidState, Row, state_of
+
+# Share of ln ρ/ρ_s that a method may be off by, one standard uncertainty.
+WATER_SHARE = 2e-3  # β of IAPWS-95 within 0.2 % from 10 to 150 °C, measured with CoolProp 8.0.0
+MIXTURE_SHARE = 0.01  # COSTALD's slope along saturation against reference equations, measured with CoolProp 8.0.0
+LIGHT_SHARE = 0.005  # GPA TP-27 against the reference equation of propane, 40 to 130 °F, CoolProp 8.0.0
+TABLE_SHARE = 0.01  # a table of rounded densities, common practice
+ETHANOL_SHARE = 2e-3  # OIML R 22 and today's scale of temperature
+
+At = tuple[float, float]  # temperature and absolute pressure [K, Pa]
+
+
+class LiquidMethod(Protocol):
+    """One kind of liquid, as columns of its own parameters."""
+
+    def state(
+        self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
+    ) -> LiquidState:
+        """Densities that follow from a sample. [SI]"""
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """What the sample says of the content. [as the method has it]"""
+
+    def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
+        """Density by the method alone; NaN where it needs a sample. [kg/m³]"""
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed, in one sentence."""
+
+
+@dataclass(frozen=True)
+class ByExpansivity:
+    """β and κ; the sample's density is carried by their integral."""
+
+    coefficients: tuple[FloatArray, ...]
+    origin: FloatArray
+    compressibility: FloatArray
+
+    @classmethod
+    def of(cls, liquids: Sequence[ExpansivityLiquid]) -> ByExpansivity:
+        """Compile liquids; shorter polynomials are padded with zeros. [1]"""
+        width = max(len(one.coefficients) for one in liquids)
+        return cls(
+            tuple(np.array([(*one.coefficients, *[0.0] * width)[j] for one in liquids]) for j in range(width)),
+            np.array([one.origin for one in liquids]),
+            np.array([one.compressibility for one in liquids]),
+        )
+
+    def state(
+        self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
+    ) -> LiquidState:
+        """Densities that follow from a sample; the method's error is one of β, so its unit is all of ∫β dT. [SI]"""
+        rows = np.atleast_1d(np.asarray(row))
+        series, origin, kappa = [b[rows] for b in self.coefficients], self.origin[rows], self.compressibility[rows]
+        from_sample = log_volume_ratio(
+            here.temperature, here.pressure, temperature_ref=sample.temperature, pressure_ref=sample.pressure,
+            coefficients=series, origin=origin, compressibility=kappa,
+        )  # fmt: skip
+        to_standard = log_volume_ratio(
+            sample.temperature, sample.pressure, temperature_ref=standard.temperature,
+            pressure_ref=standard.pressure, coefficients=series, origin=origin, compressibility=kappa,
+        )  # fmt: skip
+        sample_beta = expansivity(sample.temperature, coefficients=series, origin=origin)
+        thermal = from_sample + kappa * (here.pressure - sample.pressure)
+        one = np.ones(1)
+        return LiquidState(
+            np.asarray(density * np.exp(-from_sample)), np.asarray(density * np.exp(to_standard)),
+            expansivity(here.temperature, coefficients=series, origin=origin), kappa,
+            one, sample_beta, one, sample_beta, np.asarray(-thermal),
+        )  # fmt: skip
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """The sample's own density: β and κ carry it as it is. [kg/m³]"""
+        return density
+
+    def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
+        """None: β and κ say nothing of the density itself. [kg/m³]"""
+        return np.full(np.broadcast(temperature, pressure).shape, np.nan)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """What made a number that is none."""
+        return "β and κ take the density at this state beyond every number: correct expansivity_per_k"
+
+
+class _Keyed:
+    """What the methods that have a key do alike."""
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        raise NotImplementedError
+
+    def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
+        raise NotImplementedError
+
+    def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
+        raise NotImplementedError
+
+    def state(
+        self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
+    ) -> LiquidState:
+        """Densities that follow from a sample. [SI]"""
+        return state_of(self, density, sample, here, standard, row)
+
+    def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
+        """None: this method needs a sample. [kg/m³]"""
+        return np.full(np.broadcast(temperature, pressure).shape, np.nan)
+
+
+class _OwnDensity(_Keyed):
+    """A liquid whose density is a function of its state; a sample's departure from it is kept as a factor."""
+
+    share: float
+
+    def own_point(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> LiquidPoint:
+        raise NotImplementedError
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """Density of the sample over that of the method. [1]"""
+        return np.asarray(density / self.own_point(sample.temperature, sample.pressure, row).density)
+
+    def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
+        """The method's density times the key. [SI]"""
+        found = self.own_point(conditions.temperature, conditions.pressure, row)
+        return LiquidPoint(np.asarray(key * found.density), found.expansivity, found.compressibility, found.by_key)
+
+    def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
+        """A share of the way from the sample to the vessel. [1]"""
+        return np.asarray(self.share * ratio)
+
+    def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
+        """Density by the method alone. [kg/m³]"""
+        return self.own_point(temperature, pressure, row).density
+
+
+class ByWater(_OwnDensity):
+    """Water; every row is the same."""
+
+    share = WATER_SHARE
+
+    def own_point(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> LiquidPoint:
+        """Water of any row. [SI]"""
+        return water.point(temperature, pressure)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed."""
+        return water.why_outside(*here) or water.why_outside(*sample)
+
+
+@dataclass(frozen=True)
+class ByTable(_OwnDensity):
+    """Density tables."""
+
+    tables: DensityTableColumns
+    share = TABLE_SHARE
+
+    def own_point(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> LiquidPoint:
+        """The table's density. [SI]"""
+        return self.tables.point(temperature, pressure, row)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed."""
+        return self.tables.why_outside(*here, row) or self.tables.why_outside(*sample, row)
+
+
+@dataclass(frozen=True)
+class ByPetroleum(_Keyed):
+    """Petroleum by commodity; the key is the density at 60 °F."""
+
+    commodity: IntArray
+    alpha60: FloatArray
+
+    @classmethod
+    def of(cls, liquids: Sequence[PetroleumLiquid]) -> ByPetroleum:
+        """Compile liquids. [1]"""
+        return cls(
+            np.array([petroleum.COMMODITIES[one.commodity] for one in liquids], dtype=np.intp),
+            np.array([np.nan if one.alpha60 is None else one.alpha60 for one in liquids]),
+        )
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """Density at 60 °F. [kg/m³]"""
+        return petroleum.density_60f(
+            density, sample.temperature, sample.gauge, self.commodity[row], self.alpha60[row]
+        )
+
+    def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
+        """Density and slopes at a state. [SI]"""
+        return petroleum.point(key, conditions.temperature, conditions.gauge, self.commodity[row], self.alpha60[row])
+
+    def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
+        """One standard uncertainty of C_T, from the sample's temperature to the vessel's. [1]"""
+        return np.asarray(petroleum.model_error(sample.temperature) - petroleum.model_error(here.temperature))
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed; pressures are told as gauge above one atmosphere."""
+        commodity, alpha60 = int(self.commodity[row]), float(self.alpha60[row])
+        for temperature, pressure in (sample, here):
+            gauge = max(0.0, pressure - STANDARD_ATMOSPHERE)
+            if why := petroleum_limits.why_outside(density, temperature, gauge, commodity, alpha60):
+                return why
+        return ""
+
+
+class ByStrength(_Keyed):
+    """Ethanol and water; the key is the mass fraction of ethanol."""
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """Mass fraction of ethanol. [1]"""
+        return ethanol_water.mass_fraction(density, sample.temperature)
+
+    def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
+        """Density and slopes at a state. [SI]"""
+        return ethanol_water.point(key, conditions.temperature, conditions.pressure)
+
+    def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
+        """A share of the way from the sample to the vessel. [1]"""
+        return np.asarray(ETHANOL_SHARE * ratio)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed."""
+        strength = float(ethanol_water.mass_fraction(density, sample[0]))
+        return ethanol_water.why_outside(strength, *here) or ethanol_water.why_outside(strength, *sample)
+
+
+METHODS = {
+    ExpansivityLiquid: ByExpansivity.of,
+    PetroleumLiquid: ByPetroleum.of,
+    WaterLiquid: lambda liquids: ByWater(),
+    TableLiquid: lambda liquids: ByTable(
+        DensityTableColumns.from_tables([(one.rows, one.compressibility, one.pressure) for one in liquids])
+    ),
+    EthanolWaterLiquid: lambda liquids: ByStrength(),
+}
+"""How a kind of liquid is compiled."""
