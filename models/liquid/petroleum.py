@@ -33,8 +33,8 @@ __all__ = [
 ]
 
 _ITERATIONS = 15
-_LAST_STEP = 1e-9  # relative; Newton's steps square, so what remains is rounding
-_RESIDUAL = 1e-7  # relative, before the last step; the procedure itself stops at 1e-6 kg/m3
+_STEP_TOLERANCE = 1e-9  # relative; Newton's steps square, so what remains is rounding
+_RESIDUAL_TOLERANCE = 1e-7  # relative, before the last step; the procedure itself stops at 1e-6 kg/m3
 
 # API MPMS 11.1-1980, volume X (from memory): error of the generalised CTL at 95 %, by distance from 60 °F.
 _ERROR_AWAY = np.array([0.0, 40.0, 90.0, 140.0, 190.0])  # °F
@@ -231,9 +231,9 @@ def _newton(rho: FloatArray, group: CodeArray, k: method.Coefficients, at: metho
         residual = np.log(rho / result) - log_ctpl
         step = residual / slope
         result = np.clip(result + result * step, low, high)
-        if np.fmax.reduce(np.abs(step), axis=None, initial=0.0) < _LAST_STEP:
+        if np.fmax.reduce(np.abs(step), axis=None, initial=0.0) < _STEP_TOLERANCE:
             break
-    return np.where(np.abs(residual) < _RESIDUAL, result, np.nan)
+    return np.where(np.abs(residual) < _RESIDUAL_TOLERANCE, result, np.nan)
 
 
 def density_60f(

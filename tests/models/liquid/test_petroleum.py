@@ -3,8 +3,6 @@
 Vectors are recomputed from the published equations of API MPMS 11.1-2004, unless a check says otherwise.
 """
 
-from decimal import Decimal as D
-
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -23,7 +21,7 @@ from models.liquid.petroleum import (
     table_factor,
 )
 from models.units import density_of_api_gravity
-from tests.models.liquid.petroleum_decimal import figures, slope
+from tests.models.liquid.petroleum_decimal import D, figures, slope
 
 CRUDE, REFINED, LUBRICATING, SPECIAL = (COMMODITIES[n] for n in ("crude", "refined", "lubricating", "special"))
 PSI, ZERO = 6894.757, 273.15
