@@ -220,9 +220,15 @@ def _group_observed(rho: FloatArray, codes: CodeArray, at: method.State) -> Code
 def _newton(rho: FloatArray, group: CodeArray, k: method.Coefficients, at: method.State) -> FloatArray:
     """Density at 60 °F by the group's formula, NaN where there is none near the group.
 
+    Notes
+    -----
     ::
 
         ρ60 ← ρ60 {1 + [ln(ρ/ρ60) − ln CTPL(ρ60)] / (∂ln ρ/∂ln ρ60)}        (1)
+
+    References
+    ----------
+    .. [1] API MPMS 11.1-2004, 11.1.6.2, with the exact slope.
     """
     low, high = 0.99 * groups.LOWEST_DENSITY[group], 1.01 * groups.HIGHEST_DENSITY[group]  # rails for the steps
     first = np.clip(rho, low, high)

@@ -281,6 +281,11 @@ def test_outside_is_nan_in_columns_and_never_a_fault() -> None:
     assert density_60f(np.zeros(0), 300.0, 0.0, CRUDE).shape == (0,)
 
 
+def test_a_base_temperature_has_the_same_limits() -> None:
+    assert np.isnan(base_factors(850.0, 300.0, 0.0, [222.0, 424.0], CRUDE)[0]).all()
+    assert np.isnan(base_factors(850.0, 424.0, 0.0, 288.15, CRUDE)).all()
+
+
 def test_a_column_of_all_commodities_is_its_rows() -> None:
     rows = [(850.0, 310.0, 2e5, CRUDE, np.nan), (765.0, 316.0, 0.0, REFINED, np.nan),
             (880.0, 320.0, -4e4, LUBRICATING, np.nan), (700.0, 260.0, 1e6, SPECIAL, 6e-4),
