@@ -33,8 +33,8 @@ __all__ = [
 ]
 
 _ITERATIONS = 15
-_LAST_STEP = 1e-9  # relative; Newton's steps square, so what remains is rounding
-_RESIDUAL = 1e-7  # relative, before the last step; the procedure itself stops at 1e-6 kg/m3
+_STEP_TOLERANCE = 1e-9  # relative; Newton's steps square, so what remains is rounding
+_RESIDUAL_TOLERANCE = 1e-7  # relative, before the last step; the procedure itself stops at 1e-6 kg/m3
 
 # API MPMS 11.1-1980, volume X (from memory): error of the generalised CTL at 95 %, by distance from 60 °F.
 _ERROR_AWAY = np.array([0.0, 40.0, 90.0, 140.0, 190.0])  # °F
@@ -124,9 +124,7 @@ def factors(
 
     Notes
     -----
-    ::
-
-        ρ = ρ60 CTL CPL        (1)
+    The equations stand in :mod:`models.liquid.petroleum_method`; the density is ρ60 · CTL · CPL.
 
     References
     ----------
@@ -220,7 +218,18 @@ def _group_observed(rho: FloatArray, codes: CodeArray, at: method.State) -> Code
 
 
 def _newton(rho: FloatArray, group: CodeArray, k: method.Coefficients, at: method.State) -> FloatArray:
-    """Density at 60 °F by the group's formula, NaN where there is none near the group."""
+    """Density at 60 °F by the group's formula, NaN where there is none near the group.
+
+    Notes
+    -----
+    ::
+
+        ρ60 ← ρ60 {1 + [ln(ρ/ρ60) − ln CTPL(ρ60)] / (∂ln ρ/∂ln ρ60)}        (1)
+
+    References
+    ----------
+    .. [1] API MPMS 11.1-2004, 11.1.6.2, with the exact slope.
+    """
     low, high = 0.99 * groups.LOWEST_DENSITY[group], 1.01 * groups.HIGHEST_DENSITY[group]  # rails for the steps
     first = np.clip(rho, low, high)
     # Pressure left out, the start lies on the dense side, where the density rises with that at 60 °F.
@@ -230,10 +239,10 @@ def _newton(rho: FloatArray, group: CodeArray, k: method.Coefficients, at: metho
         log_ctpl, slope = method.log_ctpl_and_slope(result, k, at)
         residual = np.log(rho / result) - log_ctpl
         step = residual / slope
-        result = np.clip(result + result * step, low, high)
-        if np.fmax.reduce(np.abs(step), axis=None, initial=0.0) < _LAST_STEP:
+        result = np.clip(result + result * step, low, high)  # eq. 1
+        if np.fmax.reduce(np.abs(step), axis=None, initial=0.0) < _STEP_TOLERANCE:
             break
-    return np.where(np.abs(residual) < _RESIDUAL, result, np.nan)
+    return np.where(np.abs(residual) < _RESIDUAL_TOLERANCE, result, np.nan)
 
 
 def density_60f(
@@ -265,9 +274,8 @@ def density_60f(
 
     Notes
     -----
-    Newton's method on the logarithm with the exact slope, to rounding (the procedure stops at 1e-6 kg/m³)::
-
-        ln ρ60 ← ln ρ60 + [ln(ρ/ρ60) − ln CTPL(ρ60)] / (∂ln ρ/∂ln ρ60)        (1)
+    Newton's method on the logarithm with the exact slope, in place of the procedure's approximate one: the
+    same root, to rounding, where the procedure stops at 1e-6 kg/m³.
 
     The group of a refined product is that of the solution: it is the heaviest whose lightest liquid would
     not be denser than observed. At a group's limit CTL jumps by up to 1e-7. Where the jump leaves densities

@@ -235,9 +235,8 @@ def coefficients(group: CodeArray, alpha60: ArrayLike) -> tuple[FloatArray, Floa
 
     Notes
     -----
-    The procedure's formulas for a liquid of known α60 are those of the groups at K0 = K1 = 0, K2 = α60::
-
-        ρ* = ρ60 exp[α60 δ/2 (1 + 0.4 α60 δ)]        (1)
+    The procedure's own formula for a liquid of known α60, ρ* = ρ60 exp[α60 δ/2 (1 + 0.4 α60 δ)], is that of
+    the groups at K0 = K1 = 0 and K2 = α60.
 
     References
     ----------

@@ -7,9 +7,9 @@ against this, and its central differences at a step of 1e-12 give slopes to more
 from __future__ import annotations
 
 from collections.abc import Callable
-from decimal import Decimal as D
-from decimal import getcontext
+from decimal import Decimal, getcontext
 
+D = Decimal
 getcontext().prec = 40
 
 SHIFT = ["-0.148759", "-0.267408", "1.080760", "1.269056", "-4.089591", "-1.871251", "7.438081", "-3.536296"]

@@ -30,5 +30,6 @@ def test_both_forms_are_one_glass() -> None:
 
 def test_no_other_calibration_is_guessed() -> None:
     assert np.isnan(hydrometer_factor([300.0, 300.0], [273.15 + 25.0, np.nan])).all()
-    assert np.isnan(float(hydrometer_factor(300.0, 288.15 + 2e-3)))
-    assert np.isfinite(hydrometer_factor(300.0, [288.15 + 5e-4, F60 - 5e-4, 293.15 - 5e-4])).all()
+    scales = np.array([288.15, F60, 293.15])  # known to a thousandth of a kelvin
+    assert np.isfinite(hydrometer_factor(300.0, [scales + 0.995e-3, scales - 0.995e-3])).all()
+    assert np.isnan(hydrometer_factor(300.0, [scales + 1.005e-3, scales - 1.005e-3])).all()

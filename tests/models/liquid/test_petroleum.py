@@ -3,8 +3,6 @@
 Vectors are recomputed from the published equations of API MPMS 11.1-2004, unless a check says otherwise.
 """
 
-from decimal import Decimal as D
-
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -23,7 +21,7 @@ from models.liquid.petroleum import (
     table_factor,
 )
 from models.units import density_of_api_gravity
-from tests.models.liquid.petroleum_decimal import figures, slope
+from tests.models.liquid.petroleum_decimal import D, figures, slope
 
 CRUDE, REFINED, LUBRICATING, SPECIAL = (COMMODITIES[n] for n in ("crude", "refined", "lubricating", "special"))
 PSI, ZERO = 6894.757, 273.15
@@ -281,6 +279,11 @@ def test_outside_is_nan_in_columns_and_never_a_fault() -> None:
             assert int(factors(850.0, t, p, commodity).group) == -1
     assert np.isnan(density_60f([850.0] * 2, 300.0, 0.0, [-1, 4])).all()
     assert density_60f(np.zeros(0), 300.0, 0.0, CRUDE).shape == (0,)
+
+
+def test_a_base_temperature_has_the_same_limits() -> None:
+    assert np.isnan(base_factors(850.0, 300.0, 0.0, [222.0, 424.0], CRUDE)[0]).all()
+    assert np.isnan(base_factors(850.0, 424.0, 0.0, 288.15, CRUDE)).all()
 
 
 def test_a_column_of_all_commodities_is_its_rows() -> None:

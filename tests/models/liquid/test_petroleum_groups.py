@@ -93,15 +93,17 @@ def test_codes() -> None:
     assert commodity_codes([0, 3, 4, -2]).tolist() == [0, 3, -1, -1]
     assert np.isnan(density_limits(7)[0]) and np.isnan(density_limits(7)[1])
     assert [float(x) for x in density_limits(LUBRICATING)] == [800.9, 1163.5]
+    assert [float(x) for x in density_limits(SPECIAL)] == [610.6, 1163.5]  # from memory
     assert EDITION == "ASTM D1250-04 / API MPMS 11.1-2004"
 
 
 def test_published_limits() -> None:
     # Published: -58 to 302 °F, 0 to 1500 psig (103.4 bar), alpha60 230e-6 to 930e-6 per °F; 1 psi = 6.894757 kPa.
-    assert (LOWEST_TEMPERATURE - 273.15) * 1.8 + 32.0 == pytest.approx(-58.0, abs=1e-9)
-    assert (HIGHEST_TEMPERATURE - 273.15) * 1.8 + 32.0 == pytest.approx(302.0, abs=1e-9)
-    assert HIGHEST_PRESSURE / 1e5 == pytest.approx(103.4, abs=0.05)
-    assert HIGHEST_PRESSURE == pytest.approx(1500.0 * 0.45359237 * 9.80665 / 0.0254**2, rel=1e-13)
+    low, high = ((kelvin - 273.15) * 1.8 + 32.0 for kelvin in (LOWEST_TEMPERATURE, HIGHEST_TEMPERATURE))
+    assert low == pytest.approx(-58.0, abs=1e-9) and high == pytest.approx(302.0, abs=1e-9)
+    highest = HIGHEST_PRESSURE
+    assert highest / 1e5 == pytest.approx(103.4, abs=0.05)
+    assert highest == pytest.approx(1500.0 * 0.45359237 * 9.80665 / 0.0254**2, rel=1e-13)
     assert (LOWEST_ALPHA60, HIGHEST_ALPHA60, PASCAL_PER_PSI) == (230e-6, 930e-6, 6894.757)
 
 

@@ -1,7 +1,5 @@
 """The equations of the petroleum correction, each constant felt, each slope held against differences."""
 
-from decimal import Decimal as D
-
 import numpy as np
 import pytest
 
@@ -20,7 +18,7 @@ from models.liquid.petroleum_method import (
     star_by_temperature,
     state,
 )
-from tests.models.liquid.petroleum_decimal import K, figures, slope, star_temperature
+from tests.models.liquid.petroleum_decimal import D, K, figures, slope, star_temperature
 
 DENSITY = {"crude": 870.0, "gasoline": 690.0, "transition": 780.0, "jet": 810.0, "fuel oil": 950.0,
            "lubricating": 880.0}  # fmt: skip
