@@ -45,6 +45,7 @@ def analyses_of(builder: States) -> Analyses:
     """Vapours, liquids and vapour pressures of every row."""
     result = Analyses(np.full(builder.collected.rows, UNCHANGED, dtype=np.intp))
     vapours, no_vapour = _each(builder, "vapour_composition", _vapour)
+    liquids: dict[int, Liquid]
     liquids, no_liquid = _each(builder, "liquid_composition", _liquid)
     boiling, _ = _each(builder, "liquid_composition", _boiling)  # what cannot boil leaves the substance's own
     result.refused = no_vapour | no_liquid
@@ -126,7 +127,7 @@ def _vapour(vessel: CompiledVessel, analysis: Mapping[str, float]) -> VapourMixt
 def _liquid(vessel: CompiledVessel, analysis: Mapping[str, float]) -> Liquid | None:
     if not isinstance(vessel.liquid, MixtureLiquid):
         return None
-    liquid = replace(vessel.liquid, components=boiling_of(vessel.substance, analysis))
+    liquid: Liquid = replace(vessel.liquid, components=boiling_of(vessel.substance, analysis))
     own_density(liquid, (vessel.density[1], vessel.density[2]))
     return liquid
 

@@ -159,6 +159,10 @@ class CompiledVessel:
             known = self._instruments[quantity, source] = _instrument(self.name, self.body, quantity, source)
         return known
 
+    def declared(self, quantity: str, source: str, at: int | None = None) -> Declared | None:
+        """What the vessel's text says of the instrument that reads a quantity, from a source."""
+        return _declared(self.text_at(at), quantity, source)
+
     @cached_property
     def _instruments(self) -> dict[tuple[str, str], Instrument]:
         return {}

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 
@@ -244,7 +244,7 @@ class ByStrength(_Keyed):
         return ethanol_water.why_outside(strength, *here) or ethanol_water.why_outside(strength, *sample)
 
 
-METHODS = {
+METHODS: dict[type, Callable[[Sequence[Any]], LiquidMethod]] = {
     ExpansivityLiquid: ByExpansivity.of,
     PetroleumLiquid: ByPetroleum.of,
     WaterLiquid: lambda liquids: ByWater(),

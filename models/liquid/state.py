@@ -165,8 +165,8 @@ def _by_runs(
     density: FloatArray, sample: Conditions, standard: Conditions, row: Row,
 ) -> _Sampled:  # fmt: skip
     """Solve once for each run of equal samples: a content is sampled far less often than it is gauged."""
-    columns = [density, sample.temperature, sample.pressure, sample.atmosphere, standard.temperature, standard.pressure]
-    columns += [] if isinstance(row, int) else [row]
+    columns: list[FloatArray | IntArray] = [density, sample.temperature, sample.pressure, sample.atmosphere]
+    columns += [standard.temperature, standard.pressure] + ([] if isinstance(row, int) else [row])
     rows = max(len(column) for column in columns)
     changed = np.zeros(rows - 1, dtype=bool)
     for column in columns:
