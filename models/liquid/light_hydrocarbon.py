@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 
 import numpy as np
 
-from models.arrays import ArrayLike, FloatArray, as_floats
+from models.arrays import ArrayLike, BoolArray, FloatArray, IntArray, as_floats
 from models.constants import WATER_DENSITY_60F, ZERO_CELSIUS
 from models.liquid import light_pressure as yielding
 from models.liquid import light_temperature as saturated
@@ -21,7 +20,9 @@ _ITERATIONS = 100  # a bisection alone ends after 50
 _TOLERANCE = 1e-13  # relative, of a step
 _ROUNDING = 1e-12  # a density given to the last bit may fall this far outside
 # Where the search for a relative density starts: near propane and butane ρ/ρ_w falls by 1.2e-3 each kelvin.
-_FIRST_STEP, _FIRST_STEP_FROM = 1.2e-3, 288.7
+_FIRST_STEP = 1.2e-3
+# What a client can do instead; the names are those of the two methods.
+_OTHERWISE = "give the liquid as a density_table or by its components"
 
 
 @dataclass(frozen=True)
@@ -181,9 +182,7 @@ def _limits(t: FloatArray, excess: FloatArray) -> tuple[FloatArray, FloatArray]:
     return low, np.where(allowed, high, np.nan)
 
 
-def _miss(
-    target: FloatArray, gamma: FloatArray, t: FloatArray, excess: FloatArray
-) -> tuple[FloatArray, FloatArray]:
+def _miss(target: FloatArray, gamma: FloatArray, t: FloatArray, excess: FloatArray) -> tuple[FloatArray, FloatArray]:
     """ln ρ/ρ_w less its target, and its slope by ln γ; the ranges are not looked at."""
     ctl = saturated.correct(gamma, t, saturated.between(gamma))
     cpl = yielding.compress(gamma, t, np.maximum(excess, 0.0))
@@ -194,9 +193,10 @@ def _miss(
 def _solve(target: FloatArray, t: FloatArray, excess: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
     """Newton's steps; a limit where they leave the range, half of the bracket where they leave that."""
     result = np.full(target.shape, np.nan)
-    rows = np.arange(target.size)
-    gamma = np.clip(np.exp(target) + _FIRST_STEP * (t - _FIRST_STEP_FROM), low, high)
-    tried_low, tried_high = np.zeros((2, target.size), dtype=np.bool_)
+    rows: IntArray = np.arange(target.size)
+    gamma = np.clip(np.exp(target) + _FIRST_STEP * (t - saturated.TEMPERATURE_60F), low, high)
+    tried_low: BoolArray = np.zeros(target.shape, dtype=np.bool_)
+    tried_high = tried_low
     for _ in range(_ITERATIONS):
         miss, slope = _miss(target, gamma, t, excess)
         tried_low, tried_high = tried_low | (miss <= 0.0), tried_high | (miss >= 0.0)
@@ -210,10 +210,93 @@ def _solve(target: FloatArray, t: FloatArray, excess: FloatArray, low: FloatArra
         left = ~done & ~np.isnan(step)
         if not left.any():
             break
+        gamma = step
         if not left.all():
-            rows, gamma, target, t, excess, low, high, tried_low, tried_high = (
-                column[left] for column in (rows, step, target, t, excess, low, high, tried_low, tried_high)
-            )
-        else:
-            gamma = step
+            rows, tried_low, tried_high = rows[left], tried_low[left], tried_high[left]
+            gamma, target, t, excess, low, high = (c[left] for c in (gamma, target, t, excess, low, high))
     return result
+
+
+def why_outside(
+    relative_density: float | None, density: float, temperature: float, pressure_excess: float = 0.0
+) -> str:
+    """Why a density has no answer.
+
+    Parameters
+    ----------
+    relative_density : float or None
+        Relative density at 60 °F; None where it was to be found from the observed density. [1]
+    density : float
+        Observed density; without meaning where the relative density is given. [kg/m³]
+    temperature : float
+        Temperature. [K]
+    pressure_excess : float
+        Pressure above the saturation pressure. [Pa]
+
+    Returns
+    -------
+    str
+        One sentence; empty where there is an answer. [1]
+    """
+    celsius, pressed = temperature - ZERO_CELSIUS, pressure_excess > 0.0
+    if not saturated.reaches(saturated.HIGHEST_RELATIVE_DENSITY, temperature):
+        return (
+            f"the temperature of the light hydrocarbon is {celsius:.6g} °C; its correction is defined from "
+            f"{_celsius(saturated.LOWEST_TEMPERATURE)} to {_celsius(saturated.HIGHEST_TEMPERATURE)} °C: "
+            f"{_OTHERWISE}"
+        )
+    if pressed and not yielding.reaches_compressed(yielding.HIGHEST_COMPRESSED_RELATIVE_DENSITY, temperature):
+        return (
+            f"the temperature of the light hydrocarbon is {celsius:.6g} °C at {pressure_excess / 1000.0:.6g} kPa above "
+            f"its saturation pressure; its compressibility is defined from "
+            f"{_celsius(yielding.LOWEST_COMPRESSED_TEMPERATURE)} to "
+            f"{_celsius(yielding.HIGHEST_COMPRESSED_TEMPERATURE)} °C: {_OTHERWISE}"
+        )
+    if relative_density is None:
+        return _why_no_root(density, temperature, pressure_excess)
+    return _why_no_density(relative_density, temperature, pressed)
+
+
+def _celsius(kelvin: float) -> str:
+    return f"{kelvin - ZERO_CELSIUS:.4g}"
+
+
+def _why_no_root(density: float, temperature: float, excess: float) -> str:
+    if not np.isnan(relative_density_60f(density, temperature, excess)):
+        return ""
+    low, high = (float(limit) for limit in _limits(np.asarray(temperature), np.asarray(excess)))
+    lightest, heaviest = factors(np.array([low, high]), temperature, excess).density
+    return (
+        f"the density is {density:.6g} kg/m³ at {temperature - ZERO_CELSIUS:.6g} °C; a light hydrocarbon has "
+        f"{lightest:.6g} to {heaviest:.6g} kg/m³ there, for the relative densities at 60 °F from {low:.4g} to "
+        f"{high:.4g} of the method: {_OTHERWISE}"
+    )
+
+
+def _why_no_density(gamma: float, temperature: float, pressed: bool) -> str:
+    celsius = temperature - ZERO_CELSIUS
+    named = f"the relative density at 60 °F is {gamma:.6g}"
+    if not saturated.reaches(gamma, temperature):
+        return (
+            f"{named}; the correction is defined from {saturated.LOWEST_RELATIVE_DENSITY:g} to "
+            f"{saturated.HIGHEST_RELATIVE_DENSITY:g}: {_OTHERWISE}"
+        )
+    critical = float(saturated.correct(gamma, temperature, saturated.between(gamma)).critical_temperature)
+    if temperature >= critical:
+        return (
+            f"{named} and the temperature is {celsius:.6g} °C; such a liquid ends at its critical temperature, "
+            f"{_celsius(critical)} °C: check both, for there is no liquid"
+        )
+    if not pressed or yielding.reaches_compressed(gamma, temperature):
+        return ""
+    guard = float(yielding.critical_guard(gamma))
+    if temperature > guard and gamma <= yielding.HIGHEST_COMPRESSED_RELATIVE_DENSITY:
+        return (
+            f"{named} and the temperature is {celsius:.6g} °C, above the saturation pressure; the compressibility "
+            f"of such a liquid is defined up to {_celsius(guard)} °C: {_OTHERWISE}"
+        )
+    return (
+        f"{named}, above the saturation pressure; the compressibility is defined from "
+        f"{yielding.LOWEST_COMPRESSED_RELATIVE_DENSITY:g} to {yielding.HIGHEST_COMPRESSED_RELATIVE_DENSITY:g}: "
+        f"{_OTHERWISE}"
+    )

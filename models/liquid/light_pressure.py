@@ -150,9 +150,9 @@ def reaches_compressed(relative_density: ArrayLike, temperature: ArrayLike) -> B
     """
     g, t = as_floats(relative_density, temperature)
     more, less = 1.0 + ROUNDING, 1.0 - ROUNDING
-    inside = (g >= LOWEST_COMPRESSED_RELATIVE_DENSITY * less) & (g <= HIGHEST_COMPRESSED_RELATIVE_DENSITY * more)
-    inside &= (t >= LOWEST_COMPRESSED_TEMPERATURE * less) & (t <= HIGHEST_COMPRESSED_TEMPERATURE * more)
-    return np.asarray(inside & (t <= critical_guard(g) * more))
+    dense = (g >= LOWEST_COMPRESSED_RELATIVE_DENSITY * less) & (g <= HIGHEST_COMPRESSED_RELATIVE_DENSITY * more)
+    warm = (t >= LOWEST_COMPRESSED_TEMPERATURE * less) & (t <= HIGHEST_COMPRESSED_TEMPERATURE * more)
+    return np.asarray(dense & warm & (t <= critical_guard(g) * more))
 
 
 def compress(relative_density: ArrayLike, temperature: ArrayLike, pressure_excess: ArrayLike) -> Compressed:

@@ -17,6 +17,7 @@ __all__ = [
     "LOWEST_TEMPERATURE",
     "RELATIVE_DENSITY",
     "ROUNDING",
+    "TEMPERATURE_60F",
     "Saturated",
     "between",
     "correct",
@@ -42,8 +43,7 @@ _REFERENCE = (
     ("n-heptane", 0.688039, 540.15, 0.26312, 2.315, 2.19773533433, -0.275056764147, -0.447144095029, 0.493770995799),
 )
 _POWER, _POWER_BELOW = 0.35, 0.65  # of 1 − Tr in eq. 4, same source
-_RANKINE_PER_KELVIN = 1.8  # exact
-_RANKINE_60F = 519.67  # °R, exact: 60 °F
+TEMPERATURE_60F = 519.67 / 1.8  # K, exact
 
 # The standard's limits: 0.3500 to 0.6880, −50.8 to 199.4 °F.
 LOWEST_RELATIVE_DENSITY, HIGHEST_RELATIVE_DENSITY = 0.35, 0.688
@@ -120,9 +120,9 @@ def reaches(relative_density: ArrayLike, temperature: ArrayLike) -> BoolArray:
         True within both ranges. [1]
     """
     gamma, t = as_floats(relative_density, temperature)
-    inside = (gamma >= LOWEST_RELATIVE_DENSITY * (1.0 - ROUNDING)) & (t >= LOWEST_TEMPERATURE * (1.0 - ROUNDING))
-    inside &= (gamma <= HIGHEST_RELATIVE_DENSITY * (1.0 + ROUNDING)) & (t <= HIGHEST_TEMPERATURE * (1.0 + ROUNDING))
-    return np.asarray(inside)
+    more, less = 1.0 + ROUNDING, 1.0 - ROUNDING
+    dense = (gamma >= LOWEST_RELATIVE_DENSITY * less) & (gamma <= HIGHEST_RELATIVE_DENSITY * more)
+    return np.asarray(dense & (t >= LOWEST_TEMPERATURE * less) & (t <= HIGHEST_TEMPERATURE * more))
 
 
 def least_relative_density(temperature: ArrayLike) -> FloatArray:
@@ -213,7 +213,7 @@ def correct(
     critical = CRITICAL_TEMPERATURE[one] + delta * rise  # eq. 2
     products = _CRITICAL_COMPRESSIBILITY * _CRITICAL_DENSITY
     h2 = products[one] / products[two]  # eq. 3
-    reduced, reduced_60f = t / critical, _RANKINE_60F / (_RANKINE_PER_KELVIN * critical)
+    reduced, reduced_60f = t / critical, TEMPERATURE_60F / critical
     here = _mix(one, two, delta, h2, reduced)
     base = _mix(one, two, delta, h2, reduced_60f)
     by_delta = here.by_share - base.by_share
