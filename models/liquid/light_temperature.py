@@ -25,7 +25,7 @@ __all__ = [
     "reaches",
 ]
 
-# The reference fluids of GPA TP-27 (2007) = API MPMS 11.2.4, whose table of constants five public transcriptions
+# The reference fluids of GPA TP-27 (2007) = API MPMS 11.2.4, whose table of constants five public copies
 # give alike: relative density at 60 °F, critical temperature [K], critical compressibility, critical density
 # [kmol/m3], and k1 to k4 of eq. 4.
 _REFERENCE = (
