@@ -39,20 +39,78 @@ class LiquidMethod(Protocol):
     def state(
         self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
     ) -> LiquidState:
-        """Densities that follow from a sample. [SI]"""
+        """Densities that follow from samples.
+
+        Parameters
+        ----------
+        density : FloatArray, shape (n,) or (1,)
+            Density of the sample. [kg/m³]
+        sample, here, standard : Conditions
+            Where it was sampled, where it is, and the standard state. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid in this stack. [1]
+
+        Returns
+        -------
+        LiquidState
+            Columns of n rows; NaN outside the method. [SI]
+        """
 
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
-        """What the sample says of the content. [as the method has it]"""
+        """What samples say of their contents.
+
+        Parameters
+        ----------
+        density : FloatArray, shape (n,) or (1,)
+            Density of the sample. [kg/m³]
+        sample : Conditions
+            Where it was sampled. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid in this stack. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            The key of each content. [as the method has it]
+        """
 
     def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
-        """Density by the method alone; NaN where it needs a sample. [kg/m³]"""
+        """Density by the method alone.
+
+        Parameters
+        ----------
+        temperature, pressure : FloatArray, shape (n,) or (1,)
+            Temperature and absolute pressure. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each liquid in this stack. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            Density; NaN where the method needs a sample, or does not reach. [kg/m³]
+        """
 
     def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
-        """Which limit was passed, in one sentence."""
+        """Which limit was passed.
+
+        Parameters
+        ----------
+        density : float
+            Density of the sample. [kg/m³]
+        sample, here : tuple of float
+            Temperature and absolute pressure where it was sampled, and where it is. [K, Pa]
+        row : int
+            Row of the liquid in this stack. [1]
+
+        Returns
+        -------
+        str
+            One sentence; nothing where no limit was passed. [1]
+        """
 
 
 @dataclass(frozen=True)
-class ByExpansivity:
+class _ByExpansivity:
     """β and κ; the sample's density is carried by their integral."""
 
     coefficients: tuple[FloatArray, ...]
@@ -60,7 +118,7 @@ class ByExpansivity:
     compressibility: FloatArray
 
     @classmethod
-    def of(cls, liquids: Sequence[ExpansivityLiquid]) -> ByExpansivity:
+    def of(cls, liquids: Sequence[ExpansivityLiquid]) -> _ByExpansivity:
         """Compile liquids; shorter polynomials are padded with zeros. [1]"""
         width = max(len(one.coefficients) for one in liquids)
         return cls(
@@ -154,7 +212,7 @@ class _OwnDensity(_Keyed):
         return self.own_point(temperature, pressure, row).density
 
 
-class ByWater(_OwnDensity):
+class _ByWater(_OwnDensity):
     """Water; every row is the same."""
 
     share = WATER_SHARE
@@ -169,7 +227,7 @@ class ByWater(_OwnDensity):
 
 
 @dataclass(frozen=True)
-class ByTable(_OwnDensity):
+class _ByTable(_OwnDensity):
     """Density tables."""
 
     tables: DensityTableColumns
@@ -185,14 +243,14 @@ class ByTable(_OwnDensity):
 
 
 @dataclass(frozen=True)
-class ByPetroleum(_Keyed):
+class _ByPetroleum(_Keyed):
     """Petroleum by commodity; the key is the density at 60 °F."""
 
     commodity: IntArray
     alpha60: FloatArray
 
     @classmethod
-    def of(cls, liquids: Sequence[PetroleumLiquid]) -> ByPetroleum:
+    def of(cls, liquids: Sequence[PetroleumLiquid]) -> _ByPetroleum:
         """Compile liquids. [1]"""
         return cls(
             np.array([petroleum.COMMODITIES[one.commodity] for one in liquids], dtype=np.intp),
@@ -223,7 +281,7 @@ class ByPetroleum(_Keyed):
         return ""
 
 
-class ByStrength(_Keyed):
+class _ByStrength(_Keyed):
     """Ethanol and water; the key is the mass fraction of ethanol."""
 
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
@@ -245,12 +303,12 @@ class ByStrength(_Keyed):
 
 
 METHODS: dict[type, Callable[[Sequence[Any]], LiquidMethod]] = {
-    ExpansivityLiquid: ByExpansivity.of,
-    PetroleumLiquid: ByPetroleum.of,
-    WaterLiquid: lambda liquids: ByWater(),
-    TableLiquid: lambda liquids: ByTable(
+    ExpansivityLiquid: _ByExpansivity.of,
+    PetroleumLiquid: _ByPetroleum.of,
+    WaterLiquid: lambda liquids: _ByWater(),
+    TableLiquid: lambda liquids: _ByTable(
         DensityTableColumns.from_tables([(one.rows, one.compressibility, one.pressure) for one in liquids])
     ),
-    EthanolWaterLiquid: lambda liquids: ByStrength(),
+    EthanolWaterLiquid: lambda liquids: _ByStrength(),
 }
 """How a kind of liquid is compiled."""

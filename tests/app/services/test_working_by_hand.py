@@ -43,8 +43,8 @@ def level_and_shell(s: Steps) -> float:
         assert s["h"] == pytest.approx(s["h_read"] + s["Δ_tape"] + s["Δ_H"], rel=EXACT)
     thermal = s["α"] * (s["T_shell"] - s["T_0"])
     pressed = s.get("ΔP", 0.0)
-    assert s["Σε"] == pytest.approx(3.0 * thermal + s.get("Σε_P", 0.0) * pressed, rel=1e-9, abs=1e-15)
-    assert s["ε_z"] == pytest.approx(thermal + s.get("ε_P,z", 0.0) * pressed, rel=1e-9, abs=1e-15)
+    assert s["Σε"] == pytest.approx(3.0 * thermal + s.get("Σε_P", 0.0) * pressed, rel=1e-9, abs=1e-13)
+    assert s["ε_z"] == pytest.approx(thermal + s.get("ε_P,z", 0.0) * pressed, rel=1e-9, abs=1e-13)
     factor = (1.0 + s["Σε"] / 3.0) ** 3 / (1.0 + s["ε_z"] * (s["h"] - s["h_0"]) * s["A(h)"] / s["V(h)"])
     assert s["K"] == pytest.approx(factor, rel=EXACT)
     return factor
