@@ -185,9 +185,13 @@ def _limits(t: FloatArray, excess: FloatArray) -> tuple[FloatArray, FloatArray]:
 def _miss(target: FloatArray, gamma: FloatArray, t: FloatArray, excess: FloatArray) -> tuple[FloatArray, FloatArray]:
     """ln ρ/ρ_w less its target, and its slope by ln γ; the ranges are not looked at."""
     ctl = saturated.correct(gamma, t, saturated.between(gamma))
+    miss, slope = np.log(gamma * ctl.factor) - target, 1.0 + ctl.by_relative_density
+    pressed = excess > 0.0
+    if not pressed.any():
+        return miss, slope
     cpl = yielding.compress(gamma, t, np.maximum(excess, 0.0))
-    miss = np.log(gamma * ctl.factor * cpl.factor) - target
-    return miss, 1.0 + ctl.by_relative_density + cpl.by_relative_density
+    miss = miss + np.where(pressed, np.log(cpl.factor), 0.0)
+    return miss, slope + np.where(pressed, cpl.by_relative_density, 0.0)
 
 
 def _solve(target: FloatArray, t: FloatArray, excess: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:

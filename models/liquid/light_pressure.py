@@ -45,7 +45,7 @@ ROUNDING = 1e-9  # a limit given in other units may fall this far outside, relat
 # GPA TP-15 (2007) = API MPMS 11.2.5: A0, A1, B0, B1 from each relative density up to the next. The standard's
 # table goes on below and above; the three rows here are those that could be read in public text.
 _VAPOUR_LIMITS = (0.49, 0.51, 0.56, 0.585)
-_VAPOUR_ROWS = (
+_VAPOUR_COEFFICIENTS = (
     (-6.4747, 37.083, 12038.0, -31296.5),
     (11.5454, 1.749, 1378.8, -10396.1),
     (6.4827, 10.79, 3721.5, -14579.5),
@@ -244,8 +244,8 @@ def vapour_pressure(relative_density: ArrayLike, temperature: ArrayLike) -> tupl
     """
     gamma, t = as_floats(relative_density, temperature)
     limits = np.asarray(_VAPOUR_LIMITS)
-    row = np.clip(np.searchsorted(limits, gamma, side="right") - 1, 0, len(_VAPOUR_ROWS) - 1)
-    a0, a1, b0, b1 = (column[row] for column in np.asarray(_VAPOUR_ROWS).T)
+    row = np.clip(np.searchsorted(limits, gamma, side="right") - 1, 0, len(_VAPOUR_COEFFICIENTS) - 1)
+    a0, a1, b0, b1 = (column[row] for column in np.asarray(_VAPOUR_COEFFICIENTS).T)
     inside = (gamma >= limits[0]) & (gamma < limits[-1])
     constant = np.where(inside, b0 + b1 * gamma, np.nan)
     over = t * _RANKINE_PER_KELVIN - _RANKINE_OF_ZERO_FAHRENHEIT + _VAPOUR_ORIGIN

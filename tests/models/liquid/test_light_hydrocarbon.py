@@ -209,3 +209,23 @@ def test_why_outside(arguments, words):
 @pytest.mark.parametrize("arguments", [(0.51, np.nan, 300.0), (None, 500.0, 300.0), (0.51, np.nan, 300.0, 1e5)])
 def test_nothing_to_explain(arguments):
     assert why_outside(*arguments) == ""
+
+
+def test_rows_above_and_at_saturation_stand_in_one_column():
+    gamma = np.array([0.37, 0.45, 0.5, 0.55, 0.6, 0.65])
+    t = np.array([308.0, 290.0, 330.0, 300.0, 350.0, 366.15])
+    excess = np.array([0.0, 1e6, 2e5, -1e5, 0.0, 0.0])
+    density = point(gamma, t, excess).density
+    assert relative_density_60f(density, t, excess) == pytest.approx(gamma, rel=1e-12)
+    alone = [float(relative_density_60f(*row)) for row in zip(density, t, excess, strict=True)]
+    assert relative_density_60f(density, t, excess).tolist() == alone
+
+
+def test_close_to_the_critical_temperature_the_root_is_found():
+    # Propane, 369.78 K, is outside the tables; between EP(35/65), 352.46 K, and it 366.15 K is critical at γ 0.499345:
+    # 0.470381 + (366.15 − 352.46)/(369.78 − 352.46) · (0.507025 − 0.470381), table of GPA TP-27.
+    gamma = 0.499345 + np.array([1e-6, 1e-5, 1e-4, 1e-3])
+    density = point(gamma, 366.15, 0.0).density
+    assert np.isfinite(density).all()
+    assert relative_density_60f(density, 366.15, 0.0) == pytest.approx(gamma, rel=1e-12)
+    assert np.isnan(point(0.499344, 366.15, 0.0).density)

@@ -181,3 +181,9 @@ def test_no_vapour_pressure_outside_the_rows_at_hand():
     for which in (0, 1):
         values = vapour_pressure([0.4899, 0.49, 0.5849, 0.585, np.nan, 0.5], [300.0] * 5 + [np.nan])[which]
         assert np.isnan(values).tolist() == [True, False, False, True, True, True]
+
+
+def test_no_compressibility_where_the_formula_has_none():
+    # A of the equation is −0.0059 for γ 0.36 at 310 K (recomputed), beyond the guard: F would be negative.
+    found = compress(0.36, 310.0, [0.0, 1e5])
+    assert np.isnan(found.factor).all() and np.isnan(found.by_pressure).all()

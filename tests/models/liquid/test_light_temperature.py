@@ -25,9 +25,7 @@ def of_standard(gamma, fahrenheit):
 
 def test_published_example_with_its_pair_of_fluids():
     # GPA TP-27 / API MPMS 11.2.4, published: γ 0.503 at 83.7 °F between propane and i-butane, thus extrapolated.
-    found = correct(
-        0.503, kelvin(83.7), np.array(FLUIDS.index("i-butane")), np.array(FLUIDS.index("propane"))
-    )
+    found = correct(0.503, kelvin(83.7), np.array(FLUIDS.index("i-butane")), np.array(FLUIDS.index("propane")))
     assert float(found.factor) == pytest.approx(0.9587323707, abs=5e-11)
     assert float(found.share) == pytest.approx(-0.07213, abs=5e-6)
     assert float(found.critical_temperature) == pytest.approx(367.034, abs=5e-4)
