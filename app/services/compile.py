@@ -282,11 +282,11 @@ def compile_bodies(
 
 
 def _boiling(substance: Substance) -> Boiling:
-    """What boils in the vessel: the liquid's composition where it is known, else the vapour's."""
+    """What boils in the vessel: the liquid's composition where it is known, else the vapour's, which condenses."""
     if isinstance(substance.liquid, LightHydrocarbonLiquid) and substance.liquid.components is not None:
-        return fractions_of(substance.liquid.components)
+        return Boiling(fractions_of(substance.liquid.components))
     assert substance.vapour is not None
-    return fractions_of(substance.vapour.components)
+    return Boiling(fractions_of(substance.vapour.components), of_vapour=True)
 
 
 def _space(body: Vessel, substance: Substance) -> str:

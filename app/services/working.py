@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 from app.services.compositions import virial_columns
 from app.services.geometry_working import ORDER, STRAIN, geometry_steps
 from app.services.liquid_working import Sampled, Step, density_steps, step
+from app.services.liquids import SATURATED
 from app.services.measure import Measured
 from app.services.parts import at_row, celsius_of
 from models.columns import Mark
@@ -80,9 +81,13 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "the site's base temperature",
         "definition",
     )
-    yield step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa",
-                "absolute; the site's base pressure or, where higher, the vapour pressure at T_std",
-                "definition")  # fmt: skip
+    equilibrium = (
+        "absolute; the site's base pressure: where that of equilibrium is higher, the method takes the saturated liquid"
+        if isinstance(measured.liquid(row), SATURATED)
+        else "absolute; the site's base pressure or, where higher, the vapour pressure at T_std"
+    )
+    yield step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa", equilibrium,
+               "definition")  # fmt: skip
     yield from density_steps(content(measured, row))
     yield step(
         "sediment and water",

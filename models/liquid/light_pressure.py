@@ -251,3 +251,36 @@ def vapour_pressure(relative_density: ArrayLike, temperature: ArrayLike) -> tupl
     over = t * _RANKINE_PER_KELVIN - _RANKINE_OF_ZERO_FAHRENHEIT + _VAPOUR_ORIGIN
     pressure = np.exp(a0 + a1 * gamma + constant / over) * PASCAL_PER_PSI  # eq. 1
     return np.asarray(pressure), np.asarray(-pressure * constant / over**2 * _RANKINE_PER_KELVIN)
+
+
+def vapour_pressure_by_density(relative_density: ArrayLike, temperature: ArrayLike) -> FloatArray:
+    """Slope of the saturation pressure by the relative density.
+
+    Parameters
+    ----------
+    relative_density : array_like, shape (...)
+        γ, relative density at 60 °F, 0.49 to 0.585. [1]
+    temperature : array_like, shape (...)
+        Temperature. [K]
+
+    Returns
+    -------
+    FloatArray, shape (...)
+        ∂P/∂γ within the row of γ; NaN outside 0.49 to 0.585. [Pa]
+
+    Notes
+    -----
+    From eq. 1 of :func:`vapour_pressure`::
+
+        ∂P/∂γ = P [A1 + B1/(t + 443)]        (1)
+
+    References
+    ----------
+    .. [1] As of :func:`vapour_pressure`.
+    """
+    gamma, t = as_floats(relative_density, temperature)
+    limits = np.asarray(_VAPOUR_LIMITS)
+    row = np.clip(np.searchsorted(limits, gamma, side="right") - 1, 0, len(_VAPOUR_COEFFICIENTS) - 1)
+    over = t * _RANKINE_PER_KELVIN - _RANKINE_OF_ZERO_FAHRENHEIT + _VAPOUR_ORIGIN
+    _, a1, _, b1 = (column[row] for column in np.asarray(_VAPOUR_COEFFICIENTS).T)
+    return np.asarray(vapour_pressure(gamma, t)[0] * (a1 + b1 / over))  # eq. 1

@@ -10,10 +10,13 @@ import numpy as np
 
 from models.arrays import FloatArray, IntArray
 from models.constants import STANDARD_ATMOSPHERE
-from models.liquid import ethanol_water, petroleum, petroleum_limits, water
+from models.liquid import ethanol_water, light_hydrocarbon, light_state, petroleum, petroleum_limits, water
+from models.liquid.costald import CostaldColumns
 from models.liquid.definition import (
     EthanolWaterLiquid,
     ExpansivityLiquid,
+    LightHydrocarbonLiquid,
+    MixtureLiquid,
     PetroleumLiquid,
     TableLiquid,
     WaterLiquid,
@@ -243,6 +246,44 @@ class _ByTable(_OwnDensity):
 
 
 @dataclass(frozen=True)
+class _ByComposition(_OwnDensity):
+    """Mixtures by their composition."""
+
+    mixtures: CostaldColumns
+    share = MIXTURE_SHARE
+
+    def own_point(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> LiquidPoint:
+        """The mixture's density. [SI]"""
+        return self.mixtures.point(temperature, pressure, row)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed."""
+        return self.mixtures.why_outside(row, here[0]) or self.mixtures.why_outside(row, sample[0])
+
+
+class _ByLightDensity(_Keyed):
+    """Light hydrocarbons by their density; the key is the relative density at 60 °F."""
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """Relative density at 60 °F. [1]"""
+        return light_state.key_at(density, sample.temperature, sample.pressure)
+
+    def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
+        """Density and slopes at a state. [SI]"""
+        return light_state.point_at(key, conditions.temperature, conditions.pressure)
+
+    def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
+        """A share of the way from the sample to the vessel. [1]"""
+        return np.asarray(LIGHT_SHARE * ratio)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed: by the sample, or by the content that it tells of."""
+        why = light_hydrocarbon.why_outside(None, density, sample[0])
+        key = float(light_state.key_at(density, *sample))
+        return why or light_hydrocarbon.why_outside(key, density, here[0], float(light_state.excess(key, *here)))
+
+
+@dataclass(frozen=True)
 class _ByPetroleum(_Keyed):
     """Petroleum by commodity; the key is the density at 60 °F."""
 
@@ -305,6 +346,10 @@ class _ByStrength(_Keyed):
 METHODS: dict[type, Callable[[Sequence[Any]], LiquidMethod]] = {
     ExpansivityLiquid: _ByExpansivity.of,
     PetroleumLiquid: _ByPetroleum.of,
+    LightHydrocarbonLiquid: lambda liquids: _ByLightDensity(),
+    MixtureLiquid: lambda liquids: _ByComposition(
+        CostaldColumns.from_compositions([one.components for one in liquids])
+    ),
     WaterLiquid: lambda liquids: _ByWater(),
     TableLiquid: lambda liquids: _ByTable(
         DensityTableColumns.from_tables([(one.rows, one.compressibility, one.pressure) for one in liquids])

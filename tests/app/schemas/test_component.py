@@ -9,7 +9,8 @@ from pydantic_core import PydanticCustomError
 from app.schemas.component import Component, temperatures_rise, whole
 
 CONSTANTS = {
-    "critical_temperature_k": 400.0, "critical_pressure_kpa_abs": 4000.0, "acentric_factor": 0.2, "molar_mass_g_mol": 60.0
+    "critical_temperature_k": 400.0, "critical_pressure_kpa_abs": 4000.0, "acentric_factor": 0.2,
+    "molar_mass_g_mol": 60.0,
 }  # fmt: skip
 
 

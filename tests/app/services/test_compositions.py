@@ -5,7 +5,7 @@ from __future__ import annotations
 import pytest
 
 from app.schemas.substance import Substance
-from app.services.compositions import boiling_of, boiling_pressure, fractions_of, mixture_of
+from app.services.compositions import analysed_fractions, boiling_pressure, fractions_of, mixture_of
 from models.errors import DefinitionError
 
 OWN = {"id": "house-gas", "mole_fraction": 0.1, "critical_temperature_k": 400.0, "critical_pressure_kpa_abs": 4000.0,
@@ -24,11 +24,11 @@ def test_fractions_are_normalised_and_a_component_in_full_keeps_its_constants() 
 
 
 def test_an_analysis_takes_the_clients_own_component_and_leaves_out_what_is_absent() -> None:
-    found = boiling_of(LPG, {"propane": 0.5, "house-gas": 0.25, "n-butane": 0.25, "ethane": 0.0})
+    found = analysed_fractions(LPG, {"propane": 0.5, "house-gas": 0.25, "n-butane": 0.25, "ethane": 0.0})
     assert [one.id for one, _ in found] == ["house-gas", "n-butane", "propane"]
     assert [fraction for _, fraction in found] == [0.25, 0.25, 0.5]
     with pytest.raises(DefinitionError, match="unobtainium"):
-        boiling_of(LPG, {"unobtainium": 1.0})
+        analysed_fractions(LPG, {"unobtainium": 1.0})
 
 
 def test_a_substance_of_which_nothing_is_known_does_not_boil() -> None:

@@ -28,6 +28,9 @@ LIQUIDS: dict[str, dict[str, Any]] = {
     "table": {"model": "density_table", "rows": [[-10.0, 860.0], [20.0, 838.0], [60.0, 809.0]],
               "compressibility_per_kpa": 6e-7},
     "ethanol": {"model": "ethanol_water", "alcohol_volume_pct": 90.0},
+    "propane by density": {"model": "light_hydrocarbon", "density_kg_m3": 507.0},
+    "lpg by components": {"model": "light_hydrocarbon", "components": [
+        {"id": "propane", "mole_fraction": 0.6}, {"id": "n-butane", "mole_fraction": 0.4}]},
 }  # fmt: skip
 
 Steps = dict[str, float]
@@ -99,7 +102,29 @@ def redo_ethanol(s: Steps) -> None:
     assert 0.0 < s["p"] < 1.0
 
 
+def redo_light(s: Steps) -> None:
+    """By density GPA TP-27 from the saturated densities on; by components COSTALD from the volumes on."""
+    if "γ" not in s:
+        saturated = s["V*"] * s["V_R0"] * (1.0 - s["ω"] * s["V_Rδ"])
+        assert s["V_s"] == pytest.approx(saturated, rel=EXACT)
+        above = max(s["P"], s["P_s"])
+        volume = saturated * (1.0 - s["C"] * math.log((s["B"] + above) / (s["B"] + s["P_s"])))
+        assert s["V_m"] == pytest.approx(volume, rel=EXACT)
+        assert s["ρ_m"] == pytest.approx(s["m_L"] / volume * 1e3, rel=EXACT)
+        redo_own(s)
+        return
+    first, second = (
+        s[one] / (1.0 + s["δ"] * (s[one] / (s["h2"] * s[two]) - 1.0)) for one, two in (("ρ1", "ρ2"), ("ρ1,60", "ρ2,60"))
+    )
+    assert s["CTL"] == pytest.approx(first / second, rel=EXACT)
+    assert s["C_T"] == pytest.approx(s["CTL"] / s["CTL_std"], rel=1e-11)
+    pressed = 1.0 / (1.0 - 1e-5 * s["F"] * s["Δp"] / 6.894757293168361) if s["Δp"] > 0.0 else 1.0
+    assert s["C_P"] == pytest.approx(pressed, rel=1e-11)
+    assert s["ρ_s,std"] == pytest.approx(s["γ"] * 999.016 * s["CTL_std"], rel=1e-11)
+
+
 REDONE = {
+    "light_hydrocarbon": redo_light,
     "expansivity": redo_expansivity, "petroleum": redo_petroleum, "water": redo_own, "density_table": redo_own,
     "ethanol_water": redo_ethanol,
 }  # fmt: skip

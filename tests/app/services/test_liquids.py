@@ -8,7 +8,7 @@ import pytest
 
 from app.schemas.site import Conditions as Site
 from app.schemas.substance import Substance
-from app.services.compositions import fractions_of
+from app.services.compositions import Boiling, fractions_of
 from app.services.liquids import (
     density_between,
     key_of,
@@ -81,9 +81,9 @@ def test_a_figure_from_which_the_method_finds_nothing_is_refused_with_the_limit(
 
 
 def test_the_standard_pressure_is_that_of_equilibrium_where_it_is_higher() -> None:
-    propane = fractions_of(Substance.model_validate(
+    propane = Boiling(fractions_of(Substance.model_validate(
         {"name": "x", "vapour": {"model": "virial", "components": [{"id": "propane", "mole_fraction": 1.0}]}}
-    ).vapour.components)  # type: ignore[union-attr]  # fmt: skip
+    ).vapour.components))  # type: ignore[union-attr]  # fmt: skip
     expanding = definition.ExpansivityLiquid((3e-3,), 288.15, 0.0)
     # propane at 15 °C: Lemmon et al. 2009, by CoolProp 8.0.0
     assert standard_pressure(expanding, SITE, propane) == pytest.approx(7.3151e5, rel=5e-4)

@@ -2,10 +2,9 @@
 
 from dataclasses import replace
 
-import CoolProp
 import numpy as np
 import pytest
-from chemicals.volume import COSTALD, COSTALD_compressed, COSTALD_mixture
+from chemicals.volume import COSTALD_compressed, COSTALD_mixture
 from hypothesis import given, settings
 from hypothesis import strategies as st
 

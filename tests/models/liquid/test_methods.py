@@ -7,18 +7,22 @@ import math
 import numpy as np
 import pytest
 
+from models.components import component
 from models.constants import STANDARD_ATMOSPHERE
 from models.liquid.compiled import LiquidColumns
 from models.liquid.definition import (
     EthanolWaterLiquid,
     ExpansivityLiquid,
+    LightHydrocarbonLiquid,
     Liquid,
+    MixtureLiquid,
     PetroleumLiquid,
     TableLiquid,
     WaterLiquid,
 )
 from models.liquid.state import Conditions, LiquidState
 
+PARTS = ((component("propane"), 0.9), (component("isobutane"), 0.07), (component("ethane"), 0.03))
 ROWS = tuple((273.15 + t, 860.0 - 0.72 * t - 1e-4 * t * t) for t in range(-20, 101, 10))
 # liquid, density of the sample, temperature of the sample [°C], in the vessel, pressure over the atmosphere [Pa]
 CASES: dict[str, tuple[Liquid, float, float, float, float]] = {
@@ -32,6 +36,12 @@ CASES: dict[str, tuple[Liquid, float, float, float, float]] = {
     "special": (PetroleumLiquid("special", 4.7e-4), 871.0, 18.0, 61.0, 3e5),
     "water": (WaterLiquid(), 997.9, 21.0, 61.0, 3e5),
     "table": (TableLiquid(ROWS, 6e-10), 846.0, 21.0, 37.0, 3e5),
+    "propane by density": (LightHydrocarbonLiquid(), 500.0, 20.0, 31.0, 2e6),
+    "butane by density": (LightHydrocarbonLiquid(), 580.0, 20.0, 31.0, 3e6),
+    "field grade at equilibrium": (LightHydrocarbonLiquid(), 545.0, 20.0, 31.0, 0.0),
+    "pentanes by density": (LightHydrocarbonLiquid(), 626.0, 20.0, 31.0, 0.0),
+    "mixture": (MixtureLiquid(PARTS), 505.0, 20.0, 31.0, 2e6),
+    "mixture at equilibrium": (MixtureLiquid(PARTS), 505.0, 20.0, 31.0, 0.0),
     "ethanol": (EthanolWaterLiquid(), 842.0, 21.0, 33.0, 3e5),
 }
 STEP = 1e-4
@@ -80,7 +90,9 @@ def test_every_slope_is_that_of_the_density_itself(kind: str) -> None:
 
 
 @pytest.mark.parametrize(
-    ("kind", "share"), [("water", 2e-3), ("table", 0.01), ("ethanol", 2e-3), ("expansivity", -1.0)]
+    ("kind", "share"),
+    [("water", 2e-3), ("table", 0.01), ("ethanol", 2e-3), ("mixture at equilibrium", 0.01),
+     ("field grade at equilibrium", 0.005), ("expansivity", -1.0)],
 )
 def test_a_method_is_off_by_a_share_of_the_way_from_its_sample(kind: str, share: float) -> None:
     """Of a given β the unit is all of its integral; of the others a share of ln ρ/ρ_s stands in methods.py."""
@@ -111,6 +123,9 @@ def test_pitfall_commodity_by_density_within_refined_and_crude_by_declaration() 
         ("water", {"celsius": 160.0}, ("160", "150 °C")),
         ("table", {"celsius": 120.0}, ("120", "100 °C")),
         ("ethanol", {"celsius": 45.0}, ("45", "40 °C")),
+        ("propane by density", {"celsius": 95.0}, ("95", "93 °C", "density_table")),
+        ("propane by density", {"density": 800.0}, ("800", "kg/m³")),
+        ("mixture", {"celsius": 85.0}, ("85", "°C", "density_table")),
     ],
 )
 def test_outside_a_method_there_is_no_density_and_a_sentence_that_names_the_limit(
@@ -135,4 +150,4 @@ def test_a_method_that_needs_no_sample_has_a_density_of_its_own() -> None:
     assert found["water"] == pytest.approx(998.2067, abs=0.002)  # M. Tanaka et al., Metrologia 38 (2001) 301
     assert found["table"] == pytest.approx(860.0 - 14.4 - 0.04, abs=1e-3)
     needs = [kind for kind, density in found.items() if np.isnan(density)]
-    assert needs == [kind for kind in CASES if kind not in ("water", "table")]
+    assert needs == [kind for kind in CASES if kind not in ("water", "table", "mixture", "mixture at equilibrium")]

@@ -1,4 +1,4 @@
-"""From a sample to a density: the key found once for each run of equal samples, the slopes by implicit differentiation."""
+"""From a sample to a density: the key found once for each run of equal samples, and the slopes that follow."""
 
 from __future__ import annotations
 
