@@ -9,6 +9,7 @@ from models.liquid import light_hydrocarbon
 from models.liquid.light_pressure import vapour_pressure, vapour_pressure_by_density
 from models.liquid.point import LiquidPoint
 
+LIGHTEST, HEAVIEST = 0.49, np.nextafter(0.585, 0.0)  # γ of which GPA TP-15 gives the vapour pressure
 _STEPS = 20  # Newton's steps square, and the first is near: five do
 _TOLERANCE = 1e-14  # relative, of a step
 
@@ -36,15 +37,16 @@ def excess(relative_density: ArrayLike, temperature: ArrayLike, pressure: ArrayL
 
         Δp = max(0, P − P_e(γ, T))        (1)
 
-    Outside the vapour pressure's γ of 0.49 to 0.585 the liquid is taken as at equilibrium: what a tank of it
-    has above that is a fraction of a bar, which changes the density by less than 1e-4.
+    The vapour pressure is known for γ of 0.49 to 0.585. A heavier liquid is taken to have that of 0.585, which
+    is above its own by 2 bar at most at 20 °C: 6e-4 of the density. A lighter one is taken as at equilibrium,
+    where it is stored.
 
     References
     ----------
     .. [1] API MPMS 11.2.2 (1986), 11.2.2.2 (form from memory); GPA TP-15 = API MPMS 11.2.5 for P_e.
     """
     gamma, t, p = as_floats(relative_density, temperature, pressure)
-    above = p - vapour_pressure(gamma, t)[0]  # eq. 1
+    above = p - vapour_pressure(np.minimum(gamma, HEAVIEST), t)[0]  # eq. 1
     return np.asarray(np.where(above > 0.0, above, np.where(np.isnan(p), np.nan, 0.0)))
 
 
@@ -81,8 +83,8 @@ def point_at(relative_density: ArrayLike, temperature: ArrayLike, pressure: Arra
     pressed = above > 0.0
     inside = np.isfinite(found.density)
     kappa = np.where(pressed, found.compressibility, np.where(inside, 0.0, np.nan))
-    warmer = np.where(pressed, vapour_pressure(gamma, t)[1], 0.0)
-    heavier = np.where(pressed, vapour_pressure_by_density(gamma, t), 0.0)
+    warmer = np.where(pressed, vapour_pressure(np.minimum(gamma, HEAVIEST), t)[1], 0.0)
+    heavier = np.where(pressed & (gamma < HEAVIEST), vapour_pressure_by_density(gamma, t), 0.0)
     return LiquidPoint(
         found.density,
         np.asarray(found.expansivity + kappa * warmer),  # eq. 1
@@ -110,7 +112,8 @@ def key_at(density: ArrayLike, temperature: ArrayLike, pressure: ArrayLike) -> F
 
     Notes
     -----
-    The excess depends on γ, so Newton's method takes the root at equilibrium to that at the pressure.
+    The excess depends on γ, so Newton's method takes the root at equilibrium to that at the pressure. At 0.49,
+    where the vapour pressure ceases to be known, the density has a step: one that falls into it is that of 0.49.
 
     References
     ----------
@@ -123,6 +126,7 @@ def key_at(density: ArrayLike, temperature: ArrayLike, pressure: ArrayLike) -> F
             found = point_at(gamma, t, p)
             step = np.exp(-np.log(found.density / rho) / found.by_key)
             gamma = np.asarray(gamma * step)
-            if not np.any(np.abs(step - 1.0) > _TOLERANCE):
-                break
-    return gamma
+            moving = np.abs(step - 1.0) > _TOLERANCE
+            if not np.any(moving):
+                return gamma
+    return np.asarray(np.where(moving, LIGHTEST, gamma))
