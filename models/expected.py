@@ -23,7 +23,7 @@ MASS_TOLERANCE = 1e-15  # relative: a mass is hit
 STEP_TOLERANCE = 2e-16  # relative: a step that no longer moves
 MISS_TOLERANCE = 1e-10  # relative: a mass that is missed by more, beside a trial without a mass, is not reached
 END_ROUNDING = 1e-12  # relative: a full vessel stays full
-LEAST_Z, GREATEST_Z = 0.1, 10.0  # far outside every compressibility factor that the virial equation answers
+FACTOR_POINTS = np.geomspace(0.1, 10.0, GRID_POINTS)  # beyond every compressibility factor of the virial equation
 
 Trial = Callable[[FloatArray, IntArray], tuple[FloatArray, FloatArray]]
 """Masses at trial values, and their slopes; the second argument is the row of each trial."""
@@ -126,8 +126,11 @@ def pressure_of_mass(vessels: Vessels, rows: IntArray | None, state: State, mass
        Thermodynamics", 7th ed., 2005, ch. 3.
     """
     own = _rows(rows, mass)
-    ideal = mass * GAS_CONSTANT * state.vapour_temperature / _moles_per_pascal(vessels, own, state)  # eq. 1
-    grid = ideal[:, None] * np.geomspace(LEAST_Z, GREATEST_Z, GRID_POINTS)
+    assert vessels.vapour is not None
+    series = vessels.vapour_row[own] if state.vapour_row is None else state.vapour_row
+    molar_mass = vessels.vapour.molar_mass[series]
+    ideal = mass * GAS_CONSTANT * state.vapour_temperature / (molar_mass * vessels.capacity[own])  # eq. 1
+    grid = ideal[:, None] * FACTOR_POINTS
 
     def trial(pressure: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
         found = inventory(vessels, own[which], replace(state.take(which), pressure=pressure))
@@ -158,20 +161,11 @@ def temperature_of_mass(vessels: Vessels, rows: IntArray | None, state: State, m
 
     Notes
     -----
-    The search begins around the temperature of an ideal gas, within the range of the coefficients::
-
-        T_0 = P V m / (M R)        (1)
-
-    References
-    ----------
-    .. [1] J. M. Smith, H. C. Van Ness, M. M. Abbott, "Introduction to Chemical Engineering
-       Thermodynamics", 7th ed., 2005, ch. 3.
+    The whole range of the coefficients is searched, as falling temperatures, at which the mass rises.
     """
     own = _rows(rows, mass)
-    ideal = state.pressure * _moles_per_pascal(vessels, own, state) / (mass * GAS_CONSTANT)  # eq. 1
     lowest, highest = _vapour_range(vessels, own, state)
-    cold, hot = (np.clip(ideal * z, lowest, highest) for z in (1.0 / GREATEST_Z, 1.0 / LEAST_Z))
-    grid = -np.geomspace(hot, cold, GRID_POINTS, axis=1)
+    grid = -np.geomspace(highest, lowest, GRID_POINTS, axis=1)
 
     def trial(cooling: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
         here, warmth = state.take(which), -cooling
@@ -243,13 +237,6 @@ def full_temperature(
 
 def _rows(rows: IntArray | None, mass: FloatArray) -> IntArray:
     return np.zeros(len(mass), dtype=np.intp) if rows is None else rows
-
-
-def _moles_per_pascal(vessels: Vessels, own: IntArray, state: State) -> FloatArray:
-    """Volume times molar mass: of an ideal gas, R T times its mass by its pressure. [m³ kg/mol]"""
-    assert vessels.vapour is not None
-    series = vessels.vapour_row[own] if state.vapour_row is None else state.vapour_row
-    return np.asarray(vessels.capacity[own] * vessels.vapour.molar_mass[series])
 
 
 def _vapour_range(vessels: Vessels, own: IntArray, state: State) -> tuple[FloatArray, FloatArray]:
