@@ -122,7 +122,7 @@ def _find(
 def _reading(vessel: CompiledVessel, source: str, quantity: str, value: float, state: State) -> float:
     """What an instrument shows for a value of the chain, in SI there; the last bit keeps a level inside."""
     if quantity == "vapour_temperature_c":
-        return _unread(vessel, source, quantity, value - constants.ZERO_CELSIUS)
+        return _unread(vessel, source, quantity, celsius_of(value))
     if quantity == "pressure_kpa":
         return _unread(vessel, source, quantity, (value - at_row(state.atmosphere, 0)) / KPA)
     shown = _unread(vessel, source, quantity, value)
@@ -199,7 +199,9 @@ def _shown(vessel: CompiledVessel, known: CalculationReading, found: Measured) -
         "vapour_temperature_c": known.vapour_temperature_c,
     }
     if known.vapour_temperature_c is None and vessel.has_vapour:
-        warmth = column("vapour_temperature") - constants.ZERO_CELSIUS
+        warmth = column("vapour_temperature")
+        if math.isfinite(warmth):
+            warmth = celsius_of(warmth)
         shown["vapour_temperature_c"] = _unread(vessel, source, "vapour_temperature_c", warmth)
     for name, of in (("liquid_mass_kg", "liquid_mass"), ("vapour_mass_kg", "vapour_mass"), ("mass_kg", "mass")):
         shown[name] = column(of)
