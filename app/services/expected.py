@@ -44,6 +44,10 @@ def expect(request: ExpectedReadingCalculation) -> dict[str, Any]:
     state, extra = States(read, choices(read)).build()
     compiled = stack(read.vessels, extra)
     _needs_pressure(vessel, state)
+    boiling = _boiling(vessel, compiled, state, known)
+    if boiling is not None:
+        known = known.model_copy(update={"pressure_kpa_abs": boiling})
+        state, _ = States(read := collected(vessel, (known,)), choices(read)).build()
     full = _full(vessel, compiled, state, request)
     found, why = _find(vessel, compiled, state, known, sought, request.mass_kg)
     if why is not None:
@@ -87,6 +91,21 @@ def _needs_pressure(vessel: CompiledVessel, state: State) -> None:
     if vessel.has_liquid and not boils and not math.isfinite(at_row(state.pressure, 0)):
         detail = "The pressure of this vapour space follows from nothing else: give pressure_kpa or pressure_kpa_abs"
         raise _refused("/pressure_kpa", "missing", detail)
+
+
+def _boiling(vessel: CompiledVessel, compiled: Vessels, state: State, known: CalculationReading) -> float | None:
+    """What the gauge shows of a product space whose own temperature is known and its pressure not. [kPa absolute]
+
+    Without a pressure the chain knows a vapour only at its liquid's temperature.
+    """
+    alone = known.vapour_temperature_c is not None and not math.isfinite(at_row(state.pressure, 0))
+    if not alone or not vessel.has_liquid or compiled.saturation is None:
+        return None
+    row = compiled.saturation_row if state.saturation_row is None else state.saturation_row
+    pressure, _ = compiled.saturation.pressure(state.liquid_temperature[:1], row[:1])
+    if not math.isfinite(pressure[0]):
+        return None
+    return _unread(vessel, known.source, "pressure_kpa_abs", float(pressure[0]) / KPA)
 
 
 def _refused(pointer: str, code: str, detail: str) -> Unprocessable:
