@@ -25,7 +25,8 @@ from models.expected import Expected, full_temperature, level_of_mass, pressure_
 
 CAUTION = (
     "liquid_full_temperature_c is no filling limit: how far a vessel may be filled is set by the codes that apply at "
-    "the site and by licensed practice, which keep room for more than this temperature says"
+    "the site and by licensed practice. It is as good as the liquid's method so far from its sample: an expansivity "
+    "that holds near the sample alone tells it too high"
 )
 GIVEN = tuple(name for name in ExpectedReadingCalculation.model_fields if name in CalculationReading.model_fields)
 KPA = units.PASCAL_PER_KPA

@@ -18,7 +18,17 @@ from models.liquid.definition import ExpansivityLiquid
 from models.mass import inventory
 from models.saturation import SaturationColumns
 from tests.models.mass_cases import (
-    BULLET_CASE, CASES, FLOATING, NITROGEN, OIL, PROPANE, SPHERE_CASE, UPRIGHT, Case, state, vessels,
+    BULLET_CASE,
+    CASES,
+    FLOATING,
+    NITROGEN,
+    OIL,
+    PROPANE,
+    SPHERE_CASE,
+    UPRIGHT,
+    Case,
+    state,
+    vessels,
 )  # fmt: skip
 
 Column = NDArray[np.float64]
