@@ -14,6 +14,7 @@ from models import constants, instruments, units
 from models.errors import DefinitionError
 from models.liquid import definition
 from models.liquid.compiled import LiquidColumns
+from models.liquid.costald import CostaldColumns
 from models.liquid.definition import Liquid
 from models.liquid.ethanol_water import density_of_strength
 from models.liquid.state import Conditions, LiquidState
@@ -71,13 +72,20 @@ def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | 
     density = _stated_density(body)
     if density is None:
         density = own_density(liquid, at)
-        share = instruments.METHOD_DENSITY_SHARE[body.model]
+        share = _own_share(body, liquid)
     else:
         share = instruments.DENSITY_SHARE
         if not math.isfinite(density_between(liquid, density, at, at, at[1])):
             raise DefinitionError(why_outside(liquid, density, at, at), field="liquid/density_kg_m3")
     given = body.density_uncertainty_kg_m3
     return density, *at, share * density if given is None else given
+
+
+def _own_share(body: wire.Liquid, liquid: Liquid) -> float:
+    """Standard uncertainty of a density that a method gives of its own; of a composition its limit over √3. [1]"""
+    if isinstance(liquid, definition.MixtureLiquid):
+        return float(CostaldColumns.from_compositions([liquid.components]).departure[0]) / math.sqrt(3.0)
+    return instruments.METHOD_DENSITY_SHARE[body.model]
 
 
 def _stated_at(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> State:
