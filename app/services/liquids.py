@@ -56,13 +56,17 @@ def liquid_of(body: wire.Liquid, site: Site) -> Liquid:
             return definition.TableLiquid(rows, body.compressibility_per_kpa / units.PASCAL_PER_KPA, pressure)
 
 
-def standard_pressure(liquid: Liquid | None, site: Site, boiling: Boiling | None) -> float:
+def standard_pressure(
+    liquid: Liquid | None, site: Site, boiling: Boiling | None, temperature: float | None = None
+) -> float:
     """Pressure of the standard state: the base pressure or, where higher, that of equilibrium. [Pa]
 
-    A method that starts from the saturated liquid finds the equilibrium itself and takes the base pressure.
+    ``temperature`` is that of another base than the site's. [K] A method that starts from the saturated liquid
+    finds the equilibrium itself and takes the base pressure.
     """
-    temperature, pressure = base_state(site)
-    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, temperature))
+    own, pressure = base_state(site)
+    at = own if temperature is None else temperature
+    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, at))
 
 
 def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> tuple[float, ...]:
@@ -132,15 +136,20 @@ def liquid_columns(liquids: tuple[Liquid, ...]) -> LiquidColumns:
 
 def state_of(
     liquid: Liquid, density: float, sample: State, here: State, standard: State,
-    atmosphere: float = constants.STANDARD_ATMOSPHERE,
+    atmosphere: float = constants.STANDARD_ATMOSPHERE, datum: float | None = None,
 ) -> LiquidState:  # fmt: skip
-    """Everything that follows from one sample: arrays of one value. [SI]"""
+    """Everything that follows from one sample: arrays of one value. [SI]
+
+    ``datum`` is the pressure from which the sample's counts where its method takes a gauge pressure: that of the
+    standard state, unless the sample is to be understood by another standard state than this one.
+    """
+    zero = standard[1] if datum is None else datum
 
     def conditions(at: State, datum: float) -> Conditions:
         return Conditions(np.array([at[0]]), np.array([at[1]]), np.array([datum]))
 
     return liquid_columns((liquid,)).state(
-        np.array([density]), conditions(sample, standard[1]), conditions(here, atmosphere),
+        np.array([density]), conditions(sample, zero), conditions(here, atmosphere),
         conditions(standard, standard[1]), np.zeros(1, dtype=np.intp),
     )  # fmt: skip
 
