@@ -8,18 +8,29 @@ from pydantic import ConfigDict, Field
 
 from app.schemas.types import Answer, AnsweredInstant, Known, is_none
 
-AT_20: dict[str, Any] = {
-    "base_temperature_c": 20.0, "base_pressure_kpa_abs": 101.325, "temperature_factor": 1.00216024,
-    "temperature_factor_table": 1.00216, "pressure_factor": 1.0, "gross_standard_volume_m3": 5712.86,
-    "net_standard_volume_m3": 5712.86, "net_standard_volume_bbl": 35932.8, "density_kg_m3": 836.52,
-    "density_in_air_kg_m3": 835.446,
+AT_15: dict[str, Any] = {
+    "base_temperature_c": 15.0, "base_pressure_kpa_abs": 101.325, "temperature_factor": 0.998009983,
+    "temperature_factor_table": 0.99801, "pressure_factor": 0.99999993, "gross_standard_volume_m3": 5689.199,
+    "net_standard_volume_m3": 5689.199, "net_standard_volume_bbl": 35783.98, "density_kg_m3": 840.0,
+    "density_in_air_kg_m3": 838.926,
+}  # fmt: skip
+AT_20 = AT_15 | {
+    "base_temperature_c": 20.0, "temperature_factor": 1.00216033, "temperature_factor_table": 1.00216,
+    "gross_standard_volume_m3": 5712.858, "net_standard_volume_m3": 5712.858, "net_standard_volume_bbl": 35932.8,
+    "density_kg_m3": 836.5212, "density_in_air_kg_m3": 835.4465,
+}  # fmt: skip
+AT_60F = AT_15 | {
+    "base_temperature_c": 15.5555555556, "temperature_factor": 0.998470282, "temperature_factor_table": 0.99847,
+    "gross_standard_volume_m3": 5691.823, "net_standard_volume_m3": 5691.823, "net_standard_volume_bbl": 35800.49,
+    "density_kg_m3": 839.6128, "density_in_air_kg_m3": 838.5385, "relative_density_60_60": 0.84044,
+    "api_gravity": 36.864,
 }  # fmt: skip
 
 
 class AtBase(Answer):
     """The liquid at one base; null where its method does not reach there."""
 
-    model_config = ConfigDict(json_schema_extra={"examples": [AT_20]})
+    model_config = ConfigDict(json_schema_extra={"examples": [AT_15]})
 
     base_temperature_c: float = Field(description="Temperature of the base [°C]")
     base_pressure_kpa_abs: float = Field(
@@ -42,9 +53,7 @@ class AtBase(Answer):
 class At60F(AtBase):
     """The liquid at 60 °F, with the two measures that exist there alone."""
 
-    model_config = ConfigDict(
-        json_schema_extra={"examples": [AT_20 | {"relative_density_60_60": 0.8404, "api_gravity": 36.87}]}
-    )
+    model_config = ConfigDict(json_schema_extra={"examples": [AT_60F]})
 
     relative_density_60_60: Known = Field(description="Density over that of water, 999.016 kg/m³, both at 60 °F [1]")
     api_gravity: Known = Field(description="API gravity at 60 °F [°API]")
@@ -61,10 +70,8 @@ class TankStatement(Answer):
                     "liquid_temperature_c": 17.4, "shell_factor": 1.00003547, "total_observed_volume_m3": 5700.544,
                     "free_water_volume_m3": 0.0, "roof_correction_m3": 0.0, "gross_observed_volume_m3": 5700.544,
                     "sediment_water_pct": 0.0, "liquid_density_kg_m3": 838.3283, "temperature_factor": 0.99800998,
-                    "temperature_factor_table": 0.99801, "pressure_factor": 0.99999928,
-                    "at_15_c": AT_20, "at_20_c": AT_20, "at_60_f": AT_20 | {
-                        "relative_density_60_60": 0.8404, "api_gravity": 36.87,
-                    },
+                    "temperature_factor_table": 0.99801, "pressure_factor": 0.99999993,
+                    "at_15_c": AT_15, "at_20_c": AT_20, "at_60_f": AT_60F,
                     "mass_kg": 4778927.1, "weight_in_air_kg": 4772802.4,
                     "weight_in_air_long_ton": 4697.423, "weight_in_air_short_ton": 5261.114,
                 }

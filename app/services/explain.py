@@ -10,7 +10,7 @@ from app.services.collect import INPUTS
 from app.services.measure import Measured
 from app.services.parts import at_row, estimate, sigmas
 from app.services.reasons import counts, reason, warnings
-from app.services.statement import in_air, tank_statement
+from app.services.statement import in_air, tank_statements
 from app.services.working import budget_lines, working_steps
 from models.columns import Mark
 from models.estimate import Estimate, combine
@@ -56,10 +56,14 @@ def answers(
 ) -> list[dict[str, Any]]:
     """Every row as the contract's inventory."""
     spread = standard_uncertainty(measured.result, sigmas(measured.parts))
-    return [
-        _answer(measured, row, float(spread[row]), working=working, budget=budget, statement=statement)
+    found = [
+        _answer(measured, row, float(spread[row]), working=working, budget=budget)
         for row in range(measured.collected.rows)
     ]
+    if statement:
+        for row, block in tank_statements(measured).items():
+            found[row]["statement"] = block
+    return found
 
 
 def _number(value: float) -> float | None:
@@ -79,9 +83,7 @@ FIELDS = (
 DENSITIES = ("liquid_density_kg_m3", "standard_density_kg_m3", "compressibility_factor")
 
 
-def _answer(
-    measured: Measured, row: int, spread: float, *, working: bool, budget: bool, statement: bool
-) -> dict[str, Any]:
+def _answer(measured: Measured, row: int, spread: float, *, working: bool, budget: bool) -> dict[str, Any]:
     vessel, result = measured.vessel(row), measured.result
     state = status(measured, row)
     unmeasured = state == "unmeasured"
@@ -110,8 +112,6 @@ def _answer(
         answer["working"] = working_steps(measured, row)
     if budget and not unmeasured:
         answer["budget"] = budget_lines(measured, row)
-    if statement and not unmeasured and (stated := tank_statement(measured, row)) is not None:
-        answer["statement"] = stated
     return answer
 
 

@@ -136,20 +136,15 @@ def liquid_columns(liquids: tuple[Liquid, ...]) -> LiquidColumns:
 
 def state_of(
     liquid: Liquid, density: float, sample: State, here: State, standard: State,
-    atmosphere: float = constants.STANDARD_ATMOSPHERE, datum: float | None = None,
+    atmosphere: float = constants.STANDARD_ATMOSPHERE,
 ) -> LiquidState:  # fmt: skip
-    """Everything that follows from one sample: arrays of one value. [SI]
-
-    ``datum`` is the pressure from which the sample's counts where its method takes a gauge pressure: that of the
-    standard state, unless the sample is to be understood by another standard state than this one.
-    """
-    zero = standard[1] if datum is None else datum
+    """Everything that follows from one sample: arrays of one value. [SI]"""
 
     def conditions(at: State, datum: float) -> Conditions:
         return Conditions(np.array([at[0]]), np.array([at[1]]), np.array([datum]))
 
     return liquid_columns((liquid,)).state(
-        np.array([density]), conditions(sample, zero), conditions(here, atmosphere),
+        np.array([density]), conditions(sample, standard[1]), conditions(here, atmosphere),
         conditions(standard, standard[1]), np.zeros(1, dtype=np.intp),
     )  # fmt: skip
 
