@@ -42,9 +42,10 @@ def test_exact_factors():
     assert units.KILOGRAM_PER_GRAM * 1000.0 == 1.0
     assert units.SECONDS_PER_DAY == 24 * 60 * 60
     # NIST Handbook 44, appendix C: a barrel of 42 gallons of 231 in³, tons of 2240 and 2000 lb, exactly.
-    assert units.CUBIC_METRE_PER_BARREL == pytest.approx(42 * 231 * 0.0254**3, rel=1e-15)
-    assert units.KILOGRAM_PER_LONG_TON == pytest.approx(2240 * 0.45359237, rel=1e-15)
-    assert units.KILOGRAM_PER_SHORT_TON == pytest.approx(2000 * 0.45359237, rel=1e-15)
+    barrel, pound = 42 * 231 * 0.0254**3, 0.45359237
+    assert pytest.approx(barrel, rel=1e-15) == units.CUBIC_METRE_PER_BARREL
+    assert pytest.approx(2240 * pound, rel=1e-15) == units.KILOGRAM_PER_LONG_TON
+    assert pytest.approx(2000 * pound, rel=1e-15) == units.KILOGRAM_PER_SHORT_TON
 
 
 def test_degrees_api_are_densities_relative_to_water_of_60_f() -> None:

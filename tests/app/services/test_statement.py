@@ -109,7 +109,8 @@ def test_the_sites_own_base_is_the_inventory(
 @pytest.mark.parametrize(("substance", "row", "shape"), [one for one in LIQUIDS if one.id != "ethanol"])
 def test_the_bases_do_not_depend_on_the_sites_own(substance: Body, row: Body, shape: Body) -> None:
     """Where the sample says its pressure; one left out is that of the site's own standard state."""
-    sampled = row | {"observed_density_kg_m3": 845.0 if shape is TANK else 507.0, "observed_density_temperature_c": 18.0,
+    density = 845.0 if shape is TANK else 507.0
+    sampled = row | {"observed_density_kg_m3": density, "observed_density_temperature_c": 18.0,
                      "observed_density_pressure_kpa_abs": 101.325}  # fmt: skip
     at_15, at_20 = (statement(substance, sampled, shape, {"base_temperature_c": base}) for base in (15.0, 20.0))
     for name in NAMES:
