@@ -8,7 +8,7 @@ virial equation gives the vapour's; the sum is the mass. Every step works on col
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, fields
 
 import numpy as np
 
@@ -265,8 +265,10 @@ def _widening(step: Step, density: FloatArray) -> Widening:
     assert v.head_stress is not None
     row = v.head_row if len(v.head_row) > 1 else int(v.head_row[0])
     found = v.head_stress.widening(s.level, s.water_level, density, v.head_included, row)
-    out["head_volume"] = found.volume
-    return found
+    factor = out["shell_factor"]  # a table that holds the widening is multiplied by it, too
+    scaled = Widening(*(np.asarray(factor * getattr(found, item.name)) for item in fields(found)))
+    out["head_volume"] = scaled.volume
+    return scaled
 
 
 def _liquid(step: Step, method: Method) -> None:
@@ -288,12 +290,13 @@ def _liquid(step: Step, method: Method) -> None:
         afloat = afloat_fraction(s.level, v.roof_lands, v.roof_floats)
         landing = (s.level > v.roof_lands) & (s.level < v.roof_floats)
         step.mark(landing, Mark.ROOF_LANDING_ZONE)
-        before_roof = before_roof + afloat * v.roof_mass * v.roof_volume_per_mass
+        deducted = afloat * v.roof_mass * v.roof_volume_per_mass
+        before_roof = before_roof + deducted
         weight = v.roof_mass if s.roof_load is None else v.roof_mass + s.roof_load
         displaced = afloat * weight
         slope = np.where(landing, weight / (v.roof_floats - v.roof_lands), 0.0)
         sens["roof"] = np.where(landing, weight * share, 0.0)
-        out["roof_volume"] = displaced * (v.roof_volume_per_mass - 1.0 / density)
+        out["roof_volume"] = deducted - displaced / density
     gross = before_roof - displaced / density
     mass = net * before_roof - displaced * share
     out.update(
@@ -316,7 +319,8 @@ def _liquid_sensitivities(
     stretch_temperature = v.expansion * (3.0 * by_sum - by_vertical)
     stretch_pressure = v.strain_sum * by_sum - v.strain_vertical * by_vertical
     liquid_volume = volume - out["free_water_volume"] / out["shell_factor"]
-    shell = net * liquid_volume * stretch_temperature
+    stretched = liquid_volume + widening.volume / out["shell_factor"]
+    shell = net * stretched * stretch_temperature
     full = net * (before_roof + out["liquid_density"] * widening.by_density)  # a denser liquid widens its tank
     dry = s.density_is_dry > 0.0
     # A wet sample that is denser holds less water by mass: 1 − share = f ρ_w/ρ_s.
@@ -327,7 +331,7 @@ def _liquid_sensitivities(
     sens["water_level"] = net * (widening.by_water_level - sens["_water_area"])
     sens["liquid_temperature"] = -out["expansivity"] * full + v.liquid_weight * shell
     sens["ambient_temperature"] = (1.0 - v.liquid_weight) * shell
-    sens["pressure"] = out["compressibility"] * full + net * liquid_volume * stretch_pressure
+    sens["pressure"] = out["compressibility"] * full + net * stretched * stretch_pressure
     sens["density"] = by_log_density / s.density
     sens["density_temperature"] = full * out["by_sample_temperature"]
     sens["expansion"] = full * out["method_error"]

@@ -1,4 +1,4 @@
-"""Vapour pressure of pure substances, and the bubble pressure of liquid mixtures.
+"""Vapour pressure of pure substances, the bubble pressure of liquid mixtures and the dew pressure of vapours.
 
 The constants were fitted for this project to the saturation lines of the reference equations of state in
 CoolProp 8.0.0 (HEOS); the range and the worst departure from those lines stand beside each.
@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from models.arrays import ArrayLike, FloatArray, IntArray, as_floats
+from models.arrays import ArrayLike, BoolArray, FloatArray, IntArray, as_floats
 from models.components import Component, component
 from models.errors import DefinitionError
 
@@ -79,12 +79,14 @@ WAGNER: dict[str, tuple[float, float, float, float, float, float, float]] = {
 
 @dataclass(frozen=True)
 class SaturationColumns:
-    """Liquids whose vapour pressure can be computed, one row a composition.
+    """Liquids and vapours whose saturation pressure can be computed, one row a composition.
 
     Parameters
     ----------
     fractions : FloatArray, shape (rows, k)
-        Mole fractions in the liquid, padded with zeros. [1]
+        Mole fractions in the phase that the row is, padded with zeros. [1]
+    vapour : BoolArray, shape (rows,)
+        True where the composition is that of the vapour, which has a dew pressure. [1]
     critical_temperature, log_critical_pressure : FloatArray, shape (rows, k)
         Critical point of each component. [K, ln Pa]
     constants : FloatArray, shape (rows, k, 4)
@@ -96,6 +98,7 @@ class SaturationColumns:
     """
 
     fractions: FloatArray
+    vapour: BoolArray
     critical_temperature: FloatArray
     log_critical_pressure: FloatArray
     constants: FloatArray
@@ -105,45 +108,60 @@ class SaturationColumns:
 
     @classmethod
     def from_compositions(
-        cls, compositions: Sequence[Mapping[str, float] | Sequence[tuple[Component, float]]]
+        cls,
+        compositions: Sequence[Mapping[str, float] | Sequence[tuple[Component, float]]],
+        vapours: Sequence[bool] | None = None,
+        *,
+        extended: bool = False,
     ) -> SaturationColumns:
-        """Compile liquids to columns.
+        """Compile liquids and vapours to columns.
 
         Parameters
         ----------
         compositions : sequence of mappings from component id, or of (Component, fraction) pairs
-            Mole fractions of each liquid; they sum to one. [1]
+            Mole fractions of each liquid or vapour; they sum to one. [1]
+        vapours : sequence of bool or None
+            Which compositions are those of a vapour; left out, all are liquids. [1]
+        extended : bool
+            Whether each curve continues to the range of the mixture's other components: rough, for where
+            the pressure is only a small part of the answer. [1]
 
         Returns
         -------
         SaturationColumns
-            One row a liquid. [1]
+            One row a composition. [1]
         """
         mixtures = [_pairs(composition) for composition in compositions]
         width = max((len(mixture) for mixture in mixtures), default=1)
         rows = len(mixtures)
         fractions, log_pressure = np.zeros((rows, width)), np.zeros((rows, width))
         critical, constants = np.ones((rows, width)), np.zeros((rows, width, 4))
-        lowest, highest, departure = np.zeros(rows), np.full(rows, np.inf), np.zeros(rows)
+        lowest, highest, departure = np.zeros(rows), np.zeros(rows), np.zeros(rows)
         for i, mixture in enumerate(mixtures):
             for j, (substance, fraction) in enumerate(mixture):
-                low, high, *four, worst = wagner_constants(substance)
+                _, _, *four, worst = wagner_constants(substance)
                 fractions[i, j], constants[i, j] = fraction, four
                 critical[i, j] = substance.critical_temperature
                 log_pressure[i, j] = np.log(substance.critical_pressure)
-                lowest[i], highest[i] = max(lowest[i], low), min(highest[i], high)
                 departure[i] = max(departure[i], worst)
-        return cls(fractions, critical, log_pressure, constants, lowest, highest, departure)
+            ranges = [wagner_constants(substance)[:2] for substance, _ in mixture]
+            outer, inner = (min, max) if extended else (max, min)
+            lowest[i] = outer(low for low, _ in ranges)
+            highest[i] = inner(high for _, high in ranges)
+        vapour = np.zeros(rows, dtype=np.bool_) if vapours is None else np.array(vapours, dtype=np.bool_)
+        if vapour.shape != (rows,):
+            raise DefinitionError(f"{rows} compositions have {vapour.size} phases; each has one", field="components")
+        return cls(fractions, vapour, critical, log_pressure, constants, lowest, highest, departure)
 
     def pressure(self, temperature: ArrayLike, row: IntArray | int = 0) -> tuple[FloatArray, FloatArray]:
-        """Bubble pressure and its slope; NaN outside the range of the constants.
+        """Bubble pressure of a liquid or dew pressure of a vapour, and its slope; NaN outside the constants' range.
 
         Parameters
         ----------
         temperature : array_like, shape (...)
-            Temperature of the liquid. [K]
+            Temperature. [K]
         row : IntArray or int, shape (...)
-            Which liquid. [1]
+            Which composition. [1]
 
         Returns
         -------
@@ -152,15 +170,21 @@ class SaturationColumns:
 
         Notes
         -----
-        With tau = 1 - T/Tc of each component, and the liquid taken as ideal (Raoult's law)::
+        With tau = 1 - T/Tc of each component, and both phases taken as ideal (Raoult's law)::
 
             ln(P_i/Pc) = (a tau + b tau^1.5 + c tau^2.5 + d tau^5) Tc/T        (1)
-            P = sum x_i P_i                                                    (2)
+            P = sum x_i P_i             of a liquid                            (2)
+            1/P = sum y_i/P_i           of a vapour                            (3)
+
+        Of an extended mixture, a component above its critical temperature keeps the first term of eq. 1,
+        which is straight in ln P against 1/T and as steep as the curve where it ends.
 
         References
         ----------
         .. [1] W. Wagner, Cryogenics 13 (1973) 470-482; the exponents of D. Ambrose, J. Chem. Thermodyn.
            18 (1986) 45-51 (from memory).
+        .. [2] J. M. Smith, H. C. Van Ness, M. M. Abbott, "Introduction to Chemical Engineering
+           Thermodynamics", 7th ed., McGraw-Hill, 2005, eqs. 10.2 and 10.3 (from memory).
         """
         (t,) = as_floats(temperature)
         t, which = np.broadcast_arrays(t, np.asarray(row))
@@ -169,10 +193,15 @@ class SaturationColumns:
         if np.ndim(row) == 0:
             which = np.asarray(row)
         total, slope = np.zeros(t.shape), np.zeros(t.shape)
+        dew = self.vapour[which] if self.vapour.any() else None
         for k in range(self.fractions.shape[1]):
             part, part_slope = self._component(safe, which, k)
+            if dew is not None:  # eq. 3 is eq. 2 of the inverses
+                part, part_slope = _inverse_where(dew, part, part_slope)
             total += self.fractions[which, k] * part  # eq. 2
             slope += self.fractions[which, k] * part_slope
+        if dew is not None:
+            total, slope = _inverse_where(dew, total, slope)
         return np.where(inside, total, np.nan), np.where(inside, slope, np.nan)
 
     def _component(self, t: FloatArray, row: IntArray, k: int) -> tuple[FloatArray, FloatArray]:
@@ -180,28 +209,29 @@ class SaturationColumns:
         a, b, c, d = (self.constants[row, k, i] for i in range(4))
         critical = self.critical_temperature[row, k]
         reduced = t / critical
-        tau = np.maximum(1.0 - reduced, 0.0)
-        root = np.sqrt(tau)
-        tau2 = tau * tau
-        series = tau * (a + root * b + tau * root * c + tau2 * tau2 * d)
-        series_slope = a + 1.5 * root * b + 2.5 * tau * root * c + 5.0 * tau2 * tau2 * d  # by tau
+        tau = 1.0 - reduced
+        below = np.maximum(tau, 0.0)  # nothing but the first term above the critical temperature
+        root = np.sqrt(below)
+        tau2 = below * below
+        series = tau * (a + root * b + below * root * c + tau2 * tau2 * d)
+        series_slope = a + 1.5 * root * b + 2.5 * below * root * c + 5.0 * tau2 * tau2 * d  # by tau
         pressure = np.exp(self.log_critical_pressure[row, k] + series / reduced)  # eq. 1
         return pressure, -pressure * (series_slope + series / reduced) / t
 
     def vapour_fractions(self, temperature: ArrayLike, row: int = 0) -> FloatArray:
-        """Composition of the vapour in equilibrium with a liquid, by Raoult's law.
+        """Composition of the vapour in equilibrium with a liquid, by Raoult's law; a vapour's is its own.
 
         Parameters
         ----------
         temperature : array_like, shape (...)
-            Temperature of the liquid. [K]
+            Temperature. [K]
         row : int
-            Which liquid. [1]
+            Which composition. [1]
 
         Returns
         -------
         FloatArray, shape (..., k)
-            Mole fractions in the vapour, in the liquid's order of components. [1]
+            Mole fractions in the vapour, in the composition's order of components. [1]
 
         Notes
         -----
@@ -215,24 +245,21 @@ class SaturationColumns:
         (t,) = as_floats(temperature)
         safe = np.where(self.inside(t, row), t, np.nan)
         which = np.asarray(row)
-        parts = [
-            self.fractions[row, k] * self._component(safe, which, k)[0]
-            for k in range(self.fractions.shape[1])
-        ]
+        if self.vapour[row]:
+            return np.asarray(np.where(np.isnan(safe)[..., None], np.nan, self.fractions[row]))
+        parts = [self.fractions[row, k] * self._component(safe, which, k)[0] for k in range(self.fractions.shape[1])]
         stacked = np.stack(parts, axis=-1)
         return np.asarray(stacked / stacked.sum(axis=-1, keepdims=True))  # eq. 1
 
-    def inside(
-        self, temperature: ArrayLike, row: IntArray | int = 0
-    ) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:
+    def inside(self, temperature: ArrayLike, row: IntArray | int = 0) -> BoolArray:
         """Where the vapour pressure is defined; a NaN is outside.
 
         Parameters
         ----------
         temperature : array_like, shape (...)
-            Temperature of the liquid. [K]
+            Temperature. [K]
         row : IntArray or int, shape (...)
-            Which liquid. [1]
+            Which composition. [1]
 
         Returns
         -------
@@ -243,19 +270,19 @@ class SaturationColumns:
         return np.asarray((t >= self.lowest[row]) & (t <= self.highest[row]))
 
     def temperature(self, pressure: ArrayLike, row: IntArray | int = 0) -> FloatArray:
-        """Bubble temperature; NaN for a pressure beyond the range of the constants.
+        """Bubble or dew temperature; NaN for a pressure beyond the range of the constants.
 
         Parameters
         ----------
         pressure : array_like, shape (...)
             Pressure. [Pa]
         row : IntArray or int, shape (...)
-            Which liquid. [1]
+            Which composition. [1]
 
         Returns
         -------
         FloatArray, shape (...)
-            Temperature at which the liquid boils at this pressure. [K]
+            Temperature at which the liquid boils, or the vapour condenses, at this pressure. [K]
 
         Notes
         -----
@@ -284,6 +311,12 @@ class SaturationColumns:
         return np.where(inside, t, np.nan)
 
 
+def _inverse_where(mask: BoolArray, value: FloatArray, slope: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """A value and its slope, or those of its inverse where the mask is true."""
+    inverse = 1.0 / value
+    return np.where(mask, inverse, value), np.where(mask, -slope * inverse * inverse, slope)
+
+
 def _pairs(
     composition: Mapping[str, float] | Sequence[tuple[Component, float]],
 ) -> list[tuple[Component, float]]:
@@ -294,9 +327,7 @@ def _pairs(
         pairs = list(composition)
     total = sum(fraction for _, fraction in pairs)
     if not abs(total - 1.0) <= 1e-6 or any(not 0.0 <= fraction <= 1.0 for _, fraction in pairs):
-        raise DefinitionError(
-            f"mole fractions of the liquid sum to {total}; they are 0 to 1 and sum to one", field="components"
-        )
+        raise DefinitionError(f"mole fractions sum to {total}; they are 0 to 1 and sum to one", field="components")
     return [(substance, fraction / total) for substance, fraction in pairs if fraction > 0.0]
 
 

@@ -56,6 +56,15 @@ class Instrument(Body):
     local_span_m: float | None = Field(
         default=None, gt=0, le=200, description="Length over which that error changes; 1 m if left out [m]"
     )
+    expansion_per_k: float | None = Field(
+        default=None, ge=0, le=1e-3,
+        description="Linear expansion of a tape, of level_m and ullage_m only: the level is then corrected for its "
+        "temperature; left out, as of a radar, it is not [1/K]",
+    )  # fmt: skip
+    at_temperature_c: float | None = Field(
+        default=None, ge=-60, le=100,
+        description="Temperature at which the tape's marks are true; 20 °C if left out [°C]",
+    )  # fmt: skip
 
 
 def _of_their_kind(instruments: dict[str, Instrument]) -> dict[str, Instrument]:
@@ -65,6 +74,9 @@ def _of_their_kind(instruments: dict[str, Instrument]) -> dict[str, Instrument]:
             if getattr(one, name) is not None:
                 owner = "no part of capacity_pct" if quantity == "capacity_pct" else "a part of capacity_pct only"
                 raise refusal("conflicting", f"{name} is {owner}", quantity, name)
+        for name in ("expansion_per_k", "at_temperature_c"):
+            if getattr(one, name) is not None and quantity not in ("level_m", "ullage_m"):
+                raise refusal("conflicting", f"{name} is a part of level_m and ullage_m only", quantity, name)
     return instruments
 
 

@@ -118,6 +118,17 @@ class Gauging(Body):
         le=200,
         description="Height of the reference point above the zero; ullage needs it [m]",
     )
+    reference_on: Literal["ground", "shell", "still_pipe"] = Field(
+        default="ground",
+        description="What carries the reference point: a shell or a pipe that grows with its temperature, and the "
+        "point with it; or something that does not",
+    )
+    reference_height_at_temperature_c: float = Field(
+        default=15.0,
+        ge=-60,
+        le=400,
+        description="Temperature of what carries it when the height was measured [°C]",
+    )
     datum_m: float = Field(
         default=0.0,
         ge=-50,

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from app.services.compile import Analysed, CompiledVessel, all_of, analysed_mixture
-from app.services.compositions import Boiling, boiling_of, virial_columns
+from app.services.compositions import Boiling, analysed_fractions, virial_columns
 from app.services.liquids import own_density
 from models.errors import DefinitionError
 from models.liquid.definition import Liquid, MixtureLiquid
@@ -45,8 +45,11 @@ def analyses_of(builder: States) -> Analyses:
     """Vapours, liquids and vapour pressures of every row."""
     result = Analyses(np.full(builder.collected.rows, UNCHANGED, dtype=np.intp))
     vapours, no_vapour = _each(builder, "vapour_composition", _vapour)
+    liquids: dict[int, Liquid]
     liquids, no_liquid = _each(builder, "liquid_composition", _liquid)
-    boiling, _ = _each(builder, "liquid_composition", _boiling)  # what cannot boil leaves the substance's own
+    bubbles, _ = _each(builder, "liquid_composition", _bubbles)  # what cannot boil leaves the substance's own
+    dews, _ = _each(builder, "vapour_composition", _dews)
+    boiling = dews | bubbles
     result.refused = no_vapour | no_liquid
     result.refused_liquids = frozenset(no_liquid)
     for row, mixture in vapours.items():
@@ -126,10 +129,17 @@ def _vapour(vessel: CompiledVessel, analysis: Mapping[str, float]) -> VapourMixt
 def _liquid(vessel: CompiledVessel, analysis: Mapping[str, float]) -> Liquid | None:
     if not isinstance(vessel.liquid, MixtureLiquid):
         return None
-    liquid = replace(vessel.liquid, components=boiling_of(vessel.substance, analysis))
+    liquid: Liquid = replace(vessel.liquid, components=analysed_fractions(vessel.substance, analysis))
     own_density(liquid, (vessel.density[1], vessel.density[2]))
     return liquid
 
 
-def _boiling(vessel: CompiledVessel, analysis: Mapping[str, float]) -> Boiling | None:
-    return None if vessel.boiling is None else boiling_of(vessel.substance, analysis)
+def _bubbles(vessel: CompiledVessel, analysis: Mapping[str, float]) -> Boiling | None:
+    return None if vessel.boiling is None else Boiling(analysed_fractions(vessel.substance, analysis))
+
+
+def _dews(vessel: CompiledVessel, analysis: Mapping[str, float]) -> Boiling | None:
+    """An analysed vapour boils where nothing is known of its liquid; beside a blanket its analysis is of both."""
+    if vessel.boiling is None or not vessel.boiling.of_vapour or vessel.is_blanketed:
+        return None
+    return Boiling(analysed_fractions(vessel.substance, analysis), of_vapour=True)

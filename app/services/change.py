@@ -174,7 +174,7 @@ def _compute(
         () if boiling is None else (boiling,),
     )
     held = all_of((vessel,), extra)
-    rows = {
+    rows: dict[str, Any] = {
         name: np.array([columns.index(one[0])], dtype=np.intp) if one else None
         for name, one, columns in (
             ("vapour_row", extra.mixtures, held.mixtures), ("liquid_row", extra.liquids, held.liquids),

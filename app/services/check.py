@@ -14,6 +14,7 @@ from app.services.choose import ALWAYS
 from app.services.collect import Collected, Slot
 from app.services.compile import CompiledVessel
 from app.services.measure import Measured
+from app.services.warmed import correction, temperatures
 from app.store import readings
 from app.store.readings import Found
 
@@ -71,10 +72,14 @@ def check(
         scatter = answered.scatter
         random, systematic = _errors(vessel, asked.winner, asked.taken_at)
         spread = math.hypot(*_errors(vessel, asked.lower, asked.taken_at), scatter * random, systematic)
-        difference = asked.value - answered.value
+        value, counts = asked.value, answered.value
+        if measured.warmed is not None and asked.winner.spec.name == "level":
+            value += _warmth(measured, asked, asked.lower, value)
+            counts += _warmth(measured, asked, asked.winner, counts)
+        difference = value - counts
         quantity = asked.winner.spec.quantities[0]
         found.setdefault(asked.row, []).append(
-            {"quantity": quantity, "source": asked.lower.source, "at": asked.taken_at, "value": asked.value,
+            {"quantity": quantity, "source": asked.lower.source, "at": asked.taken_at, "value": value,
              "difference": difference, "standard_uncertainty": spread}
         )  # fmt: skip
         carried = measured.carried.get(asked.row)
@@ -85,6 +90,12 @@ def check(
                 f"more than {COVERAGE:g} times its standard uncertainty of {spread:.2g}",
             )
     measured.checks = found
+
+
+def _warmth(measured: Measured, asked: _Asked, slot: Slot, level: float) -> float:
+    """What temperature adds to a level from one of the two sources. [m]"""
+    vessel, at = measured.vessel(asked.row), temperatures(measured.state, asked.row)
+    return sum(correction(vessel, slot.quantity, slot.source, level, at, asked.taken_at))
 
 
 def _asked(collected: Collected, measured: Measured) -> Iterator[_Asked]:

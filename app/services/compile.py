@@ -159,6 +159,10 @@ class CompiledVessel:
             known = self._instruments[quantity, source] = _instrument(self.name, self.body, quantity, source)
         return known
 
+    def declared(self, quantity: str, source: str, at: int | None = None) -> Declared | None:
+        """What the vessel's text says of the instrument that reads a quantity, from a source."""
+        return _declared(self.text_at(at), quantity, source)
+
     @cached_property
     def _instruments(self) -> dict[tuple[str, str], Instrument]:
         return {}
@@ -278,11 +282,11 @@ def compile_bodies(
 
 
 def _boiling(substance: Substance) -> Boiling:
-    """What boils in the vessel: the liquid's composition where it is known, else the vapour's."""
+    """What boils in the vessel: the liquid's composition where it is known, else the vapour's, which condenses."""
     if isinstance(substance.liquid, LightHydrocarbonLiquid) and substance.liquid.components is not None:
-        return fractions_of(substance.liquid.components)
+        return Boiling(fractions_of(substance.liquid.components))
     assert substance.vapour is not None
-    return fractions_of(substance.vapour.components)
+    return Boiling(fractions_of(substance.vapour.components), of_vapour=True)
 
 
 def _space(body: Vessel, substance: Substance) -> str:

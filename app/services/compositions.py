@@ -6,6 +6,7 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from functools import lru_cache
+from typing import NamedTuple
 
 import numpy as np
 
@@ -16,7 +17,14 @@ from models.components import Component, component, given_component
 from models.saturation import SaturationColumns
 from models.vapour.series import VapourColumns, VapourMixture
 
-Boiling = tuple[tuple[Component, float], ...]  # a liquid as substances and mole fractions
+Fractions = tuple[tuple[Component, float], ...]  # substances and mole fractions
+
+
+class Boiling(NamedTuple):
+    """What boils: the composition of a liquid, with its bubble pressure, or of its vapour, with its dew pressure."""
+
+    parts: Fractions
+    of_vapour: bool = False
 
 
 def boiling_pressure(composition: Boiling | None, temperature: float) -> float:
@@ -30,7 +38,9 @@ def boiling_pressure(composition: Boiling | None, temperature: float) -> float:
 @lru_cache(maxsize=64)
 def saturation_columns(compositions: tuple[Boiling, ...]) -> SaturationColumns:
     """Vapour pressures of some liquids; the same liquids are compiled once."""
-    return SaturationColumns.from_compositions([list(composition) for composition in compositions])
+    return SaturationColumns.from_compositions(
+        [one.parts for one in compositions], [one.of_vapour for one in compositions], extended=True
+    )
 
 
 @lru_cache(maxsize=256)
@@ -39,7 +49,7 @@ def virial_columns(mixtures: tuple[VapourMixture, ...]) -> VapourColumns:
     return VapourColumns.from_mixtures(list(mixtures))
 
 
-def fractions_of(components: Sequence[WireComponent]) -> Boiling:
+def fractions_of(components: Sequence[WireComponent]) -> Fractions:
     """Substances and mole fractions, which sum to one."""
     total = math.fsum(item.mole_fraction for item in components)
     return tuple((_component(item), item.mole_fraction / total) for item in components)
@@ -89,7 +99,7 @@ def analysed(vapour: VirialVapour, analysis: tuple[tuple[str, float], ...]) -> V
     )
 
 
-def boiling_of(substance: Substance, analysis: Mapping[str, float]) -> Boiling:
+def analysed_fractions(substance: Substance, analysis: Mapping[str, float]) -> Fractions:
     """An analysis's substances and mole fractions, which sum to one; a substance gives its components in full."""
     parts = (getattr(part, "components", None) or () for part in (substance.liquid, substance.vapour))
     own = {item.id: item for given in parts for item in given}

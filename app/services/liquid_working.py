@@ -12,15 +12,20 @@ import numpy as np
 from app.services.liquids import State, key_of, liquid_columns, state_of
 from app.services.parts import celsius_of
 from models import units
-from models.liquid import petroleum
+from models.constants import WATER_DENSITY_60F
+from models.liquid import light_hydrocarbon, light_state, petroleum
+from models.liquid.costald import CostaldColumns
 from models.liquid.definition import (
     EthanolWaterLiquid,
     ExpansivityLiquid,
+    LightHydrocarbonLiquid,
     Liquid,
+    MixtureLiquid,
     PetroleumLiquid,
     TableLiquid,
     WaterLiquid,
 )
+from models.liquid.light_temperature import FLUIDS
 
 Step = dict[str, Any]
 
@@ -115,6 +120,37 @@ def _petroleum(one: Sampled) -> Iterator[Step]:
                "exp[−1.9947 + 0.00013427 t* + (793920 + 2326 t*)/ρ*²]; C_P = 1/(1 − 1e-5 F_p p)", edition)  # fmt: skip
 
 
+def _light(one: Sampled) -> Iterator[Step]:
+    key = _key(one)
+    excess = float(light_state.excess(key, *one.here))
+    found = light_hydrocarbon.factors(key, one.here[0], excess)
+    base = light_hydrocarbon.factors(key, one.standard[0], 0.0).saturation
+    warm, pressed = found.saturation, found.compression
+    pair = f"between {FLUIDS[int(warm.first)]} (1) and {FLUIDS[int(warm.second)]} (2)"
+    yield step("relative density at 60 °F", "γ", key, "1",
+               f"root of table 23E from ρ_s and T_s, to water of {WATER_DENSITY_60F} kg/m³", TP27)  # fmt: skip
+    yield step("interpolation", "δ", float(warm.share), "1", f"(γ − γ1)/(γ2 − γ1), {pair}", TP27)
+    yield step("critical temperature", "T_c", float(warm.critical_temperature), "K", "Tc1 + δ (Tc2 − Tc1)", TP27)
+    yield step("reduced temperature", "T_r", float(warm.reduced_temperature), "1", "T/T_c", TP27)
+    yield step("reduced temperature of 60 °F", "T_r,60", float(warm.reduced_temperature_60f), "1", "60 °F/T_c", TP27)
+    yield step("scale of the second fluid", "h2", float(warm.scale), "1", "Zc1 ρc1/(Zc2 ρc2)", TP27)
+    for name, symbol, value in (
+        ("saturated density of fluid 1", "ρ1", warm.density_first), ("of fluid 2", "ρ2", warm.density_second),
+        ("saturated density of fluid 1 at 60 °F", "ρ1,60", warm.density_first_60f),
+        ("of fluid 2 at 60 °F", "ρ2,60", warm.density_second_60f),
+    ):  # fmt: skip
+        yield step(name, symbol, float(value), "kmol/m³", "ρc {1 + [k1 τ^0.35 + k3 τ² + k4 τ³]/[1 + k2 τ^0.65]}", TP27)
+    yield step("factor from 60 °F", "CTL", float(warm.factor), "1",
+               "X(T_r)/X(T_r,60), X = ρ1/{1 + δ [ρ1/(h2 ρ2) − 1]}", TP27)  # fmt: skip
+    yield step("factor of the base temperature", "CTL_std", float(base.factor), "1",
+               "the same; C_T = CTL/CTL_std", TP27)  # fmt: skip
+    yield step("pressure above equilibrium", "Δp", excess / 1e3, "kPa",
+               "P − P_e by GPA TP-15 / API MPMS 11.2.5; 0 below it, and where P_e is not known", TP27)  # fmt: skip
+    if excess > 0.0:
+        yield step("compressibility", "F", float(pressed.factor_psi), "1e-5/psi",
+                   "1/(A + B Δp); C_P = 1/(1 − 1e-5 F Δp)", "API MPMS 11.2.2 (1986)")  # fmt: skip
+
+
 def _own(one: Sampled) -> Iterator[Step]:
     """A method with a density of its own: what it gives for the sample, and the factor that the sample makes."""
     columns, row = liquid_columns((one.liquid,)), np.zeros(1, dtype=np.intp)
@@ -123,6 +159,31 @@ def _own(one: Sampled) -> Iterator[Step]:
         value = float(columns.own_density(np.array([at[0]]), np.array([at[1]]), row)[0])
         yield step(f"density by the method, {name}", symbol, value, "kg/m³", METHOD_TEXTS[type(one.liquid)], reference)
     yield step("factor of the sample", "x", _key(one), "1", "ρ_s/ρ_m,s; ρ = x ρ_m", reference)
+
+
+def _mixture(one: Sampled) -> Iterator[Step]:
+    assert isinstance(one.liquid, MixtureLiquid)
+    for part, fraction in one.liquid.components:
+        name = f"mole fraction of {part.id}"
+        yield step(name, f"x({part.id})", fraction, "1", "of the liquid", "definition or analysis")
+    found = CostaldColumns.from_compositions([one.liquid.components]).working(0, *one.here)
+    for name, symbol, key, scale, unit, method in (
+        ("molar mass of the liquid", "m_L", "M", 1e3, "g/mol", "Σ x m"),
+        ("characteristic volume", "V*", "V*", 1e6, "cm³/mol", "¼ [Σ x V* + 3 (Σ x V*^⅔)(Σ x V*^⅓)]"),
+        ("critical temperature", "T_c", "Tc", 1.0, "K", "[Σ x (V* Tc)^½]²/V*"),
+        ("acentric factor", "ω", "omega", 1.0, "1", "Σ x ω_SRK"),
+        ("reduced temperature", "T_r", "Tr", 1.0, "1", "T/T_c"),
+        ("spherical part", "V_R0", "V0", 1.0, "1", "1 + a s + b s² + c s³ + d s⁴, s = (1 − T_r)^⅓"),
+        ("deviation", "V_Rδ", "Vdelta", 1.0, "1", "(e + f T_r + g T_r² + h T_r³)/(T_r − 1.00001)"),
+        ("saturated volume", "V_s", "Vs", 1e6, "cm³/mol", "V* V_R0 (1 − ω V_Rδ)"),
+        ("bubble pressure", "P_s", "Ps", 1e-3, "kPa", "Σ x P_i: Raoult's law; a lower pressure counts as it"),
+        ("critical pressure", "P_c", "Pc", 1e-3, "kPa", "(0.291 − 0.080 ω) R T_c/V*; a pure substance's own"),
+        ("stiffness", "B", "B", 1e-3, "kPa", "P_c (−1 + a s + b s² + d s³ + e s⁴)"),
+        ("stiffness", "C", "C", 1.0, "1", "0.0861488 + 0.0344483 ω"),
+        ("volume", "V_m", "V", 1e6, "cm³/mol", "V_s {1 − C ln[(B + P)/(B + P_s)]}"),
+    ):
+        yield step(name, symbol, found[key] * scale, unit, method, COSTALD)
+    yield from _own(one)
 
 
 def _ethanol(one: Sampled) -> Iterator[Step]:
@@ -134,15 +195,17 @@ def _plain(one: Sampled) -> Iterator[Step]:
 
 
 KINDS: dict[type, Callable[[Sampled], Iterator[Step]]] = {
+    LightHydrocarbonLiquid: _light, MixtureLiquid: _mixture,
     ExpansivityLiquid: _expansivity, PetroleumLiquid: _petroleum,
     WaterLiquid: _plain, TableLiquid: _plain, EthanolWaterLiquid: _ethanol,
 }  # fmt: skip
 REFERENCES: dict[type, str] = {
+    LightHydrocarbonLiquid: TP27, MixtureLiquid: COSTALD,
     ExpansivityLiquid: EXPONENTIAL, PetroleumLiquid: petroleum.EDITION,
     WaterLiquid: KELL, TableLiquid: "the substance's table", EthanolWaterLiquid: OIML,
 }  # fmt: skip
 METHOD_TEXTS: dict[type, str] = {
-    # MixtureLiquid: "corresponding states: saturated volume, then compressed by what lies above the bubble pressure",
+    MixtureLiquid: "corresponding states: saturated volume, then compressed by what lies above the bubble pressure",
     WaterLiquid: "ρ₀(T) exp[κ(T) (P − 1 atm)]",
     TableLiquid: "monotone cubic of ln ρ between the table's rows, then exp[κ (P − P_table)]",
 }

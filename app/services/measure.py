@@ -19,6 +19,7 @@ from app.services.compositions import Boiling, boiling_pressure
 from app.services.gauged import HEAD, by_head, head_sensitivities, levels_per_unit
 from app.services.liquids import SATURATED
 from app.services.parts import KELVIN, OTHER_MEANS, PASCAL, Part, at_row
+from app.services.warmed import Warmed, warmed
 from models import units
 from models.columns import Inventory, State
 from models.estimate import Estimate
@@ -56,6 +57,7 @@ class Measured:
     tickets: list[tuple[str, str]] = field(default_factory=list)
     checks: dict[int, list[dict[str, Any]]] = field(default_factory=dict)
     refused: Mapping[int, str] = field(default_factory=dict)
+    warmed: Warmed | None = None
 
     def instant(self, row: int) -> int:
         """The instant that a row was asked for; it may have been read at another."""
@@ -124,7 +126,7 @@ def measure(
     parts = parts_of(builder, state, per_unit, gravity)
     return Measured(
         collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed,
-        all_of(collected.vessels, extra), asked, refused=builder.refused,
+        all_of(collected.vessels, extra), asked, refused=builder.refused, warmed=builder.warmed,
     )  # fmt: skip
 
 
@@ -145,6 +147,7 @@ class States:
         self.vented = self.of_vessels([float(vessel.space in ("open", "none")) for vessel in self.vessels]) > 0
         self.at_rest = np.zeros(collected.rows, dtype=bool)
         self.gauge = np.zeros(collected.rows, dtype=bool)
+        self.warmed: Warmed | None = None
         self.refused: dict[int, str] = {}  # rows whose analysis the substance's vapour model cannot take, and why
         level, origin = chosen["level"].source, collected.origins["level"]
         means = [origin.of(row, int(level[row]))[0] if level[row] >= 0 else "" for row in range(collected.rows)]
@@ -196,6 +199,9 @@ class States:
             saturation_row=analysed.saturation_row,
             roof_load=np.nan_to_num(self.chosen["roof_load"].value),
         )
+        self.warmed = warmed(self, state)
+        if self.warmed is not None:
+            state = replace(state, level=state.level + self.warmed.tape + self.warmed.reference)
         for row in self.refused:  # nothing is computed by a composition that is not the content's
             if row in analysed.refused_liquids:
                 state.level[row] = np.nan
@@ -254,8 +260,8 @@ class States:
     def _density(self, analysed: Mapping[int, float]) -> tuple[FloatColumns, FloatColumns, FloatColumns]:
         """The sample's density and state, or the substance's own figure, or that of the analysed composition."""
         own = [self.of_vessels([vessel.density[i] for vessel in self.vessels]) for i in range(3)]
-        for row, density in analysed.items():
-            own[0][row] = density
+        for row, figure in analysed.items():
+            own[0][row] = figure
         read = self.value("density", "observed_density_kg_m3")
         sampled = np.isfinite(read)
         self.density_is_sample = sampled & self.chosen["density"].usable

@@ -7,22 +7,16 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
 from app.services.compositions import virial_columns
-from app.services.liquid_working import Sampled, density_steps
+from app.services.geometry_working import ORDER, STRAIN, geometry_steps
+from app.services.liquid_working import Sampled, Step, density_steps, step
+from app.services.liquids import SATURATED
 from app.services.measure import Measured
 from app.services.parts import at_row, celsius_of
-from models.columns import Mark, Method
+from models.columns import Mark
 from models.estimate import Estimate, combine
 
 if TYPE_CHECKING:
     from app.services.carry import Carried
-
-Step = dict[str, Any]
-
-ORDER = "API MPMS ch. 12.1.1, order of calculation (from memory)"
-STRAIN = (
-    "V(h; ε) = (1+ε)³ V(h/(1+ε)): homogeneous strain at a fixed level; "
-    "2ε for upright cylinders, the C_TSh of API MPMS 12.1.1"
-)
 
 
 def working_steps(measured: Measured, row: int) -> list[Step]:
@@ -30,16 +24,16 @@ def working_steps(measured: Measured, row: int) -> list[Step]:
     carried = measured.carried.get(row)
     if carried is not None and carried.stated is not None:
         mass, how = carried.stated.value, "the vessel was read empty" if carried.empty else "weighed, as it stands"
-        return [_step("stock-take", "M", mass, "kg", how, "as read"), *_moved(measured, row, carried, mass)]
+        return [step("stock-take", "M", mass, "kg", how, "as read"), *_moved(measured, row, carried, mass)]
     vessel = measured.vessel(row)
     steps: list[Step] = []
     if vessel.has_liquid:
-        steps.extend(_geometry(measured, row))
+        steps.extend(geometry_steps(measured, row))
         steps.extend(_liquid(measured, row))
     if vessel.has_vapour:
         steps.extend(_vapour(measured, row))
     symbols = "M = M_liquid + M_vapour" if vessel.has_vapour else "M = M_liquid"
-    steps.append(_step("mass", "M", measured.result["mass"][row], "kg", symbols, ORDER))
+    steps.append(step("mass", "M", measured.result["mass"][row], "kg", symbols, ORDER))
     if carried is not None:
         steps.extend(_moved(measured, row, carried, float(measured.result["mass"][row])))
     return steps
@@ -50,70 +44,17 @@ def _moved(measured: Measured, row: int, carried: Carried, read: float) -> Itera
     if measured.instant(row) == int(measured.collected.at[row]):
         return
     moved = carried.moved.value
-    yield _step("moved", "ΔM", moved, "kg", "receipts less deliveries between the reading and the instant", "as read")
-    yield _step("mass at the instant", "M(t)", read + moved, "kg", "M + ΔM", ORDER)
-
-
-def _step(step: str, symbol: str, value: float, unit: str, method: str, reference: str) -> Step:
-    return {"step": step, "symbol": symbol, "value": float(value) if math.isfinite(value) else None, "unit": unit,
-            "method": method, "reference": reference}  # fmt: skip
-
-
-def _geometry(measured: Measured, row: int) -> Iterator[Step]:
-    vessel, result, state = measured.vessel(row), measured.result, measured.state
-    if vessel.is_full:
-        yield _step("volume", "V", result["tank_volume"][row], "m³", "kept full: the whole capacity", "definition")
-        stretched = "1 + ε_x + ε_y + ε_z: of a full vessel"
-        yield _step("shell factor", "K", result["shell_factor"][row], "1", stretched, STRAIN)
-        yield _step("gross observed volume", "GOV", result["gross_observed_volume"][row], "m³", "K V", ORDER)
-        return
-    assert vessel.curve is not None
-    parameters = vessel.parameters
-    yield _step(
-        "innage",
-        "h",
-        at_row(state.level, row),
-        "m",
-        "level on the curve's datum; an ullage is taken from the reference height",
-        ORDER,
-    )
-    yield _step("volume", "V(h)", result["tank_volume"][row], "m³", vessel.curve.kind, vessel.curve.source)
-    yield _step("surface", "A(h)", result["surface_area"][row], "m²", "slope of the same curve", vessel.curve.source)
-    yield _step("shell temperature", "T_shell", celsius_of(result["liquid_shell_temperature"][row]), "°C",
-                "that of the liquid (insulated)" if parameters["liquid_weight"] == 1.0
-                else "(7 T_liquid + T_ambient)/8", "API MPMS ch. 12.1.1")  # fmt: skip
-    yield _step("shell factor", "K", result["shell_factor"][row], "1",
-                "1 + ε_x + ε_y + ε_z − ε_z h A/V; temperature and pressure strain together", STRAIN)  # fmt: skip
-    yield _step(
-        "free water",
-        "K V(h_w)",
-        result["free_water_volume"][row],
-        "m³",
-        "the same curve at the water's level",
-        ORDER,
-    )
-    if vessel.method & Method.ROOF:
-        yield _step("floating roof", "ΔV_roof", result["roof_volume"][row], "m³",
-                    "−W/ρ once afloat; W (1/ρ_table − 1/ρ) where the table deducts the roof; "
-                    "linear between landing and floating",
-                    "API MPMS ch. 12.1.1 (from memory)")  # fmt: skip
-    yield _step(
-        "gross observed volume",
-        "GOV",
-        result["gross_observed_volume"][row],
-        "m³",
-        "K V(h) − K V(h_w) + ΔV_roof",
-        ORDER,
-    )
+    yield step("moved", "ΔM", moved, "kg", "receipts less deliveries between the reading and the instant", "as read")
+    yield step("mass at the instant", "M(t)", read + moved, "kg", "M + ΔM", ORDER)
 
 
 def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     result, state, vessel = measured.result, measured.state, measured.vessel(row)
     chosen = measured.chosen["density"].usable[row]
-    yield _step("sample density", "ρ_s", at_row(state.density, row), "kg/m³",
+    yield step("sample density", "ρ_s", at_row(state.density, row), "kg/m³",
                 "laboratory sample" if chosen else "the substance's own figure: no sample was ever read",
                 "as read")  # fmt: skip
-    yield _step(
+    yield step(
         "sample temperature",
         "T_s",
         celsius_of(at_row(state.density_temperature, row)),
@@ -121,8 +62,8 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "as read",
         "as read",
     )
-    yield _step("sample pressure", "P_s", at_row(state.density_pressure, row) / 1000.0, "kPa", "absolute", "as read")
-    yield _step(
+    yield step("sample pressure", "P_s", at_row(state.density_pressure, row) / 1000.0, "kPa", "absolute", "as read")
+    yield step(
         "liquid temperature",
         "T",
         celsius_of(at_row(state.liquid_temperature, row)),
@@ -130,9 +71,9 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "mean of the liquid",
         "as read",
     )
-    yield _step("liquid pressure", "P", _pressure(measured, row) / 1000.0, "kPa",
+    yield step("liquid pressure", "P", _pressure(measured, row) / 1000.0, "kPa",
                 "absolute; of the space above the liquid: the liquid's own head is left out", ORDER)  # fmt: skip
-    yield _step(
+    yield step(
         "standard temperature",
         "T_std",
         celsius_of(vessel.parameters["standard_temperature"]),
@@ -140,11 +81,15 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "the site's base temperature",
         "definition",
     )
-    yield _step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa",
-                "absolute; the site's base pressure or, where higher, the vapour pressure at T_std",
-                "definition")  # fmt: skip
+    equilibrium = (
+        "absolute; the site's base pressure: where that of equilibrium is higher, the method takes the saturated liquid"
+        if isinstance(measured.liquid(row), SATURATED)
+        else "absolute; the site's base pressure or, where higher, the vapour pressure at T_std"
+    )
+    yield step("standard pressure", "P_std", vessel.parameters["standard_pressure"] / 1000.0, "kPa", equilibrium,
+               "definition")  # fmt: skip
     yield from density_steps(content(measured, row))
-    yield _step(
+    yield step(
         "sediment and water",
         "f",
         at_row(state.sediment_water, row),
@@ -152,13 +97,15 @@ def _liquid(measured: Measured, row: int) -> Iterator[Step]:
         "volume fraction of the sample",
         "as read",
     )
-    yield _step("water density", "ρ_w", vessel.parameters["water_density"], "kg/m³",
+    yield step("water density", "ρ_w", vessel.parameters["water_density"], "kg/m³",
                 "of the water in a wet sample, 15 °C", "M. Tanaka et al., Metrologia 38 (2001) 301-309")  # fmt: skip
-    yield _step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
+    yield step("standard density", "ρ_std", result["standard_density"][row], "kg/m³",
                 "ρ_s,std (1 − f ρ_w/ρ_s)/(1 − f) of a wet sample, ρ_s,std of a dry one", ORDER)  # fmt: skip
-    yield _step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³", "GOV C_T C_P", ORDER)
-    yield _step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)
-    yield _step("liquid mass", "M_liquid", result["liquid_mass"][row], "kg", "NSV ρ_std", ORDER)
+    yield step("gross standard volume", "GSV", result["gross_standard_volume"][row], "m³", "GOV C_T C_P", ORDER)
+    yield step("net standard volume", "NSV", result["net_standard_volume"][row], "m³", "GSV (1 − f)", ORDER)
+    known = math.isfinite(result["standard_density"][row])
+    method = "NSV ρ_std" if known else "GOV ρ (1 − f ρ_w/ρ_s) of a wet sample, GOV ρ (1 − f) of a dry one"
+    yield step("liquid mass", "M_liquid", result["liquid_mass"][row], "kg", method, ORDER)
 
 
 def content(measured: Measured, row: int) -> Sampled:
@@ -199,11 +146,11 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     if vessel.is_blanketed:
         basis = BESIDE_BLANKET if result["vapour_pressure"][row] < at_row(measured.state.pressure, row) else NO_BLANKET
     virial = ("virial equation", "definition")
-    yield _step("capacity", "V_total", vessel.capacity, "m³", "whole vessel, unstrained", "definition")
-    yield _step("full shell factor", "K_T", result["full_factor"][row], "1", "1 + ε_x + ε_y + ε_z", STRAIN)
-    yield _step("vapour volume", "V_v", result["vapour_volume"][row], "m³", "K_T V_total − K V(h)", STRAIN)
+    yield step("capacity", "V_total", vessel.capacity, "m³", "whole vessel, unstrained", "definition")
+    yield step("full shell factor", "K_T", result["full_factor"][row], "1", "(1 + Σε/3)³", STRAIN)
+    yield step("vapour volume", "V_v", result["vapour_volume"][row], "m³", "K_T V_total − K V(h)", STRAIN)
     if Mark.VAPOUR_LEFT_OUT & marks:
-        yield _step(
+        yield step(
             "vapour mass",
             "M_vapour",
             0.0,
@@ -212,7 +159,7 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
             "bounded in the budget",
         )
         return
-    yield _step(
+    yield step(
         "vapour pressure",
         "P",
         result["vapour_pressure"][row] / 1000.0,
@@ -225,7 +172,7 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
         basis = "that of the liquid" if unread else "as read"
     elif basis == "as read" and unread:
         basis = NO_BOILING
-    yield _step("vapour temperature", "T_v", celsius_of(result["vapour_temperature"][row]), "°C", basis, "as read")
+    yield step("vapour temperature", "T_v", celsius_of(result["vapour_temperature"][row]), "°C", basis, "as read")
     mixture = measured.mixture(row)
     series = virial_columns((mixture,))
     second, _, third, _ = series.second_and_third(result["vapour_temperature"][row])
@@ -235,10 +182,10 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     for note in notes if inside else notes[::-1]:
         if note.symbol in values:
             value, unit = values.pop(note.symbol)
-            yield _step(note.quantity, note.symbol, value, unit, note.method, note.reference)
+            yield step(note.quantity, note.symbol, value, unit, note.method, note.reference)
         elif note.symbol == "Z":
             virial = (note.method, note.reference)
-    yield _step(
+    yield step(
         "molar mass",
         "m",
         float(series.molar_mass[0]) * 1e3,
@@ -246,11 +193,11 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
         "of the vapour's composition",
         "components",
     )
-    yield _step("compressibility factor", "Z", result["compressibility_factor"][row], "1", *virial)
-    yield _step("reduced density", "ρ_r", result["reduced_density"][row], "1",
+    yield step("compressibility factor", "Z", result["compressibility_factor"][row], "1", *virial)
+    yield step("reduced density", "ρ_r", result["reduced_density"][row], "1",
                 "molar density times the critical volume: how far from an ideal gas", virial[1])  # fmt: skip
-    yield _step("vapour density", "ρ_v", result["vapour_density"][row], "kg/m³", "P m/(Z R T_v)", virial[1])
-    yield _step("vapour mass", "M_vapour", result["vapour_mass"][row], "kg", "V_v ρ_v", ORDER)
+    yield step("vapour density", "ρ_v", result["vapour_density"][row], "kg/m³", "P m/(Z R T_v)", virial[1])
+    yield step("vapour mass", "M_vapour", result["vapour_mass"][row], "kg", "V_v ρ_v", ORDER)
 
 
 def _blanket(measured: Measured, row: int) -> Iterator[Step]:
@@ -258,7 +205,7 @@ def _blanket(measured: Measured, row: int) -> Iterator[Step]:
     kind = measured.vessel(row).body.vapour_space
     name = "blanket" if kind is None or kind.blanket is None else kind.blanket
     rest = max(0.0, at_row(measured.state.pressure, row) - float(measured.result["vapour_pressure"][row]))
-    yield _step("blanket pressure", "P_b", rest / 1000.0, "kPa",
+    yield step("blanket pressure", "P_b", rest / 1000.0, "kPa",
                 f"{name}: the pressure of the space less the vapour's own; it counts in no mass",
                 "Dalton's law")  # fmt: skip
 

@@ -2,18 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 
 from models.arrays import FloatArray, IntArray
 from models.constants import STANDARD_ATMOSPHERE
-from models.liquid import ethanol_water, petroleum, petroleum_limits, water
+from models.liquid import ethanol_water, light_hydrocarbon, light_state, petroleum, petroleum_limits, water
+from models.liquid.costald import CostaldColumns
 from models.liquid.definition import (
     EthanolWaterLiquid,
     ExpansivityLiquid,
+    LightHydrocarbonLiquid,
+    MixtureLiquid,
     PetroleumLiquid,
     TableLiquid,
     WaterLiquid,
@@ -39,20 +42,78 @@ class LiquidMethod(Protocol):
     def state(
         self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
     ) -> LiquidState:
-        """Densities that follow from a sample. [SI]"""
+        """Densities that follow from samples.
+
+        Parameters
+        ----------
+        density : FloatArray, shape (n,) or (1,)
+            Density of the sample. [kg/m³]
+        sample, here, standard : Conditions
+            Where it was sampled, where it is, and the standard state. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid in this stack. [1]
+
+        Returns
+        -------
+        LiquidState
+            Columns of n rows; NaN outside the method. [SI]
+        """
 
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
-        """What the sample says of the content. [as the method has it]"""
+        """What samples say of their contents.
+
+        Parameters
+        ----------
+        density : FloatArray, shape (n,) or (1,)
+            Density of the sample. [kg/m³]
+        sample : Conditions
+            Where it was sampled. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid in this stack. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            The key of each content. [as the method has it]
+        """
 
     def own_density(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> FloatArray:
-        """Density by the method alone; NaN where it needs a sample. [kg/m³]"""
+        """Density by the method alone.
+
+        Parameters
+        ----------
+        temperature, pressure : FloatArray, shape (n,) or (1,)
+            Temperature and absolute pressure. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each liquid in this stack. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            Density; NaN where the method needs a sample, or does not reach. [kg/m³]
+        """
 
     def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
-        """Which limit was passed, in one sentence."""
+        """Which limit was passed.
+
+        Parameters
+        ----------
+        density : float
+            Density of the sample. [kg/m³]
+        sample, here : tuple of float
+            Temperature and absolute pressure where it was sampled, and where it is. [K, Pa]
+        row : int
+            Row of the liquid in this stack. [1]
+
+        Returns
+        -------
+        str
+            One sentence; nothing where no limit was passed. [1]
+        """
 
 
 @dataclass(frozen=True)
-class ByExpansivity:
+class _ByExpansivity:
     """β and κ; the sample's density is carried by their integral."""
 
     coefficients: tuple[FloatArray, ...]
@@ -60,7 +121,7 @@ class ByExpansivity:
     compressibility: FloatArray
 
     @classmethod
-    def of(cls, liquids: Sequence[ExpansivityLiquid]) -> ByExpansivity:
+    def of(cls, liquids: Sequence[ExpansivityLiquid]) -> _ByExpansivity:
         """Compile liquids; shorter polynomials are padded with zeros. [1]"""
         width = max(len(one.coefficients) for one in liquids)
         return cls(
@@ -154,7 +215,7 @@ class _OwnDensity(_Keyed):
         return self.own_point(temperature, pressure, row).density
 
 
-class ByWater(_OwnDensity):
+class _ByWater(_OwnDensity):
     """Water; every row is the same."""
 
     share = WATER_SHARE
@@ -169,7 +230,7 @@ class ByWater(_OwnDensity):
 
 
 @dataclass(frozen=True)
-class ByTable(_OwnDensity):
+class _ByTable(_OwnDensity):
     """Density tables."""
 
     tables: DensityTableColumns
@@ -185,14 +246,52 @@ class ByTable(_OwnDensity):
 
 
 @dataclass(frozen=True)
-class ByPetroleum(_Keyed):
+class _ByComposition(_OwnDensity):
+    """Mixtures by their composition."""
+
+    mixtures: CostaldColumns
+    share = MIXTURE_SHARE
+
+    def own_point(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> LiquidPoint:
+        """The mixture's density. [SI]"""
+        return self.mixtures.point(temperature, pressure, row)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed."""
+        return self.mixtures.why_outside(row, here[0]) or self.mixtures.why_outside(row, sample[0])
+
+
+class _ByLightDensity(_Keyed):
+    """Light hydrocarbons by their density; the key is the relative density at 60 °F."""
+
+    def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
+        """Relative density at 60 °F. [1]"""
+        return light_state.key_at(density, sample.temperature, sample.pressure)
+
+    def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
+        """Density and slopes at a state. [SI]"""
+        return light_state.point_at(key, conditions.temperature, conditions.pressure)
+
+    def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
+        """A share of the way from the sample to the vessel. [1]"""
+        return np.asarray(LIGHT_SHARE * ratio)
+
+    def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
+        """Which limit was passed: by the sample, or by the content that it tells of."""
+        why = light_hydrocarbon.why_outside(None, density, sample[0])
+        key = float(light_state.key_at(density, *sample))
+        return why or light_hydrocarbon.why_outside(key, density, here[0], float(light_state.excess(key, *here)))
+
+
+@dataclass(frozen=True)
+class _ByPetroleum(_Keyed):
     """Petroleum by commodity; the key is the density at 60 °F."""
 
     commodity: IntArray
     alpha60: FloatArray
 
     @classmethod
-    def of(cls, liquids: Sequence[PetroleumLiquid]) -> ByPetroleum:
+    def of(cls, liquids: Sequence[PetroleumLiquid]) -> _ByPetroleum:
         """Compile liquids. [1]"""
         return cls(
             np.array([petroleum.COMMODITIES[one.commodity] for one in liquids], dtype=np.intp),
@@ -223,7 +322,7 @@ class ByPetroleum(_Keyed):
         return ""
 
 
-class ByStrength(_Keyed):
+class _ByStrength(_Keyed):
     """Ethanol and water; the key is the mass fraction of ethanol."""
 
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
@@ -244,13 +343,17 @@ class ByStrength(_Keyed):
         return ethanol_water.why_outside(strength, *here) or ethanol_water.why_outside(strength, *sample)
 
 
-METHODS = {
-    ExpansivityLiquid: ByExpansivity.of,
-    PetroleumLiquid: ByPetroleum.of,
-    WaterLiquid: lambda liquids: ByWater(),
-    TableLiquid: lambda liquids: ByTable(
+METHODS: dict[type, Callable[[Sequence[Any]], LiquidMethod]] = {
+    ExpansivityLiquid: _ByExpansivity.of,
+    PetroleumLiquid: _ByPetroleum.of,
+    LightHydrocarbonLiquid: lambda liquids: _ByLightDensity(),
+    MixtureLiquid: lambda liquids: _ByComposition(
+        CostaldColumns.from_compositions([one.components for one in liquids])
+    ),
+    WaterLiquid: lambda liquids: _ByWater(),
+    TableLiquid: lambda liquids: _ByTable(
         DensityTableColumns.from_tables([(one.rows, one.compressibility, one.pressure) for one in liquids])
     ),
-    EthanolWaterLiquid: lambda liquids: ByStrength(),
+    EthanolWaterLiquid: lambda liquids: _ByStrength(),
 }
 """How a kind of liquid is compiled."""

@@ -85,13 +85,58 @@ class Keyed(Protocol):
     """A method that tells contents of its kind apart by one number, found from a sample."""
 
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
-        """What the sample says of the content. [as the method has it]"""
+        """What samples say of their contents.
+
+        Parameters
+        ----------
+        density : FloatArray, shape (n,) or (1,)
+            Density of the sample. [kg/m³]
+        sample : Conditions
+            Where it was sampled. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            The key of each content. [as the method has it]
+        """
 
     def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
-        """Density and slopes at a state. [SI]"""
+        """Density and slopes of contents at a state.
+
+        Parameters
+        ----------
+        key : FloatArray, shape (n,) or (1,)
+            The key of each content. [as the method has it]
+        conditions : Conditions
+            Where it is. [K, Pa]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid. [1]
+
+        Returns
+        -------
+        LiquidPoint, shape (n,) or (1,)
+            Density and slopes. [SI]
+        """
 
     def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
-        """Relative change of the density for one unit of the method's unknown error. [1]"""
+        """What the method's own unknown error does.
+
+        Parameters
+        ----------
+        here, sample : Conditions
+            Where the content is, and where it was sampled. [K, Pa]
+        ratio : FloatArray, shape (n,) or (1,)
+            ln ρ/ρ_s. [1]
+        row : IntArray, shape (n,), or int
+            Row of each content's liquid. [1]
+
+        Returns
+        -------
+        FloatArray, shape (n,) or (1,)
+            Relative change of the density for one standard uncertainty of the method. [1]
+        """
 
 
 @dataclass(frozen=True)
@@ -165,8 +210,8 @@ def _by_runs(
     density: FloatArray, sample: Conditions, standard: Conditions, row: Row,
 ) -> _Sampled:  # fmt: skip
     """Solve once for each run of equal samples: a content is sampled far less often than it is gauged."""
-    columns = [density, sample.temperature, sample.pressure, sample.atmosphere, standard.temperature, standard.pressure]
-    columns += [] if isinstance(row, int) else [row]
+    columns: list[FloatArray | IntArray] = [density, sample.temperature, sample.pressure, sample.atmosphere]
+    columns += [standard.temperature, standard.pressure] + ([] if isinstance(row, int) else [row])
     rows = max(len(column) for column in columns)
     changed = np.zeros(rows - 1, dtype=bool)
     for column in columns:

@@ -405,7 +405,8 @@ NOT_EXPANDING = ExpansivityLiquid((0.0,), 288.15, 0.0)
 
 
 def test_a_vapour_is_left_out_up_to_one_percent_of_its_liquid() -> None:
-    case = replace(BULLET_CASE, curve=shapes.box(length=1.0, width=1.0, height=1.0), vessel={"expansion": 0.0}, liquid=NOT_EXPANDING).reads(
+    box = shapes.box(length=1.0, width=1.0, height=1.0)
+    case = replace(BULLET_CASE, curve=box, vessel={"expansion": 0.0}, liquid=NOT_EXPANDING).reads(
         level=0.95, liquid_temperature=353.15, vapour_temperature=math.nan, pressure=math.nan, density=500.0
     )
     pressure = inventory(vessels([case]), None, state([case]))["vapour_pressure"][0]

@@ -130,6 +130,52 @@ def test_a_liquid_mixture_boils_by_raoults_law() -> None:
     assert both / 1e5 == pytest.approx([5.2205, 8.365], abs=2e-3)
 
 
+def test_a_vapour_mixture_condenses_by_raoults_law() -> None:
+    # 50/50 at 20 degrees: 2/(1/8.365 + 1/2.076) bar, from the pure pressures by CoolProp 8.0.0.
+    half = {"propane": 0.5, "n-butane": 0.5}
+    columns = SaturationColumns.from_compositions([half, half, {"propane": 1.0}], [False, True, True])
+    bubble, dew, pure = columns.pressure([293.15, 293.15, 293.15], np.array([0, 1, 2]))[0] / 1e5
+    assert dew == pytest.approx(3.3265, abs=2e-3)
+    assert bubble == pytest.approx(5.2205, abs=2e-3)
+    assert pure == pytest.approx(8.365, abs=2e-3)
+    assert columns.vapour_fractions(293.15, 1).tolist() == [0.5, 0.5]
+    assert np.isnan(columns.vapour_fractions(20.0, 1)).all()
+    with pytest.raises(DefinitionError, match="1 compositions have 2 phases"):
+        SaturationColumns.from_compositions([half], [True, False])
+
+
+def test_an_extended_mixture_lasts_as_long_as_its_last_component() -> None:
+    gassy = {"ethane": 0.05, "propane": 0.95}
+    strict = SaturationColumns.from_compositions([gassy])
+    extended = SaturationColumns.from_compositions([gassy], extended=True)
+    assert (strict.lowest[0], strict.highest[0]) == (167.0, 305.322)
+    assert (extended.lowest[0], extended.highest[0]) == (138.0, 369.89)
+    assert extended.pressure(250.0) == strict.pressure(250.0)
+    # ln P of ethane straight in 1/T from its critical point, where d ln P/d ln T is 6.48123
+    ethane = 48.722e5 * np.exp(6.48123 * (1.0 - 305.322 / 340.0))
+    pressure, slope = extended.pressure(340.0)
+    propane = float(vapour_pressure(340.0, "propane"))
+    assert float(pressure) == pytest.approx(0.05 * ethane + 0.95 * propane, rel=1e-9)
+    secant = (extended.pressure(340.001)[0] - extended.pressure(339.999)[0]) / 0.002
+    assert float(slope) == pytest.approx(float(secant), rel=1e-6)
+
+
+@settings(derandomize=True, max_examples=50, deadline=None)
+@given(t=st.floats(200.0, 365.0), x=st.floats(0.01, 0.99))
+def test_the_vapour_above_a_liquid_has_its_dew_pressure(t: float, x: float) -> None:
+    liquid = SaturationColumns.from_compositions([{"propane": x, "n-butane": 1.0 - x}])
+    y = float(liquid.vapour_fractions(t)[0])
+    both = SaturationColumns.from_compositions(
+        [{"propane": 1.0}, {"propane": y, "n-butane": 1.0 - y}], [False, True]
+    )
+    pressure, slope = both.pressure(t, 1)
+    assert float(pressure) == pytest.approx(float(liquid.pressure(t)[0]), rel=1e-12)
+    assert float(both.temperature(pressure, 1)) == pytest.approx(t, rel=1e-11)
+    step = 1e-3
+    secant = (both.pressure(t + step, 1)[0] - both.pressure(t - step, 1)[0]) / (2.0 * step)
+    assert float(slope) == pytest.approx(float(secant), rel=1e-6)
+
+
 @pytest.mark.parametrize("composition", [{"propane": 0.5}, {"propane": 1.2, "n-butane": -0.2}])
 def test_fractions_of_a_liquid_are_a_whole(composition: dict[str, float]) -> None:
     with pytest.raises(DefinitionError, match="sum"):

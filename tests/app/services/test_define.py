@@ -7,7 +7,6 @@ from typing import Any
 import pytest
 
 from app.errors import AppError, Conflict, NotFound, Unprocessable
-from app.schemas.vessel import Vessel
 from app.services import define
 from app.services.find import ALL_TIME
 from tests.app.services.plant import BOX, OIL, Plant, instant

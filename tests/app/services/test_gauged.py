@@ -71,7 +71,8 @@ def test_the_density_of_a_state_is_that_of_its_temperature() -> None:
     # β = 8.3e-4 + 4e-6 (T − 15 °C), 26 K up from the sample: ln(ρ/800) = −(8.3e-4 × 26 + 4e-6 × 26²/2).
     vessel = box({**CURVED, "liquid": {**CURVED["liquid"], "compressibility_per_kpa": 0.0}})
     expected = 800.0 * math.exp(-(8.3e-4 * 26.0 + 4e-6 * 338.0))
-    assert float(state_density((vessel,), stack((vessel,)), masses(vessel, READ).state)[0]) == pytest.approx(expected, rel=1e-12)
+    found = state_density((vessel,), stack((vessel,)), masses(vessel, READ).state)
+    assert float(found[0]) == pytest.approx(expected, rel=1e-12)
 
 
 @pytest.mark.parametrize("substance", [GAS_OIL, CURVED], ids=["constant", "polynomial"])
