@@ -48,6 +48,9 @@ def statement(substance: Body, row: Body, shape: Body = TANK, site: Body = SEA, 
 
 WATER, ETHANOL = liquid("water"), liquid("ethanol_water", alcohol_volume_pct=96.0)
 TABLE = liquid("density_table", rows=[[10.0, 905.0], [30.0, 893.0], [60.0, 874.0]], compressibility_per_kpa=6e-7)
+GAS = PROPANE["vapour"]
+BY_DENSITY = liquid("light_hydrocarbon", density_kg_m3=507.0, at_temperature_c=15.0) | {"vapour": GAS}
+BY_COMPOSITION = liquid("light_hydrocarbon", components=GAS["components"]) | {"vapour": GAS}
 CLOSED = PLAIN | {"pressure_kpa": 350.0}
 LIQUIDS = [
     pytest.param(GAS_OIL, OIL_READ | {"sediment_water_pct": 0.0}, TANK, id="expansivity"),
@@ -58,6 +61,8 @@ LIQUIDS = [
     pytest.param(TABLE, CLOSED, TANK, id="density table"),
     pytest.param(ETHANOL, PLAIN | {"liquid_temperature_c": 28.0}, TANK, id="ethanol"),
     pytest.param(PROPANE, LPG_READ, BULLET, id="propane"),
+    pytest.param(BY_DENSITY, LPG_READ, BULLET, id="light hydrocarbon by density"),
+    pytest.param(BY_COMPOSITION, LPG_READ, BULLET, id="light hydrocarbon by composition"),
 ]
 
 
