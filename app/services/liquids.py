@@ -57,13 +57,17 @@ def liquid_of(body: wire.Liquid, site: Site) -> Liquid:
             return definition.TableLiquid(rows, body.compressibility_per_kpa / units.PASCAL_PER_KPA, pressure)
 
 
-def standard_pressure(liquid: Liquid | None, site: Site, boiling: Boiling | None) -> float:
+def standard_pressure(
+    liquid: Liquid | None, site: Site, boiling: Boiling | None, temperature: float | None = None
+) -> float:
     """Pressure of the standard state: the base pressure or, where higher, that of equilibrium. [Pa]
 
-    A method that starts from the saturated liquid finds the equilibrium itself and takes the base pressure.
+    ``temperature`` is that of another base than the site's. [K] A method that starts from the saturated liquid
+    finds the equilibrium itself and takes the base pressure.
     """
-    temperature, pressure = base_state(site)
-    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, temperature))
+    own, pressure = base_state(site)
+    at = own if temperature is None else temperature
+    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, at))
 
 
 def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> tuple[float, ...]:

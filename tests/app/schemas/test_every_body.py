@@ -46,6 +46,8 @@ WITHOUT_UNIT = {
     "reconciled", "uncertainty", "adjustment", "imbalance", "magnitude", "interval", "share",
     "liquid_composition", "vapour_composition", "composition", "quality", "before", "after",
     "covariance",
+    "shell_factor", "temperature_factor", "temperature_factor_table", "pressure_factor", "api_gravity",
+    "relative_density_60_60",
 }  # fmt: skip
 # Lists of numbers, and maps of bodies or of numbers by quantity, whose description has the units.
 LISTS = {"rows", "courses", "deadwood"}
