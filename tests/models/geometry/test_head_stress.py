@@ -163,3 +163,13 @@ def test_the_derivatives_of_what_is_added():
         change = np.where(np.arange(4) == place, step, 0.0)
         slope = (tank.widening(*(given + change)).volume - tank.widening(*(given - change)).volume) / (2 * step[place])
         assert own == pytest.approx(slope, rel=1e-6)
+
+
+def test_a_tank_without_free_water_is_one_whose_water_stands_below_every_course():
+    """−inf is how a state says that there is no water: it is no unknown level."""
+    tank = stack(shell())
+    dry, low = tank.widening(10.0, -np.inf, 840.0, 800.0), tank.widening(10.0, -1.0, 840.0, 800.0)
+    assert dry == low
+    assert dry.volume == pytest.approx(40.0 * by_quadrature(10.0), rel=1e-12)
+    assert dry.water_volume == 0.0
+    assert np.isnan(tank.widening(10.0, np.nan, 840.0, 800.0).volume)
