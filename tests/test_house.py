@@ -14,7 +14,7 @@ from tests.house import PACKAGES, ROOT, Finding, Function, Rule, Source, offence
 # --- arrows -------------------------------------------------------------------------------------
 
 FOUNDATION = {"constants", "units", "errors", "arrays", "components", "saturation", "estimate"}
-MASS = {"instruments", "columns", "mass", "space"}
+MASS = {"instruments", "columns", "mass", "space", "expected"}
 MODEL_ARROWS = {
     **dict.fromkeys(FOUNDATION, FOUNDATION),
     "geometry": FOUNDATION | {"geometry"},

@@ -69,7 +69,7 @@ def _same_thing(shown, answered):
 
 
 def test_the_first_hour_is_there():
-    assert len(HOUR) == README.count("```sh\ncurl") == 10
+    assert len(HOUR) == README.count("```sh\ncurl") == 11
 
 
 def test_the_first_hour_answers_as_the_readme_shows(tmp_path):

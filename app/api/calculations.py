@@ -10,9 +10,10 @@ from app.api.bodies import json_body
 from app.edge.rows import RowsText, table_body
 from app.schemas.calculation import Balance, BalanceCalculation, InventoryCalculation, InventoryResults
 from app.schemas.errors import sentence
+from app.schemas.expected import ExpectedReading, ExpectedReadingCalculation
 from app.schemas.fit import ExpansivityCalculation, FittedExpansivity
 from app.schemas.tabulate import TableOptions, TabulatedShape, Tabulation
-from app.services import balance, calculate, fit, read_table, tabulate
+from app.services import balance, calculate, expected, fit, read_table, tabulate
 
 router = APIRouter(prefix="/v1/calculations", tags=["calculations"])
 
@@ -45,6 +46,14 @@ def calculate_inventory(
 def calculate_balance(body: Annotated[BalanceCalculation, Depends(json_body(BalanceCalculation))]) -> Balance:
     """A network of nodes and streams, reconciled and tested."""
     return Balance.model_validate(balance.solve_network(body))
+
+
+@router.post("/expected-reading")
+def calculate_expected_reading(
+    body: Annotated[ExpectedReadingCalculation, Depends(json_body(ExpectedReadingCalculation))],
+) -> ExpectedReading:
+    """What the instruments should show for a mass: the inverse of an inventory, by the same chain."""
+    return ExpectedReading.model_validate(expected.expect(body))
 
 
 @router.post("/capacity-table")

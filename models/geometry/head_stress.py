@@ -193,7 +193,7 @@ class HeadStress:
         .. [1] As of :func:`coursed_shell`.
         """
         h, low = as_floats(level, floor)
-        volume = np.zeros(np.broadcast(h, low, row).shape) + 0.0 * h
+        volume = np.zeros(np.broadcast(h, low, row).shape) + np.where(np.isnan(h), np.nan, 0.0)
         slope, by_floor = volume.copy(), volume.copy()
         for feet, weights in zip(self.feet, self.weights, strict=True):  # a few courses, never the readings
             foot, weight = feet[row], weights[row]

@@ -279,6 +279,11 @@ def test_no_number_that_is_accepted_is_a_fault_later(world: Any, data: st.DataOb
     vessel = {"name": "v", "shape": data.draw(st.sampled_from(SHAPES)), "shell": SHELL}
     body = stretched(data, {"vessel": vessel, "substance": substance, "readings": [ROW]})
     check(world.post("/v1/calculations/inventory?working=true&budget=true", json=body), body)
+    known = {key: value for key, value in body["readings"][0].items() if key != "level_m"}
+    alone = data.draw(st.sets(st.sampled_from(["pressure_kpa", "vapour_temperature_c", "free_water_level_m"])))
+    sought = {key: value for key, value in known.items() if key not in alone}
+    sought |= {"vessel": body["vessel"], "substance": body["substance"], "mass_kg": data.draw(MAGNITUDES)}
+    check(world.post("/v1/calculations/expected-reading", json=sought), sought)
     name = f"/v1/sites/fuzzed-{data.draw(st.integers(0, 10**9))}"
     world.put(name, json={"name": "n", "time_zone": "UTC"})
     for path, sent in (("substances/s", body["substance"]), ("vessels/v", body["vessel"] | {"substance": "s"})):

@@ -163,3 +163,11 @@ def test_the_derivatives_of_what_is_added():
         change = np.where(np.arange(4) == place, step, 0.0)
         slope = (tank.widening(*(given + change)).volume - tank.widening(*(given - change)).volume) / (2 * step[place])
         assert own == pytest.approx(slope, rel=1e-6)
+
+
+def test_where_there_is_no_free_water_the_whole_widening_is_the_liquid_s():
+    """No water is a level of −∞, as the chain has it: the same as water that reaches nothing."""
+    courses = stack(shell())
+    none, nothing = (courses.widening(11.0, water, 850.0, 700.0) for water in (-math.inf, 0.0))
+    assert none == nothing and none.volume > 0.0 and none.water_volume == 0.0
+    assert math.isnan(courses.widening(math.nan, -math.inf, 850.0, 0.0).volume)
