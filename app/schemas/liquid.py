@@ -10,6 +10,7 @@ from app.schemas.component import NUMBER_OR_LIST, Component, Temperature, temper
 from app.schemas.types import UNTAGGED, Body, Items, refusal
 
 Density = Annotated[float, Field(ge=1e-3, le=25000)]
+GIVEN = {"conflicting": "both are given", "missing": "neither is given"}
 
 
 Expansivity = Annotated[
@@ -102,13 +103,15 @@ class PetroleumLiquid(_Sampled):
         "or a special application with a measured α60"
     )
     alpha60_per_f: float | None = Field(
-        default=None, ge=1e-5, le=1e-2, description="Thermal expansion at 60 °F of a special application [1/°F]"
+        default=None, ge=230e-6, le=930e-6,
+        description="Thermal expansion at 60 °F of a special application, as measured: the procedure takes 230e-6 to "
+        "930e-6; a liquid beyond it is a density_table [1/°F]",
     )
 
     @model_validator(mode="after")
     def _alpha_if_special(self) -> Self:
         if self.commodity == "special" and self.alpha60_per_f is None:
-            raise refusal("missing", "A special application gives its alpha60_per_f, in 1/°F", "alpha60_per_f")
+            raise refusal("missing", "The commodity special needs its measured alpha60_per_f, in 1/°F", "alpha60_per_f")
         if self.commodity != "special" and self.alpha60_per_f is not None:
             raise refusal("conflicting", "alpha60_per_f goes with the commodity special only", "alpha60_per_f")
         return self
@@ -146,9 +149,9 @@ class EthanolWaterLiquid(_Uncertain):
     @model_validator(mode="after")
     def _by_one_of_them(self) -> Self:
         if (self.alcohol_volume_pct is None) == (self.density_kg_m3 is None):
-            detail = "Ethanol and water are known by their alcohol_volume_pct or by their density_kg_m3, by one of them"
             code = "missing" if self.density_kg_m3 is None else "conflicting"
-            raise refusal(code, detail, "alcohol_volume_pct")
+            detail = "Ethanol and water take either alcohol_volume_pct or density_kg_m3"
+            raise refusal(code, f"{detail}: {GIVEN[code]}", "alcohol_volume_pct")
         return self
 
 
@@ -181,12 +184,13 @@ class LightHydrocarbonLiquid(_Uncertain):
     @model_validator(mode="after")
     def _by_one_of_them(self) -> Self:
         if (self.components is None) == (self.density_kg_m3 is None):
-            detail = "A light hydrocarbon is known by its components or by its density_kg_m3, by one of them"
-            raise refusal("conflicting" if self.components else "missing", detail, "density_kg_m3")
+            code = "conflicting" if self.components else "missing"
+            detail = "A light hydrocarbon takes either components or density_kg_m3"
+            raise refusal(code, f"{detail}: {GIVEN[code]}", "density_kg_m3")
         if self.components is None:
             return self
         if given := {"at_temperature_c", "at_pressure_kpa_abs"} & self.model_fields_set:
-            raise refusal("conflicting", "The state of a density goes with density_kg_m3 only", sorted(given)[0])
+            raise refusal("conflicting", "A temperature or pressure of a density goes with density_kg_m3, not with components", sorted(given)[0])
         whole(self.components)
         return self
 

@@ -50,7 +50,9 @@ def analyses_of(builder: States) -> Analyses:
     bubbles, _ = _each(builder, "liquid_composition", _bubbles)  # what cannot boil leaves the substance's own
     dews, _ = _each(builder, "vapour_composition", _dews)
     boiling = dews | bubbles
-    result.refused = no_vapour | no_liquid
+    for part, found in (("vapour", no_vapour), ("liquid", no_liquid)):
+        words = f"the substance's {part} model cannot take the analysis"
+        result.refused |= {row: f"{words}: {why}" for row, why in found.items()}
     result.refused_liquids = frozenset(no_liquid)
     for row, mixture in vapours.items():
         result.mixed[row] = len(mixture.fractions) > 1

@@ -114,13 +114,14 @@ def _zone_is_free(writing: Writing, name: str, body: Site) -> None:
 
 def check_components(body: Substance, within: str = "") -> None:
     """Refuse a component that is neither in the table nor given in full, with its place and not its name."""
-    found = () if body.vapour is None else body.vapour.components
+    parts = {part: getattr(getattr(body, part), "components", None) or () for part in ("liquid", "vapour")}
     detail = (
         "That component is not in the table: give critical_temperature_k, critical_pressure_kpa_abs, "
         f"acentric_factor and molar_mass_g_mol with it, or take one of {', '.join(sorted(COMPONENTS))}"
     )
     unknown = [
-        FieldError(f"{within}/vapour/components/{place}/id", "unknown_component", detail, place)
+        FieldError(f"{within}/{part}/components/{place}/id", "unknown_component", detail, place)
+        for part, found in parts.items()
         for place, one in enumerate(found)
         if one.id not in COMPONENTS and one.critical_temperature_k is None
     ]

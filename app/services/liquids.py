@@ -23,6 +23,7 @@ State = tuple[float, float]  # temperature and absolute pressure [K, Pa]
 SATURATED = (definition.MixtureLiquid, definition.LightHydrocarbonLiquid)
 """Methods that start from the saturated liquid: a pressure below that of equilibrium counts as it."""
 
+USUAL_C = 15.0  # °C, at which densities are stated where nothing else is said: common practice
 STRENGTH_C = 20.0  # °C, at which a strength by volume is stated: OIML R 22
 
 
@@ -79,8 +80,10 @@ def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | 
         share = _own_share(body, liquid)
     else:
         share = instruments.DENSITY_SHARE
-        if not math.isfinite(density_between(liquid, density, at, at, at[1])):
-            raise DefinitionError(why_outside(liquid, density, at, at), field="liquid/density_kg_m3")
+        datum = standard_pressure(liquid, site, boiling)
+        if not _known(liquid, density, at, datum):
+            field = _to_blame(liquid, density, at, datum)
+            raise DefinitionError(why_outside(liquid, density, at, at), field=f"liquid/{field}")
     given = body.density_uncertainty_kg_m3
     return density, *at, share * density if given is None else given
 
@@ -90,6 +93,17 @@ def _own_share(body: wire.Liquid, liquid: Liquid) -> float:
     if isinstance(liquid, definition.MixtureLiquid):
         return float(CostaldColumns.from_compositions([liquid.components]).departure[0]) / math.sqrt(3.0)
     return instruments.METHOD_DENSITY_SHARE[body.model]
+
+
+def _to_blame(liquid: Liquid, density: float, at: State, datum: float) -> str:
+    """Which field of a stated density takes it outside its method: the first that would help if it were usual."""
+    usual = {"at_pressure_kpa_abs": (at[0], datum), "at_temperature_c": (constants.ZERO_CELSIUS + USUAL_C, datum)}
+    helps = (name for name, there in usual.items() if _known(liquid, density, there, datum))
+    return next(helps, "density_kg_m3")
+
+
+def _known(liquid: Liquid, density: float, at: State, datum: float) -> bool:
+    return math.isfinite(density_between(liquid, density, at, at, datum))
 
 
 def _stated_at(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> State:
@@ -139,7 +153,11 @@ def density_between(liquid: Liquid, density: float, sample: State, here: State, 
 @lru_cache(maxsize=256)
 def liquid_columns(liquids: tuple[Liquid, ...]) -> LiquidColumns:
     """Columns of some liquids; the same liquids are compiled once."""
-    return LiquidColumns.from_liquids(liquids)
+    try:
+        return LiquidColumns.from_liquids(liquids)
+    except DefinitionError as refused:
+        place = f"liquid/{refused.field}" if refused.field else "liquid"
+        raise DefinitionError(refused.detail, field=place, index=refused.index) from None
 
 
 def state_of(

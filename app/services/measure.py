@@ -148,7 +148,7 @@ class States:
         self.at_rest = np.zeros(collected.rows, dtype=bool)
         self.gauge = np.zeros(collected.rows, dtype=bool)
         self.warmed: Warmed | None = None
-        self.refused: dict[int, str] = {}  # rows whose analysis the substance's vapour model cannot take, and why
+        self.refused: dict[int, str] = {}  # rows whose analysis the substance's model cannot take, and why
         level, origin = chosen["level"].source, collected.origins["level"]
         means = [origin.of(row, int(level[row]))[0] if level[row] >= 0 else "" for row in range(collected.rows)]
         self.other_means = any(one in OTHER_MEANS for one in means)

@@ -141,7 +141,7 @@ def _in_full(measured: Measured, row: int, mark: Mark, detail: str) -> str:
     if mark & UNSATURATED:
         return _saturation(measured, row, detail)
     if mark & Mark.VAPOUR_LEFT_OUT and row in measured.refused:
-        return f"{detail}: the substance's vapour model cannot take the analysis: {measured.refused[row]}"
+        return f"{detail}: {measured.refused[row]}"
     return detail
 
 
@@ -242,8 +242,7 @@ def _assumptions(measured: Measured, row: int) -> list[dict[str, str]]:
 def reason(measured: Measured, row: int) -> dict[str, str]:
     """Why a row has no mass: the first input that it lacks, or a value outside a limit."""
     if row in measured.refused:
-        detail = f"the substance's vapour model cannot take the analysis: {measured.refused[row]}"
-        return {"code": "outside_method", "detail": detail}
+        return {"code": "outside_method", "detail": measured.refused[row]}
     vessel = measured.vessel(row)
     state = measured.state
     lacking = {

@@ -212,6 +212,31 @@ def why_outside(mass_fraction_key: float, temperature: float, pressure: float) -
     return ""
 
 
+def why_no_mixture(density: float, temperature: float) -> str:
+    """Why no mixture of ethanol and water has a density at one atmosphere.
+
+    Parameters
+    ----------
+    density : float
+        Density of the sample. [kg/m³]
+    temperature : float
+        Temperature of the sample. [K]
+
+    Returns
+    -------
+    str
+        One sentence, or nothing where a mixture has it, and outside the range of the tables. [1]
+    """
+    if np.isfinite(mass_fraction(density, temperature)) or not _warm(np.float64(temperature - ZERO_CELSIUS)):
+        return ""
+    ends = point([1.0, 0.0], temperature, STANDARD_ATMOSPHERE).density
+    return (
+        f"the density is {density:.6g} kg/m³ at {temperature - ZERO_CELSIUS:.6g} °C; ethanol and water have "
+        f"{ends[0]:.2f} kg/m³ (pure ethanol) to {ends[1]:.2f} kg/m³ (water) there: correct the density, or give "
+        "another liquid as a density_table"
+    )
+
+
 def _warm(t: FloatArray | np.float64) -> BoolArray:
     return np.asarray((t >= _COLDEST - _ROUNDING) & (t <= _HOTTEST + _ROUNDING))
 

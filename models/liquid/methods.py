@@ -315,11 +315,10 @@ class _ByPetroleum(_Keyed):
     def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
         """Which limit was passed; pressures are told as gauge above one atmosphere."""
         commodity, alpha60 = int(self.commodity[row]), float(self.alpha60[row])
-        for temperature, pressure in (sample, here):
-            gauge = max(0.0, pressure - STANDARD_ATMOSPHERE)
-            if why := petroleum_limits.why_outside(density, temperature, gauge, commodity, alpha60):
-                return why
-        return ""
+        gauges = [max(0.0, pressure - STANDARD_ATMOSPHERE) for _, pressure in (sample, here)]
+        why = petroleum_limits.why_outside(density, sample[0], gauges[0], commodity, alpha60, observed=True)
+        key = float(petroleum.density_60f(density, sample[0], gauges[0], commodity, alpha60))
+        return why or petroleum_limits.why_outside(key, here[0], gauges[1], commodity, alpha60)
 
 
 class _ByStrength(_Keyed):
@@ -338,9 +337,10 @@ class _ByStrength(_Keyed):
         return np.asarray(ETHANOL_SHARE * ratio)
 
     def why_outside(self, density: float, sample: At, here: At, row: int) -> str:
-        """Which limit was passed."""
+        """Which limit was passed: by the sample, or by the content that it tells of."""
         strength = float(ethanol_water.mass_fraction(density, sample[0]))
-        return ethanol_water.why_outside(strength, *here) or ethanol_water.why_outside(strength, *sample)
+        why = ethanol_water.why_no_mixture(density, sample[0])
+        return why or ethanol_water.why_outside(strength, *here) or ethanol_water.why_outside(strength, *sample)
 
 
 METHODS: dict[type, Callable[[Sequence[Any]], LiquidMethod]] = {

@@ -10,6 +10,10 @@ from models.liquid import petroleum_method as method
 from models.liquid.petroleum_groups import COMMODITIES, EDITION
 
 _PASCAL_PER_BAR = 1e5  # exact
+_WORDS = {
+    "crude": "crude oil", "refined": "a refined product", "lubricating": "a lubricating oil",
+    "special": "a special application",
+}  # fmt: skip
 
 
 def why_outside(
@@ -86,6 +90,6 @@ def _why_density(
     if groups.holds(density, low, high):
         return ""
     return (
-        f"the density {where} is {density:.6g} kg/m³; the petroleum correction ({EDITION}) of a {name} liquid "
-        f"is defined from {low:.1f} to {high:.1f} kg/m³ there; liquid.model density_table takes any density"
+        f"the density {where} is {density:.6g} kg/m³; the petroleum correction ({EDITION}) of "
+        f"{_WORDS[name]} is defined from {low:.1f} to {high:.1f} kg/m³ there; liquid.model density_table takes any density"
     )
