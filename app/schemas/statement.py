@@ -34,7 +34,8 @@ class AtBase(Answer):
 
     base_temperature_c: float = Field(description="Temperature of the base [°C]")
     base_pressure_kpa_abs: float = Field(
-        description="Its absolute pressure: the site's base pressure or, where higher, the vapour pressure [kPa]"
+        description="Its absolute pressure: the site's base pressure or, where higher, the vapour pressure; "
+        "a light_hydrocarbon's own method counts what lies below its equilibrium as that [kPa absolute]"
     )
     temperature_factor: Known = Field(description="C_T from this base to the liquid's temperature, unrounded [1]")
     temperature_factor_table: Known = Field(

@@ -128,6 +128,8 @@ def test_a_liquefied_gas_refers_to_its_equilibrium_pressure_at_each_base() -> No
     assert found["at_15_c"]["base_pressure_kpa_abs"] == pytest.approx(732.0, rel=0.005)
     assert found["at_20_c"]["base_pressure_kpa_abs"] == pytest.approx(836.0, rel=0.005)
     assert statement(GAS_OIL, OIL_READ)["at_20_c"]["base_pressure_kpa_abs"] == 101.325
+    own = statement(BY_DENSITY, LPG_READ, BULLET)["at_15_c"]  # 507 kg/m³ at 15 °C is that of its equilibrium
+    assert own["density_kg_m3"] == pytest.approx(507.0, rel=1e-11)
 
 
 def test_a_base_that_the_method_does_not_reach_is_unknown_and_hides_no_other() -> None:
