@@ -13,17 +13,19 @@ from sqlalchemy import Connection
 from app.clock import Clock
 from app.errors import Conflict, NotFound
 from app.schemas.meter import Meter
-from app.services import judge
+from app.services import judge, move
 from app.services.explain import inputs_read
 from app.services.find import site_number
 from app.services.in_force import labelled, meters_in_force, period_of, site_in_force
 from app.services.instants import Period, in_order
+from app.services.move import Moved
 from app.services.regrade import Moving, regraded
 from app.services.restate import restated
 from app.services.take_stock import Stock, stock_at
 from app.store import books, due, sites, transfers
-from app.store.books import Book, BookVessel
+from app.store.books import Book, BookMove, BookVessel
 from app.store.engine import Store
+from app.store.transfers import Transfer as Ticket
 from models.estimate import Estimate
 
 METHOD = "1"  # of the calculation: a close by another method is another revision
@@ -60,10 +62,12 @@ def close(
             raise Conflict(
                 "That period has not ended: it is closed when its last reading can be there", code="period_open"
             )
-        body, vessels, digest = _compute(connection, site_id, site, period, known)
+        body, vessels, moves, digest = _compute(connection, site_id, site, period, known)
     text = json.dumps(body, sort_keys=True, ensure_ascii=False, allow_nan=False)
     with store.writing(site, deed="close", request=request) as writing:
-        book, new = books.write_book(writing, period.opening, period.closing, digest, known, METHOD, text, vessels)
+        book, new = books.write_book(
+            writing, period.opening, period.closing, digest, known, METHOD, text, vessels, moves
+        )
         due.finish(writing, period.opening, period.closing, known)
         if new and book.revision > 1:
             due.mark_opening_at(writing, period.closing, "the night before was closed anew")
@@ -72,8 +76,8 @@ def close(
 
 def _compute(
     connection: Connection, site_id: int, site: str, period: Period, known: int
-) -> tuple[dict[str, Any], list[BookVessel], str]:
-    """The books of a period, each vessel's closing inventory, and the digest of what they rest on."""
+) -> tuple[dict[str, Any], list[BookVessel], list[BookMove], str]:
+    """The books of a period, each vessel's closing inventory, what moved, and the digest of what they rest on."""
     closing = stock_at(
         connection, site_id, site, period.closing, known, closing=True, definitions_at=period.closing - 1
     )
@@ -91,7 +95,7 @@ def _compute(
                moving.grounds]  # fmt: skip
     digest = hashlib.sha256(json.dumps(grounds, sort_keys=True).encode()).hexdigest()
     body["digest"] = digest
-    return body, _book_vessels(closing, flagged), digest
+    return body, _book_vessels(closing, flagged), _book_moves(moves, tickets, meters), digest
 
 
 def _meter_texts(meters: Mapping[str, Meter]) -> list[list[str]]:
@@ -149,7 +153,38 @@ def _book_vessels(closing: Stock, flagged: set[str]) -> list[BookVessel]:
     rows = []
     for name, mass in sorted(closing.masses.items()):
         parts = "{}" if mass is None else json.dumps(dict(sorted(mass.parts.items())))
-        rows.append(BookVessel(name, None if mass is None else mass.value, parts, name in flagged))
+        value = None if mass is None else mass.value
+        rows.append(BookVessel(name, value, parts, name in flagged, slopes_of(closing, name)))
+    return rows
+
+
+def slopes_of(stock: Stock, vessel: str) -> str:
+    """How a closing inventory follows what was read, as JSON; nothing of one that stands as it was stated."""
+    row = stock.site.rows.get(vessel)
+    if stock.measured is None or row is None or stock.masses.get(vessel) is None:
+        return ""
+    carried = stock.measured.carried.get(row)
+    if carried is not None and carried.stated is not None:
+        return ""
+    slopes = stock.measured.result.sensitivities
+    found = {name: float(slopes[column][row]) for name, column in SLOPES.items()}
+    return json.dumps({name: slope for name, slope in found.items() if slope != 0.0}, sort_keys=True)
+
+
+SLOPES = {"level": "level", "temperature": "liquid_temperature", "density": "density", "pressure": "pressure"}
+"""Inputs that a fault may shift, and the chain's name of the mass's derivative by each. [kg for one SI unit]"""
+
+
+def _book_moves(moves: Sequence[Moved], tickets: Sequence[Ticket], meters: Mapping[str, Meter]) -> list[BookMove]:
+    """What each ticket moved in the period, with the meter that measured it and since which proving."""
+    bodies = {ticket.name: move.body_of(ticket) for ticket in tickets}
+    rows = []
+    for one in moves:
+        body, mass = bodies[one.name], one.mass
+        meter = "" if body.meter is None else f"{body.meter}:{move.proved(meters.get(body.meter), body.started_at)}"
+        parts = "{}" if mass is None else json.dumps(dict(sorted(mass.parts.items())))
+        value = None if mass is None else mass.value
+        rows.append(BookMove(one.name, one.source or "", one.target or "", value, parts, meter))
     return rows
 
 

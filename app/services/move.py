@@ -249,6 +249,11 @@ def _ticket_errors(
     return {f"t:{name}": mass * random / 100.0, f"meter:{body.meter}:{proved}": mass * systematic / 100.0}
 
 
+def proved(meter: Meter | None, started_at: int) -> str:
+    """Which interval between two provings a transfer falls in."""
+    return _factor(meter, started_at)[2]
+
+
 def _factor(meter: Meter | None, started_at: int) -> tuple[float, float, str]:
     """What a meter reads high between two provings, its standard uncertainty (both in %), and which interval.
 

@@ -9,7 +9,7 @@ import sqlalchemy as sa
 from sqlalchemy.engine import Connection
 
 from app.store.engine import Writing
-from app.store.tables import BOOK, BOOK_VESSEL
+from app.store.tables import BOOK, BOOK_MOVE, BOOK_SLOPE, BOOK_VESSEL
 
 
 class Book(NamedTuple):
@@ -26,12 +26,36 @@ class Book(NamedTuple):
 
 
 class BookVessel(NamedTuple):
-    """What one vessel held at the close: its mass, and named parts of the uncertainty as JSON."""
+    """What one vessel held at the close: its mass, and named parts of the uncertainty as JSON.
+
+    ``slopes`` is how the mass follows what was read, as JSON; empty where it does not.
+    """
 
     vessel: str
     mass_kg: float | None
     parts: str
     flagged: bool
+    slopes: str = ""
+
+
+class BookMove(NamedTuple):
+    """What one ticket moved in a period; an end beyond the books is empty, so is a meter that there is not."""
+
+    transfer: str
+    source: str
+    target: str
+    mass_kg: float | None
+    parts: str
+    meter: str
+
+
+class WindowNight(NamedTuple):
+    """One closed period of a chain: its closing inventories, how they follow their inputs, and what moved."""
+
+    book: Book
+    vessels: tuple[Night, ...]
+    slopes: dict[str, str]
+    moves: tuple[BookMove, ...]
 
 
 class Night(NamedTuple):
@@ -52,7 +76,7 @@ _COLUMNS = (_B.opening, _B.closing, _B.revision, _B.recorded_at, _B.known_at, _B
 
 def write_book(
     writing: Writing, opening: int, closing: int, digest: str, known_at: int, method: str, body: str,
-    vessels: Sequence[BookVessel],
+    vessels: Sequence[BookVessel], moves: Sequence[BookMove] = (),
 ) -> tuple[Book, bool]:  # fmt: skip
     """Keep a close unless one stands that knew as much; the book that stands now, and whether it is new.
 
@@ -67,10 +91,50 @@ def write_book(
     site = {"site_id": writing.site_id}
     writing.connection.execute(sa.insert(BOOK), site | book._asdict())
     key = site | {"opening": opening, "closing": closing, "revision": revision}
-    rows = [key | one._asdict() | {"flagged": int(one.flagged)} for one in vessels]
-    if rows:
-        writing.connection.execute(sa.insert(BOOK_VESSEL), rows)
+    _write_rows(writing, key, vessels, moves)
     return book, True
+
+
+def _write_rows(
+    writing: Writing, key: dict[str, int], vessels: Sequence[BookVessel], moves: Sequence[BookMove]
+) -> None:
+    rows: list[tuple[sa.Table, list[dict[str, Any]]]] = [
+        (BOOK_VESSEL, [key | {"vessel": one.vessel, "mass_kg": one.mass_kg, "parts": one.parts,
+                              "flagged": int(one.flagged)} for one in vessels]),
+        (BOOK_SLOPE, [key | {"vessel": one.vessel, "body": one.slopes} for one in vessels if one.slopes]),
+        (BOOK_MOVE, [key | {"place": place} | one._asdict() for place, one in enumerate(moves)]),
+    ]  # fmt: skip
+    for table, own in rows:
+        if own:
+            writing.connection.execute(sa.insert(table), own)
+
+
+def chain(connection: Connection, site_id: int, opening: int, known: int, count: int) -> list[WindowNight]:
+    """The closed periods that lead up to an instant, oldest first: each closes where the next opens."""
+    found: list[Book] = []
+    while len(found) < count:
+        book = closing_at(connection, site_id, opening, known)
+        if book is None:
+            break
+        found.append(book)
+        opening = book.opening
+    return [_window_night(connection, site_id, book) for book in reversed(found)]
+
+
+def _window_night(connection: Connection, site_id: int, book: Book) -> WindowNight:
+    def own(table: sa.Table) -> sa.ColumnElement[bool]:
+        return sa.and_(
+            table.c.site_id == site_id, table.c.opening == book.opening, table.c.closing == book.closing,
+            table.c.revision == book.revision,
+        )  # fmt: skip
+
+    slopes = connection.execute(sa.select(BOOK_SLOPE.c.vessel, BOOK_SLOPE.c.body).where(own(BOOK_SLOPE)))
+    columns = [BOOK_MOVE.c[name] for name in BookMove._fields]
+    moves = connection.execute(sa.select(*columns).where(own(BOOK_MOVE)).order_by(BOOK_MOVE.c.place))
+    return WindowNight(
+        book, tuple(vessels_of(connection, site_id, book)), {row.vessel: row.body for row in slopes},
+        tuple(BookMove(*row) for row in moves),
+    )  # fmt: skip
 
 
 def newest(connection: Connection, site_id: int, opening: int, closing: int, known: int) -> Book | None:

@@ -199,6 +199,27 @@ BOOK_VESSEL = sa.Table(
     ), sqlite_strict=True,
 )  # fmt: skip
 
+# How each closing inventory follows what was read, and whose errors its density has: what a fault would change.
+BOOK_SLOPE = sa.Table(
+    "book_slope", METADATA, key("site_id", integer()), key("vessel", word()), key("closing", instant()),
+    key("opening", instant()), key("revision", small()), must("body", body()),
+    sa.ForeignKeyConstraint(
+        ["site_id", "opening", "closing", "revision"],
+        ["book.site_id", "book.opening", "book.closing", "book.revision"], name="book_slope_book",
+    ), sqlite_strict=True,
+)  # fmt: skip
+
+# What each ticket moved in the period, with its named parts; an end beyond the books is "", a place counts them.
+BOOK_MOVE = sa.Table(
+    "book_move", METADATA, key("site_id", integer()), key("closing", instant()), key("opening", instant()),
+    key("revision", small()), key("place", integer()), must("transfer", word()), must("source", word()),
+    must("target", word()), sa.Column("mass_kg", number()), must("parts", body()), must("meter", word()),
+    sa.ForeignKeyConstraint(
+        ["site_id", "opening", "closing", "revision"],
+        ["book.site_id", "book.opening", "book.closing", "book.revision"], name="book_move_book",
+    ), sqlite_strict=True,
+)  # fmt: skip
+
 DUE = sa.Table(
     "due", METADATA, key("site_id", integer()), key("opening", instant()), key("closing", instant()),
     must("cause", body()), must("marked_at", instant()), must("attempts", small()),
