@@ -8,7 +8,7 @@ from concurrent.futures import ThreadPoolExecutor
 import pytest
 
 from app.store import books, readings
-from app.store.books import Book, BookVessel
+from app.store.books import Book, BookMove, BookVessel
 from app.store.engine import Store
 from app.store.readings import Value
 from app.store.sites import number, watermark
@@ -153,3 +153,25 @@ def test_a_listing_shows_each_period_once(store: Store, site_id: str, limit: int
         (T0 + DAY, 1), (T0 + 2 * DAY, 2), (T0 + 3 * DAY, 1),
     ]  # fmt: skip
     assert found[1] == newest
+
+
+def test_a_chain_is_the_periods_that_open_each_other_with_what_moved_and_what_masses_follow(
+    store: Store, site_id: str
+) -> None:
+    ship = BookMove("ship-1", "", "tk-1", 5.0, '{"t:ship-1": 0.1}', "m-7:2026")
+    moves = [ship, BookMove("t-2", "tk-1", "", None, "{}", "")]
+    with store.writing(site_id, create=True) as writing:
+        for night in (0, 1, 3):  # the third night was never closed: nothing leads over the gap
+            own = BookVessel("tk-1", float(night), "{}", False, f'{{"level": {night}.0}}')
+            vessels, opening = [own, BookVessel("tk-2", None, "{}", False)], T0 + night * DAY
+            moved = moves if night else []
+            books.write_book(writing, opening, opening + DAY, f"d{night}", 1, "1", "{}", vessels, moved)
+    with store.reading() as connection:
+        site, known = number(connection, site_id), 2**62
+        found = books.chain(connection, site, T0 + 2 * DAY, known, 30)
+        assert [one.book.opening for one in found] == [T0, T0 + DAY]
+        assert [[vessel.mass_kg for vessel in one.vessels] for one in found] == [[0.0, None], [1.0, None]]
+        assert [one.slopes for one in found] == [{"tk-1": '{"level": 0.0}'}, {"tk-1": '{"level": 1.0}'}]
+        assert [list(one.moves) for one in found] == [[], moves]
+        assert books.chain(connection, site, T0 + 2 * DAY, known, 1)[0].book.opening == T0 + DAY
+        assert books.chain(connection, site, T0 + 3 * DAY, known, 30) == []
