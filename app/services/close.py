@@ -13,19 +13,17 @@ from sqlalchemy import Connection
 from app.clock import Clock
 from app.errors import Conflict, NotFound
 from app.schemas.meter import Meter
-from app.services import judge, move
+from app.services import judge, window
 from app.services.explain import inputs_read
 from app.services.find import site_number
 from app.services.in_force import labelled, meters_in_force, period_of, site_in_force
 from app.services.instants import Period, in_order
-from app.services.move import Moved
 from app.services.regrade import Moving, regraded
 from app.services.restate import restated
 from app.services.take_stock import Stock, stock_at
 from app.store import books, due, sites, transfers
 from app.store.books import Book, BookMove, BookVessel
 from app.store.engine import Store
-from app.store.transfers import Transfer as Ticket
 from models.estimate import Estimate
 
 METHOD = "1"  # of the calculation: a close by another method is another revision
@@ -95,7 +93,7 @@ def _compute(
                moving.grounds]  # fmt: skip
     digest = hashlib.sha256(json.dumps(grounds, sort_keys=True).encode()).hexdigest()
     body["digest"] = digest
-    return body, _book_vessels(closing, flagged), _book_moves(moves, tickets, meters), digest
+    return body, window.kept_vessels(closing, opening, flagged), window.kept_moves(moves, tickets, meters), digest
 
 
 def _meter_texts(meters: Mapping[str, Meter]) -> list[list[str]]:
@@ -147,45 +145,6 @@ def _opening(
         masses | {name: one.mass for name, one in anew.items()},
         {name: one.change for name, one in anew.items()}, substances, read_at, json.dumps(grounds, sort_keys=True),
     )  # fmt: skip
-
-
-def _book_vessels(closing: Stock, flagged: set[str]) -> list[BookVessel]:
-    rows = []
-    for name, mass in sorted(closing.masses.items()):
-        parts = "{}" if mass is None else json.dumps(dict(sorted(mass.parts.items())))
-        value = None if mass is None else mass.value
-        rows.append(BookVessel(name, value, parts, name in flagged, slopes_of(closing, name)))
-    return rows
-
-
-def slopes_of(stock: Stock, vessel: str) -> str:
-    """How a closing inventory follows what was read, as JSON; nothing of one that stands as it was stated."""
-    row = stock.site.rows.get(vessel)
-    if stock.measured is None or row is None or stock.masses.get(vessel) is None:
-        return ""
-    carried = stock.measured.carried.get(row)
-    if carried is not None and carried.stated is not None:
-        return ""
-    slopes = stock.measured.result.sensitivities
-    found = {name: float(slopes[column][row]) for name, column in SLOPES.items()}
-    return json.dumps({name: slope for name, slope in found.items() if slope != 0.0}, sort_keys=True)
-
-
-SLOPES = {"level": "level", "temperature": "liquid_temperature", "density": "density", "pressure": "pressure"}
-"""Inputs that a fault may shift, and the chain's name of the mass's derivative by each. [kg for one SI unit]"""
-
-
-def _book_moves(moves: Sequence[Moved], tickets: Sequence[Ticket], meters: Mapping[str, Meter]) -> list[BookMove]:
-    """What each ticket moved in the period, with the meter that measured it and since which proving."""
-    bodies = {ticket.name: move.body_of(ticket) for ticket in tickets}
-    rows = []
-    for one in moves:
-        body, mass = bodies[one.name], one.mass
-        meter = "" if body.meter is None else f"{body.meter}:{move.proved(meters.get(body.meter), body.started_at)}"
-        parts = "{}" if mass is None else json.dumps(dict(sorted(mass.parts.items())))
-        value = None if mass is None else mass.value
-        rows.append(BookMove(one.name, one.source or "", one.target or "", value, parts, meter))
-    return rows
 
 
 def answer(site: str, book: Book, *, detail: bool = False) -> dict[str, Any]:
