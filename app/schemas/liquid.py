@@ -190,7 +190,8 @@ class LightHydrocarbonLiquid(_Uncertain):
         if self.components is None:
             return self
         if given := {"at_temperature_c", "at_pressure_kpa_abs"} & self.model_fields_set:
-            raise refusal("conflicting", "A temperature or pressure of a density goes with density_kg_m3, not with components", sorted(given)[0])
+            detail = "A temperature or pressure of a density goes with density_kg_m3, not with components"
+            raise refusal("conflicting", detail, sorted(given)[0])
         whole(self.components)
         return self
 

@@ -12,6 +12,7 @@ from app.services.compositions import Boiling, fractions_of
 from app.services.liquids import (
     density_between,
     key_of,
+    liquid_columns,
     liquid_of,
     own_density,
     reference,
@@ -19,6 +20,7 @@ from app.services.liquids import (
     state_of,
     why_outside,
 )
+from models.components import component
 from models.errors import DefinitionError
 from models.liquid import definition
 
@@ -76,6 +78,13 @@ def test_a_figure_from_which_the_method_finds_nothing_is_refused_with_the_limit(
     with pytest.raises(DefinitionError, match="kg/m³") as refused:
         figure(CRUDE | {"density_kg_m3": 300.0})
     assert refused.value.field == "liquid/density_kg_m3"
+    for to_blame, value in (("at_temperature_c", 160.0), ("at_pressure_kpa_abs", 2e4)):
+        with pytest.raises(DefinitionError) as refused:
+            figure(CRUDE | {to_blame: value})
+        assert refused.value.field == f"liquid/{to_blame}"
+    with pytest.raises(DefinitionError) as refused:
+        liquid_columns((definition.MixtureLiquid(((component("helium"), 1.0),)),))
+    assert refused.value.field == "liquid/components"
     with pytest.raises(DefinitionError, match="0 to 150 °C"):
         figure({"model": "water"}, Site(base_temperature_c=-5.0))
 

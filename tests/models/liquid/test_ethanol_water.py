@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
 
-from models.liquid.ethanol_water import mass_fraction, point, why_outside
+from models.liquid.ethanol_water import mass_fraction, point, why_no_mixture, why_outside
 from models.liquid.water import water_density
 
 ATMOSPHERE = 101_325.0
@@ -106,6 +106,13 @@ def test_pitfall_r22_only_to_40_celsius():
     assert "is 55 °C; the alcoholometric tables are defined from -20 to 40 °C" in why_outside(0.5, 328.15, 1e5)
     assert "1200 kPa absolute; the alcoholometric tables are taken from 0 to 1000 kPa" in why_outside(0.5, 300, 12e5)
     assert "1.2; it lies from 0 to 1" in why_outside(1.2, 300, 1e5)
+
+
+def test_a_density_that_no_mixture_has_is_said_with_those_that_it_could_have():
+    """789.239 and 998.201 kg/m³ at 20 °C, published."""
+    said = why_no_mixture(700.0, 293.15)
+    assert "is 700 kg/m³ at 20 °C" in said and "789.24 kg/m³ (pure ethanol) to 998.20 kg/m³ (water)" in said
+    assert why_no_mixture(900.0, 293.15) == "" == why_no_mixture(700.0, 323.15)  # the temperature is told elsewhere
 
 
 def test_a_density_that_no_mixture_has_has_no_strength():

@@ -120,6 +120,7 @@ def test_pitfall_commodity_by_density_within_refined_and_crude_by_declaration() 
     [
         ("crude", {"celsius": 170.0}, ("170", "150 °C", "density_table")),
         ("gasoline", {"density": 300.0}, ("300", "kg/m³")),
+        ("ethanol", {"density": 700.0}, ("700", "pure ethanol")),
         ("water", {"celsius": 160.0}, ("160", "150 °C")),
         ("table", {"celsius": 120.0}, ("120", "100 °C")),
         ("ethanol", {"celsius": 45.0}, ("45", "40 °C")),
