@@ -90,7 +90,6 @@ BAROMETER_KPA = 1.0  # kPa, weather about the mean pressure of the place; common
 DENSITY_SHARE = 0.01  # of a density that no sample ever confirmed
 METHOD_DENSITY_SHARE: dict[str, float] = {
     "water": 1e-4,  # impurities of a service water, common practice; the equation itself is good to 1e-5
-    "light_hydrocarbon": 0.005,  # 0.4 % on average: R. W. Hankinson, G. H. Thomson, AIChE J. 25 (1979) 653
     "density_table": DENSITY_SHARE,
 }  # of the density that a method gives of its own, where none was ever read
 EXPANSION_SHARE = 0.02  # of β, constant: drift of β over 30 K, against reference equations of state

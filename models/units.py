@@ -18,6 +18,10 @@ PASCAL_PER_KPA = 1000.0  # exact
 CUBIC_METRE_PER_CUBIC_CENTIMETRE = 1e-6  # exact
 KILOGRAM_PER_GRAM = 1e-3  # exact
 SECONDS_PER_DAY = 86_400.0  # exact
+# NIST Handbook 44, appendix C: gallon of 231 in³, inch of 25.4 mm, avoirdupois pound of 0.45359237 kg.
+CUBIC_METRE_PER_BARREL = 0.158987294928  # exact: 42 US gallons
+KILOGRAM_PER_LONG_TON = 1016.0469088  # exact: 2240 lb
+KILOGRAM_PER_SHORT_TON = 907.18474  # exact: 2000 lb
 
 
 def kelvin(celsius: ArrayLike) -> FloatArray:
@@ -144,3 +148,31 @@ def density_of_api_gravity(degrees: ArrayLike) -> FloatArray:
     """
     (value,) = as_floats(degrees)
     return 141.5 / (value + 131.5) * WATER_DENSITY_60F  # eq. 1
+
+
+def api_gravity_of_density(density: ArrayLike) -> FloatArray:
+    """Gravity in degrees API of a liquid whose density at 60 °F is given.
+
+    Parameters
+    ----------
+    density : array_like, shape (...)
+        Density at 60 °F, above 0. [kg/m³]
+
+    Returns
+    -------
+    FloatArray, shape (...)
+        API gravity. [°API]
+
+    Notes
+    -----
+    The way back from :func:`density_of_api_gravity`, eq. 1::
+
+        API = 141.5 ρ_w / ρ − 131.5        (1)
+
+    References
+    ----------
+    .. [1] API MPMS 11.1-2004, "Temperature and Pressure Volume Correction Factors for Generalized Crude
+       Oils, Refined Products, and Lubricating Oils".
+    """
+    (value,) = as_floats(density)
+    return 141.5 * WATER_DENSITY_60F / value - 131.5  # eq. 1

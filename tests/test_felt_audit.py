@@ -70,3 +70,10 @@ def test_a_number_of_the_method_is_left_out() -> None:
         Number("models/x.py", 0, 1, 1, name, 1e-9) for name in ("TOLERANCE_OF_GAUGE", "ROOT_TOLERANCE")
     )
     assert physical(kept) and not physical(left)
+
+
+@pytest.mark.parametrize("name", ["_PRINTED_ROWS", "FREEZING_POINTS", "DENSITY_KNOTS"])
+def test_a_table_of_floats_is_data_whatever_it_is_called(name: str) -> None:
+    text = f"{name} = ((273.15, 999.84), (283.15, 999.7))\nBLOCK_ROWS = 16_384\n".encode()
+    found = [number for number in python_numbers("models/x.py", text, bodies=False) if physical(number)]
+    assert values(found) == [273.15, 999.84, 283.15, 999.7]

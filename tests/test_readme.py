@@ -14,9 +14,12 @@ import pytest
 from fastapi.testclient import TestClient
 
 from app.main import create_app
+from app.schemas.liquid import Liquid
 from app.schemas.types import Warned
 from app.settings import Settings
 from models import instruments
+from models.liquid.costald import DEPARTURES
+from models.saturation import WAGNER
 
 README = (Path(__file__).resolve().parents[1] / "README.md").read_text(encoding="utf-8")
 PAIR = re.compile(r"```sh\n(curl .*?)\n```\n```json\n(.*?)\n```", re.DOTALL)
@@ -108,3 +111,36 @@ def test_every_warning_has_its_line_in_the_glossary():
 def test_every_day_is_linked():
     days = sorted(path.name for path in (Path(__file__).parent / "days").glob("test_day_*.py"))
     assert re.findall(r"\(tests/days/(test_day_\w+\.py)\)", README) == days
+
+
+def how_true():
+    section = README.split("## How true")[1].split("\n## ")[0]
+    lines = [line for line in section.splitlines() if line.startswith("| ")]
+    return [[cell.strip() for cell in line.split("|")[1:-1]] for line in lines[2:]]
+
+
+def test_every_method_says_how_true_it_is():
+    rows = how_true()
+    named = {word for row in rows for word in re.findall(r"`(\w+)`", row[0])}
+    models = {get_args(one.model_fields["model"].annotation)[0] for one in get_args(get_args(Liquid)[0])}
+    assert named == models | {"fitted", "correlation", "capacity_table"}
+    assert all(len(row) == 4 and all(row) and "TO BE FILLED" not in "".join(row) for row in rows)
+
+
+def test_what_is_said_to_be_true_is_held_by_a_test_that_is_there():
+    root = Path(__file__).resolve().parents[1]
+    for row in how_true():
+        linked = re.findall(r"\]\((tests/[\w/]+\.py)\)", row[3])
+        assert linked, row
+        assert all((root / path).is_file() for path in linked), row
+
+
+def test_the_worst_deviations_that_the_models_carry_are_the_ones_that_are_told():
+    lines = {row[0]: row[2] for row in how_true()}
+    saturation = sorted((line[-1], name) for name, line in WAGNER.items())[-2:]
+    assert lines["vapour pressure"] == ", ".join(f"{100 * off:.2f} % ({name})" for off, name in reversed(saturation))
+    pure = lines["`light_hydrocarbon` by composition, pure"]
+    for name in ("propane", "o-xylene", "ethanol"):
+        off = 100 * DEPARTURES[name]
+        assert f"{off:.2f} %" in pure or f"{off:.1f} % ({name})" in pure, name
+    assert max(DEPARTURES, key=DEPARTURES.__getitem__) == "ethanol"

@@ -36,9 +36,10 @@ def calculate_inventory(
     body: Annotated[InventoryCalculation, Depends(json_body(InventoryCalculation))],
     working: Annotated[bool, Query(description="With the steps")] = False,
     budget: Annotated[bool, Query(description="With the budget of the uncertainty")] = False,
+    statement: Annotated[bool, Query(description="With the tank statement at 15 °C, 20 °C and 60 °F")] = False,
 ) -> InventoryResults:
     """One inventory for each reading; each reading stands alone."""
-    results = calculate.calculate(body, working=working, budget=budget)
+    results = calculate.calculate(body, working=working, budget=budget, statement=statement)
     return InventoryResults.model_validate({"results": results})
 
 

@@ -50,9 +50,10 @@ def get_working(
     request: Request, site: PathId, vessel: PathId, at: At = None, as_of: AsOf = None,
     working: Annotated[bool, Query(description="With the steps")] = True,
     budget: Annotated[bool, Query(description="With the budget of the uncertainty")] = True,
+    statement: Annotated[bool, Query(description="With the tank statement at 15 °C, 20 °C and 60 °F")] = True,
 ) -> Inventory:  # fmt: skip
-    """One inventory with the steps that led to it and the budget of its uncertainty."""
+    """One inventory with the steps that led to it, the budget of its uncertainty, and the tank statement."""
     state = request.app.state
     instant = state.clock.now() if at is None else at
-    wanted = {"working": working, "budget": budget}
+    wanted = {"working": working, "budget": budget, "statement": statement}
     return Inventory.model_validate(take_stock.vessel_inventory(state.store, site, vessel, instant, as_of, **wanted))

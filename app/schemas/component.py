@@ -36,6 +36,14 @@ class Component(Body):
         default=None, ge=1, le=1e6, description="Critical pressure [kPa absolute]"
     )
     acentric_factor: float | None = Field(default=None, ge=-1, le=3, description="Acentric factor [1]")
+    characteristic_volume_cm3_mol: float | None = Field(
+        default=None, ge=10, le=5000,
+        description="V* of the liquid's density by corresponding states (COSTALD); beside the four constants, "
+        "estimated if left out [cm³/mol]",
+    )  # fmt: skip
+    srk_acentric_factor: float | None = Field(
+        default=None, ge=-1, le=2, description="Acentric factor that goes with V*; beside the four constants [1]"
+    )
     molar_mass_g_mol: float | None = Field(default=None, ge=1, le=2000, description="Molar mass [g/mol]")
 
     @model_validator(mode="after")
@@ -50,6 +58,9 @@ class Component(Body):
         if given and given != constants:
             lacking = sorted(constants - given)
             raise refusal("missing", f"A component in full also gives {', '.join(lacking)}", lacking[0])
+        for name in ("characteristic_volume_cm3_mol", "srk_acentric_factor"):
+            if not given and getattr(self, name) is not None:
+                raise refusal("conflicting", f"{name} goes with the four constants of a component in full", name)
         return self
 
 

@@ -15,7 +15,7 @@ UNITS: dict[str, str] = {
     "_g_mol": "g/mol",
     "_kpa_abs": "kPa absolute", "_kpa": "kPa", "_per_kpa": "1/kPa", "_per_k": "1/K", "_per_f": "1/°F",
     "_m3": "m³", "_m": "m", "_mm": "mm", "_c": "°C", "_k": "K", "_kg": "kg", "_pct": "%", "_s": "s",
-    "_deg": "°", "_gpa": "GPa",
+    "_deg": "°", "_gpa": "GPa", "_bbl": "bbl", "_long_ton": "long ton", "_short_ton": "short ton",
 }  # fmt: skip
 """Unit that the end of a field's name stands for; the longest end counts."""
 _ENDS = sorted(UNITS, key=len, reverse=True)

@@ -6,6 +6,7 @@ from typing import Literal
 
 from pydantic import ConfigDict, Field
 
+from app.schemas.statement import TankStatement
 from app.schemas.types import Answer, AnsweredInstant, Items, Known, Quantity, Warned, is_none
 
 Status = Literal["measured", "uncertain", "unmeasured", "out_of_service"]
@@ -200,6 +201,10 @@ class Inventory(Answer):
         exclude_if=is_none,
         description="The uncertainty's parts, where budget=true asks for them",
     )
+    statement: TankStatement | None = Field(
+        default=None, exclude_if=is_none,
+        description="What a tank statement shows of a measured liquid, where statement=true asks for it",
+    )  # fmt: skip
 
 
 class SubstanceTotal(Answer):

@@ -19,7 +19,9 @@ from app.services.parts import Origin
 from models.components import COMPONENTS
 
 
-def calculate(request: InventoryCalculation, *, working: bool, budget: bool) -> list[dict[str, Any]]:
+def calculate(
+    request: InventoryCalculation, *, working: bool, budget: bool, statement: bool = False
+) -> list[dict[str, Any]]:
     """One inventory for each reading, in order; nothing is carried from one to the next."""
     define.check_components(request.substance, "/substance")
     _check_analyses(request)
@@ -28,12 +30,14 @@ def calculate(request: InventoryCalculation, *, working: bool, budget: bool) -> 
     )
     if not request.readings:
         return []
-    results = answers(measure(collected(vessel, request.readings)), working=working, budget=budget)
+    measured = measure(collected(vessel, request.readings))
+    results = answers(measured, working=working, budget=budget, statement=statement)
     for result, reading in zip(results, request.readings, strict=True):
         result.pop("vessel")
         result.pop("substance")
         if reading.taken_at is None:
             result.pop("at")
+            result.get("statement", {}).pop("at", None)
     return results
 
 

@@ -14,7 +14,6 @@ import numpy as np
 
 from app.schemas.instruments import Assumed
 from app.schemas.instruments import Instrument as Declared
-from app.schemas.liquid import LightHydrocarbonLiquid
 from app.schemas.site import Conditions, Site
 from app.schemas.substance import Substance
 from app.schemas.vessel import Vessel
@@ -22,10 +21,10 @@ from app.services import liquids
 from app.services.compositions import (
     Boiling,
     analysed,
-    fractions_of,
     mixture_of,
     saturation_columns,
     virial_columns,
+    what_boils,
 )
 from app.services.find import ALL_TIME
 from app.services.liquids import base_state
@@ -269,7 +268,7 @@ def compile_bodies(
             field="substance",
         )
     mixture = mixture_of(vapour) if vapour is not None and method & Method.VAPOUR else None
-    boiling = _boiling(substance) if method & Method.SATURATION else None
+    boiling = what_boils(substance) if method & Method.SATURATION else None
     own = None if liquid is None else liquids.liquid_of(liquid, site)
     state: tuple[float, ...] = (math.nan,) * 4
     if liquid is not None and own is not None:
@@ -279,14 +278,6 @@ def compile_bodies(
         name, definitions, site, body, substance, method, curve, capacity, parameters,
         own, mixture, boiling, (state[0], state[1], state[2]), state[3], space, kind == "capacity_table", courses,
     )  # fmt: skip
-
-
-def _boiling(substance: Substance) -> Boiling:
-    """What boils in the vessel: the liquid's composition where it is known, else the vapour's, which condenses."""
-    if isinstance(substance.liquid, LightHydrocarbonLiquid) and substance.liquid.components is not None:
-        return Boiling(fractions_of(substance.liquid.components))
-    assert substance.vapour is not None
-    return Boiling(fractions_of(substance.vapour.components), of_vapour=True)
 
 
 def _space(body: Vessel, substance: Substance) -> str:

@@ -11,6 +11,7 @@ from typing import NamedTuple
 import numpy as np
 
 from app.schemas.component import Component as WireComponent
+from app.schemas.liquid import LightHydrocarbonLiquid
 from app.schemas.substance import Substance, VirialVapour
 from models import units
 from models.components import Component, component, given_component
@@ -25,6 +26,13 @@ class Boiling(NamedTuple):
 
     parts: Fractions
     of_vapour: bool = False
+
+
+def what_boils(substance: Substance) -> Boiling | None:
+    """What boils in a vessel: the liquid's composition where it is known, else the vapour's, which condenses."""
+    if isinstance(substance.liquid, LightHydrocarbonLiquid) and substance.liquid.components is not None:
+        return Boiling(fractions_of(substance.liquid.components))
+    return None if substance.vapour is None else Boiling(fractions_of(substance.vapour.components), of_vapour=True)
 
 
 def boiling_pressure(composition: Boiling | None, temperature: float) -> float:
@@ -60,10 +68,13 @@ def _component(item: WireComponent) -> Component:
         return component(item.id)
     assert item.critical_pressure_kpa_abs is not None and item.acentric_factor is not None
     assert item.molar_mass_g_mol is not None
+    volume = item.characteristic_volume_cm3_mol
     return given_component(
         item.id, critical_temperature=item.critical_temperature_k,
         critical_pressure=item.critical_pressure_kpa_abs * units.PASCAL_PER_KPA,
         acentric_factor=item.acentric_factor, molar_mass=item.molar_mass_g_mol * units.KILOGRAM_PER_GRAM,
+        characteristic_volume=None if volume is None else volume * units.CUBIC_METRE_PER_CUBIC_CENTIMETRE,
+        srk_acentric_factor=item.srk_acentric_factor,
     )  # fmt: skip
 
 

@@ -11,11 +11,10 @@ from numpy.typing import NDArray
 from app.errors import FieldError, Unprocessable
 from app.schemas.calculation import CalculationReading
 from app.schemas.expected import ExpectedReadingCalculation
-from app.schemas.substance import Substance
 from app.services import define
 from app.services.calculate import collected
 from app.services.compile import CompiledVessel, compile_bodies, stack
-from app.services.compositions import Boiling, fractions_of, saturation_columns
+from app.services.compositions import saturation_columns, what_boils
 from app.services.measure import Measured, States, choices, measure
 from app.services.parts import at_row, celsius_of, estimate
 from app.services.reasons import reason, warnings
@@ -261,7 +260,7 @@ def _full(
     vessel: CompiledVessel, compiled: Vessels, state: State, request: ExpectedReadingCalculation
 ) -> dict[str, Any]:
     """At which temperature the mass as liquid fills its closed vessel, with what that must not be used for."""
-    boils = _boils(request.substance)
+    boils = what_boils(request.substance)
     if vessel.space != "product" or vessel.liquid is None or boils is None:
         return {}
     row: NDArray[np.intp] = np.zeros(1, dtype=np.intp)
@@ -270,11 +269,3 @@ def _full(
     kelvin = float(found.value[0])
     celsius = celsius_of(kelvin) if math.isfinite(kelvin) else None
     return {"liquid_full_temperature_c": celsius, "liquid_full_caution": CAUTION}
-
-
-def _boils(substance: Substance) -> Boiling | None:
-    """What boils in the vessel: the liquid's composition where it is known, else the vapour's."""
-    own = getattr(substance.liquid, "components", None)
-    if own is None:
-        own = None if substance.vapour is None else substance.vapour.components
-    return None if own is None else fractions_of(own)

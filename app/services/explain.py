@@ -10,8 +10,8 @@ from app.services.collect import INPUTS
 from app.services.measure import Measured
 from app.services.parts import at_row, estimate, sigmas
 from app.services.reasons import counts, reason, warnings
+from app.services.statement import in_air, tank_statements
 from app.services.working import budget_lines, working_steps
-from models import constants
 from models.columns import Mark
 from models.estimate import Estimate, combine
 from models.mass import standard_uncertainty
@@ -51,13 +51,19 @@ def mass_estimate(measured: Measured, row: int) -> Estimate | None:
     return combine([(1.0, read), (1.0, carried.moved), (1.0, Estimate(0.0, carried.extras))])
 
 
-def answers(measured: Measured, *, working: bool = False, budget: bool = False) -> list[dict[str, Any]]:
+def answers(
+    measured: Measured, *, working: bool = False, budget: bool = False, statement: bool = False
+) -> list[dict[str, Any]]:
     """Every row as the contract's inventory."""
     spread = standard_uncertainty(measured.result, sigmas(measured.parts))
-    return [
+    found = [
         _answer(measured, row, float(spread[row]), working=working, budget=budget)
         for row in range(measured.collected.rows)
     ]
+    if statement:
+        for row, block in tank_statements(measured).items():
+            found[row]["statement"] = block
+    return found
 
 
 def _number(value: float) -> float | None:
@@ -170,8 +176,7 @@ def _weight_in_air(measured: Measured, row: int, mass: float | None) -> float | 
     density = float(measured.result["liquid_density"][row])
     if mass is None or not math.isfinite(density) or density <= 0.0:
         return None
-    air, weights = constants.CONVENTIONAL_AIR_DENSITY, constants.CONVENTIONAL_WEIGHT_DENSITY
-    return mass * (1.0 - air / density) / (1.0 - air / weights)
+    return mass * in_air(density)
 
 
 def inputs(measured: Measured, row: int) -> list[dict[str, Any]]:

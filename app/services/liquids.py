@@ -14,6 +14,7 @@ from models import constants, instruments, units
 from models.errors import DefinitionError
 from models.liquid import definition
 from models.liquid.compiled import LiquidColumns
+from models.liquid.costald import CostaldColumns
 from models.liquid.definition import Liquid
 from models.liquid.ethanol_water import density_of_strength
 from models.liquid.state import Conditions, LiquidState
@@ -57,13 +58,17 @@ def liquid_of(body: wire.Liquid, site: Site) -> Liquid:
             return definition.TableLiquid(rows, body.compressibility_per_kpa / units.PASCAL_PER_KPA, pressure)
 
 
-def standard_pressure(liquid: Liquid | None, site: Site, boiling: Boiling | None) -> float:
+def standard_pressure(
+    liquid: Liquid | None, site: Site, boiling: Boiling | None, temperature: float | None = None
+) -> float:
     """Pressure of the standard state: the base pressure or, where higher, that of equilibrium. [Pa]
 
-    A method that starts from the saturated liquid finds the equilibrium itself and takes the base pressure.
+    ``temperature`` is that of another base than the site's. [K] A method that starts from the saturated liquid
+    finds the equilibrium itself and takes the base pressure.
     """
-    temperature, pressure = base_state(site)
-    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, temperature))
+    own, pressure = base_state(site)
+    at = own if temperature is None else temperature
+    return pressure if isinstance(liquid, SATURATED) else max(pressure, boiling_pressure(boiling, at))
 
 
 def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> tuple[float, ...]:
@@ -72,7 +77,7 @@ def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | 
     density = _stated_density(body)
     if density is None:
         density = own_density(liquid, at)
-        share = instruments.METHOD_DENSITY_SHARE[body.model]
+        share = _own_share(body, liquid)
     else:
         share = instruments.DENSITY_SHARE
         datum = standard_pressure(liquid, site, boiling)
@@ -81,6 +86,13 @@ def reference(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | 
             raise DefinitionError(why_outside(liquid, density, at, at), field=f"liquid/{field}")
     given = body.density_uncertainty_kg_m3
     return density, *at, share * density if given is None else given
+
+
+def _own_share(body: wire.Liquid, liquid: Liquid) -> float:
+    """Standard uncertainty of a density that a method gives of its own; of a composition its limit over √3. [1]"""
+    if isinstance(liquid, definition.MixtureLiquid):
+        return float(CostaldColumns.from_compositions([liquid.components]).departure[0]) / math.sqrt(3.0)
+    return instruments.METHOD_DENSITY_SHARE[body.model]
 
 
 def _to_blame(liquid: Liquid, density: float, at: State, datum: float) -> str:

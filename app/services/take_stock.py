@@ -38,7 +38,8 @@ class Stock:
 
 def stock_at(
     connection: Connection, site_id: int, site: str, at: int, known: int, *, only: str | None = None,
-    working: bool = False, budget: bool = False, closing: bool = False, definitions_at: int | None = None,
+    working: bool = False, budget: bool = False, statement: bool = False, closing: bool = False,
+    definitions_at: int | None = None,
 ) -> Stock:  # fmt: skip
     """Inventories at an instant by what was known.
 
@@ -54,7 +55,7 @@ def stock_at(
         meters = meters_in_force(connection, site_id, when, known)
         asked = np.full(len(held.vessels), at, dtype=np.int64)
         measured = measure_at(connection, site_id, held.vessels, asked, known, meters, closing=closing)
-        found = answers(measured, working=working, budget=budget)
+        found = answers(measured, working=working, budget=budget, statement=statement)
         masses = {vessel.name: mass_estimate(measured, row) for row, vessel in enumerate(held.vessels)}
     for one in held.out:
         found.append(out_of_service(one.name, at, [named("vessel", one)._asdict()]))
@@ -109,13 +110,15 @@ def _mass(stock: Stock, name: str) -> Estimate:
 
 
 def vessel_inventory(
-    store: Store, site: str, vessel: str, at: int, as_of: int | None, *, working: bool = False, budget: bool = False
-) -> dict[str, Any]:
+    store: Store, site: str, vessel: str, at: int, as_of: int | None, *, working: bool = False, budget: bool = False,
+    statement: bool = False,
+) -> dict[str, Any]:  # fmt: skip
     """One vessel's inventory at an instant."""
     with store.reading() as connection:
         site_id = site_number(connection, site)
         known = watermark(connection, site_id, as_of)
-        stock = stock_at(connection, site_id, site, at, known, only=vessel, working=working, budget=budget)
+        blocks = {"working": working, "budget": budget, "statement": statement}
+        stock = stock_at(connection, site_id, site, at, known, only=vessel, **blocks)
     if not stock.answers:
         raise Unprocessable("A junction holds nothing: it has no inventory", code="junction")
     return stock.answers[0]

@@ -168,7 +168,7 @@ class HeadStress:
         ----------
         level, floor : array_like, shape (...)
             Level of the liquid, and of the water below it, on one datum; where the floor is at or above
-            the level there is no room between. NaN stays NaN. [m]
+            the level there is no room between, −inf for no water. NaN stays NaN. [m]
         row : IntArray, shape (...), or int
             Shell of each level. [1]
 
@@ -212,7 +212,7 @@ class HeadStress:
         Parameters
         ----------
         level, water_level : array_like, shape (...)
-            Level of the liquid, and of free water under it, on one datum. [m]
+            Level of the liquid, and of free water under it, on one datum; −inf for no water. [m]
         density : array_like, shape (...)
             Density of the liquid at its temperature and pressure; it stands for the whole column. [kg/m³]
         density_included : array_like, shape (...)

@@ -212,7 +212,9 @@ def test_an_impossible_constant_is_named(field: str, value: float) -> None:
 
 @pytest.mark.parametrize(
     ("field", "inside", "outside"),
-    [("critical_temperature", 1995.0, 2005.0), ("critical_pressure", 4.98e7, 5.02e7), ("acentric_factor", 1.99, 2.01),
+    [("critical_temperature", 2.005, 1.995), ("critical_temperature", 1995.0, 2005.0),
+     ("critical_pressure", 1.005e5, 0.995e5), ("critical_pressure", 4.98e7, 5.02e7),
+     ("acentric_factor", -0.995, -1.005), ("acentric_factor", 1.99, 2.01), ("molar_mass", 1.005e-3, 0.995e-3),
      ("molar_mass", 1.99, 2.01), ("critical_volume", 4.98e-3, 5.02e-3), ("critical_volume", 1.005e-5, 0.995e-5),
      ("characteristic_volume", 4.98e-3, 5.02e-3), ("characteristic_volume", 1.005e-5, 0.995e-5),
      ("srk_acentric_factor", 1.99, 2.01), ("srk_acentric_factor", -0.995, -1.005)],

@@ -41,6 +41,11 @@ def test_exact_factors():
     assert units.CUBIC_METRE_PER_CUBIC_CENTIMETRE * 1e6 == 1.0
     assert units.KILOGRAM_PER_GRAM * 1000.0 == 1.0
     assert units.SECONDS_PER_DAY == 24 * 60 * 60
+    # NIST Handbook 44, appendix C: a barrel of 42 gallons of 231 in³, tons of 2240 and 2000 lb, exactly.
+    barrel, pound = 42 * 231 * 0.0254**3, 0.45359237
+    assert pytest.approx(barrel, rel=1e-15) == units.CUBIC_METRE_PER_BARREL
+    assert pytest.approx(2240 * pound, rel=1e-15) == units.KILOGRAM_PER_LONG_TON
+    assert pytest.approx(2000 * pound, rel=1e-15) == units.KILOGRAM_PER_SHORT_TON
 
 
 def test_degrees_api_are_densities_relative_to_water_of_60_f() -> None:
@@ -48,3 +53,10 @@ def test_degrees_api_are_densities_relative_to_water_of_60_f() -> None:
     assert units.density_of_api_gravity([10.0, 35.0, -5.5]) == pytest.approx(
         [999.016, 0.849849849849849849 * 999.016, 1.123015873015873016 * 999.016], rel=1e-15
     )
+
+
+def test_the_api_gravity_of_a_density() -> None:
+    # 141.5 · 999.016/ρ − 131.5 by hand: water, and twice its density.
+    assert units.api_gravity_of_density([999.016, 1998.032]) == pytest.approx([10.0, -60.75], rel=1e-14)
+    degrees = np.array([-5.5, 10.0, 35.0, 93.5])
+    assert units.api_gravity_of_density(units.density_of_api_gravity(degrees)) == pytest.approx(degrees, rel=1e-13)

@@ -77,6 +77,17 @@ def test_working_and_budget_come_where_they_are_asked_for(client):
     assert found["mass_uncertainty_kg"] == pytest.approx(squares**0.5, rel=1e-12)
 
 
+def test_a_statement_comes_where_it_is_asked_for_and_without_an_instant_that_nobody_said(client):
+    (plain,) = inventory(client)["results"]
+    (found,) = inventory(client, query={"statement": "true"})["results"]
+    statement = found.pop("statement")
+    assert found == plain and "at" not in statement
+    assert statement["mass_kg"] == found["liquid_mass_kg"]
+    dated = [{"taken_at": "2026-05-01T06:00:00Z", "level_m": 1.2, "liquid_temperature_c": 21.0}]
+    (found,) = inventory(client, query={"statement": "true"}, readings=dated)["results"]
+    assert found["statement"] == {"at": "2026-05-01T06:00:00Z"} | statement
+
+
 def test_a_gas_of_a_fixed_volume_is_an_ideal_gas_where_it_is_thin(client):
     """Helium at 10 kPa and 0 °C by P V m / (R T), 4.0026 g/mol; its second coefficient, 12 cm³/mol, is a 5e-5 of it."""
     components = [{"id": "helium", "mole_fraction": 1.0}]

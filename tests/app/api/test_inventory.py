@@ -66,12 +66,33 @@ def test_the_budget_adds_up_to_the_uncertainty_and_the_working_to_the_mass(site)
     assert all(one["method"] and one["reference"] and one["unit"] for one in found["working"])
 
 
-def test_working_and_budget_come_only_where_they_are_asked_for(site):
+def test_working_budget_and_statement_come_only_where_they_are_asked_for(site):
     site.read(AT, 2.0)
-    assert not {"working", "budget"} & set(stock(site))
-    plain = site.get("/vessels/tk-1/working", at=AT, working="false", budget="false")
-    assert not {"working", "budget"} & set(plain)
+    assert not {"working", "budget", "statement"} & set(stock(site))
+    plain = site.get("/vessels/tk-1/working", at=AT, working="false", budget="false", statement="false")
+    assert not {"working", "budget", "statement"} & set(plain)
     assert plain == stock(site)
+    assert {"working", "budget", "statement"} <= set(site.get("/vessels/tk-1/working", at=AT))
+
+
+def test_a_statement_is_of_the_reading_and_not_of_what_moved_since(site):
+    """2 m of 50 000 kg/m at six; by half past six 19 t have left by a ticket."""
+    site.read(AT, 2.0)
+    times = {"started_at": HOUR.format(6, 5), "ended_at": HOUR.format(6, 20)}
+    site.move("t-1", "tk-1", "boundary:out", mass_kg=19_000.0, **times)
+    found = site.get("/vessels/tk-1/working", at=HOUR.format(6, 30))
+    assert (found["mass_kg"], found["moved_kg"]) == (pytest.approx(81_000.0), pytest.approx(-19_000.0))
+    statement = found["statement"]
+    assert (statement["at"], statement["level_m"]) == (AT, 2.0)
+    assert statement["mass_kg"] == pytest.approx(100_000.0)
+    assert statement["at_15_c"]["net_standard_volume_m3"] == pytest.approx(100.0)
+    assert statement["at_60_f"]["net_standard_volume_bbl"] == pytest.approx(628.9811, abs=5e-5)
+
+
+def test_a_vessel_found_empty_has_no_statement(site):
+    site.post("/readings", {"readings": [{"vessel": "tk-1", "taken_at": AT, "empty": True}]})
+    found = site.get("/vessels/tk-1/working", at=AT)
+    assert (found["mass_kg"], "statement" in found) == (0.0, False)
 
 
 def test_a_default_uncertainty_is_marked_as_not_declared(site):

@@ -39,13 +39,16 @@ FIELDS = [(model, name) for model in EVERY for name in model.model_fields]
 # Numbers whose names carry no unit: ratios and chances, counts over time, the three words of an
 # instrument's errors, and what is in the unit of another field.
 WITHOUT_UNIT = {
-    "mole_fraction", "acentric_factor", "poisson_ratio", "compressibility_factor", "p_value", "score",
+    "mole_fraction", "acentric_factor", "srk_acentric_factor",
+    "poisson_ratio", "compressibility_factor", "p_value", "score",
     "statistic", "false_alarm_rate", "false_alarms_per_month", "pct_of_throughput", "kg",
     "random", "systematic", "offset", "local",
     "value", "standard_uncertainty", "difference", "sensitivity",
     "reconciled", "uncertainty", "adjustment", "imbalance", "magnitude", "interval", "share",
     "liquid_composition", "vapour_composition", "composition", "quality", "before", "after",
     "covariance",
+    "shell_factor", "temperature_factor", "temperature_factor_table", "pressure_factor", "api_gravity",
+    "relative_density_60_60",
 }  # fmt: skip
 # Lists of numbers, and maps of bodies or of numbers by quantity, whose description has the units.
 LISTS = {"rows", "courses", "deadwood"}

@@ -40,7 +40,7 @@ PROMISED = [
 
 
 def test_words_are_those_of_the_contract() -> None:
-    assert set(Inventory.model_fields) == {*PROMISED, "substance", "reason", "moved_kg"}
+    assert set(Inventory.model_fields) == {*PROMISED, "substance", "reason", "moved_kg", "statement"}
     assert set(Step.model_fields) == {"step", "symbol", "value", "unit", "method", "reference"}
     assert set(Contribution.model_fields) == {
         "input", "instrument", "standard_uncertainty", "sensitivity", "contribution_kg", "kind", "declared",
@@ -54,7 +54,7 @@ def test_words_are_those_of_the_contract() -> None:
 def test_unknown_is_null_and_unasked_is_absent() -> None:
     answer = json.loads(Inventory(status="unmeasured", mass_kg=float("nan")).model_dump_json())
     assert answer["mass_kg"] is None and answer["vapour_mass_kg"] is None
-    assert not {"working", "budget", "reason", "vessel", "at"} & set(answer)
+    assert not {"working", "budget", "statement", "reason", "vessel", "at"} & set(answer)
     asked = json.loads(Inventory(status="measured", working=(), budget=()).model_dump_json())
     assert (asked["working"], asked["budget"]) == ([], [])
 

@@ -60,7 +60,8 @@ def test_an_analysis_that_the_method_cannot_take_leaves_the_vessel_unmeasured_an
 
 
 def test_a_liquid_by_expansivity_keeps_its_density_and_boils_as_analysed() -> None:
-    plain: dict[str, Any] = {**LPG, "liquid": {"model": "expansivity", "density_kg_m3": 507.0, "expansivity_per_k": 3e-3}}
+    liquid = {"model": "expansivity", "density_kg_m3": 507.0, "expansivity_per_k": 3e-3}
+    plain: dict[str, Any] = {**LPG, "liquid": liquid}
     vessel = compiled(SPHERE, plain)
     assert masses(vessel, READ | BUTANE).result["vapour_pressure"][0] == pytest.approx(5.221e5, rel=5e-3)
     same = answer(vessel, READ)["liquid_density_kg_m3"]

@@ -20,6 +20,12 @@ def test_fractions_are_normalised_and_a_component_in_full_keeps_its_constants() 
     propane, own = fractions_of(LPG.vapour.components)
     assert propane[1] + own[1] == pytest.approx(1.0, rel=1e-15)
     assert (own[0].critical_temperature, own[0].critical_pressure, own[0].molar_mass) == (400.0, 4e6, 0.060)
+    assert own[0].costald_estimated
+    measured = OWN | {"characteristic_volume_cm3_mol": 250.0, "srk_acentric_factor": 0.21}
+    body = {"name": "x", "liquid": {"model": "light_hydrocarbon", "components": [measured | {"mole_fraction": 1.0}]}}
+    liquid = Substance.model_validate(body).liquid
+    given = fractions_of(liquid.components)[0][0]  # type: ignore[union-attr, arg-type]
+    assert given.costald == (pytest.approx(2.5e-4), 0.21)
     assert mixture_of(LPG.vapour).components[1] == own[0]
 
 

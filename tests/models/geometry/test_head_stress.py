@@ -165,9 +165,11 @@ def test_the_derivatives_of_what_is_added():
         assert own == pytest.approx(slope, rel=1e-6)
 
 
-def test_where_there_is_no_free_water_the_whole_widening_is_the_liquid_s():
-    """No water is a level of −∞, as the chain has it: the same as water that reaches nothing."""
-    courses = stack(shell())
-    none, nothing = (courses.widening(11.0, water, 850.0, 700.0) for water in (-math.inf, 0.0))
-    assert none == nothing and none.volume > 0.0 and none.water_volume == 0.0
-    assert math.isnan(courses.widening(math.nan, -math.inf, 850.0, 0.0).volume)
+def test_a_tank_without_free_water_is_one_whose_water_stands_below_every_course():
+    """−inf is how a state says that there is no water: it is no unknown level."""
+    tank = stack(shell())
+    dry, low = tank.widening(10.0, -np.inf, 840.0, 800.0), tank.widening(10.0, -1.0, 840.0, 800.0)
+    assert dry == low
+    assert dry.volume == pytest.approx(40.0 * by_quadrature(10.0), rel=1e-12)
+    assert dry.water_volume == 0.0
+    assert np.isnan(tank.widening(10.0, np.nan, 840.0, 800.0).volume)

@@ -2,6 +2,7 @@
 
 from dataclasses import replace
 
+import CoolProp
 import numpy as np
 import pytest
 from chemicals.volume import COSTALD_compressed, COSTALD_mixture

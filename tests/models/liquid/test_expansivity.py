@@ -51,6 +51,23 @@ def test_handbook_coefficients_predict_five_kelvin_and_ten_bar(fluid, density_20
     assert pressed == pytest.approx(PropsSI("D", "T", 293.15, "P", 10e5, fluid), rel=2e-5)
 
 
+@pytest.mark.parametrize(
+    ("fluid", "beta", "near", "far"),
+    [("Water", 0.2068e-3, 1.28e-4, 1.89e-3), ("n-Hexane", 1.369e-3, 4.95e-5, 8.46e-4),
+     ("Benzene", 1.209e-3, 2.62e-5, 4.43e-4), ("Toluene", 1.072e-3, 2.26e-5, 3.59e-4)],
+)  # fmt: skip
+def test_how_far_a_constant_beta_holds(fluid, beta, near, far):
+    """Off by so much 5 and 20 K above 20 °C: exp(−β ΔT) worked out beside the reference equation's densities."""
+    at_20 = PropsSI("D", "T", 293.15, "P", 101325, fluid)
+    seen = []
+    for t in (298.15, 313.15):
+        path = {"coefficients": [beta], "origin": 293.15, "compressibility": 0.0}
+        ratio = log_volume_ratio(t, 101325, temperature_ref=293.15, pressure_ref=101325, **path)
+        seen.append(float(density(at_20, ratio)) / PropsSI("D", "T", t, "P", 101325, fluid) - 1.0)
+    print(f"{fluid}, constant β: {seen[0]:.1e} over 5 K, {seen[1]:.1e} over 20 K")
+    assert seen == pytest.approx([near, far], rel=5e-3)
+
+
 def test_the_exponential_is_used_and_not_its_tangent():
     # β ΔT = 0.036: exp(−0.036) = 0.964640293, 1 − 0.036 = 0.964 would be 0.064 % low.
     ratio = log_volume_ratio(
