@@ -118,7 +118,7 @@ def test_a_method_that_needs_a_sample_has_no_density_of_its_own() -> None:
         own_density(definition.PetroleumLiquid("crude"), (288.15, ATMOSPHERE))
 
 
-def test_pitfall_gauge_or_absolute_petroleum_takes_the_gauge_pressure_of_the_place() -> None:
+def test_pitfall_1_gauge_or_absolute_petroleum_takes_the_gauge_pressure_of_the_place() -> None:
     """845 kg/m³ at 15 °C, refined, 60 °C and 1 000 kPa gauge: C_P = 1.00096695 (recomputed from ASTM D1250-04)."""
     oil, sample = definition.PetroleumLiquid("refined"), (288.15, ATMOSPHERE)
     high = 77_000.0  # a site at 2 250 m

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
 
-from models.liquid.ethanol_water import mass_fraction, point, why_no_mixture, why_outside
+from models.liquid.ethanol_water import density_of_strength, mass_fraction, point, why_no_mixture, why_outside
 from models.liquid.water import water_density
 
 ATMOSPHERE = 101_325.0
@@ -93,7 +93,21 @@ def test_compressibility_is_none_unless_given():
     assert float(given.density / plain.density) == pytest.approx(np.exp(1e-9 * (2e5 - 101_325)), rel=1e-14)
 
 
-def test_pitfall_r22_only_to_40_celsius():
+def test_pitfall_16_litres_of_pure_alcohol_are_those_at_20_celsius():
+    """Half and half by mass: 913.771 kg/m³ at 20 °C, 917.711 at 15 °C; pure ethanol 789.24 at 20 °C, published.
+
+    1,000 L at 20 °C hold 1,000 × 0.5 × 913.771/789.24 = 578.893 L of alcohol. Whoever takes the same 1,000 L as read
+    at 15 °C for a volume at 20 °C misses the 0.43 % by which it would be larger there, 2.5 L.
+    """
+    strength = 0.5 * 913.771 / 789.24
+    assert density_of_strength(strength) == pytest.approx(913.771, abs=0.002)
+    cold = float(at(0.5, 15.0).density)
+    assert cold == pytest.approx(917.711, abs=5e-4)
+    grown = cold / float(at(0.5, 20.0).density)
+    assert 1000.0 * strength * (grown - 1.0) == pytest.approx(2.5, abs=0.05)
+
+
+def test_pitfall_16_r22_only_to_40_celsius():
     states = [(0.5, 20, 1e5, True), (0.5, -20, 0, True), (0.5, 40, 1e6, True), (0.5, 40.1, 1e5, False),
               (0.5, -20.1, 1e5, False), (-0.01, 20, 1e5, False), (1.005, 20, 1e5, False), (0.5, 20, -1, False),
               (0.5, 20, 1.005e6, False), (np.nan, 20, 1e5, False), (0.5, np.nan, 1e5, False)]  # fmt: skip
