@@ -274,7 +274,7 @@ def test_liquid_mass_is_net_standard_volume_times_standard_density(case: Case) -
     np.testing.assert_allclose(own["net_standard_volume"], own["gross_standard_volume"] * dry, rtol=1e-13)
 
 
-def test_water_leaves_a_wet_sample_by_its_own_weight_and_a_dry_one_by_its_volume() -> None:
+def test_pitfall_18_water_leaves_a_wet_sample_by_its_own_weight_and_a_dry_one_by_its_volume() -> None:
     """Half a percent of water in oil of 846 kg/m³: net volume times wet density overstates by 0.09 %."""
     still = OIL.reads(water_level=-math.inf, liquid_temperature=288.15, density_temperature=288.15)
     cases = [still.reads(sediment_water=w, density_is_dry=d) for w, d in ((0.0, 0.0), (0.005, 0.0), (0.005, 1.0))]
