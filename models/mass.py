@@ -104,7 +104,15 @@ class _Made:
         self.marks[where] = step.marks
         for columns, found, absent in ((self.columns, step.out, np.nan), (self.sensitivities, step.sens, 0.0)):
             for name, column in found.items():
-                if name not in columns:  # of one method, every block brings the same columns
+                held = columns.get(name)
+                if held is None and self.of_one_method and len(column) == 1 < len(self.marks):
+                    columns[name] = np.broadcast_to(column, self.marks.shape)  # one value for all, never written
+                    continue
+                if held is not None and held.strides == (0,):
+                    if len(column) == 1 and np.array_equal(column, held[:1], equal_nan=True):
+                        continue
+                    columns[name] = held.copy()  # until a block brings another
+                if held is None:  # of one method, every block brings the same columns
                     rows = len(self.marks)
                     columns[name] = np.empty(rows) if self.of_one_method else np.full(rows, absent)
                 columns[name][where] = column

@@ -7,7 +7,7 @@ CoolProp 8.0.0 (HEOS); the range and the worst departure from those lines stand 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -22,6 +22,11 @@ AMBROSE_WALTON = (
 )
 AMBROSE_WALTON_LOWEST = 0.5  # reduced temperature
 AMBROSE_WALTON_DEPARTURE = 0.01  # of nonpolar hydrocarbons, 250 to 350 K, against CoolProp 8.0.0
+# Raoult's law of a mixture, one standard uncertainty: shares of the spread of its components' pressures, of the
+# spread squared, and of the chance that two molecules are unlike. Twice this covers the worst of twenty mixtures of
+# light hydrocarbons, carbon dioxide and nitrogen from 10 to 45 °C, bubble and dew, against CoolProp 8.0.0.
+IDEAL_BY_SPREAD, IDEAL_BY_SPREAD_SQUARED, IDEAL_BY_UNLIKE = 0.07, 0.035, 0.01
+IDEAL_REDUCED_TEMPERATURE = 0.8  # of the components' mean critical temperature, where the spread is taken
 TEMPERATURE_STEPS = 40  # at most; five to seven are usual
 TEMPERATURE_TOLERANCE = 1e-13  # relative
 
@@ -94,7 +99,7 @@ class SaturationColumns:
     lowest, highest : FloatArray, shape (rows,)
         Range in which every component has a vapour pressure. [K]
     departure : FloatArray, shape (rows,)
-        Worst relative departure of the constants from their source. [1]
+        Relative departure: the worst of the constants from their source, and of a mixture Raoult's law. [1]
     """
 
     fractions: FloatArray
@@ -151,7 +156,26 @@ class SaturationColumns:
         vapour = np.zeros(rows, dtype=np.bool_) if vapours is None else np.array(vapours, dtype=np.bool_)
         if vapour.shape != (rows,):
             raise DefinitionError(f"{rows} compositions have {vapour.size} phases; each has one", field="components")
-        return cls(fractions, vapour, critical, log_pressure, constants, lowest, highest, departure)
+        columns = cls(fractions, vapour, critical, log_pressure, constants, lowest, highest, departure)
+        return replace(columns, departure=departure + columns._ideal_departure())
+
+    def _ideal_departure(self) -> FloatArray:
+        """Standard uncertainty of Raoult's law, from how unlike the components' pressures P_i are. [1]
+
+        With the fractions z of the vapour and x of the row, s = Σ z_i |ln P_i/P|: 0.07 s + 0.035 s² + 0.01 (1 − Σ x²).
+        A pure substance has none.
+        """
+        x = self.fractions
+        critical = np.sum(x * self.critical_temperature, axis=1)
+        t = np.clip(IDEAL_REDUCED_TEMPERATURE * critical, self.lowest, self.highest)
+        rows = np.arange(len(t))
+        pressures = np.stack([self._component(t, rows, k)[0] for k in range(x.shape[1])], axis=1)
+        bubble, dew = np.sum(x * pressures, axis=1), 1.0 / np.sum(x / pressures, axis=1)
+        total = np.where(self.vapour, dew, bubble)[:, None]
+        above = np.where(self.vapour[:, None], x, x * pressures / total)
+        spread = np.sum(above * np.abs(np.log(pressures / total)), axis=1)
+        unlike = 1.0 - np.sum(x * x, axis=1)
+        return np.asarray((IDEAL_BY_SPREAD + IDEAL_BY_SPREAD_SQUARED * spread) * spread + IDEAL_BY_UNLIKE * unlike)
 
     def pressure(self, temperature: ArrayLike, row: IntArray | int = 0) -> tuple[FloatArray, FloatArray]:
         """Bubble pressure of a liquid or dew pressure of a vapour, and its slope; NaN outside the constants' range.

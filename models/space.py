@@ -76,7 +76,7 @@ def saturation_interval(
 
     Notes
     -----
-    With p the vapour pressure and u_p the worst departure of its equation::
+    With p the vapour pressure and u_p the departure of its equation, and of Raoult's law for a mixture::
 
         lowest  = min(p(T_l), p(T_v)),  highest = max(p(T_l), p(T_v))        (1)
         tolerance = 2 √(u(P)² + (dp/dT u(T))² + u_p²)                       (2)

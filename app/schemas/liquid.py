@@ -86,7 +86,11 @@ class ExpansivityLiquid(_Sampled):
 
 
 class PetroleumLiquid(_Sampled):
-    """A petroleum by its density at one state and its commodity: ASTM D1250-04 / API MPMS 11.1-2004."""
+    """A petroleum by its density at one state and its commodity: ASTM D1250-04 / API MPMS 11.1-2004.
+
+    Defined from −50 to 150 °C and from 0 to 103.4 bar gauge, for 610.6 to 1163.5 kg/m³ at 60 °F (a lubricating oil:
+    from 800.9); a hotter or heavier one is a density_table.
+    """
 
     model_config = ConfigDict(
         json_schema_extra={
@@ -118,7 +122,7 @@ class PetroleumLiquid(_Sampled):
 
 
 class WaterLiquid(_Uncertain):
-    """Water, 0 to 150 °C."""
+    """Water by G. S. Kell (1975), scaled to M. Tanaka et al. (2001): 0 to 150 °C, up to 100 bar."""
 
     model_config = ConfigDict(json_schema_extra={"examples": [{"model": "water"}]})
 
@@ -126,7 +130,7 @@ class WaterLiquid(_Uncertain):
 
 
 class EthanolWaterLiquid(_Uncertain):
-    """Ethanol and water by their density or their strength: OIML R 22, −20 to 40 °C."""
+    """Ethanol and water by their strength, or by a density: OIML R 22 (1973), −20 to 40 °C, up to 10 bar."""
 
     model_config = ConfigDict(
         json_schema_extra={
@@ -156,7 +160,11 @@ class EthanolWaterLiquid(_Uncertain):
 
 
 class LightHydrocarbonLiquid(_Uncertain):
-    """A liquefied gas: by its density (GPA TP-27 / API MPMS 11.2.4), or by its composition (COSTALD)."""
+    """A liquefied gas: by its density (GPA TP-27 / API MPMS 11.2.4), or by its composition (COSTALD).
+
+    By density from −46 to 93 °C, for relative densities at 60 °F from 0.350 to 0.688. By composition from 0.25 to
+    0.95 of the mixture's critical temperature; a reading's liquid_composition then takes the place of components.
+    """
 
     model_config = ConfigDict(
         json_schema_extra={
@@ -169,7 +177,8 @@ class LightHydrocarbonLiquid(_Uncertain):
 
     model: Literal["light_hydrocarbon"] = Field(description="A liquefied gas by its density, or by its composition")
     components: Items[Component] | None = Field(
-        default=None, min_length=1, max_length=50, description="Composition of the liquid; instead of density_kg_m3"
+        default=None, min_length=1, max_length=50,
+        description="Composition of the liquid, mole fractions that sum to 1 within 0.01; instead of density_kg_m3",
     )
     density_kg_m3: Density | None = Field(
         default=None, description="Density at the state below, in vacuo; instead of components [kg/m³]"
@@ -190,13 +199,18 @@ class LightHydrocarbonLiquid(_Uncertain):
         if self.components is None:
             return self
         if given := {"at_temperature_c", "at_pressure_kpa_abs"} & self.model_fields_set:
-            raise refusal("conflicting", "A temperature or pressure of a density goes with density_kg_m3, not with components", sorted(given)[0])
+            detail = "A temperature or pressure of a density goes with density_kg_m3, not with components"
+            raise refusal("conflicting", detail, sorted(given)[0])
         whole(self.components)
         return self
 
 
 class DensityTableLiquid(_Uncertain):
-    """A liquid by a table of its densities."""
+    """A liquid by a table of its densities: for what no published method reaches, such as hot bitumen.
+
+    Between the rows it is interpolated, beyond them there is no density. Where the site's base temperature lies
+    beyond them the mass is measured all the same, and standard volumes are unknown.
+    """
 
     model_config = ConfigDict(
         json_schema_extra={
@@ -209,7 +223,9 @@ class DensityTableLiquid(_Uncertain):
         }
     )  # fmt: skip
 
-    model: Literal["density_table"] = Field(description="A table of densities, interpolated and never extrapolated")
+    model: Literal["density_table"] = Field(
+        description="A table of densities: monotone cubic of ln ρ between its rows, never extrapolated"
+    )
     rows: DensityRows = Field(description="Rows of [t_c, density_kg_m3], rising in temperature [°C, kg/m³]")
     at_pressure_kpa_abs: float | None = Field(
         default=None, ge=0, le=1e6,

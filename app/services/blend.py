@@ -19,6 +19,7 @@ from app.services.parts import at_row
 from app.store.transfers import Transfer as Ticket
 from models import instruments
 from models.estimate import Estimate
+from models.liquid.definition import MixtureLiquid
 
 if TYPE_CHECKING:
     from app.services.carry import Carried, Moves
@@ -91,37 +92,50 @@ def stale(measured: Measured, moves: Moves, own: Own, row: int, carried: Carried
     """What a receipt after a sample does to a row; each such sample is said to predate it."""
     read = int(measured.collected.at[row])
     vessel = measured.vessel(row)
-    if vessel.has_vapour:
-        _analysis(measured, own, row, read, carried)
+    _analyses(measured, own, row, read, carried)
     content = _content(measured, row) if vessel.has_liquid else None
     if content is None:
         return None
     standard = {vessel.name: standard_density(measured, row)}
     found: list[Blend] = []
-    for name, blended in (("density", _density), ("sediment_water", _water)):
+    names: set[str] = set()
+    for name, blended in (("density", _density), ("liquid_composition", _density), ("sediment_water", _water)):
         chosen = measured.chosen[name]
-        if chosen.usable[row]:
+        if chosen.usable[row] and (name != "liquid_composition" or _is_density(measured, row)):
             since = _since(measured, moves, own, row, int(chosen.begins[row]), content, standard)
             if any(one.mass != 0.0 for one in since.received):
                 found.append(blended(vessel.name, content, since))
+                names.add(name)
     if not found:
         return None
-    carried.warn(
-        "sample_predates_receipt", "a receipt came after the sample that stands for the content", uncertain=True
-    )
+    if names != {"liquid_composition"}:
+        carried.warn(
+            "sample_predates_receipt", "a receipt came after the sample that stands for the content", uncertain=True
+        )
     return _together(found, content)
 
 
-def _analysis(measured: Measured, own: Own, row: int, read: int, carried: Carried) -> None:
-    """A gas that received something since its analysis: what came in has a composition that nobody told."""
-    chosen, name = measured.chosen["vapour_composition"], measured.vessel(row).name
-    if not chosen.usable[row]:
-        return
-    begins = int(chosen.begins[row])
-    if any(b.of is None and b.to == name and t.started_at < read and t.ended_at > begins for t, b in own):
-        carried.warn(
-            "sample_predates_receipt", "a receipt came after the analysis that stands for the gas", uncertain=True
-        )
+def _analyses(measured: Measured, own: Own, row: int, read: int, carried: Carried) -> None:
+    """A content that received something since its analysis: what came in has a composition that nobody told."""
+    vessel = measured.vessel(row)
+    by_composition = vessel.has_liquid and isinstance(vessel.liquid, MixtureLiquid)
+    for quantity, what, counts in (
+        ("vapour_composition", "gas", vessel.has_vapour), ("liquid_composition", "liquid", by_composition),
+    ):  # fmt: skip
+        chosen = measured.chosen[quantity]
+        if not counts or not chosen.usable[row]:
+            continue
+        begins = int(chosen.begins[row])
+        if any(b.of is None and b.to == vessel.name and t.started_at < read and t.ended_at > begins for t, b in own):
+            detail = f"a receipt came after the analysis that stands for the {what}"
+            carried.warn("sample_predates_receipt", detail, uncertain=True)
+
+
+def _is_density(measured: Measured, row: int) -> bool:
+    """Whether an analysis stands for the content's density: a liquid by composition of which no density was read."""
+    usable = {name: bool(measured.chosen[name].usable[row]) for name in ("liquid_composition", "density")}
+    by_composition = isinstance(measured.vessel(row).liquid, MixtureLiquid)
+    return by_composition and usable["liquid_composition"] and not usable["density"]
 
 
 def _content(measured: Measured, row: int) -> _Content | None:

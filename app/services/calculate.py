@@ -12,6 +12,7 @@ from app.services import define
 from app.services.choose import Candidates
 from app.services.collect import INPUTS, Collected, conversion, names_of
 from app.services.compile import CompiledVessel, compile_bodies
+from app.services.compositions import components_of
 from app.services.explain import answers
 from app.services.ingest import quality_of, text_of
 from app.services.measure import measure
@@ -43,13 +44,14 @@ def calculate(
 
 def _check_analyses(request: InventoryCalculation) -> None:
     """Refuse an analysis that names a component which is neither in the table nor given in full."""
-    vapour = request.substance.vapour
-    known = set(COMPONENTS).union(() if vapour is None else (one.id for one in vapour.components))
+    given = components_of(request.substance).values()
+    known = set(COMPONENTS).union(one.id for part in given for one in part)
     detail = "An analysis names components that are in the table or that the substance gives in full"
     unknown = [
-        FieldError(f"/readings/{place}/vapour_composition", "unknown_component", detail, place)
+        FieldError(f"/readings/{place}/{quantity}", "unknown_component", detail, place)
         for place, reading in enumerate(request.readings)
-        if not known.issuperset(reading.vapour_composition or ())
+        for quantity in ("liquid_composition", "vapour_composition")
+        if not known.issuperset(getattr(reading, quantity) or ())
     ]
     if unknown:
         raise Unprocessable(detail, code="unknown_component", errors=unknown)

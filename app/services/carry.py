@@ -206,7 +206,7 @@ def _moves(connection: Connection, site_id: int, measured: Measured, known: int,
         at = measured.instant(row)
         latest = max(latest, at)
         oldest = min(int(instants[row]), at - DAY_US)
-        for name in ("density", "sediment_water", "vapour_composition", "free_water"):
+        for name in ("density", "sediment_water", "liquid_composition", "vapour_composition", "free_water"):
             chosen = measured.chosen[name]
             if chosen.usable[row]:
                 oldest = min(oldest, int(chosen.begins[row]))

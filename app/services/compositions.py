@@ -57,6 +57,12 @@ def virial_columns(mixtures: tuple[VapourMixture, ...]) -> VapourColumns:
     return VapourColumns.from_mixtures(list(mixtures))
 
 
+def components_of(substance: Substance) -> dict[str, Sequence[WireComponent]]:
+    """The components that a substance gives, of its liquid and of its vapour."""
+    parts = {"liquid": substance.liquid, "vapour": substance.vapour}
+    return {name: getattr(part, "components", None) or () for name, part in parts.items()}
+
+
 def fractions_of(components: Sequence[WireComponent]) -> Fractions:
     """Substances and mole fractions, which sum to one."""
     total = math.fsum(item.mole_fraction for item in components)
@@ -112,8 +118,7 @@ def analysed(vapour: VirialVapour, analysis: tuple[tuple[str, float], ...]) -> V
 
 def analysed_fractions(substance: Substance, analysis: Mapping[str, float]) -> Fractions:
     """An analysis's substances and mole fractions, which sum to one; a substance gives its components in full."""
-    parts = (getattr(part, "components", None) or () for part in (substance.liquid, substance.vapour))
-    own = {item.id: item for given in parts for item in given}
+    own = {item.id: item for given in components_of(substance).values() for item in given}
     total = math.fsum(analysis.values())
     return tuple(
         (_component(own[name]) if name in own else component(name), fraction / total)

@@ -16,6 +16,7 @@ from app.schemas.types import canonical
 from app.schemas.vessel import Vessel
 from app.services import mark
 from app.services.compile import compile_bodies
+from app.services.compositions import components_of
 from app.services.find import ALL_TIME, site_number, watermark
 from app.services.instants import check_zone
 from app.store import books, definitions, sites
@@ -114,14 +115,13 @@ def _zone_is_free(writing: Writing, name: str, body: Site) -> None:
 
 def check_components(body: Substance, within: str = "") -> None:
     """Refuse a component that is neither in the table nor given in full, with its place and not its name."""
-    parts = {part: getattr(getattr(body, part), "components", None) or () for part in ("liquid", "vapour")}
     detail = (
         "That component is not in the table: give critical_temperature_k, critical_pressure_kpa_abs, "
         f"acentric_factor and molar_mass_g_mol with it, or take one of {', '.join(sorted(COMPONENTS))}"
     )
     unknown = [
         FieldError(f"{within}/{part}/components/{place}/id", "unknown_component", detail, place)
-        for part, found in parts.items()
+        for part, found in components_of(body).items()
         for place, one in enumerate(found)
         if one.id not in COMPONENTS and one.critical_temperature_k is None
     ]

@@ -14,6 +14,7 @@ from app.schemas.batch import ERRORS_LISTED, RowError
 from app.schemas.reading import Reading, Values
 from app.schemas.substance import Substance
 from app.services import mark
+from app.services.compositions import components_of
 from app.services.find import ALL_TIME, site_number
 from app.store import definitions, readings
 from app.store.engine import Store, Writing
@@ -109,8 +110,8 @@ def _components(
     if not any(_analysed(reading) for _, reading in rows):
         return frozenset()
     found = definitions.timeline(connection, site_id, "substance", -ALL_TIME, ALL_TIME, known)
-    vapours = [Substance.model_validate_json(one.body).vapour for one in found]
-    return frozenset(COMPONENTS).union(one.id for vapour in vapours if vapour is not None for one in vapour.components)
+    given = [components_of(Substance.model_validate_json(one.body)).values() for one in found]
+    return frozenset(COMPONENTS).union(one.id for parts in given for part in parts for one in part)
 
 
 def _analysed(reading: Reading) -> dict[str, set[str]]:

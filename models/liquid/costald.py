@@ -43,8 +43,8 @@ DEPARTURES: dict[str, float] = {
 }  # fmt: skip
 # The same for the worst of the table's hydrocarbons, had each been given by Tc, Pc, ω and M alone
 GIVEN_DEPARTURE = 0.02531
-# What mixing adds: six mixtures of the tests depart by at most 0.06 % more than their parts
-MIXING_DEPARTURE = 0.001
+# What mixing adds: of the mixtures of the tests propane with a fifth of propylene departs by 0.25 % more than its parts
+MIXING_DEPARTURE = 0.003
 
 
 @dataclass(frozen=True)

@@ -46,8 +46,12 @@ def excess(relative_density: ArrayLike, temperature: ArrayLike, pressure: ArrayL
     .. [1] API MPMS 11.2.2 (1986), 11.2.2.2 (form from memory); GPA TP-15 = API MPMS 11.2.5 for P_e.
     """
     gamma, t, p = as_floats(relative_density, temperature, pressure)
-    above = p - vapour_pressure(np.minimum(gamma, HEAVIEST), t)[0]  # eq. 1
-    return np.asarray(np.where(above > 0.0, above, np.where(np.isnan(p), np.nan, 0.0)))
+    return _above(p, vapour_pressure(np.minimum(gamma, HEAVIEST), t)[0])
+
+
+def _above(pressure: FloatArray, equilibrium: FloatArray) -> FloatArray:
+    above = pressure - equilibrium  # eq. 1 of ``excess``
+    return np.asarray(np.where(above > 0.0, above, np.where(np.isnan(pressure), np.nan, 0.0)))
 
 
 def point_at(relative_density: ArrayLike, temperature: ArrayLike, pressure: ArrayLike) -> LiquidPoint:
@@ -78,12 +82,13 @@ def point_at(relative_density: ArrayLike, temperature: ArrayLike, pressure: Arra
     .. [1] The chain rule.
     """
     gamma, t, p = as_floats(relative_density, temperature, pressure)
-    above = excess(gamma, t, p)
+    equilibrium, warmer = vapour_pressure(np.minimum(gamma, HEAVIEST), t)
+    above = _above(p, equilibrium)
     found = light_hydrocarbon.point(gamma, t, above)
     pressed = above > 0.0
     inside = np.isfinite(found.density)
     kappa = np.where(pressed, found.compressibility, np.where(inside, 0.0, np.nan))
-    warmer = np.where(pressed, vapour_pressure(np.minimum(gamma, HEAVIEST), t)[1], 0.0)
+    warmer = np.where(pressed, warmer, 0.0)
     heavier = np.where(pressed & (gamma < HEAVIEST), vapour_pressure_by_density(gamma, t), 0.0)
     return LiquidPoint(
         found.density,

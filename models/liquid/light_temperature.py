@@ -205,8 +205,8 @@ def correct(
        and 60E", 2007 = API MPMS 11.2.4.
     """
     gamma, t = as_floats(relative_density, temperature)
-    one = np.asarray(second) - 1 if first is None else np.asarray(first)
-    two = np.asarray(second)
+    fluids = np.asarray(second) - 1 if first is None else np.asarray(first), np.asarray(second)
+    one, two = (_if_same(fluid) for fluid in fluids)
     width = RELATIVE_DENSITY[two] - RELATIVE_DENSITY[one]
     delta = (gamma - RELATIVE_DENSITY[one]) / width  # eq. 1
     rise = CRITICAL_TEMPERATURE[two] - CRITICAL_TEMPERATURE[one]
@@ -219,13 +219,13 @@ def correct(
     by_delta = here.by_share - base.by_share
     by_critical = (base.by_reduced * reduced_60f - here.by_reduced * reduced) / critical
     return Saturated(
-        first=one,
-        second=two,
+        first=fluids[0],
+        second=fluids[1],
         share=delta,
         critical_temperature=critical,
         reduced_temperature=reduced,
         reduced_temperature_60f=reduced_60f,
-        scale=h2,
+        scale=np.broadcast_to(h2, delta.shape),
         density_first=here.first,
         density_second=here.second,
         density_first_60f=base.first,
@@ -236,6 +236,11 @@ def correct(
         by_temperature=np.asarray(here.by_reduced / critical),
         by_relative_density=np.asarray((by_delta + by_critical * rise) / width * gamma),
     )
+
+
+def _if_same(fluid: IntArray) -> IntArray:
+    """One position where all are the same, which they are of one content: then no constants are gathered."""
+    return np.asarray(fluid.flat[0]) if fluid.size and np.all(fluid == fluid.flat[0]) else fluid
 
 
 @dataclass(frozen=True)

@@ -33,6 +33,7 @@ __all__ = [
 ]
 
 _ITERATIONS = 15
+_RAIL_TOLERANCE = 0.01  # how far beyond its group a step may lead
 _STEP_TOLERANCE = 1e-9  # relative; Newton's steps square, so what remains is rounding
 _RESIDUAL_TOLERANCE = 1e-7  # relative, before the last step; the procedure itself stops at 1e-6 kg/m3
 
@@ -230,7 +231,8 @@ def _newton(rho: FloatArray, group: CodeArray, k: method.Coefficients, at: metho
     ----------
     .. [1] API MPMS 11.1-2004, 11.1.6.2, with the exact slope.
     """
-    low, high = 0.99 * groups.LOWEST_DENSITY[group], 1.01 * groups.HIGHEST_DENSITY[group]  # rails for the steps
+    low = (1.0 - _RAIL_TOLERANCE) * groups.LOWEST_DENSITY[group]
+    high = (1.0 + _RAIL_TOLERANCE) * groups.HIGHEST_DENSITY[group]
     first = np.clip(rho, low, high)
     # Pressure left out, the start lies on the dense side, where the density rises with that at 60 °F.
     alpha = (k[0] / first + k[1]) / first + k[2]

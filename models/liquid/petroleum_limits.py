@@ -91,5 +91,6 @@ def _why_density(
         return ""
     return (
         f"the density {where} is {density:.6g} kg/m³; the petroleum correction ({EDITION}) of "
-        f"{_WORDS[name]} is defined from {low:.1f} to {high:.1f} kg/m³ there; liquid.model density_table takes any density"
+        f"{_WORDS[name]} is defined from {low:.1f} to {high:.1f} kg/m³ there; "
+        "liquid.model density_table takes any density"
     )

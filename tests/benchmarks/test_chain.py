@@ -16,11 +16,12 @@ from models.columns import State, Vessels
 from models.constants import GAS_CONSTANT
 from models.geometry.heads import Head
 from models.geometry.lying import horizontal_cylinder
+from models.liquid.definition import ExpansivityLiquid
 from models.mass import inventory, standard_uncertainty
 from models.vapour.guard import Trust, expanded_uncertainty
 from models.vapour.root import vapour_root
 from tests.benchmarks.conftest import Ratio
-from tests.models.mass_cases import BULLET_CASE, CASES, NITROGEN, OIL, SPHERE_CASE, Case, state, vessels
+from tests.models.mass_cases import BULLET_CASE, CASES, NITROGEN, OIL, PROPANE, SPHERE_CASE, Case, state, vessels
 
 MILLION = 1_000_000
 SIGMAS = {
@@ -86,8 +87,9 @@ def bare_gas(
 ) -> dict[str, FloatArray]:
     v, p, t = bare.own, pressure, vapour_temperature
     shell = 7.0 / 8.0 * t + read["ambient_temperature"] / 8.0
-    full = 1.0 + 3.0 * v.expansion * (shell - v.expansion_temperature) + v.strain_sum * (p - bare.read.atmosphere)
-    return bare_vapour(bare, p, t, full * v.capacity, 3.0 * v.expansion * v.capacity, v.strain_sum * v.capacity)
+    spread = 1.0 + v.expansion * (shell - v.expansion_temperature) + v.strain_sum * (p - bare.read.atmosphere) / 3.0
+    by_sum = spread**2 * v.capacity
+    return bare_vapour(bare, p, t, spread**3 * v.capacity, 3.0 * v.expansion * by_sum, v.strain_sum * by_sum)
 
 
 def bare_vapour(
@@ -121,29 +123,32 @@ def bare_liquid(
     vapour_temperature: FloatArray, pressure: FloatArray,
 ) -> dict[str, FloatArray]:  # fmt: skip
     v, s, t, p = bare.own, bare.read, liquid_temperature, pressure
-    assert v.curves is not None
+    liquid_of = bare.case.liquid
+    assert v.curves is not None and isinstance(liquid_of, ExpansivityLiquid)
+    series, kappa = liquid_of.coefficients, liquid_of.compressibility
     volume, area = v.curves.volume_and_area(level, 0)
     water = v.curves.volume(s.water_level, 0) if np.isfinite(s.water_level[0]) else np.zeros(1)
     shell = 7.0 / 8.0 * t + ambient_temperature / 8.0
     thermal, gauge = v.expansion * (shell - v.expansion_temperature), p - s.atmosphere
-    reach = level * area / volume
-    factor = 1.0 + 3.0 * thermal + v.strain_sum * gauge - (thermal + v.strain_vertical * gauge) * reach
-    warmer, origin = t - s.density_temperature, v.expansivity_origin
+    reach = (level - v.bottom) * area / volume
+    spread, rise = 1.0 + thermal + v.strain_sum * gauge / 3.0, 1.0 + (thermal + v.strain_vertical * gauge) * reach
+    factor = spread**3 / rise
+    by_sum, by_vertical = factor / spread, factor * reach / rise
+    warmer, origin = t - s.density_temperature, liquid_of.origin
     drift = sum(
         b * ((t - origin) ** (j + 1) - (s.density_temperature - origin) ** (j + 1)) / (j + 1)
-        for j, b in enumerate(v.expansivity)
-    ) if len(v.expansivity) > 1 else v.expansivity[0] * warmer  # fmt: skip
-    beta = (
-        sum(b * (t - origin) ** j for j, b in enumerate(v.expansivity)) if len(v.expansivity) > 1 else v.expansivity[0]
-    )
-    density = s.density * np.exp(-drift + v.compressibility * (p - s.density_pressure))
+        for j, b in enumerate(series)
+    ) if len(series) > 1 else series[0] * warmer  # fmt: skip
+    beta = sum(b * (t - origin) ** j for j, b in enumerate(series)) if len(series) > 1 else series[0]
+    density = s.density * np.exp(-drift + kappa * (p - s.density_pressure))
     dry = 1.0 - s.sediment_water * v.water_density / s.density
-    standard = s.density * np.exp(-v.expansivity[0] * (v.standard_temperature - s.density_temperature))
+    standard = s.density * np.exp(-series[0] * (v.standard_temperature - s.density_temperature))
     net, ratio = density * dry, density / standard
     bulk = factor * (volume - water)
     liquid = net * bulk
     gross = bulk - v.roof_mass / density
-    hot, stretch = v.expansion * (3.0 - reach), v.strain_sum - v.strain_vertical * reach
+    hot = v.expansion * (3.0 * by_sum - by_vertical)
+    stretch = v.strain_sum * by_sum - v.strain_vertical * by_vertical
     below = net * (volume - water)
     found = {
         "mass": liquid - v.roof_mass * dry, "volume": volume, "area": area, "water": factor * water, "factor": factor,
@@ -152,8 +157,8 @@ def bare_liquid(
         "by level": net * factor * area, "by water": -net * factor,
         "by density": (density * bulk - v.roof_mass * (1.0 - dry)) / s.density,
         "by liquid_temperature": -beta * liquid + 7.0 / 8.0 * below * hot, "by ambient": below * hot / 8.0,
-        "by density_temperature": liquid * v.expansivity[0], "by sediment_water": -density * gross,
-        "by pressure": v.compressibility * liquid + below * stretch, "by capacity": liquid,
+        "by density_temperature": liquid * series[0], "by sediment_water": -density * gross,
+        "by pressure": kappa * liquid + below * stretch, "by capacity": liquid,
         "by capacity_local": net * factor * volume, "by expansion": -liquid * drift,
     }  # fmt: skip
     if bare.case.mixture is None:
@@ -161,10 +166,9 @@ def bare_liquid(
     assert v.saturation is not None
     v.saturation.pressure(t, 0)  # at both temperatures: a part of the method
     v.saturation.pressure(vapour_temperature, 0)
-    full = 1.0 + 3.0 * thermal + v.strain_sum * gauge
-    space = full * v.capacity - factor * volume
-    hotter = v.expansion * (3.0 * v.capacity - (3.0 - reach) * volume)
-    pressed = v.strain_sum * v.capacity - stretch * volume
+    space = spread**3 * v.capacity - factor * volume
+    hotter = v.expansion * 3.0 * spread**2 * v.capacity - hot * volume
+    pressed = v.strain_sum * spread**2 * v.capacity - stretch * volume
     gas = bare_vapour(bare, p, vapour_temperature, space, np.zeros(1), pressed)
     lost = gas["vapour_density"] * factor
     for name in ("mass", "by pressure", "by capacity"):
@@ -221,9 +225,9 @@ def scalar_mass(tank: fluids.TANK, case: Case, level: float, t: float, ambient: 
     factor -= (thermal + v["strain_vertical"] * gauge) * level * area / volume
     full = 1.0 + 3.0 * thermal + v["strain_sum"] * gauge
     here, there = t - 288.15, s["density_temperature"] - 288.15
-    b0, b1 = v["expansivity"]
+    b0, b1 = PROPANE.coefficients
     drift = b0 * (here - there) + b1 * (here**2 - there**2) / 2.0
-    density = s["density"] * math.exp(-drift + v["compressibility"] * (p - s["density_pressure"]))
+    density = s["density"] * math.exp(-drift + PROPANE.compressibility * (p - s["density_pressure"]))
     critical: dict[str, Any] = {"Tc": 369.89, "Pc": 4_251_200.0, "omega": 0.1521}
     second = BVirial_Tsonopoulos(t_v, **critical)
     third = CVirial_Orbey_Vera(t_v, **critical)[0]  # type: ignore[no-untyped-call]

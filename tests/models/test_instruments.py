@@ -68,6 +68,8 @@ def test_a_capacity_is_as_good_as_legal_metrology_allows(kind: str, limit: float
         (instruments.LOCAL_SPAN, 1.0),  # a setting: metres between the knots
         (instruments.BAROMETER_KPA, 1.0),  # common practice: weather about the mean of the place
         (instruments.DENSITY_SHARE, 8.4 / 840.0),  # 1 % of a density that no sample confirmed
+        (instruments.METHOD_DENSITY_SHARE["water"] * 1e6, 100.0),  # common practice: 0.1 g/l of impurities, 1e-4
+        (instruments.METHOD_DENSITY_SHARE["density_table"] * 840.0, 8.4),  # as of any density that none confirmed
         (instruments.EXPANSION_SHARE, 1.66e-5 / 8.3e-4),  # 2 % of β
         (instruments.SATURATED_VAPOUR_TEMPERATURE, 3.0),  # a vapour whose temperature nothing reads
         (instruments.AMBIENT_UNREAD, 10.0),  # an ambient temperature taken as the liquid's

@@ -9,6 +9,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from models.arrays import BLOCK_ROWS
 from models.columns import Mark, Method, Vessels
 from models.constants import GAS_CONSTANT
 from models.geometry import shapes
@@ -18,6 +19,7 @@ from tests.models.mass_cases import (
     BULLET_CASE,
     CASES,
     NITROGEN,
+    NO_WATER,
     OIL,
     READING,
     ROOF,
@@ -272,7 +274,7 @@ def test_liquid_mass_is_net_standard_volume_times_standard_density(case: Case) -
     np.testing.assert_allclose(own["net_standard_volume"], own["gross_standard_volume"] * dry, rtol=1e-13)
 
 
-def test_water_leaves_a_wet_sample_by_its_own_weight_and_a_dry_one_by_its_volume() -> None:
+def test_pitfall_18_water_leaves_a_wet_sample_by_its_own_weight_and_a_dry_one_by_its_volume() -> None:
     """Half a percent of water in oil of 846 kg/m³: net volume times wet density overstates by 0.09 %."""
     still = OIL.reads(water_level=-math.inf, liquid_temperature=288.15, density_temperature=288.15)
     cases = [still.reads(sediment_water=w, density_is_dry=d) for w, d in ((0.0, 0.0), (0.005, 0.0), (0.005, 1.0))]
@@ -454,3 +456,21 @@ def test_the_uncertainty_is_the_scatter_of_masses_with_drawn_errors() -> None:
     claimed = standard_uncertainty(one, {name: (np.array([spread]),) for name, spread in sigma.items()})[0]
     # a standard deviation of 20 000 draws is known to 0.5 %: five of those
     assert masses.std() == pytest.approx(claimed, rel=0.025)
+
+
+@pytest.mark.parametrize("wet", [0, BLOCK_ROWS, 2 * BLOCK_ROWS])
+def test_what_one_block_needs_and_another_does_not_is_of_its_own_rows(wet: int) -> None:
+    """Free water in one block of readings alone: the others have none, and nothing of it."""
+    rows = 2 * BLOCK_ROWS + 1  # the last block is of one reading
+    water = np.full(rows, NO_WATER)
+    water[wet] = 0.5
+    own, read = vessels([OIL]), replace(state([OIL]), water_level=water)
+    found = inventory(own, None, read)
+    for row in (0, BLOCK_ROWS, rows - 1):
+        alone = inventory(own, None, read.take(np.array([row])))
+        assert {name: found[name][row] for name in found.columns if np.isfinite(found[name][row])} == {
+            name: alone[name][0] for name in alone.columns if np.isfinite(alone[name][0])
+        }
+        for name, column in found.sensitivities.items():
+            assert column[row] == alone.sensitivities[name][0]
+    assert np.count_nonzero(found["free_water_volume"]) == 1

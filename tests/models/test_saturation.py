@@ -1,5 +1,7 @@
 """Vapour pressures against the saturation lines of CoolProp, mixtures against Raoult's law."""
 
+import math
+
 import CoolProp
 import numpy as np
 import pytest
@@ -158,6 +160,52 @@ def test_an_extended_mixture_lasts_as_long_as_its_last_component() -> None:
     assert float(pressure) == pytest.approx(0.05 * ethane + 0.95 * propane, rel=1e-9)
     secant = (extended.pressure(340.001)[0] - extended.pressure(339.999)[0]) / 0.002
     assert float(slope) == pytest.approx(float(secant), rel=1e-6)
+
+
+UNLIKE: tuple[dict[str, float], ...] = (
+    {"propane": 0.95, "ethane": 0.05}, {"propane": 0.95, "ethylene": 0.05}, {"propane": 0.98, "ethane": 0.02},
+    {"propane": 0.9, "ethane": 0.1}, {"propane": 0.97, "isobutane": 0.03},
+    {"propane": 0.9, "isobutane": 0.07, "ethane": 0.03}, {"propane": 0.99, "methane": 0.01},
+    {"propane": 0.95, "methane": 0.05}, {"n-butane": 0.95, "ethane": 0.05}, {"n-butane": 0.97, "ethylene": 0.03},
+    {"propane": 0.7, "n-butane": 0.3}, {"propane": 0.5, "n-butane": 0.5}, {"propane": 0.3, "n-butane": 0.7},
+    {"propane": 0.99, "nitrogen": 0.01}, {"propane": 0.99, "carbon-dioxide": 0.01},
+    {"propane": 0.95, "carbon-dioxide": 0.05}, {"n-pentane": 0.9, "propane": 0.1},
+    {"propane": 0.8, "propylene": 0.2}, {"n-butane": 0.6, "isobutane": 0.4}, {"n-pentane": 0.5, "n-butane": 0.5},
+)  # fmt: skip
+
+
+@pytest.mark.parametrize("quality", [0.0, 1.0], ids=["bubble", "dew"])
+@pytest.mark.parametrize("parts", UNLIKE, ids=lambda parts: " ".join(f"{x:g} {name}" for name, x in parts.items()))
+def test_twice_the_departure_of_a_mixture_covers_what_raoults_law_is_off_by(
+    parts: dict[str, float], quality: float
+) -> None:
+    """10 to 45 °C against the mixture model of CoolProp 8.0.0, also beyond a component's critical temperature."""
+    state = CoolProp.AbstractState("HEOS", "&".join(OTHER_NAMES.get(name, name.capitalize()) for name in parts))
+    state.set_mole_fractions(list(parts.values()))
+    columns = SaturationColumns.from_compositions([parts], [quality == 1.0], extended=True)
+    t, expected = 273.15 + np.array([10.0, 20.0, 30.0, 35.0, 40.0, 45.0]), []
+    for kelvin in t:
+        state.update(CoolProp.QT_INPUTS, quality, kelvin)
+        expected.append(state.p())
+    off = columns.pressure(t)[0] / expected - 1.0
+    worst, departure = float(np.abs(off).max()), float(columns.departure[0])
+    print(f"{parts}, quality {quality:g}: {off[0]:+.3%} to {off[-1]:+.3%}; departure {departure:.3%}")
+    assert worst <= 2.0 * departure
+    if quality == 0.0 and len(parts) == 2 and "n-pentane" not in parts and "isobutane" not in parts:
+        assert departure < 1.5 * worst  # nor is it so wide that it says nothing
+
+
+def test_the_departure_of_a_mixture_recomputed() -> None:
+    """50/50 propane and n-butane at 318.006 K, 0.8 of the mean critical temperature; pressures by CoolProp 8.0.0."""
+    half = {"propane": 0.5, "n-butane": 0.5}
+    columns = SaturationColumns.from_compositions([half, half, {"propane": 1.0}], [False, True, False])
+    pure = saturation_line("propane", np.array([318.006]))[0], saturation_line("n-butane", np.array([318.006]))[0]
+    for row, total in enumerate((0.5 * sum(pure), 2.0 / (1.0 / pure[0] + 1.0 / pure[1]))):
+        above = [0.5 * p / total for p in pure] if row == 0 else [0.5, 0.5]
+        s = sum(z * abs(math.log(p / total)) for z, p in zip(above, pure, strict=True))
+        ideal = 0.07 * s + 0.035 * s**2 + 0.01 * 0.5
+        assert columns.departure[row] == pytest.approx(WAGNER["n-butane"][6] + ideal, rel=3e-4)
+    assert columns.departure[2] == WAGNER["propane"][6]
 
 
 @settings(derandomize=True, max_examples=50, deadline=None)

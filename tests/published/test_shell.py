@@ -77,7 +77,7 @@ def test_shell_factors_of_metals(expansion: float, expected: float, half_a_digit
     assert factor(UPRIGHT, 7.0, expansion * 25.0) == pytest.approx(expected, abs=half_a_digit)
 
 
-def test_pitfall_shell_factor_of_a_table_already_at_operating_temperature() -> None:
+def test_pitfall_2_shell_factor_of_a_table_already_at_operating_temperature() -> None:
     """Hot, insulated, 300 °F: a table made at 300 °F needs nothing; from 60 °F again, 0.298 % is counted twice."""
     hot, expansion = fahrenheit(300), CARBON_STEEL * 1.8
 
@@ -91,7 +91,7 @@ def test_pitfall_shell_factor_of_a_table_already_at_operating_temperature() -> N
 
 
 @pytest.mark.parametrize("share", [0.25, 0.5, 0.75])
-def test_pitfall_shell_factor_of_an_upright_cylinder_on_spheres_and_bullets(share: float) -> None:
+def test_pitfall_2_shell_factor_of_an_upright_cylinder_on_spheres_and_bullets(share: float) -> None:
     """At one level (1 + ε)² is right of an upright cylinder alone: a half-full sphere takes 1.5 ε, a bullet 1.73 ε."""
     strain = 3e-4
     sphere, bullet = shapes.sphere(diameter=18.0), horizontal_cylinder(diameter=3.0, length=14.0)
@@ -107,7 +107,7 @@ def test_pitfall_shell_factor_of_an_upright_cylinder_on_spheres_and_bullets(shar
     ("share", "sphere", "bullet"),
     [(0.1, 1.07, 1.53), (0.25, 1.2, 1.59), (0.5, 1.5, 1.73), (0.75, 2.0, 1.97), (0.9, 2.5, 2.27), (1.0, 3.0, 3.0)],
 )
-def test_pitfall_the_full_vessel_s_three_strains_on_a_part_fill(share: float, sphere: float, bullet: float) -> None:
+def test_pitfall_13_the_full_vessel_s_three_strains_on_a_part_fill(share: float, sphere: float, bullet: float) -> None:
     """Worked out, two decimals: only the full vessel takes 3ε; at half, 3ε would double the correction."""
     strain = 1e-6
     for curve, expected in (
@@ -155,7 +155,7 @@ def test_the_table_s_correction_for_each_degree() -> None:
     assert displaced(in_air(42.4), in_air(35.0)) == pytest.approx(-181.97, abs=0.3)
 
 
-def test_pitfall_sign_of_the_roof_correction() -> None:
+def test_pitfall_4_sign_of_the_roof_correction() -> None:
     """Lighter than the table's oil: subtract; heavier: add; the same: nothing. Without deduction, always subtract."""
     table = in_vacuum(35.0)
     assert displaced(in_vacuum(42.4), table) < 0.0 < displaced(in_vacuum(30.0), table)
@@ -163,13 +163,13 @@ def test_pitfall_sign_of_the_roof_correction() -> None:
     assert displaced(in_vacuum(42.4)) < displaced(in_vacuum(30.0)) < 0.0
 
 
-def test_pitfall_roof_and_density_on_two_bases() -> None:
+def test_pitfall_4_roof_and_density_on_two_bases() -> None:
     """A weight in air over a density in vacuum: 4 082.86 bbl, 0.13 % of the displacement (recomputed)."""
     assert displaced(in_vacuum(35.0)) == pytest.approx(-4082.86, abs=5e-3)
     assert displaced(in_air(35.0)) / displaced(in_vacuum(35.0)) - 1.0 == pytest.approx(0.00126, abs=1e-5)
 
 
-def test_pitfall_roof_already_in_the_table() -> None:
+def test_pitfall_3_roof_already_in_the_table() -> None:
     """A table that deducts the roof at 850 kg/m³ and one that does not hold the same oil, counted either way."""
     roof = {"roof_mass": 412_000.0, "roof_lands": 1.8, "roof_floats": 2.1}
     levels = np.array([0.0, 1.8, 2.1, 12.0])
@@ -188,7 +188,7 @@ def test_pitfall_roof_already_in_the_table() -> None:
     assert np.diff(deducted)[1] / 0.3 == pytest.approx(1963.0 - 412_000.0 / 850.0 / 0.3)
 
 
-def test_pitfall_a_reading_in_the_critical_zone_is_computed_and_flagged() -> None:
+def test_pitfall_17_a_reading_in_the_critical_zone_is_computed_and_flagged() -> None:
     roof = {"roof_mass": 412_000.0, "roof_lands": 1.8, "roof_floats": 2.1}
     below, inside, above = (read(UPRIGHT, vessel=roof, level=level) for level in (1.7, 1.95, 2.2))
     assert [bool(found.marks[0] & Mark.ROOF_LANDING_ZONE) for found in (below, inside, above)] == [False, True, False]
@@ -209,7 +209,7 @@ def test_rain_on_a_roof_is_a_roof_that_is_heavier() -> None:
 # --- table, datum and free water ------------------------------------------------------------------
 
 
-def test_pitfall_sign_of_deadwood() -> None:
+def test_pitfall_3_sign_of_deadwood() -> None:
     """Deadwood takes room above its beginning; a negative one adds it (a manhole, a sump)."""
     coils, sump = (with_deadwood(UPRIGHT, [1.0], [2.0], [room]) for room in (3.0, -3.0))
     change = [
@@ -222,7 +222,7 @@ def test_pitfall_sign_of_deadwood() -> None:
     assert (coils.capacity, sump.capacity) == pytest.approx((UPRIGHT.capacity - 3.0, UPRIGHT.capacity + 3.0))
 
 
-def test_pitfall_free_water_below_the_datum_is_none_and_above_it_has_the_bottom_in_it() -> None:
+def test_pitfall_11_free_water_below_the_datum_is_none_and_above_it_has_the_bottom_in_it() -> None:
     """The datum stands 0.1 m above the bottom: 31.4 m³ lie below it."""
     raised, area = with_datum(UPRIGHT, 0.1), math.pi * 100.0
     none = read(raised, level=5.0)

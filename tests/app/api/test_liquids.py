@@ -174,6 +174,27 @@ def test_an_analysis_that_the_method_cannot_take_is_kept_and_said(terminal):
     assert error["code"] == "unknown_component" and "unobtainium" not in str(error)
 
 
+def test_an_analysis_may_name_what_the_liquid_gives_in_full_and_nothing_else_that_is_not_in_the_table(terminal):
+    """n-Butane's constants under another name: Reid, Prausnitz and Poling, from memory."""
+    constants = {
+        "critical_temperature_k": 425.1, "critical_pressure_kpa_abs": 3796.0, "acentric_factor": 0.200,
+        "molar_mass_g_mol": 58.12,
+    }  # fmt: skip
+    own = {"model": "light_hydrocarbon", "components": [{"id": "own-butane", "mole_fraction": 1.0} | constants]}
+    site = holding(terminal, own)
+    found = read(site, 20.0, liquid_composition={"own-butane": 0.5, "propane": 0.5})
+    # half and half by moles: 544.61 kg/m³ by the multi-fluid equation of state, CoolProp 8.0.0
+    assert found["liquid_density_kg_m3"] == pytest.approx(544.61, rel=0.01)
+    reading = {"level_m": 1.0, "liquid_temperature_c": 20.0}
+    for name, status in (("own-butane", 200), ("unobtainium", 422)):
+        body = {"vessel": {"name": "v", "shape": BOX}, "substance": {"name": "s", "liquid": own},
+                "readings": [reading, reading | {"liquid_composition": {name: 1.0}}]}  # fmt: skip
+        answer = site.client.post("/v1/calculations/inventory", json=body)
+        assert answer.status_code == status
+    (error,) = answer.json()["errors"]
+    assert (error["pointer"], error["code"]) == ("/readings/1/liquid_composition", "unknown_component")
+
+
 # --- where a method ends -------------------------------------------------------------------------
 
 

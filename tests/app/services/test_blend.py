@@ -153,3 +153,45 @@ def test_a_gas_says_that_its_analysis_is_old(plant: Plant) -> None:
     after = plant.vessel("r-1", READ)
     assert (after["status"], codes(after)) == ("uncertain", ["sample_predates_receipt"])
     assert after["mass_kg"] == before["mass_kg"]
+
+
+def analysed_liquid(plant: Plant) -> None:
+    """A tank of 100 m² whose liquid is known by an analysis of midnight."""
+    parts = [{"id": "propane", "mole_fraction": 0.6}, {"id": "n-butane", "mole_fraction": 0.4}]
+    plant.put("substance", "lpg", {"name": "lpg", "liquid": {"model": "light_hydrocarbon", "components": parts}})
+    plant.tank("tk-1", instruments=LAB, substance="lpg")
+    plant.read("tk-1", DRAWN, "lab", liquid_composition={"propane": 0.5, "n-butane": 0.5})
+
+
+def test_a_liquid_by_its_analysis_is_less_well_known_after_a_receipt(plant: Plant) -> None:
+    """A quarter came of no density: the analysis stands, with 3 kg/m³ × ¼ of the volume beside it."""
+    analysed_liquid(plant)
+    before = holds(plant, 4.0)
+    assert (before["status"], codes(before)) == ("measured", [])
+    came(plant, before["mass_kg"] / 4.0)
+    after = holds(plant, 4.0)
+    assert after["mass_kg"] == pytest.approx(before["mass_kg"], rel=1e-12)
+    assert (after["status"], codes(after)) == ("uncertain", ["sample_predates_receipt"])
+    added = math.sqrt(after["mass_uncertainty_kg"] ** 2 - before["mass_uncertainty_kg"] ** 2)
+    assert added == pytest.approx(3.0 * 0.25 * before["gross_standard_volume_m3"], rel=1e-6)
+
+
+def test_a_liquid_by_its_analysis_blends_with_what_came_by_its_density(plant: Plant) -> None:
+    """A quarter of the standard volume came with 600 kg/m³ at 15 °C: ¾ of the analysis's density and ¼ of that."""
+    analysed_liquid(plant)
+    before = holds(plant, 4.0)
+    volume, own = before["gross_standard_volume_m3"], before["standard_density_kg_m3"]
+    came(plant, 600.0 * volume / 4.0, density_kg_m3=600.0, **AT_15)
+    after = holds(plant, 4.0)
+    assert after["standard_density_kg_m3"] == pytest.approx(0.75 * own + 150.0, rel=1e-5)
+    assert codes(after) == ["sample_predates_receipt"]
+
+
+def test_a_density_that_was_read_after_the_receipt_stands_beside_an_older_analysis(plant: Plant) -> None:
+    analysed_liquid(plant)
+    came(plant, 60_000.0)
+    plant.read("tk-1", "2026-03-14T02:30", "lab", observed_density_kg_m3=560.0, observed_density_temperature_c=15.0)
+    after = holds(plant, 4.0)
+    assert after["standard_density_kg_m3"] == pytest.approx(560.0, rel=1e-12)
+    (said,) = [one["detail"] for one in after["warnings"] if one["code"] == "sample_predates_receipt"]
+    assert "analysis" in said

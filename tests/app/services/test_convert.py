@@ -122,6 +122,20 @@ def test_ten_degrees_api_is_water_of_60_f_and_relative_density_is_its_multiple()
     assert by_quantity("observed_density", "degAPI").number(35.0) / 999.016 == pytest.approx(0.8498, abs=5e-5)
 
 
+def test_pitfall_5_a_relative_density_has_the_water_of_its_temperature_and_degrees_api_are_of_60_f() -> None:
+    """Water has 999.016 kg/m³ at 60 °F and 999.102 at 15 °C (published): 0.85 by one is not 0.85 by the other.
+
+    Taken for one another they are 73 g/m³ apart, 86 parts in a million; of water of 4 °C, 0.95 in a thousand.
+    """
+    found = by_quantity("observed_density", "RD60/60").number(0.85)
+    assert found == pytest.approx(0.85 * 999.016, rel=1e-15)
+    assert 0.85 * 999.102 / found - 1.0 == pytest.approx(86e-6, abs=5e-7)
+    assert 0.85 * 999.975 / found - 1.0 == pytest.approx(0.96e-3, abs=5e-6)
+    for unit in ("RD15/4", "RD15/15", "RD20/4", "degAPI15"):
+        with pytest.raises(UnitError):
+            conversion("observed_density_kg_m3", unit)
+
+
 @pytest.mark.parametrize("text", ["-131.5", "-200", "x", "nan"])
 def test_degrees_api_below_all_densities_are_not_read(text: str) -> None:
     with pytest.raises(ValueError, match=r"."):

@@ -12,6 +12,7 @@ from app.services.compositions import Boiling, fractions_of
 from app.services.liquids import (
     density_between,
     key_of,
+    liquid_columns,
     liquid_of,
     own_density,
     reference,
@@ -19,6 +20,7 @@ from app.services.liquids import (
     state_of,
     why_outside,
 )
+from models.components import component
 from models.errors import DefinitionError
 from models.liquid import definition
 
@@ -76,6 +78,13 @@ def test_a_figure_from_which_the_method_finds_nothing_is_refused_with_the_limit(
     with pytest.raises(DefinitionError, match="kg/m³") as refused:
         figure(CRUDE | {"density_kg_m3": 300.0})
     assert refused.value.field == "liquid/density_kg_m3"
+    for to_blame, value in (("at_temperature_c", 160.0), ("at_pressure_kpa_abs", 2e4)):
+        with pytest.raises(DefinitionError) as refused:
+            figure(CRUDE | {to_blame: value})
+        assert refused.value.field == f"liquid/{to_blame}"
+    with pytest.raises(DefinitionError) as refused:
+        liquid_columns((definition.MixtureLiquid(((component("helium"), 1.0),)),))
+    assert refused.value.field == "liquid/components"
     with pytest.raises(DefinitionError, match="0 to 150 °C"):
         figure({"model": "water"}, Site(base_temperature_c=-5.0))
 
@@ -109,7 +118,7 @@ def test_a_method_that_needs_a_sample_has_no_density_of_its_own() -> None:
         own_density(definition.PetroleumLiquid("crude"), (288.15, ATMOSPHERE))
 
 
-def test_pitfall_gauge_or_absolute_petroleum_takes_the_gauge_pressure_of_the_place() -> None:
+def test_pitfall_1_gauge_or_absolute_petroleum_takes_the_gauge_pressure_of_the_place() -> None:
     """845 kg/m³ at 15 °C, refined, 60 °C and 1 000 kPa gauge: C_P = 1.00096695 (recomputed from ASTM D1250-04)."""
     oil, sample = definition.PetroleumLiquid("refined"), (288.15, ATMOSPHERE)
     high = 77_000.0  # a site at 2 250 m

@@ -65,7 +65,7 @@ def test_an_ullage_and_a_dip_of_one_level_agree_when_both_are_corrected() -> Non
     assert level(vessel, {"ullage_m": 14.004464} | warm) == pytest.approx(6.0, abs=1e-12)
 
 
-def test_pitfall_ullage_needs_the_reference_height_of_this_tank() -> None:
+def test_pitfall_10_ullage_needs_the_reference_height_of_this_tank() -> None:
     assert answer(compiled(TANK), {"ullage_m": 5.0, "liquid_temperature_c": 20.0})["status"] == "unmeasured"
     low, high = (compiled(TANK, gauging={"reference_height_m": height}) for height in (14.9, 15.0))
     row = {"ullage_m": 5.0, "liquid_temperature_c": 20.0}

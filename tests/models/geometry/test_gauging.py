@@ -29,7 +29,7 @@ def test_a_tape_and_a_shell_of_one_temperature_and_steel_read_the_level_as_it_is
     assert level == pytest.approx((height - ullage) * (1.0 + STEEL * 20.0), rel=1e-14)
 
 
-def test_pitfall_an_ullage_needs_the_reference_height_of_this_tank_as_it_stands():
+def test_pitfall_10_an_ullage_needs_the_reference_height_of_this_tank_as_it_stands():
     """The height as measured at 15 °C under a shell of 35 °C: the level would read 4.46 mm low."""
     height, ullage = 20.0, 7.0
     grown = height + reference_height_growth(height, 308.15, 288.15, STEEL)

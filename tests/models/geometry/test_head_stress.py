@@ -135,7 +135,7 @@ def test_courses_that_add_up_in_decimals_reach_the_top():
 # --- what is added to a curve ---------------------------------------------------------------------
 
 
-def test_head_stress_already_in_the_table_counts_by_the_difference_of_the_densities_only():
+def test_pitfall_3_head_stress_already_in_the_table_counts_by_the_difference_of_the_densities_only():
     """Pitfall: a table made at 850 kg/m³ needs nothing at 850, and −1.2 % of its 0.12 % at 840."""
     tank = stack(shell([(12.0, 0.010)], 50.0, top=12.0))
     geometric = tank.widening(12.0, 0.0, 860.0, 0.0).volume

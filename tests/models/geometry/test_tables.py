@@ -28,7 +28,7 @@ def test_between_two_rows_the_table_is_linear():
 
 # How much a linear table overstates a lying cylinder (D 3 m, L 16 m, 2:1 heads), computed beforehand
 # by quadrature midway between rows of 50 mm.
-def test_a_linear_table_of_a_lying_vessel_overstates_and_a_monotone_cubic_hardly():
+def test_pitfall_14_a_linear_table_of_a_lying_vessel_overstates_and_a_monotone_cubic_hardly():
     end = Head("ellipsoidal", depth=0.75)
     true = horizontal_cylinder(diameter=3.0, length=16.0, left_head=end, right_head=end)
     rows = np.linspace(0.0, 3.0, 61)

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
 
-from models.liquid.ethanol_water import mass_fraction, point, why_outside
+from models.liquid.ethanol_water import density_of_strength, mass_fraction, point, why_no_mixture, why_outside
 from models.liquid.water import water_density
 
 ATMOSPHERE = 101_325.0
@@ -93,7 +93,21 @@ def test_compressibility_is_none_unless_given():
     assert float(given.density / plain.density) == pytest.approx(np.exp(1e-9 * (2e5 - 101_325)), rel=1e-14)
 
 
-def test_pitfall_r22_only_to_40_celsius():
+def test_pitfall_16_litres_of_pure_alcohol_are_those_at_20_celsius():
+    """Half and half by mass: 913.771 kg/m³ at 20 °C, 917.711 at 15 °C; pure ethanol 789.24 at 20 °C, published.
+
+    1,000 L at 20 °C hold 1,000 × 0.5 × 913.771/789.24 = 578.893 L of alcohol. Whoever takes the same 1,000 L as read
+    at 15 °C for a volume at 20 °C misses the 0.43 % by which it would be larger there, 2.5 L.
+    """
+    strength = 0.5 * 913.771 / 789.24
+    assert density_of_strength(strength) == pytest.approx(913.771, abs=0.002)
+    cold = float(at(0.5, 15.0).density)
+    assert cold == pytest.approx(917.711, abs=5e-4)
+    grown = cold / float(at(0.5, 20.0).density)
+    assert 1000.0 * strength * (grown - 1.0) == pytest.approx(2.5, abs=0.05)
+
+
+def test_pitfall_16_r22_only_to_40_celsius():
     states = [(0.5, 20, 1e5, True), (0.5, -20, 0, True), (0.5, 40, 1e6, True), (0.5, 40.1, 1e5, False),
               (0.5, -20.1, 1e5, False), (-0.01, 20, 1e5, False), (1.005, 20, 1e5, False), (0.5, 20, -1, False),
               (0.5, 20, 1.005e6, False), (np.nan, 20, 1e5, False), (0.5, np.nan, 1e5, False)]  # fmt: skip
@@ -106,6 +120,13 @@ def test_pitfall_r22_only_to_40_celsius():
     assert "is 55 °C; the alcoholometric tables are defined from -20 to 40 °C" in why_outside(0.5, 328.15, 1e5)
     assert "1200 kPa absolute; the alcoholometric tables are taken from 0 to 1000 kPa" in why_outside(0.5, 300, 12e5)
     assert "1.2; it lies from 0 to 1" in why_outside(1.2, 300, 1e5)
+
+
+def test_a_density_that_no_mixture_has_is_said_with_those_that_it_could_have():
+    """789.239 and 998.201 kg/m³ at 20 °C, published."""
+    said = why_no_mixture(700.0, 293.15)
+    assert "is 700 kg/m³ at 20 °C" in said and "789.24 kg/m³ (pure ethanol) to 998.20 kg/m³ (water)" in said
+    assert why_no_mixture(900.0, 293.15) == "" == why_no_mixture(700.0, 323.15)  # the temperature is told elsewhere
 
 
 def test_a_density_that_no_mixture_has_has_no_strength():

@@ -144,7 +144,7 @@ def test_the_weather_does_not_fit_a_compressibility():
     [("n-Hexane", 659.38, 1.369e-3, 16.22e-10), ("Toluene", 866.89, 1.072e-3, 8.885e-10),
      ("Methanol", 791.01, 1.184e-3, 12.22e-10)],
 )  # fmt: skip
-def test_pitfall_handbook_beta(fluid, density, beta, kappa):
+def test_pitfall_15_handbook_beta(fluid, density, beta, kappa):
     """Densities of a liquid give its β to 0.5 %; a handbook's list gives methanol's 26 % too high."""
     t, p = (grid.reshape(-1) for grid in np.meshgrid(np.linspace(283.15, 303.15, 9), [101_325.0, 3e5, 5e5]))
     rho = PropsSI("D", "T", t, "P", p, fluid)

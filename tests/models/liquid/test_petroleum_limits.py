@@ -19,7 +19,7 @@ CRUDE, REFINED, LUBRICATING, SPECIAL = (COMMODITIES[n] for n in ("crude", "refin
         ((850.0, 300.0, 0.0, SPECIAL, 1e-3), ("alpha60_per_f is 0.001", "230e-6 to 930e-6 per °F")),
         ((850.0, 300.0, 0.0, SPECIAL, np.nan), ("alpha60_per_f is nan", "230e-6 to 930e-6 per °F")),
         ((600.0, 300.0, 0.0, REFINED, np.nan), ("at 60 °F is 600 kg/m³", "refined", "610.6 to 1163.5 kg/m³")),
-        ((790.0, 300.0, 0.0, LUBRICATING, np.nan), ("is 790 kg/m³", "lubricating", "800.9 to 1163.5 kg/m³")),
+        ((790.0, 300.0, 0.0, LUBRICATING, np.nan), ("is 790 kg/m³", "a lubricating oil is", "800.9 to 1163.5 kg/m³")),
         ((850.0, 300.0, 0.0, 9, np.nan), ("code is 9", "0 (crude)", "3 (special)")),
     ],
 )

@@ -136,7 +136,7 @@ def test_densest_at_four_degrees():
     assert float(at(3.983035).expansivity) == pytest.approx(0.0, abs=2e-8)
 
 
-def test_pitfall_kell_typo():
+def test_pitfall_15_kell_typo():
     """A reprint has 16.897850e-3 in the denominator: 0.27 kg/m³ low at 20 °C."""
     numerator = 998.20413220 * (1 + 16.879850e-3 * 20)
     misprinted = numerator / (1 + 16.897850e-3 * 20)
@@ -146,7 +146,7 @@ def test_pitfall_kell_typo():
 
 
 @pytest.mark.parametrize(("celsius", "short"), [(60, -0.017), (90, -0.15)])
-def test_pitfall_extrapolated_tanaka(celsius, short):
+def test_pitfall_15_extrapolated_tanaka(celsius, short):
     """Carried beyond 40 °C the reference equation runs away from water; the point does not."""
     t = float(celsius)
     tanaka = 999.974950 * (1 - (t - 3.983035) ** 2 * (t + 301.797) / (522528.9 * (t + 69.34881)))
