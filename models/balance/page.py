@@ -37,9 +37,9 @@ def stated_run_length(vessels: int, alarm_rate: float) -> float:
     -----
     With two sums to a vessel::
 
-        ARL_0 = 2 n / (0.2 α)        (1)
+        ARL_0 = 2 n / (0.2 α)
     """
-    return len(ALLOWANCES) * vessels / (PAGE_SHARE * alarm_rate)  # eq. 1
+    return len(ALLOWANCES) * vessels / (PAGE_SHARE * alarm_rate)
 
 
 @lru_cache(maxsize=CACHED_LIMITS)

@@ -59,8 +59,8 @@ def page_one_sided(allowance: float, limit: float, *, shift: float = 0.0, start:
     -----
     ::
 
-        S ← max(0, S + z − κ),  alarm at S > h        (1)
-        L(s) = 1 + Φ(κ − s − μ) L(0) + ∫_0^h φ(t − s + κ − μ) L(t) dt        (2)
+        S ← max(0, S + z − κ),  alarm at S > h
+        L(s) = 1 + Φ(κ − s − μ) L(0) + ∫_0^h φ(t − s + κ − μ) L(t) dt        (1)
 
     References
     ----------
@@ -71,7 +71,7 @@ def page_one_sided(allowance: float, limit: float, *, shift: float = 0.0, start:
     node, weight = _gauss(0.0, limit, 1.0)
     drift = shift - allowance
     states = np.concatenate([[0.0, start], node])[:, None]
-    kernel = np.concatenate([ndtr(-states - drift), weight * _normal(node - states - drift)], axis=1)  # eq. 2
+    kernel = np.concatenate([ndtr(-states - drift), weight * _normal(node - states - drift)], axis=1)  # eq. 1
     known = [0, *range(2, len(states))]  # the start is only asked for
     runs = np.linalg.solve(np.eye(len(known)) - kernel[known], np.ones(len(known)))
     return float(1.0 + kernel[1] @ runs)

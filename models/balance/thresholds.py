@@ -61,9 +61,9 @@ def alarm_rate(false_alarms_per_month: float) -> float:
     -----
     The number of nights flagged in a month has this mean however much the nights' tests share::
 
-        α = n / 30.44        (1)
+        α = n / 30.44
     """
-    rate = false_alarms_per_month / DAYS_PER_MONTH  # eq. 1
+    rate = false_alarms_per_month / DAYS_PER_MONTH
     if not 0.0 < rate < 1.0:
         raise DefinitionError(
             f"false_alarms_per_month is {false_alarms_per_month}; it must be above 0 and below {DAYS_PER_MONTH}, "

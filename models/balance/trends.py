@@ -53,12 +53,12 @@ class Innovations:
         -----
         ::
 
-            z = −innovation / √variance        (1)
+            z = −innovation / √variance
         """
         if not len(self.value):
             return np.full(row_of.T.shape, np.nan)
         own = (row_of >= 0) & (self.night_of[row_of] == np.arange(1, row_of.shape[1] + 1))
-        score = -self.value / np.sqrt(self.variance)  # eq. 1
+        score = -self.value / np.sqrt(self.variance)
         return np.where(own, score[row_of], np.nan).T
 
 

@@ -7,7 +7,7 @@ import pytest
 from scipy.stats import chi2
 
 from models.arrays import BoolArray, FloatArray
-from models.balance.health import budget_health, quiet
+from models.balance.health import Verdict, budget_health, quiet
 
 
 def scores(nights: int, total: float) -> FloatArray:
@@ -69,7 +69,7 @@ def test_each_vessel_is_judged_by_its_own_nights() -> None:
 
 
 @pytest.mark.parametrize(("spread", "verdict", "power"), [(1.5, "understated", 0.779), (0.5, "overstated", 0.994)])
-def test_thirty_nights_tell_a_wrong_budget(spread: float, verdict: str, power: float) -> None:
+def test_thirty_nights_tell_a_wrong_budget(spread: float, verdict: Verdict, power: float) -> None:
     # χ²_30 beyond 53.672/2.25 and below 13.787/0.25.
     score = np.random.default_rng(31).normal(0.0, spread, (30, 4_000))
     found = [one.verdict for one in budget_health(score, calm(30, 4_000))]

@@ -30,7 +30,7 @@ def lone_vessel() -> Innovations:
     nights = len(MISSING)
     covariance = 2.26 * np.eye(nights) - 1.0 * (np.eye(nights, k=1) + np.eye(nights, k=-1))
     covariance += 0.01 * (1.0 - np.eye(nights))
-    lower = np.linalg.cholesky(covariance)
+    lower = np.asarray(np.linalg.cholesky(covariance), dtype=np.float64)
     return innovations(lower, np.linalg.solve(lower, -np.array(MISSING)), np.arange(1, nights + 1))
 
 
@@ -83,8 +83,9 @@ def test_innovations_equal_what_each_night_adds_to_all_before_it() -> None:
     incidence, covariance, measured = linked(nights, vessels, 3)
     residual = incidence @ measured
     whole = incidence @ covariance @ incidence.T
-    lower = np.linalg.cholesky(whole)
-    found = innovations(lower, np.linalg.solve(lower, residual), np.repeat(np.arange(1, nights + 1), vessels))
+    lower = np.asarray(np.linalg.cholesky(whole), dtype=np.float64)
+    white = np.asarray(np.linalg.solve(lower, residual), dtype=np.float64)
+    found = innovations(lower, white, np.repeat(np.arange(1, nights + 1), vessels))
     for night in range(nights):
         old, new = slice(0, night * vessels), slice(night * vessels, (night + 1) * vessels)
         gain = np.linalg.solve(whole[old, old], whole[old, new]).T  # the law of a normal vector given a part of it
