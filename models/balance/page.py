@@ -35,9 +35,7 @@ def stated_run_length(vessels: int, alarm_rate: float) -> float:
 
     Notes
     -----
-    With two sums to a vessel::
-
-        ARL_0 = 2 n / (0.2 α)
+    Each of n vessels has two sums, so each sum alarms by chance after 2 n / (0.2 α) nights.
     """
     return len(ALLOWANCES) * vessels / (PAGE_SHARE * alarm_rate)
 

@@ -59,9 +59,8 @@ def alarm_rate(false_alarms_per_month: float) -> float:
 
     Notes
     -----
-    The number of nights flagged in a month has this mean however much the nights' tests share::
-
-        α = n / 30.44
+    With a night's chance of one in 30.44 for each, the number of nights flagged in a month has the mean that
+    was asked for, however much the nights' tests share.
     """
     rate = false_alarms_per_month / DAYS_PER_MONTH
     if not 0.0 < rate < 1.0:

@@ -51,9 +51,7 @@ class Innovations:
 
         Notes
         -----
-        ::
-
-            z = −innovation / √variance
+        The innovation over its standard deviation, with the sign changed.
         """
         if not len(self.value):
             return np.full(row_of.T.shape, np.nan)
