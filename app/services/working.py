@@ -51,6 +51,13 @@ def _moved(measured: Measured, row: int, carried: Carried, read: float) -> Itera
 def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     result, state, vessel = measured.result, measured.state, measured.vessel(row)
     chosen = measured.chosen["density"].usable[row]
+    glass = 1.0 if measured.glass is None else at_row(measured.glass, row)
+    if glass != 1.0:
+        yield step("hydrometer's reading", "ρ_h", at_row(state.density, row) / glass, "kg/m³", "of glass", "as read")
+        yield step("glass of the hydrometer", "HYC", glass, "1",
+                   "1 − 2.3e-5 (T_s − t_c) − 2e-8 (T_s − t_c)², t_c of 15 or 20 °C; in °F from 60 °F "
+                   "1 − 1.278e-5 (t − 60) − 6.2e-9 (t − 60)²; ρ_s = ρ_h HYC",
+                   "API MPMS ch. 11.1-1980; ASTM D1298")  # fmt: skip
     yield step("sample density", "ρ_s", at_row(state.density, row), "kg/m³",
                 "laboratory sample" if chosen else "the substance's own figure: no sample was ever read",
                 "as read")  # fmt: skip
