@@ -153,7 +153,7 @@ KINDS_FROM = 1024  # above every flag of Method: which kind of liquid, so that a
 _HARMLESS = int(
     Mark.ROOF_LANDING_ZONE | Mark.SATURATION_LOW | Mark.SATURATION_HIGH | Mark.VAPOUR_SATURATED | Mark.GUARD_WIDE
     | Mark.LIQUID_FULL | Mark.VAPOUR_LEFT_OUT | Mark.VAPOUR_AT_PRESSURE | Mark.VAPOUR_AT_LIQUID_TEMPERATURE
-    | Mark.STANDARD_OUTSIDE_METHOD
+    | Mark.STANDARD_OUTSIDE_METHOD | Mark.VAPOUR_BETWEEN
 )  # fmt: skip
 
 

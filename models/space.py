@@ -223,6 +223,9 @@ def vapour(step: Step, method: Method) -> None:
     if method & Method.LIQUID:
         step.mark(space <= 0.0, Mark.LIQUID_FULL)
         space = np.where(space > 0.0, space, np.where(np.isnan(space), np.nan, 0.0))
+    between = half = None
+    if method & Method.LIQUID and np.isnan(gas.density).any():
+        gas, between, half = _between(step, method, gas, (pressure, temperature), space, row, ~unknown)
     mass = gas.density * space  # eq. 1
     out.update(
         vapour_volume=space, compressibility_factor=gas.compressibility, vapour_density=gas.density,
@@ -230,6 +233,8 @@ def vapour(step: Step, method: Method) -> None:
         reduced_density=gas.reduced_density,
     )  # fmt: skip
     _guard(step, method, gas, pressure, temperature, space, row)
+    if between is not None and half is not None:
+        step.sens["vapour_left_out"] = np.where(between, half * space, step.sens["vapour_left_out"])
     mass = out["vapour_mass"]  # without what was left out
     by_p = mass * gas.pressure_sensitivity / pressure
     by_t = mass * gas.temperature_sensitivity / temperature
@@ -269,10 +274,8 @@ def _guard(
     if method & Method.LIQUID:
         nothing = np.isnan(out["vapour_density"])
         sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
-        known = np.where(np.isfinite(pressure), pressure, _most(step, method, sure))
-        near = sure > NEAR_CRITICAL * v.vapour.critical_temperature[row]
-        denser = np.where(near, DENSEST_NEAR_CRITICAL, DENSER_THAN_IDEAL)
-        bound = denser * v.vapour.molar_mass[row] * known * space / (GAS_CONSTANT * sure)
+        ideal, denser = _ideal(step, method, pressure, sure, row)
+        bound = denser * ideal * space
         small = nothing & (bound <= LEFT_OUT_SHARE * np.abs(out["liquid_mass"]))
         step.mark(small, Mark.VAPOUR_LEFT_OUT)
         out["vapour_mass"] = np.where(small, 0.0, out["vapour_mass"])
@@ -281,6 +284,51 @@ def _guard(
     step.mark(refused & (gas.verdict == Verdict.REFUSED), Mark.GUARD_REFUSED)
     step.mark(refused & (gas.verdict == Verdict.NO_VAPOUR_ROOT), Mark.NO_VAPOUR_ROOT)
     step.mark(refused & (gas.verdict == Verdict.OUTSIDE_RANGE), Mark.OUTSIDE_METHOD)
+
+
+def _ideal(
+    step: Step, method: Method, pressure: FloatArray, temperature: FloatArray, row: IntArray | int
+) -> tuple[FloatArray, FloatArray]:
+    """Density of the vapour as an ideal gas, and how many times that a vapour may have that is not computed."""
+    vapours = step.vessels.vapour
+    assert vapours is not None
+    known = np.where(np.isfinite(pressure), pressure, _most(step, method, temperature))
+    near = temperature > NEAR_CRITICAL * vapours.critical_temperature[row]
+    denser = np.where(near, DENSEST_NEAR_CRITICAL, DENSER_THAN_IDEAL)
+    return np.asarray(vapours.molar_mass[row] * known / (GAS_CONSTANT * temperature)), denser
+
+
+def _between(
+    step: Step, method: Method, gas: VapourState, at: tuple[FloatArray, FloatArray], space: FloatArray,
+    row: IntArray | int, known: BoolArray,
+) -> tuple[VapourState, BoolArray, FloatArray]:  # fmt: skip
+    """A vapour beside its liquid that cannot be computed and is too much to be left out: halfway to its bound.
+
+    It has the density of the ideal gas at least, as its molecules attract each other, and the bound at most; half
+    of the difference is its uncertainty's limit. Beside a blanket a vapour of unknown pressure may also be none. So
+    a vessel is never refused for its vapour.
+    """
+    pressure, temperature = at
+    sure = np.where(np.isfinite(temperature), temperature, step.state.liquid_temperature)
+    ideal, denser = _ideal(step, method, pressure, sure, row)
+    much = denser * ideal * space > LEFT_OUT_SHARE * np.abs(step.out["liquid_mass"])
+    taken = np.isnan(gas.density) & known & much
+    step.mark(taken, Mark.VAPOUR_BETWEEN)
+    least = np.where(np.isfinite(pressure) | (not method & Method.BLANKET), 1.0, 0.0)
+    factor = 0.5 * (least + denser)
+    return (
+        replace(
+            gas,
+            density=np.where(taken, factor * ideal, gas.density),
+            compressibility=np.where(taken, 1.0 / factor, gas.compressibility),
+            pressure_sensitivity=np.where(taken, 1.0, gas.pressure_sensitivity),
+            temperature_sensitivity=np.where(taken, -1.0, gas.temperature_sensitivity),
+            model_uncertainty=np.where(taken, 0.0, gas.model_uncertainty),
+            verdict=np.where(taken, Verdict.OK, gas.verdict),
+        ),
+        taken,
+        np.asarray(0.5 * (denser - least) * ideal),
+    )
 
 
 def _most(step: Step, method: Method, temperature: FloatArray) -> FloatArray:

@@ -162,8 +162,9 @@ class EthanolWaterLiquid(_Uncertain):
 class LightHydrocarbonLiquid(_Uncertain):
     """A liquefied gas: by its density (GPA TP-27 / API MPMS 11.2.4), or by its composition (COSTALD).
 
-    By density from −46 to 93 °C, for relative densities at 60 °F from 0.350 to 0.688. By composition from 0.25 to
-    0.95 of the mixture's critical temperature; a reading's liquid_composition then takes the place of components.
+    By density paraffins from −46 to 93 °C, of relative densities at 60 °F from 0.350 to 0.688. By composition from
+    0.25 to 0.95 of the mixture's critical temperature; a reading's liquid_composition then takes the place of
+    components.
     """
 
     model_config = ConfigDict(

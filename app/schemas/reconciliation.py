@@ -248,7 +248,7 @@ class Reconciliation(Answer):
                 {
                     "id": "2026-03-14.1", "site": "northbank", "opening": "2026-03-14T05:00:00Z",
                     "closing": "2026-03-15T05:00:00Z", "revision": 1, "status": "balanced", "complete": True,
-                    "known_at": "2026-03-15T05:31:00.118402Z", "method": "1",
+                    "known_at": "2026-03-15T05:31:00.118402Z", "method": "2",
                     "vessels": [], "transfers": [], "groups": [], "totals": [],
                 }
             ]

@@ -40,6 +40,8 @@ QUANTITY_WORDS = {
     "observed_density_pressure_kpa_abs": "pressure of the density",
     "sediment_water_pct": "sediment and water",
     "density_basis": "basis of the density",
+    "observed_density_by": "instrument of the density",
+    "liquid_composition": "liquid composition",
     "vapour_composition": "vapour composition",
     "roof_load_kg": "roof load",
     "empty": "being empty",

@@ -26,7 +26,7 @@ from app.store.books import Book, BookMove, BookVessel
 from app.store.engine import Store
 from models.estimate import Estimate
 
-METHOD = "1"  # of the calculation: a close by another method is another revision
+METHOD = "2"  # of the calculation: a close by another method is another revision
 
 
 @dataclass(frozen=True)

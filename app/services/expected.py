@@ -18,6 +18,7 @@ from app.services.compositions import saturation_columns, what_boils
 from app.services.measure import Measured, States, choices, measure
 from app.services.parts import at_row, celsius_of, estimate
 from app.services.reasons import reason, warnings
+from app.services.warmed import as_shown, correction, temperatures
 from models import constants, units
 from models.columns import State, Vessels
 from models.expected import Expected, full_temperature, level_of_mass, pressure_of_mass, temperature_of_mass
@@ -144,12 +145,18 @@ def _reading(vessel: CompiledVessel, source: str, quantity: str, value: float, s
         return _unread(vessel, source, quantity, celsius_of(value))
     if quantity == "pressure_kpa":
         return _unread(vessel, source, quantity, (value - at_row(state.atmosphere, 0)) / KPA)
-    shown = _unread(vessel, source, quantity, value)
+    at = temperatures(state, 0)
+    shown = _unread(vessel, source, quantity, as_shown(vessel, quantity, source, value, at))
     assert vessel.curve is not None
     offset = vessel.instrument(quantity, source).offset
-    while shown + offset > vessel.curve.top >= value:
+
+    def read(level: float) -> float:
+        own = level + offset
+        return own + sum(correction(vessel, quantity, source, own, at))
+
+    while read(shown) > vessel.curve.top >= value:
         shown = math.nextafter(shown, -math.inf)
-    while shown + offset < vessel.curve.bottom <= value:
+    while read(shown) < vessel.curve.bottom <= value:
         shown = math.nextafter(shown, math.inf)
     return shown
 
@@ -236,13 +243,14 @@ def _of_the_liquid(vessel: CompiledVessel, found: Measured, source: str) -> dict
     density, tap = float(result["liquid_density"][0]), vessel.body.gauging.tap_m
     height, quantity = vessel.body.gauging.reference_height_m, "differential_pressure_kpa"
     head = constants.STANDARD_GRAVITY * density * (level - tap) / KPA
+    ullage = as_shown(vessel, "ullage_m", source, level, temperatures(state, 0))
     assert vessel.curve is not None
     in_liquid = tap <= level and not water > max(tap, vessel.curve.bottom)
     slope = float(result.sensitivities["level"][0])
     errors = [part for part in found.parts if part.sensitivity != "level"]
     return {
         "level_m": _reading(vessel, source, "level_m", level, state),
-        "ullage_m": None if height is None else _unread(vessel, source, "ullage_m", height - level),
+        "ullage_m": None if height is None else _unread(vessel, source, "ullage_m", ullage),
         "liquid_volume_m3": _unread(vessel, source, "liquid_volume_m3", float(result["tank_volume"][0])),
         "fill_pct": 100.0 * float(result["level_fraction"][0]),
         "differential_pressure_kpa": _unread(vessel, source, quantity, head) if in_liquid else None,

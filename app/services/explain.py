@@ -25,7 +25,7 @@ def status(measured: Measured, row: int) -> str:
     if not _has_mass(measured, row):
         return "unmeasured"
     marks = Mark(int(measured.result.marks[row]))
-    doubtful = Mark.ROOF_LANDING_ZONE | Mark.GUARD_WIDE
+    doubtful = Mark.ROOF_LANDING_ZONE | Mark.GUARD_WIDE | Mark.VAPOUR_BETWEEN
     uncertain = any(
         c.quality[row] == 1 and c.usable[row] and counts(measured, row, name) for name, c in measured.chosen.items()
     )

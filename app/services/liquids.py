@@ -109,18 +109,24 @@ def _known(liquid: Liquid, density: float, at: State, datum: float) -> bool:
 def _stated_at(body: wire.Liquid, liquid: Liquid, site: Site, boiling: Boiling | None) -> State:
     """Temperature and pressure of the substance's own density, as stated or as they are meant. [K, Pa]"""
     temperature, base = base_state(site)
-    if isinstance(liquid, definition.TableLiquid):
-        return min(max(temperature, liquid.rows[0][0]), liquid.rows[-1][0]), liquid.pressure
-    if isinstance(body, wire.EthanolWaterLiquid):
-        stated = body.at_temperature_c if body.alcohol_volume_pct is None else STRENGTH_C
-        return float(units.kelvin(stated)), constants.STANDARD_ATMOSPHERE
-    if _stated_density(body) is None:
-        return temperature, standard_pressure(liquid, site, boiling)
-    temperature = float(units.kelvin(body.at_temperature_c))  # type: ignore[union-attr]
-    pressure = body.at_pressure_kpa_abs  # type: ignore[union-attr]
-    if pressure is not None:
-        return temperature, pressure * units.PASCAL_PER_KPA
-    return temperature, base if isinstance(liquid, SATURATED) else max(base, boiling_pressure(boiling, temperature))
+    match body:
+        case wire.DensityTableLiquid():
+            assert isinstance(liquid, definition.TableLiquid)
+            return min(max(temperature, liquid.rows[0][0]), liquid.rows[-1][0]), liquid.pressure
+        case wire.EthanolWaterLiquid():
+            stated = body.at_temperature_c if body.alcohol_volume_pct is None else STRENGTH_C
+            return float(units.kelvin(stated)), constants.STANDARD_ATMOSPHERE
+        case wire.WaterLiquid():
+            return temperature, standard_pressure(liquid, site, boiling)
+        case wire.LightHydrocarbonLiquid(density_kg_m3=None):
+            return temperature, standard_pressure(liquid, site, boiling)
+        case _:
+            temperature = float(units.kelvin(body.at_temperature_c))
+            if body.at_pressure_kpa_abs is not None:
+                return temperature, body.at_pressure_kpa_abs * units.PASCAL_PER_KPA
+            if isinstance(liquid, SATURATED):
+                return temperature, base
+            return temperature, max(base, boiling_pressure(boiling, temperature))
 
 
 def _stated_density(body: wire.Liquid) -> float | None:

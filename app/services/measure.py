@@ -58,6 +58,7 @@ class Measured:
     checks: dict[int, list[dict[str, Any]]] = field(default_factory=dict)
     refused: Mapping[int, str] = field(default_factory=dict)
     warmed: Warmed | None = None
+    glass: FloatColumns | None = None  # what the glass of a hydrometer made of each reading of a density
 
     def instant(self, row: int) -> int:
         """The instant that a row was asked for; it may have been read at another."""
@@ -126,7 +127,7 @@ def measure(
     parts = parts_of(builder, state, per_unit, gravity)
     return Measured(
         collected, chosen, state, result, parts, builder.assumed, builder.atmosphere_assumed,
-        all_of(collected.vessels, extra), asked, refused=builder.refused, warmed=builder.warmed,
+        all_of(collected.vessels, extra), asked, refused=builder.refused, warmed=builder.warmed, glass=builder.glass,
     )  # fmt: skip
 
 
@@ -148,6 +149,7 @@ class States:
         self.at_rest = np.zeros(collected.rows, dtype=bool)
         self.gauge = np.zeros(collected.rows, dtype=bool)
         self.warmed: Warmed | None = None
+        self.glass: FloatColumns = np.ones(1)
         self.refused: dict[int, str] = {}  # rows whose analysis the substance's model cannot take, and why
         level, origin = chosen["level"].source, collected.origins["level"]
         means = [origin.of(row, int(level[row]))[0] if level[row] >= 0 else "" for row in range(collected.rows)]
@@ -270,7 +272,8 @@ class States:
         temperature = np.where(np.isfinite(temperature), temperature, standard)
         pressure = units.pascal(self.companion("density", "observed_density_pressure_kpa_abs"))
         if sampled.any():
-            read = read * self._glass(temperature, standard)
+            self.glass = self._glass(temperature, standard)
+            read = read * self.glass
             base = self.of_vessels([vessel.site.base_pressure_kpa_abs * PASCAL for vessel in self.vessels])
             pressure = np.where(np.isfinite(pressure), pressure, np.maximum(base, self._boiling(temperature, sampled)))
         density = [
@@ -282,6 +285,8 @@ class States:
             if blend.density is not None:
                 held = self.vessels[row if len(self.vessels) > 1 else 0].parameters
                 density[0][row] = blend.density
+                if len(self.glass) > 1:
+                    self.glass[row] = 1.0  # a blend is no reading
                 density[1][row], density[2][row] = held["standard_temperature"], held["standard_pressure"]
         return density[0], density[1], density[2]
 

@@ -51,6 +51,11 @@ WARNINGS: dict[Mark, tuple[str, str]] = {
         "guard_wide",
         "the vapour is so dense that the virial equation has a wider uncertainty, which stands in the budget",
     ),
+    Mark.VAPOUR_BETWEEN: (
+        "guard_refused",
+        "the virial equation does not reach this vapour, which is too much to be left out: it is taken halfway between "
+        "the ideal gas and the most that it can be, and half of that difference stands in the budget",
+    ),
     Mark.GUARD_REFUSED: (
         "guard_refused",
         "the vapour is too dense for the virial equation: beyond half of its critical density or too near to "

@@ -79,6 +79,17 @@ def correction(
     return -hanging, float(growth) if math.isfinite(carrier) else 0.0
 
 
+def as_shown(vessel: CompiledVessel, quantity: str, source: str, level: float, at: Temperatures) -> float:
+    """The dip or the ullage that an instrument shows for a level of the chain: the correction undone. [m]"""
+    height = vessel.body.gauging.reference_height_m or 0.0
+    if not _asks(vessel):
+        return level if quantity == "level_m" else height - level
+    nothing, far = (correction(vessel, quantity, source, one, at) for one in (height, height + 1.0))
+    by_metre = sum(far) - sum(nothing)  # both corrections are straight lines of the level
+    read = (level - sum(nothing) + by_metre * height) / (1.0 + by_metre)
+    return read if quantity == "level_m" else height - read
+
+
 def _shell(vessel: CompiledVessel, at: Temperatures) -> float:
     weight = vessel.parameters["liquid_weight"]
     return weight * at.liquid + (1.0 - weight) * at.ambient

@@ -51,6 +51,13 @@ def _moved(measured: Measured, row: int, carried: Carried, read: float) -> Itera
 def _liquid(measured: Measured, row: int) -> Iterator[Step]:
     result, state, vessel = measured.result, measured.state, measured.vessel(row)
     chosen = measured.chosen["density"].usable[row]
+    glass = 1.0 if measured.glass is None else at_row(measured.glass, row)
+    if glass != 1.0:
+        yield step("hydrometer's reading", "ρ_h", at_row(state.density, row) / glass, "kg/m³", "of glass", "as read")
+        yield step("glass of the hydrometer", "HYC", glass, "1",
+                   "1 − 2.3e-5 (T_s − t_c) − 2e-8 (T_s − t_c)², t_c of 15 or 20 °C; in °F from 60 °F "
+                   "1 − 1.278e-5 (t − 60) − 6.2e-9 (t − 60)²; ρ_s = ρ_h HYC",
+                   "API MPMS ch. 11.1-1980; ASTM D1298")  # fmt: skip
     yield step("sample density", "ρ_s", at_row(state.density, row), "kg/m³",
                 "laboratory sample" if chosen else "the substance's own figure: no sample was ever read",
                 "as read")  # fmt: skip
@@ -175,6 +182,9 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     yield step("vapour temperature", "T_v", celsius_of(result["vapour_temperature"][row]), "°C", basis, "as read")
     mixture = measured.mixture(row)
     series = virial_columns((mixture,))
+    if marks & Mark.VAPOUR_BETWEEN:
+        yield from _halfway(measured, row, float(series.molar_mass[0]))
+        return
     second, _, third, _ = series.second_and_third(result["vapour_temperature"][row])
     values = {"B": (float(second) * 1e6, "cm³/mol"), "C": (float(third) * 1e12, "cm⁶/mol²")}
     notes = series.describe(0)
@@ -197,6 +207,17 @@ def _vapour(measured: Measured, row: int) -> Iterator[Step]:
     yield step("reduced density", "ρ_r", result["reduced_density"][row], "1",
                 "molar density times the critical volume: how far from an ideal gas", virial[1])  # fmt: skip
     yield step("vapour density", "ρ_v", result["vapour_density"][row], "kg/m³", "P m/(Z R T_v)", virial[1])
+    yield step("vapour mass", "M_vapour", result["vapour_mass"][row], "kg", "V_v ρ_v", ORDER)
+
+
+def _halfway(measured: Measured, row: int, molar_mass: float) -> Iterator[Step]:
+    """A vapour that is not computed, halfway between the ideal gas and the most that it can be."""
+    result = measured.result
+    yield step("molar mass", "m", molar_mass * 1e3, "g/mol", "of the vapour's composition", "components")
+    yield step("compressibility factor", "Z", result["compressibility_factor"][row], "1",
+               "not computed: 2/(1 + n), n the most that the vapour can be of the ideal gas: 2, or 4 above 0.96 of its "
+               "critical temperature", "bounded in the budget")  # fmt: skip
+    yield step("vapour density", "ρ_v", result["vapour_density"][row], "kg/m³", "P m/(Z R T_v)", "definition of Z")
     yield step("vapour mass", "M_vapour", result["vapour_mass"][row], "kg", "V_v ρ_v", ORDER)
 
 

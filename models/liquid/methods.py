@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Any, Protocol
@@ -167,17 +168,20 @@ class _ByExpansivity:
         return "β and κ take the density at this state beyond every number: correct expansivity_per_k"
 
 
-class _Keyed:
+class _Keyed(ABC):
     """What the methods that have a key do alike."""
 
+    @abstractmethod
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
-        raise NotImplementedError
+        """What the sample says of the content. [as the method has it]"""
 
+    @abstractmethod
     def point(self, key: FloatArray, conditions: Conditions, row: Row) -> LiquidPoint:
-        raise NotImplementedError
+        """Density and slopes at a state. [SI]"""
 
+    @abstractmethod
     def error(self, here: Conditions, sample: Conditions, ratio: FloatArray, row: Row) -> FloatArray:
-        raise NotImplementedError
+        """Relative change of the density for one standard uncertainty of the method. [1]"""
 
     def state(
         self, density: FloatArray, sample: Conditions, here: Conditions, standard: Conditions, row: Row
@@ -195,8 +199,9 @@ class _OwnDensity(_Keyed):
 
     share: float
 
+    @abstractmethod
     def own_point(self, temperature: FloatArray, pressure: FloatArray, row: Row) -> LiquidPoint:
-        raise NotImplementedError
+        """Density and slopes by the method alone. [SI]"""
 
     def key(self, density: FloatArray, sample: Conditions, row: Row) -> FloatArray:
         """Density of the sample over that of the method. [1]"""

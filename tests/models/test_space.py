@@ -7,6 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from CoolProp.CoolProp import PropsSI
 
 from models.columns import Mark
 from models.geometry import shapes
@@ -88,10 +89,29 @@ def test_beside_a_blanket_an_unknown_vapour_pressure_is_bounded_by_what_is_known
     case = tank(celsius, 5e3, level=level)
     own = inventory(vessels([case]), None, state([case]))
     assert bool(own.marks[0] & Mark.VAPOUR_LEFT_OUT) == left_out
-    assert np.isfinite(own["mass"][0]) == left_out
+    assert bool(own.marks[0] & Mark.VAPOUR_BETWEEN) != left_out
     density = 0.0473 if celsius < 0.0 else 7.80
+    bound = 100.0 * (10.0 - level) * density
     if left_out:
-        assert own.sensitivities["vapour_left_out"][0] == pytest.approx(100.0 * (10.0 - level) * density, rel=0.01)
+        assert own.sensitivities["vapour_left_out"][0] == pytest.approx(bound, rel=0.01)
+    else:  # from none to all of it
+        assert own["vapour_mass"][0] == pytest.approx(0.5 * bound, rel=0.01)
+        assert own.sensitivities["vapour_left_out"][0] == pytest.approx(0.5 * bound, rel=0.01)
+
+
+@pytest.mark.parametrize("celsius", [74.0, 80.0, 84.0, 88.0, 92.0])
+def test_a_vapour_that_is_too_much_to_be_left_out_lies_between_the_ideal_gas_and_its_bound(celsius: float) -> None:
+    """Saturated propane by its reference equation (CoolProp 8.0.0), where the virial equation refuses it."""
+    case = BULLET_CASE.reads(
+        level=1.0, liquid_temperature=celsius + 273.15, vapour_temperature=math.nan, pressure=math.nan
+    )
+    own = inventory(vessels([case]), None, state([case]))
+    assert own.marks[0] & Mark.VAPOUR_BETWEEN and not own.marks[0] & Mark.GUARD_REFUSED
+    true = PropsSI("D", "T", celsius + 273.15, "Q", 1, "Propane") * own["vapour_volume"][0]
+    half = own.sensitivities["vapour_left_out"][0]
+    assert abs(own["vapour_mass"][0] - true) < half
+    assert own["mass"][0] == pytest.approx(own["liquid_mass"][0] + own["vapour_mass"][0], rel=1e-12)
+    assert half < own["vapour_mass"][0]
 
 
 # Propane by its reference equation of state (E. W. Lemmon et al., J. Chem. Eng. Data 54 (2009) 3141; CoolProp 8.0.0).

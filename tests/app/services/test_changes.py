@@ -211,12 +211,12 @@ def test_a_vessel_that_came_is_nothing_in_the_revision_before(nights: Plant) -> 
 
 def test_another_method_is_a_cause_of_its_own(nights: Plant, monkeypatch: pytest.MonkeyPatch) -> None:
     """It changes every mass that it computes otherwise; here the reading would have been enough."""
-    monkeypatch.setattr(close, "METHOD", "2")
+    monkeypatch.setattr(close, "METHOD", "3")
     nights.read("tk-1", "2026-03-15T06:00", "radar", level_m=5.1)
     nights.close("2026-03-14")
     found = told(nights, "2026-03-14")
-    assert ("method", "1 to 2") in causes(found)
-    assert "the method of calculation is 2 and was 1" in found["words"][0]
+    assert ("method", "2 to 3") in causes(found)
+    assert "the method of calculation is 3 and was 2" in found["words"][0]
 
 
 def test_vessels_judged_together_share_their_causes(nights: Plant) -> None:

@@ -7,7 +7,7 @@ from typing import Any
 import pytest
 
 from app.services.compile import CompiledVessel
-from app.services.warmed import Temperatures, correction
+from app.services.warmed import Temperatures, as_shown, correction
 from tests.app.services.worked import GAS_OIL, TANK, answer, compiled, masses
 
 STEEL = 1.1e-5  # 1/K, of a tape: common practice
@@ -70,3 +70,15 @@ def test_pitfall_10_ullage_needs_the_reference_height_of_this_tank() -> None:
     low, high = (compiled(TANK, gauging={"reference_height_m": height}) for height in (14.9, 15.0))
     row = {"ullage_m": 5.0, "liquid_temperature_c": 20.0}
     assert level(high, row) - level(low, row) == pytest.approx(0.1, abs=1e-12)
+
+
+@pytest.mark.parametrize("quantity", ["level_m", "ullage_m"])
+def test_what_an_instrument_shows_is_the_correction_undone(quantity: str) -> None:
+    tapes = {name: {"expansion_per_k": STEEL} for name in ("level_m", "ullage_m")}
+    vessel = compiled(TANK, **(HUNG | {"instruments": tapes}))
+    for wanted in (0.3, 6.0, 14.9):
+        shown = as_shown(vessel, quantity, "", wanted, WARM)
+        read = shown if quantity == "level_m" else 20.0 - shown
+        assert read + sum(correction(vessel, quantity, "", read, WARM)) == pytest.approx(wanted, abs=1e-12)
+        assert read != wanted
+    assert as_shown(compiled(TANK, gauging={"reference_height_m": 20.0}), quantity, "", 6.0, WARM) in (6.0, 14.0)

@@ -261,3 +261,14 @@ def test_the_working_says_how_a_vapours_temperature_was_found(read: dict[str, fl
         assert not lines[0]["declared"]
     else:
         assert 3.0 not in [line["standard_uncertainty"] for line in lines]
+
+
+def test_a_glass_hydrometers_reading_and_its_factor_stand_before_the_density() -> None:
+    """1 − 2.3e-5 (t − 15) − 2e-8 (t − 15)² at 25 °C: 0.999768 (API MPMS 11.1-1980, table 53)."""
+    row = OIL_READ | {"observed_density_temperature_c": 25.0}
+    plain = steps_of(compiled(TANK), row)
+    glass = steps_of(compiled(TANK), row | {"observed_density_by": "hydrometer"})
+    assert "ρ_h" not in plain and "HYC" not in plain
+    assert glass["HYC"] == pytest.approx(0.999768, abs=5e-9)
+    assert glass["ρ_h"] == pytest.approx(843.1, rel=EXACT)
+    assert glass["ρ_s"] == pytest.approx(843.1 * 0.999768, rel=EXACT)
