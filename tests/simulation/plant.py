@@ -79,7 +79,7 @@ def _of_a_ticket(plan: Plan, rng: np.random.Generator, kind: str, night: int) ->
     """A fault of one ticket of that night that moves its vessels by what can be seen."""
     large = [
         one for one in plan.movements
-        if one.night == night and all(one.mass > SEEN * vessel.per_mm for vessel in _ends(plan, one))
+        if (one.night, one.share) == (night, 1.0) and all(one.mass > SEEN * vessel.per_mm for vessel in _ends(plan, one))
     ]  # fmt: skip
     if not large:
         return None
