@@ -59,11 +59,10 @@ def alarm_rate(false_alarms_per_month: float) -> float:
 
     Notes
     -----
-    The number of nights flagged in a month has this mean however much the nights' tests share::
-
-        α = n / 30.44        (1)
+    With a night's chance of one in 30.44 for each, the number of nights flagged in a month has the mean that
+    was asked for, however much the nights' tests share.
     """
-    rate = false_alarms_per_month / DAYS_PER_MONTH  # eq. 1
+    rate = false_alarms_per_month / DAYS_PER_MONTH
     if not 0.0 < rate < 1.0:
         raise DefinitionError(
             f"false_alarms_per_month is {false_alarms_per_month}; it must be above 0 and below {DAYS_PER_MONTH}, "
