@@ -8,7 +8,7 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 from scipy.special import chdtrc, erfc
 
-from models.arrays import BoolArray, FloatArray, IntArray
+from models.arrays import FloatArray, IntArray
 from models.balance.evidence import FRESH_NIGHTS, Evidence, Search, correlations, fresh, subsets, weigh
 from models.balance.faults import candidates
 from models.balance.health import budget_health
@@ -162,7 +162,7 @@ def judge(
     groups = [_Group(part, settings) for part in split(window)]
     level = SIGNATURE_SHARE * alpha
     chances = np.array([group.settle() for group in groups])
-    counted: BoolArray = np.atleast_1d(benjamini_hochberg(chances, level))
+    counted = [bool(one) for one in benjamini_hochberg(chances, level)]
     shared = level / max(1, len(groups))
     vessels = sum(len(group.rows.part.vessels) for group in groups)
     limits = page_limits(vessels, alpha) if vessels else ()
@@ -170,7 +170,7 @@ def judge(
     members: list[VesselJudged] = []
     for group, chance, counts in zip(groups, chances, counted, strict=True):
         critical = family_critical(shared, group.tree)
-        raised = family_critical(shared * int(counted.sum()), group.tree) if counts else math.inf
+        raised = family_critical(shared * sum(counted), group.tree) if counts else math.inf
         group.select(raised)
         signals = group.signals()
         judged.append(_group(group, signals, float(chance), critical))

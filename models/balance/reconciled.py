@@ -79,7 +79,7 @@ def of_stock(found: Candidates, column: int, stock: Stock) -> float:
     return 1.0 if kind == STOCK_TAKE and stock.close == since else 0.0
 
 
-def of_ticket(found: Candidates, column: int, ticket: Ticket) -> float:
+def of_ticket(found: Candidates, column: int, ticket: Ticket, whole: float) -> float:
     """What one unit of a named fault adds to a movement's recorded mass.
 
     Parameters
@@ -89,7 +89,9 @@ def of_ticket(found: Candidates, column: int, ticket: Ticket) -> float:
     column : int
         The one named. [1]
     ticket : Ticket
-        A metered movement. [kg]
+        A metered movement, or its part in one night. [kg]
+    whole : float
+        Mass of all its parts. [kg]
 
     Returns
     -------
@@ -102,7 +104,7 @@ def of_ticket(found: Candidates, column: int, ticket: Ticket) -> float:
     if kind == METER and name == ticket.meter and ticket.night >= found.onset[column]:
         return mass / PER_CENT
     if kind in (WRONG, DUPLICATED) and name == ticket.name:
-        return mass if kind == DUPLICATED else mass / float(found.unit[column] or 1.0)
+        return mass if kind == DUPLICATED else mass / whole
     return 0.0
 
 
@@ -184,6 +186,9 @@ def last_close(
     window = rows.part.window
     stocks = [stock for stock in window.stocks if stock.close == window.nights and closing(stock) is not None]
     tickets = [ticket for ticket in window.tickets if ticket.night == window.nights and ticket.mass is not None]
+    whole: dict[str, float] = {}
+    for ticket in window.tickets:
+        whole[ticket.name] = whole.get(ticket.name, 0.0) + (0.0 if ticket.mass is None else ticket.mass.value)
     columns: list[FloatArray] = []
     effects: list[FloatArray] = []
     for explanations in named:
@@ -196,7 +201,7 @@ def last_close(
             continue
         first = explanations[0]
         columns.append(found.columns[:, [first]].toarray()[:, 0])
-        of_tickets = [of_ticket(found, first, ticket) for ticket in tickets]
+        of_tickets = [of_ticket(found, first, ticket, whole[ticket.name]) for ticket in tickets]
         effects.append(np.concatenate([of_stocks[:, 0] if len(stocks) else [], of_tickets]))
     measured = [mass for stock in stocks if (mass := closing(stock)) is not None]
     measured += [ticket.mass for ticket in tickets if ticket.mass is not None]
@@ -205,11 +210,11 @@ def last_close(
     direct = np.array(effects).T if effects else np.zeros((len(measured), 0))
     values, spread = reconcile(rows, measured, signatures, direct)
     names = [stock.vessel for stock in stocks] + [ticket.name for ticket in tickets]
-    whole = tuple(
-        Reconciled(name, own.value, float(value), float(u))
+    found_masses = tuple(
+        Reconciled(name, float(own.value), float(value), float(u))
         for name, own, value, u in zip(names, measured, values, spread, strict=True)
     )
-    return whole[: len(stocks)], whole[len(stocks) :]
+    return found_masses[: len(stocks)], found_masses[len(stocks) :]
 
 
 def _unit(rows: Rows, vessel: str, night: int) -> FloatArray:

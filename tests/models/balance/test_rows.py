@@ -69,8 +69,6 @@ def test_a_shorter_window_is_the_beginning_of_a_longer_one(night: int) -> None:
     count = longer.ends[night]
     assert len(shorter.white) == count
     assert shorter.white == pytest.approx(longer.white[:count], abs=1e-9)
-    for one, other in zip(shorter.innovations(), longer.innovations(), strict=True):
-        assert one == pytest.approx(other[:count], rel=1e-9, abs=1e-6)
 
 
 def holed(window: Window) -> Window:
