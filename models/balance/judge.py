@@ -103,10 +103,21 @@ class _Group:
             found.append(Signal(name(self.found, self.search.without(column)), score, standing))
         return tuple(found)
 
+    def without_standing(self) -> FloatArray:
+        """Whitened balances, less what is named and flagged no more."""
+        search = Search(self.rows, self.found.columns, self.evidence)
+        for run in self.stuck:
+            for column in run.columns:
+                search.take(column)
+        for column, _, standing in self.picks:
+            if standing:
+                search.take(column)
+        return np.asarray(self.rows.white - search.basis @ (search.basis.T @ self.rows.white))
+
     def vessels_of(self, suspect: Suspect) -> set[str]:
         """Vessels whose balances a suspect would touch."""
         rows = self.found.columns[:, [suspect.column]].indices
-        own = np.isin(self.rows.row_of, rows).any(axis=1)
+        own = [bool(np.isin(nights, rows).any()) for nights in self.rows.row_of]
         return {vessel for vessel, touched in zip(self.rows.part.vessels, own, strict=True) if touched}
 
 
@@ -162,7 +173,7 @@ def judge(
     groups = [_Group(part, settings) for part in split(window)]
     level = SIGNATURE_SHARE * alpha
     chances = np.array([group.settle() for group in groups])
-    counted = [bool(one) for one in benjamini_hochberg(chances, level)]
+    counted = np.atleast_1d(benjamini_hochberg(chances, level)).tolist()
     shared = level / max(1, len(groups))
     vessels = sum(len(group.rows.part.vessels) for group in groups)
     limits = page_limits(vessels, alpha) if vessels else ()
@@ -198,7 +209,8 @@ def _vessels(
 ) -> list[VesselJudged]:  # fmt: skip
     rows = group.rows
     score = innovations(rows.lower, rows.white, rows.night_of).scores(rows.row_of)
-    watched = watch(score, limits)
+    quiet = innovations(rows.lower, group.without_standing(), rows.night_of).scores(rows.row_of)
+    watched = watch(quiet, limits)  # what stands since before is no news
     guilty: set[str] = set()
     for signal in signals:
         if not signal.standing:
@@ -248,8 +260,8 @@ def _of_tonight(group: _Group, critical: float) -> dict[str, float]:
 
 
 def _rates(group: _Group, critical: float) -> dict[str, tuple[LossRate, ...]]:
-    """Rates of loss over the last 1, 7 and 30 nights, beside what else is named."""
-    found, evidence, nights = group.found, group.search.evidence, group.rows.nights
+    """Rates of loss over the last 1, 7 and 30 nights, whatever is named."""
+    found, evidence, nights = group.found, group.start, group.rows.nights
     rates: dict[str, list[LossRate]] = {}
     onsets = {nights - length + 1: length for length in RATES if length <= nights}
     for at in np.flatnonzero((found.kind == SLOW) & np.isin(found.onset, list(onsets))):

@@ -127,7 +127,8 @@ def test_fixed_sizes_scales_and_what_was_moved() -> None:
     assert found.scale[[loss, slow]] == pytest.approx([20.0 * per_mm, 2.0 * per_mm])  # 20 mm, 2 mm a day
     assert found.moved[[loss, slow]].tolist() == [1.0, 4.0]
     scales = {kind: found.scale[found.kind == KINDS.index(kind)][0] for kind in KINDS}
-    assert [scales[one] for one in ("level_bias", "temperature_bias", "density_bias", "meter_bias")] == [15, 2.5, 5, 0.7]
+    instruments = ("level_bias", "temperature_bias", "density_bias", "meter_bias")
+    assert [scales[one] for one in instruments] == [15.0, 2.5, 5.0, 0.7]  # mm, K, kg/m3, %
     last = next(s for s in WINDOW.stocks if (s.vessel, s.close) == ("tk-1", 5))
     level = column(found, "level_bias", ("tk-1",), 2)
     assert found.moved[level] == pytest.approx(last.slopes["level"] / 1000.0)

@@ -14,7 +14,7 @@ from models.balance.rows import assemble
 from models.balance.signatures import KINDS, Candidates
 from models.balance.window import Part, Stock, Window
 from models.estimate import Estimate
-from tests.models.balance.drawn_window import draw
+from tests.models.balance.drawn_window import draw, masses_of
 from tests.models.balance.test_evidence import NIGHTS, VESSELS, explicit
 
 
@@ -28,7 +28,7 @@ def column(found: Candidates, kind: str, subject: tuple[str, ...], onset: int) -
 def test_without_a_fault_masses_and_deviations_are_those_of_least_squares(seed: int) -> None:
     window = draw(np.random.default_rng(seed), 3, NIGHTS, 4)
     rows = assemble(Part(VESSELS, window))
-    measured = [one.mass for one in (*window.stocks, *window.tickets) if one.mass is not None]
+    measured = masses_of(window)
     none = csc_array((len(rows.white), 0))
     values, spread = reconcile(rows, measured, none, np.zeros((len(measured), 0)))
     _, _, found, _ = explicit(rows, window, np.zeros((15, 0)))
@@ -70,7 +70,8 @@ def test_masses_beside_a_fault_are_right_on_average_and_as_sure_as_they_say(kind
 
 def test_where_a_loss_and_a_gauge_disagree_the_vessels_mass_rests_on_its_own_reading() -> None:
     window = draw(np.random.default_rng(1), 3, NIGHTS, 4)
-    shifted = [biased(stock, 40.0) if (stock.vessel, stock.close) == ("tk-1", NIGHTS) else stock for stock in window.stocks]
+    last = ("tk-1", NIGHTS)
+    shifted = [biased(one, 40.0) if (one.vessel, one.close) == last else one for one in window.stocks]
     rows = assemble(Part(VESSELS, Window(window.days, shifted, window.tickets)))
     found = candidates(rows)
     loss, gauge = (column(found, kind, ("tk-1",), NIGHTS) for kind in ("vessel_loss", "level_bias"))
@@ -105,6 +106,7 @@ def test_what_a_fault_adds_to_a_reading_and_to_a_record() -> None:
     assert ticket.mass is not None
     mass = ticket.mass.value
     assert of_ticket(found, column(found, "meter_bias", ("M",), 4), ticket, mass) == pytest.approx(mass / 100.0)
-    assert of_ticket(found, column(found, "wrong_transfer", (ticket.name,), NIGHTS), ticket, 2.0 * mass) == pytest.approx(0.5)
+    wrong = column(found, "wrong_transfer", (ticket.name,), NIGHTS)
+    assert of_ticket(found, wrong, ticket, 2.0 * mass) == pytest.approx(0.5)
     assert of_ticket(found, column(found, "duplicated_transfer", (ticket.name,), NIGHTS), ticket, 2.0 * mass) == mass
     assert of_ticket(found, column(found, "vessel_loss", ("tk-1",), NIGHTS), ticket, mass) == 0.0
