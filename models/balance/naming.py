@@ -214,6 +214,10 @@ def name(found: Candidates, search: Search) -> tuple[Suspect, ...]:
     expected to exceed the other by no more than chance::
 
         z² (1 − cos² φ) < 3.84        (1)
+
+    References
+    ----------
+    .. [1] M. J. Bagajewicz, Q. Jiang, Comput. Chem. Eng. 22 (1998) 1789–1809: sets of faults that are equivalent.
     """
     share = shares(found, search.evidence.num, search.evidence.q)
     total, groups = _leaders(found, share)

@@ -12,7 +12,6 @@ from models.arrays import FloatArray
 from models.balance.faults import candidates
 from models.balance.rows import assemble
 from models.balance.signatures import KINDS, Candidates
-from models.balance.ticket_faults import twin_names
 from models.balance.window import Check, Part, Stock, Ticket, Window
 from models.estimate import Estimate
 from tests.models.balance.drawn_window import draw
@@ -152,18 +151,6 @@ def test_a_check_sees_the_instrument_in_use_and_the_meter() -> None:
     assert seen[:, column(found, "density_bias", ("sample:s",), 1)].tolist() == [0.0, 7.0, 0.0, 0.0]
     assert seen[:, column(found, "meter_bias", ("M",), 2)].tolist() == [0.0, 0.0, 3.0, 0.0]
     assert not seen[:, column(found, "vessel_loss", ("a",), 1)].any()
-
-
-def test_a_split_ticket_is_one_subject_and_a_twin_is_of_one_mass_and_way() -> None:
-    halves = [Ticket("t", 1, None, "a", Estimate(30.0)), Ticket("t", 2, None, "a", Estimate(10.0))]
-    other = [Ticket("u", 2, None, "a", Estimate(10.0)), Ticket("v", 1, "a", None, Estimate(10.0))]
-    full = [Stock("a", k, Estimate(100.0, {f"{k}": 1.0}), {}, per_mm=2.0) for k in (0, 1, 2)]
-    found = candidates(assemble(Part(("a",), Window((1.0, 1.0), full, halves + other))))
-    assert found.columns[:, [column(found, "wrong_transfer", ("t",), 1)]].toarray()[:, 0].tolist() == [-0.75, -0.25]
-    assert found.columns[:, [column(found, "duplicated_transfer", ("t",), 1)]].toarray()[:, 0].tolist() == [-30, -10]
-    assert twin_names([*halves, *other]) == {"t", "u"}
-    assert found.prior[column(found, "duplicated_transfer", ("u",))] == 50.0
-    assert found.prior[column(found, "duplicated_transfer", ("v",))] == 1.0
 
 
 def test_where_no_close_knows_a_millimetre_a_share_of_the_balances_spread_stands_for_it() -> None:
