@@ -10,7 +10,7 @@ from scipy.sparse import csc_array
 
 from models.arrays import BoolArray, FloatArray, IntArray, blocks
 from models.balance.rows import Rows
-from models.balance.thresholds import SpanningTree, spanning_tree, spanning_tree_by_rows
+from models.balance.thresholds import NO_SCORES, SpanningTree, spanning_tree
 
 BLOCK_FLOATS = 2_000_000  # of whitened columns that are held at once: 16 MB
 WHOLE_MATRIX = 2_000  # scores up to which all their correlations are held
@@ -146,13 +146,25 @@ def correlations(rows: Rows, columns: csc_array) -> SpanningTree:
     Returns
     -------
     SpanningTree
-        Maximum spanning tree of the magnitudes of their correlations. [1]
+        Maximum spanning tree of the magnitudes of their correlations; of very many, trees of parts that are tied
+        by edges of nought, which only raises the bound on a chance. [1]
     """
-    white = whitened(rows, columns)
-    white /= np.sqrt(np.einsum("ij,ij->i", white, white))[:, None]
-    if len(white) <= WHOLE_MATRIX:
-        return spanning_tree(white @ white.T)
-    return spanning_tree_by_rows(lambda block: np.asarray(white[block] @ white.T), len(white))
+    count = columns.shape[1]
+    place = np.argsort(_last_row(columns), kind="stable")  # what is alike stands together
+    strength: list[FloatArray] = []
+    for block in blocks(count, WHOLE_MATRIX):
+        white = whitened(rows, columns[:, place[block]])
+        white /= np.sqrt(np.einsum("ij,ij->i", white, white))[:, None]
+        strength.append(spanning_tree(white @ white.T).strength)
+    if not strength:
+        return NO_SCORES
+    return SpanningTree(count, np.concatenate([*strength, np.zeros(len(strength) - 1)]))
+
+
+def _last_row(columns: csc_array) -> IntArray:
+    """The last row that each column enters."""
+    last = np.maximum(columns.indptr[1:] - 1, 0)
+    return np.asarray(columns.indices[last] if columns.nnz else last, dtype=np.intp)
 
 
 class Search:

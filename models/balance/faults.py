@@ -21,7 +21,7 @@ from models.balance.signatures import (
     Candidates,
     Columns,
 )  # fmt: skip
-from models.balance.ticket_faults import PLAUSIBLE_MASS, tickets
+from models.balance.ticket_faults import ALL_WAYS, PLAUSIBLE_MASS, tickets, ways
 from models.balance.window import Ticket, plausible
 
 MM_PER_M = 1000.0  # exact
@@ -122,12 +122,13 @@ def _meters(rows: Rows, columns: Columns, ends: Mapping[int, tuple[int, int]]) -
 
 def _unrecorded(rows: Rows, columns: Columns, per_mm: FloatArray) -> None:
     """Movements without a ticket, between two vessels or one and what is beyond the books."""
+    linked, small = ways(rows), len(rows.part.vessels) <= ALL_WAYS
     nights = np.arange(1, rows.nights + 1)
     for one, vessel in enumerate(rows.part.vessels):
         minus = -np.ones(rows.nights)
         mass = PLAUSIBLE_MASS * per_mm[one]
         columns.add(UNRECORDED, columns.subject(vessel, OUTSIDE), nights, [(rows.row_of[one], minus)], scale=mass)
-        others = np.arange(one + 1, len(rows.part.vessels))
+        others = np.array([at for at in range(one + 1, len(rows.part.vessels)) if small or (one, at) in linked])
         if len(others):
             subject = np.array([columns.subject(vessel, rows.part.vessels[other]) for other in others])
             many = np.tile(nights, len(others))

@@ -12,6 +12,7 @@ from models.balance.signatures import DUPLICATED, LATE, MISROUTED, WRONG, Column
 from models.balance.window import Ticket
 
 PLAUSIBLE_MASS = 20.0  # mm of the vessel's level, one standard deviation: a proposal, tried on simulated sites
+ALL_WAYS = 16  # vessels of a group up to which a movement may join any two; above, those that some ticket joins
 TWIN_PRIOR = 50.0  # times as likely: two movements of one mass between the same ends in one night
 
 
@@ -30,7 +31,7 @@ def tickets(rows: Rows, columns: Columns, ends: Mapping[int, tuple[int, int]], p
         Mass of one millimetre of level. [kg]
     """
     place = {vessel: at for at, vessel in enumerate(rows.part.vessels)}
-    twins = twin_names(rows.part.window.tickets)
+    twins, linked = twin_names(rows.part.window.tickets), ways(rows)
     parts: dict[str, list[tuple[Ticket, float, int, int]]] = {}
     for at, ticket in enumerate(rows.part.window.tickets):
         if ticket.mass is not None and ticket.mass.value != 0.0:
@@ -51,7 +52,7 @@ def tickets(rows: Rows, columns: Columns, ends: Mapping[int, tuple[int, int]], p
         )
         if len(own) == 1:
             _shifted(rows, columns, first, both, place)
-        _misrouted(rows, columns, onset, [one[0] for one in own], mass, (source, target), place)
+        _misrouted(rows, columns, onset, [one[0] for one in own], mass, (source, target), place, linked)
 
 
 def _shifted(
@@ -75,13 +76,16 @@ def _shifted(
 
 def _misrouted(
     rows: Rows, columns: Columns, onset: IntArray, tickets: Sequence[Ticket], mass: FloatArray,
-    ends: tuple[IntArray, IntArray], place: Mapping[str, int],
+    ends: tuple[IntArray, IntArray], place: Mapping[str, int], linked: frozenset[tuple[int, int]],
 ) -> None:  # fmt: skip
     """A ticket that names one vessel where another moved, for every other vessel of the group."""
     first, whole = tickets[0], float(mass.sum())
     nights = np.array([ticket.night - 1 for ticket in tickets])
     for named, rows_named, sign in ((first.target, ends[1], -1.0), (first.source, ends[0], 1.0)):
+        other = first.source if named == first.target else first.target
         others = [at for vessel, at in place.items() if vessel not in (first.source, first.target)]
+        if len(place) > ALL_WAYS and other is not None:
+            others = [at for at in others if (place[other], at) in linked]
         if named is None or not others:
             continue
         there = rows.row_of[np.array(others)[:, None], nights[None, :]]
@@ -93,6 +97,28 @@ def _misrouted(
         ]
         many = np.repeat(onset, len(others))
         columns.add(MISROUTED, subject, many, entries, fixed=True, unit=whole, moved=whole)
+
+
+def ways(rows: Rows) -> frozenset[tuple[int, int]]:
+    """Vessels between which some ticket of the window runs.
+
+    Parameters
+    ----------
+    rows : Rows
+        A group's balances. [kg]
+
+    Returns
+    -------
+    frozenset of (int, int)
+        Places of both, in either order. [1]
+    """
+    place = {vessel: at for at, vessel in enumerate(rows.part.vessels)}
+    pairs: set[tuple[int, int]] = set()
+    for ticket in rows.part.window.tickets:
+        if ticket.source is not None and ticket.target is not None:
+            pair = place[ticket.source], place[ticket.target]
+            pairs |= {pair, pair[::-1]}
+    return frozenset(pairs)
 
 
 def twin_names(tickets: Sequence[Ticket]) -> frozenset[str]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from models.balance.faults import candidates
 from models.balance.rows import assemble
-from models.balance.ticket_faults import twin_names
+from models.balance.ticket_faults import twin_names, ways
 from models.balance.window import Part, Stock, Ticket, Window
 from models.estimate import Estimate
 from tests.models.balance.test_faults import column
@@ -31,3 +31,18 @@ def test_the_last_nights_ticket_may_be_still_to_come_and_the_first_nights_has_no
     assert found.columns[:, [column(found, "late_transfer", ("u", "next"))]].toarray()[:, 0].tolist() == [0.0, 10.0]
     assert found.columns[:, [column(found, "late_transfer", ("t", "next"))]].toarray()[:, 0].tolist() == [-30.0, 30.0]
     assert found.scale[column(found, "wrong_transfer", ("u",))] == 40.0  # 20 mm of 2 kg
+
+
+def test_in_a_large_group_a_movement_may_only_join_what_some_ticket_joins() -> None:
+    def subjects(count: int, kind: int) -> set[tuple[str, ...]]:
+        names = [f"v{at:02}" for at in range(count)]
+        full = [Stock(v, k, Estimate(100.0, {f"{v}:{k}": 1.0}), {}, per_mm=2.0) for v in names for k in (0, 1)]
+        chain = [Ticket(f"t{a}", 1, a, b, Estimate(5.0)) for a, b in zip(names, names[1:], strict=False)]
+        rows = assemble(Part(tuple(names), Window((1.0,), full, chain)))
+        assert ways(rows) >= {(0, 1), (1, 0)}
+        found = candidates(rows)
+        return {found.subjects[at] for at, own in zip(found.subject, found.kind, strict=True) if own == kind}
+
+    assert len(subjects(16, 7)) == 16 * 15 // 2 + 16  # every pair, and every vessel with what is beyond
+    assert len(subjects(17, 7)) == 16 + 17
+    assert {one for one in subjects(17, 11) if one[0] == "tv01"} == {("tv01", "v02", "v00"), ("tv01", "v01", "v03")}
