@@ -16,7 +16,7 @@ BLOCK_FLOATS = 2_000_000  # of whitened columns that are held at once: 16 MB
 WHOLE_MATRIX = 2_000  # scores up to which all their correlations are held
 FRESH_NIGHTS = 3  # nights, in which a fault that is tested tonight must have shown
 FRESH_SHARE = 0.1  # of all that the window can say of it
-COLLINEAR = 1e-9  # of its evidence: less than this is left of an explanation that those named span
+COLLINEAR_TOLERANCE = 1e-9  # of its evidence: less than this is left of an explanation that those named span
 
 
 @dataclass(frozen=True, eq=False)
@@ -214,14 +214,14 @@ class Search:
         own = whitened(self.rows, self.columns[:, [index]])[0]
         left = own - self.basis @ (self.basis.T @ own)
         left -= self.basis @ (self.basis.T @ left)
-        if not left @ left > COLLINEAR * (own @ own):
+        if not left @ left > COLLINEAR_TOLERANCE * (own @ own):
             return False
         self.basis = np.column_stack([self.basis, left / np.sqrt(left @ left)])
         self.named.append(index)
         along = np.asarray(self.columns.T @ (self.rows.losses.T @ self.basis))
         num = self.whole.num - along @ (self.basis.T @ self.rows.white)  # eq. 1
         q = self.whole.q - np.einsum("ij,ij->i", along, along)  # eq. 1
-        seen = q > COLLINEAR * self.whole.q
+        seen = q > COLLINEAR_TOLERANCE * self.whole.q
         self.evidence = Evidence(np.where(seen, num, 0.0), np.where(seen, q, 0.0))
         return True
 

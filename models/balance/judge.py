@@ -33,6 +33,9 @@ from models.balance.window import Part, Window, split
 RATES = (1, 7, 30)  # nights, over which a rate of loss is given
 
 
+_Judged = tuple[GroupJudged, list[VesselJudged]]
+
+
 class _Group:
     """One group on its way to being judged."""
 
@@ -170,23 +173,39 @@ def judge(
     """
     settings = Settings() if settings is None else settings
     alpha = alarm_rate(settings.false_alarms_per_month)
-    groups = [_Group(part, settings) for part in split(window)]
+    parts = split(window)
     level = SIGNATURE_SHARE * alpha
-    chances = np.array([group.settle() for group in groups])
-    counted = np.atleast_1d(benjamini_hochberg(chances, level)).tolist()
-    shared = level / max(1, len(groups))
-    vessels = sum(len(group.rows.part.vessels) for group in groups)
+    shared = level / max(1, len(parts))
+    vessels = sum(len(part.vessels) for part in parts)
     limits = page_limits(vessels, alpha) if vessels else ()
-    judged: list[GroupJudged] = []
-    members: list[VesselJudged] = []
-    for group, chance, counts in zip(groups, chances, counted, strict=True):
-        critical = family_critical(shared, group.tree)
-        raised = family_critical(shared * sum(counted), group.tree) if counts else math.inf
-        group.select(raised)
-        signals = group.signals()
-        judged.append(_group(group, signals, float(chance), critical))
-        members += _vessels(group, signals, critical, limits, flagged_before or {})
-    return Judgement(tuple(judged), tuple(members))
+    before = flagged_before or {}
+    judged: dict[int, _Judged] = {}
+    waiting: dict[int, _Group] = {}
+    chances = np.ones(len(parts))
+    for at, part in enumerate(parts):
+        group = _Group(part, settings)
+        chances[at] = group.settle()
+        if chances[at] <= level:  # until it is known how many others count
+            waiting[at] = group
+        else:
+            judged[at] = _finish(group, float(chances[at]), shared, math.inf, limits, before)
+    counted = np.atleast_1d(benjamini_hochberg(chances, level)).tolist()
+    for at, group in waiting.items():
+        raised = family_critical(shared * sum(counted), group.tree) if counted[at] else math.inf
+        judged[at] = _finish(group, float(chances[at]), shared, raised, limits, before)
+    order = [judged[at] for at in range(len(parts))]
+    return Judgement(tuple(group for group, _ in order), tuple(one for _, members in order for one in members))
+
+
+def _finish(
+    group: _Group, chance: float, shared: float, limit: float, limits: tuple[tuple[float, float], ...],
+    flagged_before: Mapping[str, Sequence[int]],
+) -> _Judged:  # fmt: skip
+    critical = family_critical(shared, group.tree)
+    group.select(limit)
+    signals = group.signals()
+    judged = _group(group, signals, chance, critical)
+    return judged, _vessels(group, signals, critical, limits, flagged_before)
 
 
 def _group(group: _Group, signals: tuple[Signal, ...], chance: float, critical: float) -> GroupJudged:
