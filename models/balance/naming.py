@@ -19,7 +19,7 @@ SET_SHARE = 0.95  # of all shares, that the named explanations have together
 GAP = 3.84  # of the statistic, 95 % of chi-square with one degree of freedom: less tells nothing apart
 POWER = 0.95  # chance that what is called detectable is flagged
 QUANTILES = (0.025, 0.5, 0.975)
-WIDE = 12.0  # standard deviations beyond every component, between which a quantile lies
+BRACKET_TOLERANCE = 12.0  # standard deviations beyond every component, between which a quantile lies
 
 
 @dataclass(frozen=True)
@@ -155,7 +155,7 @@ def mixture_quantiles(
     if np.ptp(mean) == 0.0 and not sd.any():
         return tuple(float(mean[0]) for _ in quantiles)
     width = np.maximum(sd, 1e-9 * np.abs(mean).max())
-    low, high = float(np.min(mean - WIDE * width)), float(np.max(mean + WIDE * width))
+    low, high = float(np.min(mean - BRACKET_TOLERANCE * width)), float(np.max(mean + BRACKET_TOLERANCE * width))
     return tuple(
         float(brentq(lambda x, chance=chance: weight @ ndtr((x - mean) / width) - chance, low, high))
         for chance in quantiles
@@ -225,8 +225,7 @@ def name(found: Candidates, search: Search) -> tuple[Suspect, ...]:
     white = search.whites(best)
     length = np.sqrt(np.einsum("ij,ij->i", white, white))
     white = white / np.where(length > 0.0, length, 1.0)[:, None]
-    gap = search.evidence.statistic[best][:, None] * (1.0 - np.square(white @ white.T))  # eq. 1
-    alike: BoolArray = (gap < GAP) & ~np.eye(len(best), dtype=bool)
+    alike = _alike(search.evidence.statistic[best], white)
     drafts = [_describe(found, search, own, share, int(column)) for own, column in zip(groups, best, strict=True)]
     labels = [(draft.kind, draft.subject) for draft in drafts]
     return tuple(
@@ -236,6 +235,12 @@ def name(found: Candidates, search: Search) -> tuple[Suspect, ...]:
         })
         for at, draft in enumerate(drafts)
     )  # fmt: skip
+
+
+def _alike(statistic: FloatArray, white: FloatArray) -> BoolArray:
+    """Which of others, given by unit vectors, cannot be told from each."""
+    gap = statistic[:, None] * (1.0 - np.square(white @ white.T))  # eq. 1
+    return np.asarray((gap < GAP) & ~np.eye(len(statistic), dtype=bool))
 
 
 def _describe(found: Candidates, search: Search, own: IntArray, share: FloatArray, column: int) -> Suspect:

@@ -26,7 +26,7 @@ from models.estimate import Estimate
 
 MM_PER_M = 1000.0  # exact
 PER_CENT = 100.0  # exact
-RANK = 1e-9  # of the largest column: less is spanned by the others
+RANK_TOLERANCE = 1e-9  # of the largest column: less is spanned by the others
 
 
 @dataclass(frozen=True)
@@ -149,7 +149,7 @@ def reconcile(
     residual, spread = rows.white, variance - np.einsum("ij,ij->i", seen, seen)  # eq. 2
     if white.shape[1]:
         basis, upper, order = qr(white, mode="economic", pivoting=True)
-        rank = int(np.sum(np.abs(np.diag(upper)) > RANK * abs(upper[0, 0]))) if upper[0, 0] else 0
+        rank = int(np.sum(np.abs(np.diag(upper)) > RANK_TOLERANCE * abs(upper[0, 0]))) if upper[0, 0] else 0
         basis, kept = basis[:, :rank], order[:rank]
         left = np.linalg.solve(upper[:rank, :rank].T, (effects[:, kept] - seen @ white[:, kept]).T)
         size = np.linalg.solve(upper[:rank, :rank], basis.T @ rows.white) if rank else np.zeros(0)

@@ -11,7 +11,7 @@ from scipy.stats import norm
 from models.arrays import FloatArray
 from models.balance.evidence import Evidence, Search, weigh
 from models.balance.faults import candidates
-from models.balance.naming import detectable, mixture_quantiles, name, shares, widths
+from models.balance.naming import _alike, _leaders, detectable, mixture_quantiles, name, shares, widths
 from models.balance.rows import Rows, assemble
 from models.balance.signatures import DUPLICATED, KINDS, LEVEL, LOSS, UNRECORDED, Candidates
 from models.balance.window import Part, Stock, Window
@@ -142,3 +142,18 @@ def test_an_interval_covers_sizes_drawn_as_the_prior_says() -> None:
 
 def test_what_is_detectable() -> None:
     assert detectable(3.0, np.array([4.0])) == pytest.approx([(3.0 + 1.644854) / 2.0], rel=1e-6)
+
+
+@pytest.mark.parametrize(("first", "count"), [(0.946, 2), (0.954, 1)])
+def test_explanations_are_named_until_they_have_95_per_cent(first: float, count: int) -> None:
+    found = made([LOSS, LEVEL, LEVEL], [False] * 3, [1.0] * 3)
+    total, columns = _leaders(found, np.array([first, 0.9 * (1.0 - first), 0.1 * (1.0 - first)]))
+    assert [own.tolist() for own in columns] == [[0], [1]][:count]
+    assert total[0] == first
+
+
+def test_a_gap_below_chi_square_at_95_per_cent_tells_nothing_apart() -> None:
+    """3.841 is the 95 % point of chi-square with one degree of freedom."""
+    angle = np.arcsin(np.sqrt(0.1))
+    white = np.array([[1.0, 0.0], [np.cos(angle), np.sin(angle)]])
+    assert _alike(np.array([38.2, 38.6]), white).tolist() == [[False, True], [False, False]]
