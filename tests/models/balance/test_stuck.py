@@ -56,4 +56,7 @@ def test_a_level_that_rests_while_little_moves_is_not_stuck(moved: float) -> Non
 
 
 def test_just_above_six_uncertainties_it_is() -> None:
-    assert judge(window({5}, 10_000.0 + 4 * 852.0, 852.0)).groups[0].signals
+    (signal,) = judge(window({5}, 10_000.0 + 4 * 852.0, 852.0)).groups[0].signals
+    assert signal.suspects[0].kind == "level_stuck"
+    (other,) = judge(window({5}, 10_000.0 + 4 * 845.0, 845.0)).groups[0].signals
+    assert other.suspects[0].kind != "level_stuck"  # seen all the same, by the balances
