@@ -10,7 +10,7 @@ from scipy.linalg import cholesky, solve_triangular
 from scipy.sparse import csr_array
 
 from models.arrays import FloatArray, IntArray
-from models.balance.window import Check, Merged, Part, Stock, Ticket
+from models.balance.window import Check, Merged, Part, Stock
 from models.errors import ModelError
 from models.estimate import Estimate
 
@@ -78,32 +78,6 @@ class Rows:
             Root of the sum of squares of its named parts. [kg]
         """
         return np.asarray(np.sqrt(self.errors.power(2).sum(axis=1)))
-
-    def innovations(self) -> tuple[FloatArray, FloatArray]:
-        """What each row shows that the nights before did not foretell.
-
-        Returns
-        -------
-        tuple of FloatArray, shape (rows,)
-            Innovation and its standard deviation. [kg]
-
-        Notes
-        -----
-        With the diagonal block of L of each night::
-
-            ν_K = L_KK w_K,  var ν_K = row sums of L_KK²        (1)
-
-        References
-        ----------
-        .. [1] T. Kailath, IEEE Trans. Autom. Control 13 (1968) 646–655: the innovations of a Gaussian sequence.
-        """
-        found, spread = np.zeros(len(self.white)), np.zeros(len(self.white))
-        ends = self.ends
-        for start, end in zip(ends[:-1], ends[1:], strict=True):
-            block = self.lower[start:end, start:end]
-            found[start:end] = block @ self.white[start:end]  # eq. 1
-            spread[start:end] = np.sqrt(np.sum(block * block, axis=1))  # eq. 1
-        return found, spread
 
     def shared_with(self, measured: Sequence[Estimate]) -> tuple[FloatArray, FloatArray]:
         """Covariance of measured values with the rows, and each value's own variance.
@@ -274,29 +248,6 @@ def assemble(part: Part) -> Rows:
     else:
         lower, losses, white = covariance, covariance, residual
     return Rows(part, row_of, check_rows, night_of, residual, errors, names, lower, white, losses)
-
-
-def ticket_rows(rows: Rows, ticket: Ticket) -> tuple[int, int]:
-    """Rows at a movement's source and target.
-
-    Parameters
-    ----------
-    rows : Rows
-        A group's balances. [kg]
-    ticket : Ticket
-        A movement of the group. [kg]
-
-    Returns
-    -------
-    tuple of int
-        Row of the source's night and of the target's; −1 where there is none. [1]
-    """
-    place = rows.part.vessels.index
-    source, target = (
-        BEYOND if end is None else int(rows.row_of[place(end), ticket.night - 1])
-        for end in (ticket.source, ticket.target)
-    )
-    return source, target
 
 
 def check_of(rows: Rows) -> Iterator[tuple[int, Check]]:

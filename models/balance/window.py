@@ -207,15 +207,15 @@ def split(window: Window) -> tuple[Part, ...]:
     tickets: dict[object, list[Ticket]] = {root: [] for root in members}
     checks: dict[object, list[Check]] = {root: [] for root in members}
     serves: dict[str, set[object]] = {}
-    for stock in window.stocks:
+    for stock in sorted(window.stocks, key=lambda one: (one.vessel, one.close)):
         stocks[tied.find(stock.vessel)].append(stock)
-    for ticket in window.tickets:
+    for ticket in sorted(window.tickets, key=lambda one: (one.night, one.name)):
         end = ticket.source if ticket.source is not None else ticket.target
         if end is not None:
             tickets[tied.find(end)].append(ticket)
             if ticket.meter is not None:
                 serves.setdefault(ticket.meter, set()).add(tied.find(end))
-    for check in window.checks:
+    for check in sorted(window.checks, key=lambda one: (one.night, one.vessel, one.kind)):
         roots = serves.get(check.vessel, set()) if check.kind == "meter" else {tied.find(check.vessel)} & set(members)
         for root in roots:
             checks[root].append(check)

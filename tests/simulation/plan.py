@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from zlib import crc32
 
 import numpy as np
@@ -75,6 +75,8 @@ class Movement:
     target: str | None
     mass: float  # kg
     meter: str
+    share: float = 1.0  # of the whole movement, where it is split at a close
+    sign: float = 1.0  # -1 for what follows the close
 
 
 @dataclass(frozen=True)
@@ -102,11 +104,13 @@ class Plan:
 
 
 def plan(
-    seed: int, *, layout: Sequence[tuple[int, int]] = ((8, 2),), nights: int = 20, tickets: int = 8, sampled: int = 5
+    seed: int, *, layout: Sequence[tuple[int, int]] = ((8, 2),), nights: int = 20, tickets: int = 8, sampled: int = 5,
+    split: float = 0.0,
 ) -> Plan:  # fmt: skip
     """A site of groups, each of so many upright tanks and so many spheres, with so many movements a night.
 
-    Every tank has a new density sample each ``sampled`` nights, not all on one; every meter is proved once.
+    Every tank has a new density sample each ``sampled`` nights, not all on one; every meter is proved once. With
+    the chance ``split`` a movement is under way at the close.
     """
     rng = stream(seed, "plan")
     vessels = [
@@ -121,6 +125,7 @@ def plan(
         for group in range(len(layout))
         for movement in _night(rng, vessels, filled, night, group, tickets, proved)
     ]
+    movements = [part for movement in movements for part in _split(movement, nights, split, seed)]
     steps = rng.normal(0.0, 0.6, (len(vessels), nights + 1))
     temperature = rng.uniform(12.0, 24.0, (len(vessels), 1)) + np.cumsum(steps, axis=1)
     first = rng.integers(0, sampled, len(vessels))
@@ -129,6 +134,18 @@ def plan(
         for vessel, late in zip(vessels, first, strict=True)
     ]
     return Plan(vessels, movements, nights, start, temperature, sample)
+
+
+def _split(movement: Movement, nights: int, chance: float, seed: int) -> list[Movement]:
+    """A movement, or its parts before and after the close that ends its night."""
+    rng = stream(seed, f"split:{movement.name}")
+    if movement.night == nights or rng.random() >= chance:
+        return [movement]
+    share = rng.uniform(0.1, 0.9)
+    return [
+        replace(movement, mass=movement.mass * share, share=share),
+        replace(movement, mass=movement.mass * (1.0 - share), night=movement.night + 1, share=1.0 - share, sign=-1.0),
+    ]
 
 
 def _vessels(rng: np.random.Generator, group: int, tanks: int, spheres: int) -> list[Vessel]:

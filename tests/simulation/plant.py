@@ -77,10 +77,8 @@ def _stuck(plan: Plan, rng: np.random.Generator, night: int) -> Fault | None:
 
 def _of_a_ticket(plan: Plan, rng: np.random.Generator, kind: str, night: int) -> Fault | None:
     """A fault of one ticket of that night that moves its vessels by what can be seen."""
-    large = [
-        one for one in plan.movements
-        if one.night == night and all(one.mass > SEEN * vessel.per_mm for vessel in _ends(plan, one))
-    ]  # fmt: skip
+    whole = [one for one in plan.movements if (one.night, one.share) == (night, 1.0)]
+    large = [one for one in whole if all(one.mass > SEEN * vessel.per_mm for vessel in _ends(plan, one))]
     if not large:
         return None
     ticket = large[int(rng.integers(len(large)))]

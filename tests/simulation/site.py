@@ -6,13 +6,13 @@ in place of knots; all else is normal. One seed gives one window, and a fault ch
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
 from models.arrays import BoolArray, FloatArray
-from models.balance.window import Stock, Ticket, Window
+from models.balance.window import Check, Stock, Ticket, Window
 from models.estimate import Estimate
 from tests.simulation.plan import Movement, Plan, Vessel, stream
 
@@ -36,6 +36,9 @@ class Errors:
     laboratory: float = 0.3  # kg/m³
     factor: float = 1e-3  # of a ticket
     repeatability: float = 5e-4  # of a ticket
+    split: float = 0.3  # of the smaller part of a ticket that is split at a close
+    dip: float = 1.5e-3  # m
+    proving: float = 3e-4  # of a meter's factor
     true_over_declared: float = 1.0
     gauge_step: float = 5e-4  # m
 
@@ -66,18 +69,31 @@ class Site:
     moved: dict[str, float]  # kg, of each ticket
 
 
-def simulate(plan: Plan, seed: int, faults: Sequence[Fault] = (), errors: Errors | None = None) -> Site:
-    """The window of a site with faults; the same seed draws the same errors whatever is planted."""
+def simulate(
+    plan: Plan, seed: int, faults: Sequence[Fault] = (), errors: Errors | None = None, *,
+    dips: Sequence[tuple[str, int]] = (), provings: Sequence[tuple[str, int]] = (),
+    revised: Mapping[str, int] | None = None,
+) -> Site:  # fmt: skip
+    """The window of a site with faults; the same seed draws the same errors whatever is planted.
+
+    A vessel is dipped at a close, a meter's factor found in a night; a vessel that is revised at a close has another
+    gauge and another table from there on, and opens its next night by them.
+    """
     errors = Errors() if errors is None else errors
     content, lost = _truth(plan, faults)
-    stocks = [
-        stock
-        for at, vessel in enumerate(plan.vessels)
-        for stock in _stocks(plan, at, vessel, content[at], seed, faults, errors)
-    ]
+    stocks, checks = [], []
+    for at, vessel in enumerate(plan.vessels):
+        read = _read(plan, at, content[at], seed, faults, errors)
+        own = _stocks(plan, at, read, errors)
+        if revised and vessel.name in revised:
+            again = _read(plan, at, content[at], seed, faults, errors, revision=2)
+            own = _reopened(own, _stocks(plan, at, again, errors), revised[vessel.name])
+        stocks += own
+        checks += [_dip(vessel, own[close], read, close, seed, errors) for name, close in dips if name == vessel.name]
     tickets = [_ticket(movement, seed, faults, errors) for movement in _recorded(plan, faults)]
-    moved = {movement.name: movement.mass for movement in plan.movements}
-    return Site(Window((1.0,) * plan.nights, stocks, tickets), plan, content, lost, moved)
+    checks += [_proving(plan, meter, night, seed, faults, errors) for meter, night in provings]
+    moved = {movement.name: movement.mass / movement.share for movement in plan.movements}
+    return Site(Window((1.0,) * plan.nights, stocks, tickets, checks), plan, content, lost, moved)
 
 
 def unshared(window: Window) -> Window:
@@ -88,7 +104,12 @@ def unshared(window: Window) -> Window:
             return None
         return Estimate(estimate.value, {f"{name} at {where}": part for name, part in estimate.parts.items()})
 
-    stocks = [replace(one, mass=alone(one.mass, f"{one.vessel} {one.close}")) for one in window.stocks]
+    stocks = [
+        replace(
+            one, mass=alone(one.mass, f"{one.vessel} {one.close}"), reopened=alone(one.reopened, f"{one.vessel} anew")
+        )
+        for one in window.stocks
+    ]
     tickets = [replace(one, mass=alone(one.mass, f"{one.name} {one.night}")) for one in window.tickets]
     return replace(window, stocks=stocks, tickets=tickets)
 
@@ -115,12 +136,26 @@ def _truth(plan: Plan, faults: Sequence[Fault]) -> tuple[FloatArray, FloatArray]
     return content, lost
 
 
-def _stocks(
-    plan: Plan, at: int, vessel: Vessel, content: FloatArray, seed: int, faults: Sequence[Fault], errors: Errors
-) -> list[Stock]:  # fmt: skip
-    """One vessel at every close, from a level, a temperature and a density that were read."""
+@dataclass(frozen=True)
+class Read:
+    """One vessel as it was read at every close."""
+
+    level: FloatArray  # m
+    temperature: FloatArray  # °C
+    density: FloatArray  # kg/m³ at 15 °C
+    mass: FloatArray  # kg
+    still: BoolArray
+    true_level: FloatArray  # m
+    revision: int
+
+
+def _read(
+    plan: Plan, at: int, content: FloatArray, seed: int, faults: Sequence[Fault], errors: Errors, revision: int = 1
+) -> Read:  # fmt: skip
+    """A level, a temperature and a density with their errors, and the mass that they make."""
     closes = np.arange(plan.nights + 1)
-    name, truth = vessel.name, plan.temperature[at]
+    vessel, truth = plan.vessels[at], plan.temperature[at]
+    name = vessel.name
 
     def drawn(sigma: float, *ids: str) -> FloatArray:
         each = [sigma * errors.true_over_declared * stream(seed, one).standard_normal() for one in ids]
@@ -130,8 +165,8 @@ def _stocks(
         sizes = [np.where(closes >= f.onset, f.size, 0.0) for f in faults if (f.kind, f.subject) == (kind, (name,))]
         return np.sum(sizes, axis=0) if sizes else np.zeros(len(closes))
 
-    level = vessel.level(content / vessel.density_at(truth)) + 1e-3 * faulty("level_bias")
-    level = level + drawn(errors.level, f"level:{name}")
+    true_level = vessel.level(content / vessel.density_at(truth))
+    level = true_level + 1e-3 * faulty("level_bias") + drawn(errors.level, _gauge(name, revision))
     level = level + drawn(errors.level_random, *(f"r:{name}:{k}:level" for k in closes))
     still = _stick(level, name, faults, errors.gauge_step)
     temperature = truth + faulty("temperature_bias") + drawn(errors.temperature, f"temperature:{name}")
@@ -141,40 +176,74 @@ def _stocks(
         if fault.kind == "density_bias":
             cited = np.array([fault.subject[0] in (LAB, sample) for sample in plan.sample[at]])
             density = density + np.where(cited & (closes >= fault.onset), fault.size, 0.0)
-    table = 1.0 + drawn(errors.capacity, f"capacity:{name}:1") + _waves(level, seed, name, errors)
+    table = 1.0 + drawn(errors.capacity, f"capacity:{name}:{revision}")
+    table = table + _waves(level, seed, f"{name}:{revision}", errors)
     mass = vessel.density_at(temperature, density) * vessel.volume(level) * table
     for fault in faults:
         if (fault.kind, fault.subject) == ("bad_stock_take", (name,)):
             mass = mass + np.where(closes == fault.onset, fault.size, 0.0)
-    read = zip(closes, level, temperature, density, mass, still, strict=True)
-    return [_stock(vessel, int(k), plan.sample[at][k], *one, errors=errors) for k, *one in read]
+    return Read(level, temperature, density, mass, still, true_level, revision)
 
 
-def _stock(
-    vessel: Vessel, close: int, sample: str, level: float, temperature: float, density: float, mass: float,
-    still: bool, *, errors: Errors,
-) -> Stock:  # fmt: skip
+def _gauge(name: str, revision: int) -> str:
+    return f"level:{name}" if revision == 1 else f"level:{name}:{revision}"
+
+
+def _stocks(plan: Plan, at: int, read: Read, errors: Errors) -> list[Stock]:
+    vessel, sample = plan.vessels[at], plan.sample[at]
+    return [_stock(vessel, close, sample[close], read, errors) for close in range(plan.nights + 1)]
+
+
+def _stock(vessel: Vessel, close: int, sample: str, read: Read, errors: Errors) -> Stock:
     """One close with the parts of its mass, at what was read."""
-    name = vessel.name
+    name, table = vessel.name, f"capacity:{vessel.name}:{read.revision}"
+    columns = (read.level, read.temperature, read.density, read.mass)
+    level, temperature, density, mass = (float(column[close]) for column in columns)
     warmed = float(vessel.density_at(np.array(temperature), density))
     per_m = warmed * float(vessel.area(np.array(level)))
     per_k = -vessel.expansivity * mass * density / warmed
     per_density = mass / density
     parts = {
-        f"level:{name}": per_m * errors.level,
+        _gauge(name, read.revision): per_m * errors.level,
         f"r:{name}:{close}:level": per_m * errors.level_random,
         f"temperature:{name}": per_k * errors.temperature,
         f"r:{name}:{close}:temperature": per_k * errors.temperature_random,
-        f"capacity:{name}:1": mass * errors.capacity,
+        table: mass * errors.capacity,
         sample: per_density * errors.sample,
         LAB: per_density * errors.laboratory,
     }
     knot, share = divmod(level / errors.span, 1.0)
     norm = np.hypot(1.0 - share, share)
     for at, weight in ((int(knot), 1.0 - share), (int(knot) + 1, share)):
-        parts[f"capacity:{name}:1:{at}"] = mass * errors.local * float(weight / norm)
+        parts[f"{table}:{at}"] = mass * errors.local * float(weight / norm)
     slopes = {"level": per_m, "temperature": per_k, "density": per_density}
-    return Stock(name, close, Estimate(mass, parts), slopes, (sample, LAB), per_mm=per_m / 1000.0, still=bool(still))
+    still = bool(read.still[close])
+    return Stock(name, close, Estimate(mass, parts), slopes, (sample, LAB), per_mm=per_m / 1000.0, still=still)
+
+
+def _reopened(before: Sequence[Stock], after: Sequence[Stock], close: int) -> list[Stock]:
+    """Stocks of a vessel whose definition changes at a close."""
+    return [*before[:close], replace(before[close], reopened=after[close].mass), *after[close + 1 :]]
+
+
+def _dip(vessel: Vessel, stock: Stock, read: Read, close: int, seed: int, errors: Errors) -> Check:
+    """The gauge less a hand dip, of its own error alone."""
+    name, own = vessel.name, f"dip:{vessel.name}:{close}"
+    slope = stock.slopes["level"]
+    dipped = read.true_level[close] + errors.true_over_declared * errors.dip * stream(seed, own).standard_normal()
+    shared = {_gauge(name, read.revision): errors.level, f"r:{name}:{close}:level": errors.level_random}
+    parts = {error: slope * sigma for error, sigma in {**shared, own: -errors.dip}.items()}
+    return Check(name, close, Estimate(slope * float(read.level[close] - dipped), parts), "level", slope)
+
+
+def _proving(plan: Plan, meter: str, night: int, seed: int, faults: Sequence[Fault], errors: Errors) -> Check:
+    """What a prover found that a meter reads too high, for a typical ticket of its."""
+    own = f"proving:{meter}:{night}"
+    slope = float(np.mean([movement.mass for movement in plan.meters[meter]])) / 100.0
+    found = _factor(meter, night, seed, faults, errors) - 1.0
+    found -= errors.true_over_declared * errors.proving * stream(seed, own).standard_normal()
+    parts = {f"meter:{meter}": 100.0 * slope * errors.factor, own: -100.0 * slope * errors.proving}
+    return Check(meter, night, Estimate(100.0 * slope * found, parts), "meter", slope)
 
 
 def _stick(level: FloatArray, name: str, faults: Sequence[Fault], step: float) -> BoolArray:
@@ -220,15 +289,26 @@ def _ticket(movement: Movement, seed: int, faults: Sequence[Fault], errors: Erro
     """One ticket as its meter gave it, and as it was written down."""
     scale = errors.true_over_declared
     name = movement.name.removesuffix("-again")  # a copy of a ticket is the ticket's figure once more
-    factor = 1.0 + scale * errors.factor * stream(seed, f"meter:{movement.meter}").standard_normal()
+    factor = _factor(movement.meter, movement.night, seed, faults, errors)
     factor += scale * errors.repeatability * stream(seed, f"t:{name}").standard_normal()
-    for fault in faults:
-        if fault.subject == (movement.meter,) and movement.night >= fault.onset:
-            nights = movement.night - fault.onset + 1 if fault.kind == "meter_drift" else 1
-            factor += fault.size / 100.0 * nights
     mass = movement.mass * factor
-    mass += sum(one.size for one in faults if (one.kind, one.subject) == ("wrong_transfer", (movement.name,)))
+    wrong = sum(one.size for one in faults if (one.kind, one.subject) == ("wrong_transfer", (movement.name,)))
+    mass += movement.share * wrong
     parts = {f"meter:{movement.meter}": mass * errors.factor, f"t:{movement.name}": mass * errors.repeatability}
+    if movement.share < 1.0:
+        own = f"split:{movement.name}"
+        parts[own] = movement.sign * errors.split * mass / movement.share * min(movement.share, 1.0 - movement.share)
+        mass += scale * parts[own] * stream(seed, own).standard_normal()
     return Ticket(
         movement.name, movement.night, movement.source, movement.target, Estimate(mass, parts), movement.meter
     )
+
+
+def _factor(meter: str, night: int, seed: int, faults: Sequence[Fault], errors: Errors) -> float:
+    """What a meter shows of one kilogram."""
+    factor = 1.0 + errors.true_over_declared * errors.factor * stream(seed, f"meter:{meter}").standard_normal()
+    for fault in faults:
+        if fault.subject == (meter,) and night >= fault.onset:
+            nights = night - fault.onset + 1 if fault.kind == "meter_drift" else 1
+            factor += fault.size / 100.0 * nights
+    return float(factor)

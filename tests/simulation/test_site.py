@@ -123,6 +123,53 @@ def test_a_clean_window_is_noise_of_the_declared_size() -> None:
     assert np.mean(squares) == pytest.approx(1.0, abs=0.08)
 
 
+def test_a_window_with_splits_revisions_dips_and_provings_is_noise_as_well() -> None:
+    squares, extra = [], []
+    for seed in range(12):
+        made = plan(200 + seed, nights=NIGHTS, split=0.5)
+        names = [vessel.name for vessel in made.vessels]
+        provings = [(meter, own[-1].night) for meter, own in made.meters.items()]
+        found = simulate(
+            made, seed, dips=[(names[1], 4), (names[-1], 9)], provings=provings, revised={names[2]: 6, names[3]: 7}
+        )
+        rows = assemble(group(found))
+        squares.append(np.mean(rows.white**2))
+        assert len(rows.check_rows) == 2 + len(provings)
+        extra += list(rows.white[rows.check_rows])
+        parts = [ticket.name for ticket in found.window.tickets]
+        assert len(set(parts)) < len(parts) > len(made.meters)
+    assert np.mean(squares) == pytest.approx(1.0, abs=0.08)
+    assert np.mean(np.square(extra)) == pytest.approx(1.0, abs=0.4)
+
+
+def test_a_dip_sees_a_gauge_and_not_a_loss_and_a_proving_sees_a_meter() -> None:
+    of, exact = site(), Errors(true_over_declared=0.0)
+    vessel, meter = of.vessels[0].name, next(iter(of.meters))
+    for fault, level, factor in (
+        (Fault("level_bias", (vessel,), NIGHT, 12.0), 12e-3, 0.0),
+        (Fault("vessel_loss", (vessel,), NIGHT, 3_000.0), 0.0, 0.0),
+        (Fault("meter_bias", (meter,), 1, -0.8), 0.0, -0.8),
+    ):
+        dip, proving = simulate(of, 3, [fault], exact, dips=[(vessel, NIGHT)], provings=[(meter, NIGHT)]).window.checks
+        assert dip.difference.value / dip.slope == pytest.approx(level, abs=1e-9)
+        assert proving.difference.value / proving.slope == pytest.approx(factor, abs=1e-9)
+        assert (dip.night, dip.kind, proving.kind) == (NIGHT, "level", "meter")
+
+
+def test_a_revised_vessel_closes_by_the_old_definition_and_opens_by_the_new() -> None:
+    of = site()
+    vessel = of.vessels[0].name
+    closes = at_close(simulate(of, 3, revised={vessel: NIGHT}).window, vessel)
+    close = closes[NIGHT]
+    assert close.mass is not None and close.reopened is not None
+    both = set(close.mass.parts) & set(close.reopened.parts)
+    assert f"r:{vessel}:{NIGHT}:level" in both and f"temperature:{vessel}" in both
+    assert not {name for name in both if name.startswith(("level", "capacity"))}
+    later = closes[NIGHT + 1].mass
+    assert later is not None and f"capacity:{vessel}:2" in later.parts
+    assert [k for k, stock in closes.items() if stock.reopened is not None] == [NIGHT]
+
+
 def test_errors_taken_for_new_ones_hide_what_is_shared() -> None:
     found = simulate(site(), 3)
     alone = unshared(found.window)

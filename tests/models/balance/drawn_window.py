@@ -52,6 +52,12 @@ def draw(
                 "level": AREA * DENSITY * (1.0 + 0.02 * level), "temperature": -1e-3 * content[v],
                 "density": content[v] / DENSITY,
             }  # fmt: skip
-            mass = measured(content[v], parts)
-            stocks.append(Stock(name, close, mass, slopes, (sample, "density:lab"), per_mm=AREA * DENSITY / 1e3))
+            read = measured(content[v], parts)
+            stocks.append(Stock(name, close, read, slopes, (sample, "density:lab"), per_mm=AREA * DENSITY / 1e3))
     return Window((1.0,) * nights, stocks, moved)
+
+
+def masses_of(window: Window) -> list[Estimate]:
+    """What was measured: stocks, then movements."""
+    stocks = [stock.mass for stock in window.stocks if stock.mass is not None]
+    return stocks + [ticket.mass for ticket in window.tickets if ticket.mass is not None]
