@@ -30,12 +30,12 @@ def until(window: Window, night: int) -> Window:
 
 def test_under_no_fault_what_is_whitened_is_standard_normal_noise() -> None:
     rng = np.random.default_rng(20260314)
-    drawn = np.array([assemble(whole(draw(rng))).white for _ in range(400)])
-    assert drawn.shape == (400, 18)
+    drawn = np.array([assemble(whole(draw(rng))).white for _ in range(2000)])
+    assert drawn.shape == (2000, 18)
     assert kstest(drawn.ravel(), "norm").pvalue > 0.01
     assert kstest(np.sum(drawn**2, axis=1), chi2(18).cdf).pvalue > 0.01
     spread = np.corrcoef(drawn.T)
-    assert np.max(np.abs(spread - np.eye(18))) < 5.0 / np.sqrt(400)
+    assert np.max(np.abs(spread - np.eye(18))) < 5.0 / np.sqrt(2000)
 
 
 def test_residuals_and_their_covariance_are_those_of_the_incidence_matrix_and_the_errors_as_unknowns() -> None:
