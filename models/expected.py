@@ -23,7 +23,7 @@ MASS_TOLERANCE = 1e-15  # relative: a mass is hit
 STEP_TOLERANCE = 2e-16  # relative: a step that no longer moves
 MISS_TOLERANCE = 1e-10  # relative: a mass that is missed by more, beside a trial without a mass, is not reached
 END_ROUNDING = 1e-12  # relative: a full vessel stays full
-FACTOR_POINTS = np.geomspace(0.1, 10.0, GRID_POINTS)  # beyond every compressibility factor of the virial equation
+FACTOR_NODES = np.geomspace(0.1, 10.0, GRID_POINTS)  # where the search starts: beyond every Z of the virial equation
 
 Trial = Callable[[FloatArray, IntArray], tuple[FloatArray, FloatArray]]
 """Masses at trial values, and their slopes; the second argument is the row of each trial."""
@@ -130,7 +130,7 @@ def pressure_of_mass(vessels: Vessels, rows: IntArray | None, state: State, mass
     series = vessels.vapour_row[own] if state.vapour_row is None else state.vapour_row
     molar_mass = vessels.vapour.molar_mass[series]
     ideal = mass * GAS_CONSTANT * state.vapour_temperature / (molar_mass * vessels.capacity[own])  # eq. 1
-    grid = ideal[:, None] * FACTOR_POINTS
+    grid = ideal[:, None] * FACTOR_NODES
 
     def trial(pressure: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
         found = inventory(vessels, own[which], replace(state.take(which), pressure=pressure))
