@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from app.services.compile import DAY_US, Instrument
 from app.services.gauged import HEAD
-from app.services.parts import PASCAL, Errors, Part, capacity_parts, model_parts
+from app.services.parts import PASCAL, Errors, Kind, Part, capacity_parts, model_parts
 from models import instruments
 from models.columns import Method, State
 
@@ -116,12 +116,13 @@ def _sample(builder: States, errors: Errors) -> None:
         return known[row if len(known) > 1 else 0]
 
     sampled = builder.density_is_sample
-    for sigma, kind, name in (
+    errors_of_one: tuple[tuple[list[float], Kind, Callable[[int], str]], ...] = (
         ([k.systematic for k in known], "systematic", lambda row: f"density:{of(row).name}"),
         ([k.random for k in known], "random", sample),
-    ):
+    )
+    for sigma, kind, name in errors_of_one:
         errors.add(
-            "observed_density_kg_m3", "density", np.where(sampled, np.array(sigma), 0.0), kind, name,  # type: ignore[arg-type]
+            "observed_density_kg_m3", "density", np.where(sampled, np.array(sigma), 0.0), kind, name,
             declared=lambda row: of(row).declared, instrument=lambda row: of(row).name,
         )  # fmt: skip
     errors.add(

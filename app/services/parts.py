@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 from typing import Literal
 
 import numpy as np
@@ -102,6 +103,9 @@ class Errors:
         def of(row: int) -> Instrument:
             return known[row if len(known) > 1 else 0]
 
+        def reading(instants: NDArray[np.int64], row: int) -> str:
+            return f"r:{self._reading(chosen, origin, row)}:{quantity}:{stamp(instants[row])}"
+
         usable = chosen.usable
         shape = len(usable) if len(known) > 1 else 1
         systematic = np.array([i.systematic for i in known]) * (usable if shape > 1 else 1.0)
@@ -114,9 +118,7 @@ class Errors:
         for share, instants in ((1.0 - chosen.share, chosen.taken_at), (chosen.share, chosen.after_at)):
             self.add(
                 quantity, sensitivity, np.where(usable, random * share, 0.0), "random",
-                lambda row, instants=instants: (  # type: ignore[misc]
-                    f"r:{self._reading(chosen, origin, row)}:{quantity}:{stamp(instants[row])}"
-                ),
+                partial(reading, instants),
                 declared=lambda row: of(row).declared, instrument=lambda row: of(row).name, scale=scale,
             )  # fmt: skip
         if stale:
@@ -180,6 +182,9 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
     def table(row: int) -> str:
         return f"capacity:{errors.vessel(row).name}:{errors.vessel(row).table_id}"
 
+    def at_knot(knot: FloatColumns, row: int) -> str:
+        return f"{table(row)}:{int(at_row(knot, row))}"
+
     errors.add(
         "capacity_pct", "capacity", whole / 100.0, "systematic", table, declared=lambda row: of(row)[3]
     )  # fmt: skip
@@ -190,8 +195,7 @@ def capacity_parts(errors: Errors, level: FloatColumns) -> None:
     for knot, share in ((lower, (1.0 - weight) / norm), (lower + 1.0, weight / norm)):
         errors.add(
             "capacity_pct", "capacity_local", local / 100.0 * share, "systematic",
-            lambda row, knot=knot: f"{table(row)}:{int(at_row(knot, row))}",  # type: ignore[misc]
-            declared=lambda row: of(row)[3],
+            partial(at_knot, knot), declared=lambda row: of(row)[3],
         )  # fmt: skip
 
 

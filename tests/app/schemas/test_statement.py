@@ -10,7 +10,7 @@ from pydantic import ValidationError
 
 from app.schemas.statement import AT_20, At60F, AtBase, TankStatement
 
-EXAMPLE = TankStatement.model_config["json_schema_extra"]["examples"][0]  # type: ignore[index, call-overload]
+EXAMPLE = TankStatement.model_json_schema()["examples"][0]
 
 
 def test_its_words_in_the_order_of_calculation() -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import pytest
 
+from app.schemas.liquid import LightHydrocarbonLiquid
 from app.schemas.substance import Substance
 from app.services.compositions import analysed_fractions, boiling_pressure, fractions_of, mixture_of
 from models.errors import DefinitionError
@@ -24,7 +25,8 @@ def test_fractions_are_normalised_and_a_component_in_full_keeps_its_constants() 
     measured = OWN | {"characteristic_volume_cm3_mol": 250.0, "srk_acentric_factor": 0.21}
     body = {"name": "x", "liquid": {"model": "light_hydrocarbon", "components": [measured | {"mole_fraction": 1.0}]}}
     liquid = Substance.model_validate(body).liquid
-    given = fractions_of(liquid.components)[0][0]  # type: ignore[union-attr, arg-type]
+    assert isinstance(liquid, LightHydrocarbonLiquid) and liquid.components is not None
+    given = fractions_of(liquid.components)[0][0]
     assert given.costald == (pytest.approx(2.5e-4), 0.21)
     assert mixture_of(LPG.vapour).components[1] == own[0]
 

@@ -7,7 +7,7 @@ from typing import Any
 import pytest
 
 from app.schemas.site import Conditions as Site
-from app.schemas.substance import Substance
+from app.schemas.substance import Substance, VirialVapour
 from app.services.compositions import Boiling, fractions_of
 from app.services.liquids import (
     density_between,
@@ -48,7 +48,9 @@ def test_each_body_becomes_its_method_in_si() -> None:
     assert liquid_of(body(table), SITE) == definition.TableLiquid(
         ((273.15, 900.0), (323.15, 870.0)), 6e-10, ATMOSPHERE
     )
-    assert liquid_of(body(table | {"at_pressure_kpa_abs": 500.0}), SITE).pressure == 500_000.0  # type: ignore[union-attr]
+    assert liquid_of(body(table | {"at_pressure_kpa_abs": 500.0}), SITE) == definition.TableLiquid(
+        ((273.15, 900.0), (323.15, 870.0)), 6e-10, 500_000.0
+    )
     assert liquid_of(body({"model": "ethanol_water", "alcohol_volume_pct": 96.0}), SITE) == (
         definition.EthanolWaterLiquid()
     )
@@ -90,9 +92,8 @@ def test_a_figure_from_which_the_method_finds_nothing_is_refused_with_the_limit(
 
 
 def test_the_standard_pressure_is_that_of_equilibrium_where_it_is_higher() -> None:
-    propane = Boiling(fractions_of(Substance.model_validate(
-        {"name": "x", "vapour": {"model": "virial", "components": [{"id": "propane", "mole_fraction": 1.0}]}}
-    ).vapour.components))  # type: ignore[union-attr]  # fmt: skip
+    vapour = VirialVapour.model_validate({"model": "virial", "components": [{"id": "propane", "mole_fraction": 1.0}]})
+    propane = Boiling(fractions_of(vapour.components))
     expanding = definition.ExpansivityLiquid((3e-3,), 288.15, 0.0)
     # propane at 15 °C: Lemmon et al. 2009, by CoolProp 8.0.0
     assert standard_pressure(expanding, SITE, propane) == pytest.approx(7.3151e5, rel=5e-4)

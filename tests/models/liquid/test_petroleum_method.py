@@ -104,8 +104,10 @@ def test_slopes_are_those_of_the_decimals(group: str, t_f: float, psi: float) ->
         return figures(density, temperature, D(psi), group)[name].ln()
 
     s = star(array(rho), k)
-    by_density = {name: slope(lambda r, n=name: logarithm(n, r, D(t_f)), D(rho)) * D(rho)  # type: ignore[misc]
-                  for name in ("star", "fp", "density")}  # fmt: skip
+    def by_base(name: str) -> D:
+        return slope(lambda r: logarithm(name, r, D(t_f)), D(rho)) * D(rho)
+
+    by_density = {name: by_base(name) for name in ("star", "fp", "density")}
     alpha_by_density = slope(lambda r: figures(r, D(t_f), D(psi), group)["alpha"], D(rho)) * D(rho)
     star_by_f = slope(star_temperature, D(t_f))
     ctl_by_star = slope(lambda t: logarithm("ctl", D(rho), t), D(t_f)) / star_by_f
